@@ -1,0 +1,34 @@
+/** What the daemon may call, in the order of its use: decide, compose, send. */
+
+export { EXPIRES_AFTER_MS, hasExpired, type PauseCause, pauseMs } from './backoff.ts';
+export type { ComposedMessage, MailSetting } from './composed.ts';
+export { composeDigest, digestHtml, digestText } from './digest.ts';
+export {
+  createMailer,
+  type Delivery,
+  type DeliveryOutcome,
+  type Mailer,
+  type MailerDependencies,
+  type MailTransport,
+  markPossibleDuplicate,
+} from './mailer/index.ts';
+export { composeEventMail, type EventMail } from './message.ts';
+export type { MorningReview, QuarantinedRow } from './morningReview.ts';
+export { eventsCsv } from './notice/csv.ts';
+export { eventJson } from './notice/json.ts';
+export { type NoticeContext, voevent } from './notice/voevent.ts';
+export { composeOperatorNotice, composeStormNotice, composeTestMail, type OperatorNotice } from './operatorNotice.ts';
+export { renderPng } from './picture.ts';
+export { DARK_PALETTE, eventSvg, LIGHT_PALETTE, type PlotPalette, type PlotWords } from './plot/index.ts';
+export {
+  type AlertDecision,
+  type AlertPolicy,
+  type AlertReason,
+  DEFAULT_HISTORICAL_DAYS,
+  DEFAULT_HOURLY_CAP,
+  type EventChanged,
+  mailOrSummary,
+  messagesFor,
+  type PlannedMessage,
+  type ToldBefore,
+} from './policy.ts';

@@ -1,0 +1,11 @@
+import { folderMailer } from './folder.ts';
+import type { Mailer, MailerDependencies, MailTransport } from './mailer.ts';
+import { smtpMailer } from './smtp.ts';
+
+export { compose, type MailParts, markPossibleDuplicate, safeFileName } from './compose.ts';
+export type { Delivery, DeliveryOutcome, Mailer, MailerDependencies, MailTimeouts, MailTransport } from './mailer.ts';
+
+/** @throws Error for a server that would get the mail over an open network in plain text */
+export function createMailer(transport: MailTransport, dependencies: MailerDependencies): Mailer {
+  return transport.kind === 'folder' ? folderMailer(transport.folder) : smtpMailer(transport, dependencies);
+}

@@ -1,0 +1,171 @@
+import type { PulsarModel } from '../detectors/spin/pulsarModel.ts';
+import type { EventPicture, PulsarEvent } from '../detectors/steps/pulsarEvent.ts';
+import type { ComposedMessage, MailSetting } from './composed.ts';
+import {
+  figure,
+  heading,
+  link,
+  list,
+  page,
+  paragraph,
+  picture as pictureBlock,
+  rowTable,
+  type Tone,
+  title,
+} from './html.ts';
+import { compose, safeFileName } from './mailer/index.ts';
+import { oneLine } from './markup.ts';
+import type { EventMailKind } from './messageId.ts';
+import { eventJson } from './notice/json.ts';
+import { voevent } from './notice/voevent.ts';
+import { renderPng } from './picture.ts';
+import { eventSvg } from './plot/index.ts';
+import type { PlannedMessage } from './policy.ts';
+import { bullets, table, heading as textHeading, wrap } from './text.ts';
+import {
+  DRILL_TEXT,
+  footerText,
+  HEADINGS,
+  NO_PICTURE,
+  PICTURE_TEXT,
+  reasonText,
+  reviewLine,
+  subjectMark,
+} from './wording/phrases.ts';
+import { type EventSheet, eventSheet } from './wording/sheet.ts';
+
+/** One event as a mail: what happened, how big, how sure, what to check and what to do next; the same words as text and as HTML. */
+export interface EventMail {
+  readonly event: PulsarEvent;
+  /** Null: without a plot, also for a server that found the mail too large. */
+  readonly picture: EventPicture | null;
+  /** For position and spin in the notice. */
+  readonly model: PulsarModel | null;
+  readonly planned: PlannedMessage;
+  /** The revision that the last mail told; null: nothing was told. */
+  readonly toldRevision: number | null;
+}
+
+const CID = 'event-plot@spinvigil';
+
+export async function composeEventMail(mail: EventMail, setting: MailSetting): Promise<ComposedMessage> {
+  const { event, planned, model } = mail;
+  const sheet = eventSheet(event, mail.picture, setting.timezone);
+  const png = await drawn(mail.picture, sheet);
+  const missing = mail.picture !== null && png === null ? NO_PICTURE : null;
+  const name = safeFileName(event.id);
+  const notice = voevent(event, {
+    observatory: setting.observatory,
+    model,
+    revision: planned.revision,
+    issuedAt: setting.now,
+    cites: mail.toldRevision,
+    drill: planned.kind === 'drill',
+  });
+  return compose(
+    {
+      messageId: planned.messageId,
+      inReplyTo: planned.inReplyTo,
+      kind: 'event',
+      eventId: event.id,
+      recipients: planned.recipients,
+      subject: subjectOfMail(sheet, planned.kind, setting.observatory.name),
+      text: eventText(sheet, planned, setting, missing),
+      html: eventHtml(sheet, planned, setting, { shown: png !== null, missing }),
+      picture: png === null ? null : { cid: CID, fileName: `${name}.png`, png },
+      attachments: [
+        { fileName: `${name}-r${planned.revision}.xml`, contentType: 'application/xml', content: notice },
+        { fileName: `${name}-r${planned.revision}.json`, contentType: 'application/json', content: eventJson(event) },
+      ],
+    },
+    setting,
+  );
+}
+
+/** A plot that cannot be drawn must not hold up the alert: the mail then says that it is missing. */
+async function drawn(picture: EventPicture | null, sheet: EventSheet): Promise<Buffer | null> {
+  if (picture === null) return null;
+  try {
+    return await renderPng(eventSvg(picture, { title: sheet.title, subtitle: sheet.size }));
+  } catch {
+    return null;
+  }
+}
+
+/** Observatory, pulsar, explanation, size. */
+function subjectOfMail(sheet: EventSheet, kind: EventMailKind, observatory: string): string {
+  return [`${subjectMark(kind)}${oneLine(observatory)}`, sheet.title, sheet.size]
+    .filter((part) => part !== '')
+    .join(' · ');
+}
+
+export function eventText(
+  sheet: EventSheet,
+  planned: PlannedMessage,
+  setting: MailSetting,
+  missing: string | null,
+): string {
+  const blocks = [
+    [sheet.title, sheet.size]
+      .filter((line) => line !== '')
+      .map((line) => wrap(line))
+      .join('\n'),
+    wrap(opening(planned)),
+    wrap(sheet.meaning),
+    missing === null ? '' : wrap(missing),
+    sheet.caution === '' ? '' : wrap(sheet.caution),
+    table(sheet.rows),
+    section(HEADINGS.check, sheet.check),
+    section(HEADINGS.observe, sheet.observe),
+    setting.reviewUrl === null ? '' : `${reviewLine}:\n${eventUrl(setting.reviewUrl, planned.eventId)}`,
+    `-- \n${wrap(footerText(setting.observatory))}`,
+  ];
+  return `${blocks.filter((b) => b !== '').join('\n\n')}\n`;
+}
+
+function section(name: string, items: readonly string[]): string {
+  return items.length === 0 ? '' : `${textHeading(name)}\n${bullets(items)}`;
+}
+
+export function eventHtml(
+  sheet: EventSheet,
+  planned: PlannedMessage,
+  setting: MailSetting,
+  plot: { readonly shown: boolean; readonly missing: string | null },
+): string {
+  return page({
+    title: sheet.title,
+    preview: `${sheet.size} ${opening(planned)}`,
+    tone: TONE[planned.kind],
+    blocks: [
+      title(sheet.title, setting.observatory.name),
+      figure(sheet.size),
+      paragraph(opening(planned), 'strong'),
+      paragraph(sheet.meaning),
+      plot.shown ? pictureBlock(CID, `${PICTURE_TEXT} ${sheet.title}. ${sheet.size}`) : null,
+      plot.missing === null ? null : paragraph(plot.missing),
+      sheet.caution === '' ? null : paragraph(sheet.caution, 'strong'),
+      rowTable(sheet.rows),
+      ...(sheet.check.length === 0 ? [] : [heading(HEADINGS.check), list(sheet.check)]),
+      ...(sheet.observe.length === 0 ? [] : [heading(HEADINGS.observe), list(sheet.observe)]),
+      setting.reviewUrl === null ? null : link(reviewLine, eventUrl(setting.reviewUrl, planned.eventId)),
+    ],
+    footer: footerText(setting.observatory),
+  });
+}
+
+const TONE: Readonly<Record<EventMailKind, Tone>> = {
+  first: 'candidate',
+  update: 'update',
+  withdrawal: 'withdrawal',
+  drill: 'drill',
+};
+
+function opening(planned: PlannedMessage): string {
+  return planned.kind === 'drill' ? DRILL_TEXT : reasonText(planned.reason);
+}
+
+/** Where the page shows the event. */
+export function eventUrl(reviewUrl: string, eventId: string): string {
+  return `${reviewUrl}/events/${encodeURIComponent(eventId)}`;
+}

@@ -1,0 +1,64 @@
+import type { Interval, PulsarEvent } from '../../detectors/steps/pulsarEvent.ts';
+import { oneLine } from '../markup.ts';
+
+/** Events as a table (RFC 4180: CRLF, header row, quotes doubled), one event a row. An unknown number is an empty cell. */
+export function eventsCsv(events: readonly PulsarEvent[]): string {
+  const rows = events.map((event) => COLUMNS.map(([, cell]) => cellText(cell(event))).join(','));
+  return [COLUMNS.map(([name]) => name).join(','), ...rows].map((row) => `${row}\r\n`).join('');
+}
+
+type Cell = string | number | null;
+
+const low = (interval: Interval | null): Cell => interval?.[0] ?? null;
+const high = (interval: Interval | null): Cell => interval?.[1] ?? null;
+
+const COLUMNS: readonly (readonly [name: string, cell: (event: PulsarEvent) => Cell])[] = [
+  ['id', (e) => e.id],
+  ['pulsar', (e) => e.pulsar],
+  ['state', (e) => e.state],
+  ['explanation', (e) => e.explanation],
+  ['probability', (e) => e.explanations[e.explanation] ?? null],
+  ['epoch_mjd_tdb', (e) => e.epochMjd],
+  ['epoch_low_68', (e) => low(e.epochInterval68)],
+  ['epoch_high_68', (e) => high(e.epochInterval68)],
+  ['delta_nu_hz', (e) => e.deltaNuHz],
+  ['delta_nu_low_68', (e) => low(e.deltaNuHzInterval68)],
+  ['delta_nu_high_68', (e) => high(e.deltaNuHzInterval68)],
+  ['delta_nu_over_nu', (e) => e.deltaNuOverNu],
+  ['delta_nu_over_nu_low_68', (e) => low(e.deltaNuOverNuInterval68)],
+  ['delta_nu_over_nu_high_68', (e) => high(e.deltaNuOverNuInterval68)],
+  ['delta_nu_dot_hz_per_s', (e) => e.deltaNuDot],
+  ['delta_nu_dot_low_68', (e) => low(e.deltaNuDotInterval68)],
+  ['delta_nu_dot_high_68', (e) => high(e.deltaNuDotInterval68)],
+  ['delta_nu_dot_over_nu_dot', (e) => e.deltaNuDotOverNuDot],
+  ['delta_nu_dot_over_nu_dot_low_68', (e) => low(e.deltaNuDotOverNuDotInterval68)],
+  ['delta_nu_dot_over_nu_dot_high_68', (e) => high(e.deltaNuDotOverNuDotInterval68)],
+  ['time_step_us', (e) => e.timeStepUs],
+  ['time_step_low_68', (e) => low(e.timeStepUsInterval68)],
+  ['time_step_high_68', (e) => high(e.timeStepUsInterval68)],
+  ['recovery_fraction', (e) => e.recovery.q],
+  ['recovery_timescales_d', (e) => e.recovery.terms.map((t) => t.timescaleDays).join(' ')],
+  ['first_arrival_mjd', (e) => e.firstArrivalMjd],
+  ['suspected_at_mjd', (e) => e.suspectedAtMjd],
+  ['confirmed_at_mjd', (e) => e.confirmedAtMjd],
+  ['arrivals_used', (e) => e.arrivalsUsed],
+  ['log_bayes_factor', (e) => e.logBayesFactor],
+  ['false_alerts_per_year', (e) => e.falseAlertsPerYearAtThisLevel],
+  ['pulsars', (e) => e.pulsars.join(' | ')],
+  ['site', (e) => e.site],
+];
+
+function cellText(cell: Cell): string {
+  if (cell === null) return '';
+  if (typeof cell === 'number') return Number.isFinite(cell) ? String(cell) : '';
+  const safe = inert(oneLine(cell));
+  return /[",\r\n]/.test(safe) ? `"${safe.replace(/"/g, '""')}"` : safe;
+}
+
+/**
+ * Text that a spreadsheet would run as a formula gets an apostrophe in front (common practice, OWASP "CSV Injection", from memory);
+ * numbers are written by us and keep their minus sign.
+ */
+function inert(text: string): string {
+  return /^\s*[=+\-@＝＋－＠]/.test(text) ? `'${text}` : text;
+}

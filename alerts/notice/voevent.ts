@@ -1,0 +1,268 @@
+import type { PulsarModel } from '../../detectors/spin/pulsarModel.ts';
+import type { Interval, PulsarEvent } from '../../detectors/steps/pulsarEvent.ts';
+import { type Markup, markup } from '../markup.ts';
+import { domainOf } from '../messageId.ts';
+import { dateOfMjd } from '../wording/dates.ts';
+import { eventName, explanationName, meaningOf } from '../wording/phrases.ts';
+
+/**
+ * The event as a VOEvent 2.0 packet (IVOA Recommendation of 11 July 2011, "Sky Event Reporting Metadata"): what was measured under What
+ * and WhereWhen, what it may mean under Why, what it replaces under Citations.
+ */
+export interface NoticeContext {
+  readonly observatory: { readonly name: string; readonly contact: string };
+  /** Null: without position and spin. */
+  readonly model: PulsarModel | null;
+  readonly revision: number;
+  readonly issuedAt: Date;
+  /** The revision that this one supersedes or retracts; null: the first notice. */
+  readonly cites: number | null;
+  /** A rehearsal: the packet says `role="test"`. */
+  readonly drill: boolean;
+}
+
+export function voevent(event: PulsarEvent, context: NoticeContext): string {
+  return `<?xml version="1.0" encoding="UTF-8"?>\n${packet(event, context).source}`;
+}
+
+function packet(event: PulsarEvent, context: NoticeContext): Markup {
+  const { contact, name } = context.observatory;
+  return markup`<voe:VOEvent xmlns:voe="http://www.ivoa.net/xml/VOEvent/v2.0" xmlns:xsi="http://www.w3.org/2001/XMLSchema-instance" xsi:schemaLocation="http://www.ivoa.net/xml/VOEvent/v2.0 http://www.ivoa.net/xml/VOEvent/VOEvent-v2.0.xsd" version="2.0" role="${context.drill ? 'test' : 'observation'}" ivorn="${identifier(event, contact, context.revision)}">
+  <Who>
+    <AuthorIVORN>ivo://${domainOf(contact)}/spinvigil</AuthorIVORN>
+    <Date>${context.issuedAt.toISOString().slice(0, 19)}</Date>
+    <Author>
+      <title>${name}</title>
+      <contactEmail>${contact}</contactEmail>
+    </Author>
+  </Who>
+  <What>
+${whatParams(event, context).map((p) => markup`    ${p}\n`)}  </What>
+  <WhereWhen>
+    <ObsDataLocation>
+      <ObservatoryLocation id="SOLAR_SYSTEM_BARYCENTER"/>
+      <ObservationLocation>
+        <AstroCoordSystem id="TDB-ICRS-BARY"/>
+        <AstroCoords coord_system_id="TDB-ICRS-BARY">
+          <Time unit="s">
+            <TimeInstant>
+              <ISOTime>${dateOfMjd(event.epochMjd).toISOString().slice(0, 19)}</ISOTime>
+            </TimeInstant>
+            <Error>${rounded(((event.epochInterval68[1] - event.epochInterval68[0]) / 2) * 86_400, 3)}</Error>
+          </Time>
+${position(event, context.model)}        </AstroCoords>
+      </ObservationLocation>
+    </ObsDataLocation>
+  </WhereWhen>
+  <How>
+    <Description>Step in the spin of a pulsar found from its pulse arrival times, brought to the solar-system barycentre (TDB), by comparing explanations; intervals hold 68 % probability.</Description>
+  </How>
+${why(event)}${citations(event, context)}  <Description>${description(event)}</Description>
+</voe:VOEvent>
+`;
+}
+
+/** One packet for each revision. */
+function identifier(event: PulsarEvent, contact: string, revision: number): string {
+  return `ivo://${domainOf(contact)}/spinvigil#${event.id.replace(/[^A-Za-z0-9._+-]+/g, '_')}-r${revision}`;
+}
+
+function description(event: PulsarEvent): string {
+  const vetted =
+    event.state === 'accepted'
+      ? 'Accepted by a reviewer.'
+      : 'Found by a program and not yet accepted by a reviewer: to be vetted before it is announced.';
+  return `${event.pulsar}: ${eventName(event)}. ${meaningOf(event)} ${vetted}`;
+}
+
+interface Param {
+  readonly name: string;
+  readonly value: number | null;
+  readonly interval68?: Interval | null;
+  readonly unit?: string;
+  /** From the IVOA's controlled vocabulary (UCD1+). */
+  readonly ucd?: string;
+  readonly meaning: string;
+}
+
+function whatParams(event: PulsarEvent, { model, revision }: NoticeContext): Markup[] {
+  const spin = model?.spin;
+  const params: Param[] = [
+    {
+      name: 'epoch',
+      value: event.epochMjd,
+      interval68: event.epochInterval68,
+      unit: 'd',
+      ucd: 'time.epoch',
+      meaning: 'MJD, TDB at the barycentre',
+    },
+    {
+      name: 'delta_nu',
+      value: event.deltaNuHz,
+      interval68: event.deltaNuHzInterval68,
+      unit: 'Hz',
+      meaning: 'step in rotation frequency, positive is a spin-up',
+    },
+    {
+      name: 'delta_nu_over_nu',
+      value: event.deltaNuOverNu,
+      interval68: event.deltaNuOverNuInterval68,
+      meaning: 'relative step in rotation frequency',
+    },
+    {
+      name: 'delta_nu_dot',
+      value: event.deltaNuDot,
+      interval68: event.deltaNuDotInterval68,
+      unit: 'Hz/s',
+      meaning: 'step in the derivative of the rotation frequency',
+    },
+    {
+      name: 'delta_nu_dot_over_nu_dot',
+      value: event.deltaNuDotOverNuDot,
+      interval68: event.deltaNuDotOverNuDotInterval68,
+      meaning: 'relative step in the derivative of the rotation frequency',
+    },
+    {
+      name: 'time_step',
+      value: event.timeStepUs,
+      interval68: event.timeStepUsInterval68,
+      unit: 'us',
+      meaning: 'step in arrival time, positive is late',
+    },
+    ...event.recovery.terms.flatMap((term, i): Param[] => [
+      {
+        name: `recovery_${i + 1}_fraction`,
+        value: term.fraction,
+        interval68: term.fractionInterval68,
+        meaning: 'part of the frequency step that decays',
+      },
+      {
+        name: `recovery_${i + 1}_timescale`,
+        value: term.timescaleDays,
+        interval68: term.timescaleDaysInterval68,
+        unit: 'd',
+        ucd: 'time.duration',
+        meaning: 'e-folding time of the decay',
+      },
+    ]),
+    {
+      name: 'reference_epoch',
+      value: spin ? spin.epochTdb.day + spin.epochTdb.fraction : null,
+      unit: 'd',
+      ucd: 'time.epoch',
+      meaning: 'MJD (TDB) of the reference spin values',
+    },
+    {
+      name: 'reference_nu',
+      value: spin?.frequencyHz.hi ?? null,
+      unit: 'Hz',
+      meaning: 'rotation frequency before the event',
+    },
+    {
+      name: 'reference_nu_dot',
+      value: spin?.frequencyDerivativeHzPerS ?? null,
+      unit: 'Hz/s',
+      meaning: 'its derivative',
+    },
+    {
+      name: 'first_arrival_after',
+      value: event.firstArrivalMjd,
+      unit: 'd',
+      ucd: 'time.epoch',
+      meaning: 'MJD of the first arrival after the event',
+    },
+    {
+      name: 'arrivals_used',
+      value: event.arrivalsUsed,
+      ucd: 'meta.number',
+      meaning: 'arrival times that the numbers rest on',
+    },
+    {
+      name: 'log_bayes_factor',
+      value: event.logBayesFactor,
+      ucd: 'stat.likelihood',
+      meaning: 'natural logarithm, against no event',
+    },
+    {
+      name: 'false_alerts_per_year',
+      value: event.falseAlertsPerYearAtThisLevel,
+      unit: 'yr-1',
+      meaning: 'expected from noise alone in the whole programme at this level',
+    },
+    { name: 'revision', value: revision, ucd: 'meta.version', meaning: 'of this event on record' },
+  ];
+  const words = [
+    textParam('pulsar', event.pulsar, 'meta.id;meta.main'),
+    textParam('state', event.state, 'meta.code.status'),
+  ];
+  if (event.site !== null)
+    words.push(
+      textParam('site', event.site, 'meta.id;instr.obsty'),
+      textParam('pulsars', event.pulsars.join(', '), 'meta.id'),
+    );
+  return [...words, ...params.flatMap(numberParams)];
+}
+
+/** The value, and its interval as two more numbers, in a group. What is not known is left out. */
+function numberParams({ name, value, interval68, unit, ucd, meaning }: Param): Markup[] {
+  if (value === null || !Number.isFinite(value)) return [];
+  const attributes = markup`${unit === undefined ? null : markup` unit="${unit}"`}${ucd === undefined ? null : markup` ucd="${ucd}"`} dataType="float"`;
+  const main = markup`<Param name="${name}" value="${value}"${attributes}><Description>${meaning}</Description></Param>`;
+  if (!interval68) return [main];
+  const end = (which: string, x: number) => markup`<Param name="${name}_${which}" value="${x}"${attributes}/>`;
+  return [
+    markup`<Group name="${name}" type="measurement with 68 % interval">${main}${end('low', interval68[0])}${end('high', interval68[1])}</Group>`,
+  ];
+}
+
+function textParam(name: string, value: string, ucd: string): Markup {
+  return markup`<Param name="${name}" value="${value}" ucd="${ucd}" dataType="string"/>`;
+}
+
+function position(event: PulsarEvent, model: PulsarModel | null): Markup | null {
+  if (model === null || event.site !== null) return null;
+  return markup`          <Position2D unit="deg">
+            <Name1>RA</Name1>
+            <Name2>Dec</Name2>
+            <Value2>
+              <C1>${degrees(model.rightAscensionRad)}</C1>
+              <C2>${degrees(model.declinationRad)}</C2>
+            </Value2>
+            <Error2Radius>0</Error2Radius>
+          </Position2D>
+`;
+}
+
+/** Hypotheses stand apart from measurements, each with its probability. */
+function why(event: PulsarEvent): Markup {
+  const ranked = Object.entries(event.explanations)
+    .filter(([, p]) => p >= 1e-6)
+    .toSorted((a, b) => b[1] - a[1]);
+  const inferences = ranked.map(
+    ([name, p]) => markup`    <Inference probability="${rounded(p, 6)}">
+      <Name>${event.site ?? event.pulsar}</Name>
+      <Concept>${explanationName(name)}</Concept>
+    </Inference>
+`,
+  );
+  return markup`  <Why>
+${inferences}  </Why>
+`;
+}
+
+function citations(event: PulsarEvent, { cites, observatory }: NoticeContext): Markup | null {
+  if (cites === null) return null;
+  const cite = event.state === 'withdrawn' || event.state === 'rejected' ? 'retraction' : 'supersedes';
+  return markup`  <Citations>
+    <EventIVORN cite="${cite}">${identifier(event, observatory.contact, cites)}</EventIVORN>
+  </Citations>
+`;
+}
+
+function degrees(radians: number): number {
+  return rounded((radians * 180) / Math.PI, 8);
+}
+
+function rounded(value: number, decimals: number): number {
+  return Number(value.toFixed(decimals));
+}

@@ -1,0 +1,151 @@
+import type { Explanation, PulsarEvent } from '../detectors/steps/pulsarEvent.ts';
+import { type EventMailKind, messageId } from './messageId.ts';
+
+/**
+ * Whom to tell, when, and why. Pure: the daemon calls `messagesFor` with every change of an event, queues what comes back in the
+ * transaction that stores the change, and logs the reason, also when nothing is mailed.
+ */
+
+/** One change of an event, as the pipeline is about to store it. */
+export interface EventChanged {
+  /** The event as it stood on record; null: new. */
+  readonly before: PulsarEvent | null;
+  readonly after: PulsarEvent;
+  readonly revision: number;
+  /** What was mailed about this event so far; null: nothing. */
+  readonly told: ToldBefore | null;
+}
+
+export interface ToldBefore {
+  /** Of the first mail about the event: later ones thread under it. */
+  readonly firstMessageId: string;
+  /** The event as the last mail described it: an update is news against this, not against yesterday's revision. */
+  readonly as: PulsarEvent;
+}
+
+export interface AlertPolicy {
+  readonly to: readonly string[];
+  /** From the pulsar's own `[alerts]`. */
+  readonly extraRecipients: readonly string[];
+  /** The observatory's contact address: its domain ends every Message-ID. */
+  readonly contact: string;
+  readonly nowMjd: number;
+  /** An event confirmed by an arrival older than this waits for the digest instead of waking anyone. */
+  readonly historicalDays: number;
+}
+
+export const DEFAULT_HISTORICAL_DAYS = 30;
+
+/** An update is mailed when the 68 % interval of the size has shrunk by this factor since the last mail. */
+export const SHARPENED_FACTOR = 2;
+
+export type AlertReason =
+  // these are mailed
+  | 'first confirmation'
+  | 'confirmed again'
+  | 'withdrawn after it was told'
+  | 'explanation changed'
+  | 'recovery first established'
+  | 'size sharpened'
+  // these are not
+  | 'suspected only'
+  | 'in the digest only'
+  | 'historical'
+  | 'withdrawn before it was told'
+  | 'verdict'
+  | 'nothing new';
+
+export interface PlannedMessage {
+  readonly kind: EventMailKind;
+  readonly reason: AlertReason;
+  readonly eventId: string;
+  readonly revision: number;
+  readonly messageId: string;
+  /** Null: this is the first message of the event. */
+  readonly inReplyTo: string | null;
+  readonly recipients: readonly string[];
+}
+
+export interface AlertDecision {
+  readonly reason: AlertReason;
+  /** Empty: nobody is woken; page and digest show the event anyway. */
+  readonly messages: readonly PlannedMessage[];
+}
+
+/** Confirmed events of these kinds say something about the data, not the pulsar: page and digest show them, no mail does. */
+const DIGEST_ONLY: ReadonlySet<Explanation> = new Set(['bad arrival', 'bad session', 'lost count']);
+
+export function messagesFor(change: EventChanged, policy: AlertPolicy): AlertDecision {
+  const reason = reasonFor(change, policy);
+  const kind = MAIL_KIND[reason];
+  if (kind === null) return { reason, messages: [] };
+  const { after, revision, told } = change;
+  const id = messageId({ eventId: after.id, revision, kind, contact: policy.contact });
+  const recipients = [...new Set([...policy.to, ...policy.extraRecipients])];
+  if (recipients.length === 0) return { reason, messages: [] };
+  const message = { kind, reason, eventId: after.id, revision, messageId: id, recipients };
+  return { reason, messages: [{ ...message, inReplyTo: told?.firstMessageId ?? null }] };
+}
+
+const MAIL_KIND: Readonly<Record<AlertReason, EventMailKind | null>> = {
+  'first confirmation': 'first',
+  'confirmed again': 'update',
+  'withdrawn after it was told': 'withdrawal',
+  'explanation changed': 'update',
+  'recovery first established': 'update',
+  'size sharpened': 'update',
+  'suspected only': null,
+  'in the digest only': null,
+  historical: null,
+  'withdrawn before it was told': null,
+  verdict: null,
+  'nothing new': null,
+};
+
+function reasonFor(change: EventChanged, policy: AlertPolicy): AlertReason {
+  const { before, after, told } = change;
+  if (after.state === 'rejected' || (after.state === 'accepted' && before?.state !== 'accepted')) return 'verdict';
+  if (told === null) return firstReason(after, policy);
+  if (after.state === 'withdrawn') return told.as.state === 'withdrawn' ? 'nothing new' : 'withdrawn after it was told';
+  if (after.state === 'suspected') return 'suspected only';
+  if (told.as.state === 'withdrawn') return 'confirmed again';
+  if (told.as.explanation !== after.explanation) return 'explanation changed';
+  if (told.as.recovery.terms.length === 0 && after.recovery.terms.length > 0) return 'recovery first established';
+  return hasSharpened(told.as, after) ? 'size sharpened' : 'nothing new';
+}
+
+function firstReason(after: PulsarEvent, policy: AlertPolicy): AlertReason {
+  if (after.state === 'suspected') return 'suspected only';
+  if (after.state === 'withdrawn') return 'withdrawn before it was told';
+  if (DIGEST_ONLY.has(after.explanation)) return 'in the digest only';
+  const confirmedAt = after.confirmedAtMjd ?? after.suspectedAtMjd;
+  if (policy.nowMjd - confirmedAt > policy.historicalDays) return 'historical';
+  return after.state === 'accepted' ? 'verdict' : 'first confirmation';
+}
+
+/** The size as the event has it: Δν, or the time step of a clock or dispersion step. */
+function hasSharpened(told: PulsarEvent, now: PulsarEvent): boolean {
+  const sharpened = (was: readonly [number, number] | null, is: readonly [number, number] | null) =>
+    was !== null && is !== null && was[1] - was[0] >= SHARPENED_FACTOR * (is[1] - is[0]);
+  return (
+    sharpened(told.deltaNuHzInterval68, now.deltaNuHzInterval68) ||
+    sharpened(told.timeStepUsInterval68, now.timeStepUsInterval68)
+  );
+}
+
+export const DEFAULT_HOURLY_CAP = 10;
+
+/**
+ * Against a storm (a bad ephemeris, a fault at the site): the first `cap` event mails of an hour go out, then one summary says
+ * that the rest waits on the page and in the digest. A withdrawal always goes out: a copy of what it takes back has left.
+ *
+ * @param recent event mails queued in the hour before this one, one per event and revision, not per recipient
+ */
+export function mailOrSummary(
+  message: PlannedMessage,
+  recent: { readonly eventMails: number; readonly summarySent: boolean },
+  cap: number = DEFAULT_HOURLY_CAP,
+): 'mail' | 'summary' | 'page only' {
+  if (message.kind === 'withdrawal' || recent.eventMails < cap) return 'mail';
+  return recent.summarySent ? 'page only' : 'summary';
+}

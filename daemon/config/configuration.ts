@@ -1,0 +1,69 @@
+import type { PulsarModel } from '../../detectors/spin/pulsarModel.ts';
+import type { ClockTable } from '../../detectors/time/siteClock.ts';
+
+/** The whole of what the operator set: `spinvigil.toml`, the models folder and the clock tables, checked and frozen. Paths are absolute. */
+export interface Configuration {
+  readonly file: string;
+  readonly observatory: { readonly name: string; readonly contact: string };
+  readonly stateFolder: string;
+  readonly earth: { readonly orientationFile: string | null; readonly kernelFile: string | null };
+  readonly sites: readonly Site[];
+  readonly feeds: readonly Feed[];
+  readonly modelsFolder: string;
+  readonly models: ReadonlyMap<string, PulsarModel>;
+  readonly budget: { readonly falseAlertsPerYear: number };
+  readonly mail: MailSettings;
+  readonly review: { readonly host: string; readonly port: number; readonly reviewers: readonly string[] };
+}
+
+export interface Site {
+  readonly name: string;
+  readonly itrfM: readonly [number, number, number];
+  readonly clockTable: ClockTable | null;
+}
+
+export interface Feed {
+  readonly name: string;
+  readonly folder: string;
+  readonly layout: 'csv';
+  readonly recursive: boolean;
+  /** Seconds between scans; also polls for notices (network file systems) when set by the operator. */
+  readonly pollSeconds: number;
+  readonly polling: boolean;
+  /** A feed silent for longer is reported; null: never. */
+  readonly expectEveryHours: number | null;
+}
+
+export interface MailSettings {
+  readonly transport: SmtpTransport | FolderTransport;
+  readonly from: string;
+  readonly to: readonly string[];
+  /** IANA zone, for the digest and the dates in mails. */
+  readonly timezone: string;
+  readonly digestCron: string;
+}
+
+export interface SmtpTransport {
+  readonly kind: 'smtp';
+  readonly host: string;
+  readonly port: number;
+  /** `tls`: from the first byte; `starttls`: required after the greeting; `none`: loopback only. */
+  readonly secure: 'tls' | 'starttls' | 'none';
+  readonly user: string | null;
+  /** Read anew at each login, so that a rotated password is picked up. */
+  readonly passwordFile: string | null;
+}
+
+export interface FolderTransport {
+  readonly kind: 'folder';
+  readonly folder: string;
+}
+
+/** One complaint about the configuration, for the person at the keyboard. */
+export interface ConfigProblem {
+  readonly file: string;
+  readonly line: number | null;
+  readonly column: number | null;
+  readonly message: string;
+  readonly severity: 'error' | 'warning';
+}

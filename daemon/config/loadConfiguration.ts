@@ -1,0 +1,149 @@
+import { dirname, resolve } from 'node:path';
+import type { ConfigProblem, Configuration, Feed, MailSettings, Site } from './configuration.ts';
+import { readFeeds } from './feeds.ts';
+import { checkOverlaps, checkStateFolder, type NamedFolder } from './folders.ts';
+import { parseListen } from './listenAddress.ts';
+import { readMail, type Surroundings } from './mailSettings.ts';
+import { loadModels } from './models.ts';
+import { createSectionReader, type SectionReader } from './sectionReader.ts';
+import {
+  budgetTable,
+  earthTable,
+  modelsTable,
+  observatoryTable,
+  reviewTable,
+  rootTable,
+  stateTable,
+} from './sections.ts';
+import { readSites } from './sites.ts';
+import { readTextFile } from './textFile.ts';
+import { isFault, parseToml } from './tomlDocument.ts';
+
+export interface LoadedConfiguration {
+  /** Null exactly when one of the problems is an error. */
+  readonly configuration: Configuration | null;
+  readonly problems: readonly ConfigProblem[];
+}
+
+/**
+ * Reads the configuration with everything it names: models, clock tables, folders, the password file. All that is wrong is
+ * reported at once, each with its place. Relative paths start from the configuration file's folder. Nothing is written.
+ */
+export function loadConfiguration(
+  file: string,
+  { environment = process.env }: { readonly environment?: NodeJS.ProcessEnv } = {},
+): LoadedConfiguration {
+  const path = resolve(file);
+  const read = readTextFile(path);
+  if ('problem' in read) return unreadable(path, read.problem);
+  const document = parseToml(read.text);
+  if (isFault(document)) return unreadable(path, document.message, document);
+
+  const problems: ConfigProblem[] = [];
+  const reader = createSectionReader(path, document, problems);
+  const around: Surroundings = { absolute: (name) => resolve(dirname(path), name), environment };
+  const parts = readParts(reader, around, problems);
+  const faulty = problems.some(({ severity }) => severity === 'error');
+  return { configuration: faulty ? null : assemble(path, parts), problems };
+}
+
+function unreadable(file: string, message: string, place?: { line: number; column: number }): LoadedConfiguration {
+  const problem: ConfigProblem = {
+    file,
+    line: place?.line ?? null,
+    column: place?.column ?? null,
+    message,
+    severity: 'error',
+  };
+  return { configuration: null, problems: [problem] };
+}
+
+type Parts = ReturnType<typeof readParts>;
+
+function readParts(reader: SectionReader, around: Surroundings, problems: ConfigProblem[]) {
+  reader.read([], rootTable);
+  const observatory = reader.read(['observatory'], observatoryTable);
+  const state = reader.read(['state'], stateTable);
+  refuseEarthFiles(reader);
+  const sites = readSites(reader, around, problems);
+  const feeds = readFeeds(reader, around);
+  const modelsSection = reader.read(['models'], modelsTable);
+  const budget = reader.read(['budget'], budgetTable);
+  const mail = readMail(reader, around);
+  const review = readReview(reader);
+
+  const stateFolder = state && around.absolute(state.folder);
+  if (stateFolder !== null)
+    checkStateFolder(reader, { title: 'the state folder', path: ['state', 'folder'], folder: stateFolder });
+  const modelsFolder = modelsSection && around.absolute(modelsSection.folder);
+  checkOverlaps(reader, feedFolders(feeds), otherFolders({ stateFolder, modelsFolder, mail, file: reader.file }));
+  const models = modelsFolder === null ? null : loadModels(modelsFolder, problems);
+  return { observatory, stateFolder, sites, feeds, modelsFolder, models, budget, mail, review };
+}
+
+function assemble(file: string, parts: Parts): Configuration {
+  return {
+    file,
+    observatory: sound(parts.observatory),
+    stateFolder: sound(parts.stateFolder),
+    earth: { orientationFile: null, kernelFile: null },
+    sites: parts.sites.map(sound<Site>),
+    feeds: parts.feeds.map(sound<Feed>),
+    modelsFolder: sound(parts.modelsFolder),
+    models: sound(parts.models),
+    budget: { falseAlertsPerYear: sound(parts.budget).false_alerts_per_year },
+    mail: sound<MailSettings>(parts.mail),
+    review: sound(parts.review),
+  };
+}
+
+/** A part is missing only after a complaint, and after an error nothing is assembled. */
+function sound<Part>(part: Part | null): Part {
+  if (part === null) throw new Error('a part of the configuration is missing although no error was reported');
+  return part;
+}
+
+function refuseEarthFiles(reader: SectionReader): void {
+  if (!reader.has(['earth'])) return;
+  const table = reader.read(['earth'], earthTable);
+  for (const key of ['orientation_file', 'kernel_file'] as const) {
+    if (table?.[key] !== undefined)
+      reader.error(['earth', key], 'is not supported yet; leave it out to use the built-in tables');
+  }
+}
+
+function readReview(reader: SectionReader): Configuration['review'] | null {
+  const table = reader.has(['review']) ? reader.read(['review'], reviewTable) : reviewTable.parse({});
+  if (table === null) return null;
+  const twice = table.reviewers.findIndex((name, index) => table.reviewers.indexOf(name) < index);
+  if (twice >= 0) reader.error(['review', 'reviewers', twice], `"${table.reviewers[twice]}" stands there twice`);
+  const address = parseListen(table.listen);
+  if ('problem' in address) {
+    reader.error(['review', 'listen'], address.problem);
+    return null;
+  }
+  return { ...address, reviewers: table.reviewers };
+}
+
+function feedFolders(feeds: readonly (Feed | null)[]): NamedFolder[] {
+  return feeds.flatMap((feed, index) =>
+    feed === null ? [] : [{ title: `feed "${feed.name}"`, path: ['feed', index, 'folder'], folder: feed.folder }],
+  );
+}
+
+function otherFolders(parts: {
+  readonly stateFolder: string | null;
+  readonly modelsFolder: string | null;
+  readonly mail: MailSettings | null;
+  readonly file: string;
+}): NamedFolder[] {
+  const folders: NamedFolder[] = [{ title: 'the configuration file', path: [], folder: parts.file }];
+  const { stateFolder, modelsFolder, mail } = parts;
+  if (stateFolder !== null) folders.push({ title: 'the state folder', path: ['state', 'folder'], folder: stateFolder });
+  if (modelsFolder !== null)
+    folders.push({ title: 'the models folder', path: ['models', 'folder'], folder: modelsFolder });
+  if (mail?.transport.kind === 'folder') {
+    folders.push({ title: 'the mail folder', path: ['mail', 'folder'], folder: mail.transport.folder });
+  }
+  return folders;
+}

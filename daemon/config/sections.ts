@@ -1,0 +1,84 @@
+import { z } from 'zod';
+import { cronProblem } from './cronText.ts';
+import { mailAddress, name, numberBetween, oneOf, path, words } from './fields.ts';
+
+/** The sections of `spinvigil.toml`, one schema each. */
+
+const nested = z.unknown().optional();
+
+export const rootTable = z.strictObject({
+  observatory: nested,
+  state: nested,
+  earth: nested,
+  site: nested,
+  feed: nested,
+  models: nested,
+  budget: nested,
+  mail: nested,
+  review: nested,
+});
+
+export const observatoryTable = z.strictObject({ name: words, contact: words });
+
+export const stateTable = z.strictObject({ folder: path });
+
+export const earthTable = z.strictObject({ orientation_file: path.optional(), kernel_file: path.optional() });
+
+export const siteTable = z.strictObject({
+  name,
+  itrf_m: z.tuple([z.number(), z.number(), z.number()], { error: 'must be three numbers: [x, y, z] in metres' }),
+  clock_table: path.optional(),
+});
+
+export const feedTable = z.strictObject({
+  name,
+  folder: path,
+  layout: z.string(),
+  recursive: z.boolean().default(false),
+  poll_seconds: numberBetween(0.1, 86_400, 's').optional(),
+  expect_every_hours: numberBetween(0.01, 100_000, 'h').optional(),
+});
+
+export const modelsTable = z.strictObject({ folder: path });
+
+export const budgetTable = z.strictObject({ false_alerts_per_year: numberBetween(1e-6, 1000, 'per year') });
+
+export const mailTable = z.strictObject({
+  transport: oneOf(['smtp', 'folder']),
+  folder: path.optional(),
+  host: z
+    .string()
+    .regex(/^[A-Za-z0-9_.:-]+$/, 'must be a host name or an address')
+    .optional(),
+  port: z
+    .int()
+    .refine((port) => port >= 1 && port <= 65_535, 'must be a whole number between 1 and 65535')
+    .optional(),
+  secure: oneOf(['tls', 'starttls', 'none']).optional(),
+  user: words.optional(),
+  password_file: path.optional(),
+  from: mailAddress,
+  to: z.array(mailAddress).min(1, 'must name at least one recipient'),
+  timezone: z.string().refine(isTimeZone, {
+    error: ({ input }) => `"${String(input)}" is not a time zone; write an IANA name such as "Europe/Berlin" or "UTC"`,
+  }),
+  digest_cron: z.string().superRefine((text, context) => {
+    const problem = cronProblem(text);
+    if (problem !== null) context.addIssue({ code: 'custom', message: problem });
+  }),
+});
+
+export const reviewTable = z.strictObject({
+  listen: z.string().default('127.0.0.1:8417'),
+  reviewers: z.array(name).default([]),
+});
+
+function isTimeZone(text: string): boolean {
+  if (!/^[A-Za-z]/.test(text)) return false;
+  try {
+    new Intl.DateTimeFormat('en', { timeZone: text });
+    return true;
+  } catch {
+    return false;
+  }
+}

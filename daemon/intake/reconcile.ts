@@ -1,0 +1,182 @@
+import { compareMjd } from '../../detectors/time/mjd.ts';
+import type { ArrivalRecord } from '../records.ts';
+import { arrivalKey, isSameTime, measurementOf } from './key.ts';
+import type { ReceivedRow } from './rows.ts';
+
+/**
+ * What a file, delivered for the first time or again, changes on the arrival log. Nothing is erased: a value that lost is
+ * `revised`, a row that no file states any more is `withdrawn`.
+ *
+ * Of several values of one arrival (see key.ts) exactly one is live. What a file says for the first time wins over what was said
+ * before, within a file the later line; a file that only repeats an older value overrules nothing. When the winner goes, the
+ * value taken in last among those still standing counts again. So the live set is the same for any order of files as long as
+ * they do not contradict each other; where they do, the one delivered last is believed.
+ */
+export interface Delivery {
+  /** For reasons: the file as people know it. */
+  readonly source: string;
+  /** Every readable row of the file now. */
+  readonly rows: readonly ReceivedRow[];
+  /** What the version that the file replaces contained; empty for a new path. */
+  readonly before: readonly ArrivalRecord[];
+  /** Arrivals on record, of any status: at least all within 1 µs of a row of `rows` or `before`; more do no harm. */
+  readonly onRecord: readonly ArrivalRecord[];
+  /** Keys, of `before` and `onRecord`, that some other file states too as it stands now. */
+  readonly elsewhere: ReadonlySet<string>;
+}
+
+export interface Reconciliation {
+  /** Rows with new content, one each, live unless `statusChanges` says otherwise. */
+  readonly added: readonly AddedArrival[];
+  /** Every other row of the file: its content is on record, or stands in this file before. */
+  readonly same: readonly { readonly key: string; readonly line: number }[];
+  readonly statusChanges: readonly StatusChange[];
+  /** Pulsars whose live arrivals are not the same as before. */
+  readonly pulsarsToDecide: readonly string[];
+}
+
+export interface AddedArrival {
+  readonly key: string;
+  readonly row: ReceivedRow;
+  /** Key of the arrival that counted until now and whose value this one replaces. */
+  readonly revises: string | null;
+}
+
+export interface StatusChange {
+  readonly key: string;
+  readonly status: ArrivalRecord['status'];
+  readonly reason: string;
+}
+
+/** One content and where it stands. */
+interface Statement {
+  readonly key: string;
+  readonly arrival: ReceivedRow | ArrivalRecord;
+  /** Null: new content. */
+  readonly record: ArrivalRecord | null;
+  /** Last line of this file that states it; 0: none. */
+  readonly line: number;
+  /** This file did not say so before. */
+  readonly isNews: boolean;
+  readonly stands: boolean;
+}
+
+export function reconcile(delivery: Delivery): Reconciliation {
+  const { rows, before, elsewhere } = delivery;
+  const records = new Map([...delivery.onRecord, ...before].map((record) => [record.key, record]));
+  const saidBefore = new Set(before.map(({ key }) => key));
+  const firstRow = new Map<string, ReceivedRow>();
+  const lastLine = new Map<string, number>();
+  const same: { key: string; line: number }[] = [];
+  for (const row of rows) {
+    const key = arrivalKey(row);
+    if (records.has(key) || firstRow.has(key)) same.push({ key, line: row.line });
+    if (!firstRow.has(key)) firstRow.set(key, row);
+    lastLine.set(key, row.line);
+  }
+
+  const statements: Statement[] = [];
+  const state = (key: string, record: ArrivalRecord | null, arrival: ReceivedRow | ArrivalRecord) => {
+    const line = lastLine.get(key) ?? 0;
+    const stands = line > 0 || elsewhere.has(key);
+    statements.push({ key, record, arrival, line, isNews: line > 0 && !saidBefore.has(key), stands });
+  };
+  for (const [key, record] of records) state(key, record, record);
+  for (const [key, row] of firstRow) if (!records.has(key)) state(key, null, row);
+
+  const changes: Changes = { added: [], statusChanges: [], pulsars: new Set() };
+  for (const values of valuesOfOneArrival(statements)) {
+    if (values.some(({ key, line }) => line > 0 || saidBefore.has(key))) settle(values, delivery.source, changes);
+  }
+  changes.added.sort((a, b) => a.row.line - b.row.line);
+  return {
+    added: changes.added,
+    same,
+    statusChanges: changes.statusChanges,
+    pulsarsToDecide: [...changes.pulsars].sort(),
+  };
+}
+
+/** Groups by measurement and then by time, in chains whose neighbours are within 1 µs: a grouping that no order can change. */
+function valuesOfOneArrival(statements: readonly Statement[]): Statement[][] {
+  const byMeasurement = new Map<string, Statement[]>();
+  for (const statement of statements) {
+    const measurement = measurementOf(statement.arrival);
+    const group = byMeasurement.get(measurement);
+    if (group === undefined) byMeasurement.set(measurement, [statement]);
+    else group.push(statement);
+  }
+  const chains: Statement[][] = [];
+  for (const group of byMeasurement.values()) {
+    group.sort((a, b) => compareMjd(a.arrival.time, b.arrival.time) || (a.key < b.key ? -1 : 1));
+    let chain: Statement[] = [];
+    for (const statement of group) {
+      const last = chain.at(-1);
+      if (last !== undefined && isSameTime(last.arrival, statement.arrival)) chain.push(statement);
+      else {
+        chain = [statement];
+        chains.push(chain);
+      }
+    }
+  }
+  return chains;
+}
+
+interface Changes {
+  readonly added: AddedArrival[];
+  readonly statusChanges: StatusChange[];
+  readonly pulsars: Set<string>;
+}
+
+/** Decides which value of one arrival counts, and notes what that changes. */
+function settle(values: readonly Statement[], source: string, changes: Changes): void {
+  const live = values.find(({ record }) => record?.status === 'live') ?? null;
+  const winner = winnerOf(values, live);
+  for (const value of values) {
+    const status = statusOf(value, winner);
+    if ((status === 'live') !== (value.record?.status === 'live')) changes.pulsars.add(value.arrival.pulsar);
+    if (value.record === null) {
+      changes.added.push({
+        key: value.key,
+        row: value.arrival as ReceivedRow,
+        revises: value === winner && live !== null ? live.key : null,
+      });
+    }
+    if (status !== (value.record?.status ?? 'live')) {
+      changes.statusChanges.push({ key: value.key, status, reason: reasonFor(value, { status, winner, source }) });
+    }
+  }
+}
+
+function winnerOf(values: readonly Statement[], live: Statement | null): Statement | null {
+  const standing = values.filter(({ stands }) => stands);
+  const news = standing.filter(({ isNews }) => isNews).sort((a, b) => b.line - a.line);
+  if (news[0] !== undefined) return news[0];
+  if (live?.stands) return live;
+  const latestFirst = (a: Statement, b: Statement) =>
+    (b.record?.fileId ?? 0) - (a.record?.fileId ?? 0) || (b.record?.line ?? 0) - (a.record?.line ?? 0);
+  return standing.sort(latestFirst)[0] ?? null;
+}
+
+/** What stands nowhere and counted for nothing keeps its status: it was settled when it went. */
+function statusOf(value: Statement, winner: Statement | null): ArrivalRecord['status'] {
+  if (value === winner) return 'live';
+  if (winner === null)
+    return value.record?.status === 'live' || value.record === null ? 'withdrawn' : value.record.status;
+  return value.record?.status === 'withdrawn' && !value.stands ? 'withdrawn' : 'revised';
+}
+
+function reasonFor(
+  value: Statement,
+  outcome: { readonly status: ArrivalRecord['status']; readonly winner: Statement | null; readonly source: string },
+): string {
+  const { status, winner, source } = outcome;
+  if (status === 'withdrawn') return `no longer in ${source}`;
+  if (status === 'live')
+    return value.line > 0
+      ? `stated again by ${source}, line ${value.line}`
+      : `counts again: its revision is no longer in ${source}`;
+  return winner !== null && winner.line > 0
+    ? `revised by ${source}, line ${winner.line}`
+    : `another value of this arrival counts`;
+}

@@ -1,0 +1,79 @@
+import type { MorningReview, QuarantinedRow } from '../../alerts/morningReview.ts';
+import type { EventRecord, FileRecord, ListedEvent, OutboxRecord, VerdictRecord } from '../records.ts';
+
+/**
+ * Everything the review page may ask of the daemon, and the one thing it may change: a verdict.
+ * Calls are synchronous and short; whoever implements them reads stored results and computes nothing heavy.
+ * Times are ISO 8601 UTC.
+ */
+export interface ReviewDesk {
+  /** Differs whenever anything shown on a page has changed; the page polls it. */
+  version(): string;
+  /** Every event on record, oldest first. */
+  events(): readonly ListedEvent[];
+  /** Accepted, rejected or withdrawn, the latest first. */
+  decisions(most: number): readonly Decision[];
+  /** By its id or one it had before; null: no event has this id. */
+  event(id: string): EventRecord | null;
+  /** The event as a notice for others, VOEvent 2.0 XML; null: no event has this id. */
+  notice(id: string, issuedAt: Date): string | null;
+  morning(): MorningReview;
+  pulsars(): readonly PulsarOverview[];
+  feeds(): readonly FeedOverview[];
+  /** Newest first. */
+  files(most: number): readonly FileRecord[];
+  /** Newest first. */
+  quarantine(most: number): readonly QuarantinedRow[];
+  /** Newest first. */
+  outbox(most: number): readonly OutboxRecord[];
+  health(): WatchHealth;
+  /** One transaction; nothing is recorded unless the event still stands at `expectedRevision`. */
+  recordVerdict(order: VerdictOrder): VerdictOutcome;
+}
+
+export interface Decision {
+  readonly event: ListedEvent['event'];
+  readonly at: string;
+  /** Null: the detector withdrew it by itself. */
+  readonly verdict: VerdictRecord | null;
+}
+
+/** What the watch can say of one pulsar, and above all how small a glitch its silence rules out. */
+export interface PulsarOverview {
+  readonly pulsar: string;
+  readonly lastArrivalMjd: number | null;
+  /** False until one pulse count has won; alerts are held until then. */
+  readonly locked: boolean;
+  /** Smallest Δν/ν confirmed with 90 % probability, and the days it would take; null until known. */
+  readonly deltaNuOverNu90: number | null;
+  readonly delayDays90: number | null;
+}
+
+export interface FeedOverview {
+  readonly feed: string;
+  readonly lastFileAt: string | null;
+  /** Null: silence of this feed is never reported. */
+  readonly expectEveryHours: number | null;
+  readonly silent: boolean;
+}
+
+export interface WatchHealth {
+  readonly ok: boolean;
+  /** For a person, without paths or secrets. Empty when ok. */
+  readonly problems: readonly string[];
+}
+
+export interface VerdictOrder {
+  readonly eventId: string;
+  readonly expectedRevision: number;
+  readonly verdict: VerdictRecord['verdict'];
+  readonly by: string;
+  readonly note: string;
+  readonly at: string;
+}
+
+/** The same order twice is `ok` twice and recorded once. `conflict`: nothing was recorded; the message says why. */
+export type VerdictOutcome =
+  | { readonly kind: 'ok' }
+  | { readonly kind: 'unknown' }
+  | { readonly kind: 'conflict'; readonly message: string };

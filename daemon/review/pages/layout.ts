@@ -1,0 +1,123 @@
+import { html } from 'hono/html';
+import type { WatchHealth } from '../desk.ts';
+import { utc, visible } from './wording.ts';
+
+export type Html = ReturnType<typeof html>;
+
+export type Section = 'Tonight' | 'Pulsars' | 'Feeds' | 'Mail';
+
+const SECTIONS: readonly { readonly name: Section; readonly path: string }[] = [
+  { name: 'Tonight', path: '/' },
+  { name: 'Pulsars', path: '/pulsars' },
+  { name: 'Feeds', path: '/feeds' },
+  { name: 'Mail', path: '/mail' },
+];
+
+/** What every page of one moment shares. */
+export interface Frame {
+  readonly observatory: string;
+  readonly now: Date;
+  readonly version: string;
+  readonly health: WatchHealth;
+}
+
+export interface PageContent {
+  readonly title: string;
+  readonly section: Section | null;
+  readonly main: Html;
+}
+
+export function page(frame: Frame, content: PageContent): Html {
+  return document({
+    title: `${content.title} · ${visible(frame.observatory)}`,
+    version: frame.version,
+    live: true,
+    body: html`
+      <a class="skip" href="#main">Skip to the content</a>
+      <header class="top">
+        <p class="name"><span class="observatory">${visible(frame.observatory)}</span> <span class="quiet">spinvigil</span></p>
+        <nav aria-label="Pages">
+          ${SECTIONS.map(
+            (section) =>
+              html`<a href="${section.path}"${section.name === content.section ? html` aria-current="page"` : ''}>${section.name}</a>`,
+          )}
+        </nav>
+        <p class="asof">as of <time datetime="${frame.now.toISOString()}">${utc(frame.now.toISOString())} UTC</time></p>
+      </header>
+      <p id="live" class="live" role="status"></p>
+      ${healthBar(frame.health)}
+      <main id="main">${content.main}</main>
+      <footer class="foot">
+        <p>Intervals are 68 %. Times are UTC; epochs are MJD (TDB) at the barycentre. Positive Δν is a spin-up.</p>
+        <p class="keys">Keys: <kbd>j</kbd> next event, <kbd>k</kbd> previous, <kbd>Enter</kbd> opens it.</p>
+      </footer>`,
+  });
+}
+
+/** A page without anything from the desk, for refusals and faults. */
+export function plainPage(title: string, lines: readonly string[]): Html {
+  return document({
+    title,
+    version: '',
+    live: false,
+    body: html`
+      <main id="main" class="plain">
+        <h1>${title}</h1>
+        ${lines.map((line) => html`<p>${line}</p>`)}
+        <p><a href="/">Start page</a></p>
+      </main>`,
+  });
+}
+
+function document(parts: { title: string; version: string; live: boolean; body: Html }): Html {
+  return html`<!doctype html>
+<html lang="en">
+  <head>
+    <meta charset="utf-8">
+    <meta name="viewport" content="width=device-width, initial-scale=1">
+    <meta name="color-scheme" content="light dark">
+    <title>${parts.title}</title>
+    <link rel="icon" href="/assets/mark.svg" type="image/svg+xml">
+    <link rel="stylesheet" href="/assets/review.css">
+    <script src="/assets/review.js" defer></script>
+  </head>
+  <body data-version="${parts.version}" data-live="${parts.live ? 'yes' : 'no'}">${parts.body}</body>
+</html>`;
+}
+
+function healthBar(health: WatchHealth): Html {
+  if (health.ok) return html``;
+  return html`<section class="alarm" aria-label="Trouble with the watch">
+    <h2>The watch needs attention</h2>
+    <ul>${health.problems.map((problem) => html`<li>${visible(problem)}</li>`)}</ul>
+  </section>`;
+}
+
+export interface Column<Row> {
+  readonly head: string;
+  readonly cell: (row: Row) => Html | string;
+  readonly numeric?: boolean;
+}
+
+/** One table for the whole page; on a phone each row becomes a card, its cells labelled by their column. */
+export function table<Row>(options: {
+  readonly caption: string;
+  readonly columns: readonly Column<Row>[];
+  readonly rows: readonly Row[];
+  readonly empty: string;
+}): Html {
+  if (options.rows.length === 0) return html`<p class="empty">${options.empty}</p>`;
+  return html`<table>
+    <caption class="unseen">${options.caption}</caption>
+    <thead><tr>${options.columns.map((column) => html`<th scope="col"${classOf(column)}>${column.head}</th>`)}</tr></thead>
+    <tbody>${options.rows.map(
+      (row) =>
+        html`<tr>${options.columns.map((column) => html`<td data-head="${column.head}"${classOf(column)}><div>${column.cell(row)}</div></td>`)}</tr>
+        `,
+    )}</tbody>
+  </table>`;
+}
+
+function classOf<Row>(column: Column<Row>): Html {
+  return column.numeric === true ? html` class="number"` : html``;
+}

@@ -1,0 +1,146 @@
+import { html } from 'hono/html';
+import type { QuarantinedRow } from '../../../alerts/morningReview.ts';
+import type { FileRecord, OutboxRecord } from '../../records.ts';
+import type { FeedOverview, PulsarOverview } from '../desk.ts';
+import { type Column, type Html, table } from './layout.ts';
+import { ABSENT, eventPath, mjdAndDay, quantity, span, utc, visible } from './wording.ts';
+
+/** The pages that only report: pulsars, feeds, mail. */
+
+export function pulsarsPage(pulsars: readonly PulsarOverview[]): Html {
+  return html`
+    <h1>Pulsars</h1>
+    <p class="lead">What silence is worth: the smallest glitch that would have been confirmed with 90 % probability, and how long that would have taken.</p>
+    ${table({ caption: 'Pulsars', columns: PULSARS, rows: pulsars, empty: 'No pulsar is configured.' })}`;
+}
+
+export interface FeedsContent {
+  readonly feeds: readonly FeedOverview[];
+  readonly quarantine: readonly QuarantinedRow[];
+  readonly files: readonly FileRecord[];
+  /** The lists are cut at this many. */
+  readonly most: number;
+}
+
+export function feedsPage(content: FeedsContent): Html {
+  return html`
+    <h1>Feeds</h1>
+    ${table({ caption: 'Feeds', columns: FEEDS, rows: content.feeds, empty: 'No feed is configured.' })}
+    <section aria-labelledby="quarantine">
+      <h2 id="quarantine">Quarantine</h2>
+      <p class="lead">Rows and files that could not be used, newest first${cutAt(content.quarantine, content.most)}. Deliver the file again at the same path to replace what it said.</p>
+      ${table({ caption: 'Quarantine', columns: QUARANTINE, rows: content.quarantine, empty: 'Nothing is quarantined.' })}
+    </section>
+    <section aria-labelledby="files">
+      <h2 id="files">Files taken in</h2>
+      <p class="lead">Newest first${cutAt(content.files, content.most)}.</p>
+      ${table({ caption: 'Files taken in', columns: FILES, rows: content.files, empty: 'No file has been taken in yet.' })}
+    </section>`;
+}
+
+export function mailPage(outbox: readonly OutboxRecord[], most: number): Html {
+  return html`
+    <h1>Mail</h1>
+    <p class="lead">Every message and what became of it, newest first${cutAt(outbox, most)}.</p>
+    ${table({ caption: 'Mail', columns: MAIL, rows: outbox, empty: 'No mail has been written yet.' })}`;
+}
+
+function cutAt(rows: readonly unknown[], most: number): string {
+  return rows.length < most ? '' : `, the last ${most}`;
+}
+
+const PULSARS: readonly Column<PulsarOverview>[] = [
+  { head: 'Pulsar', cell: (row) => html`<bdi>${visible(row.pulsar)}</bdi>` },
+  { head: 'Last arrival', cell: lastArrival },
+  { head: 'Smallest Δν/ν', cell: (row) => smallest(row.deltaNuOverNu90), numeric: true },
+  {
+    head: 'Confirmed after',
+    cell: (row) => (row.delayDays90 === null ? ABSENT : span(row.delayDays90 * 24)),
+    numeric: true,
+  },
+  {
+    head: 'Pulse count',
+    cell: (row) => (row.locked ? 'settled' : html`<strong class="attention">open: alerts are held</strong>`),
+  },
+];
+
+function lastArrival({ lastArrivalMjd }: PulsarOverview): Html | string {
+  if (lastArrivalMjd === null) return ABSENT;
+  const [mjd, day] = mjdAndDay(lastArrivalMjd);
+  return html`${mjd} <small>${day}</small>`;
+}
+
+function smallest(size: number | null): string {
+  return size === null
+    ? 'not yet known'
+    : quantity({ value: size, interval68: [size, size], unit: '', scale: 'power' });
+}
+
+const FEEDS: readonly Column<FeedOverview>[] = [
+  { head: 'Feed', cell: (row) => html`<bdi>${visible(row.feed)}</bdi>` },
+  { head: 'Last file, UTC', cell: (row) => (row.lastFileAt === null ? ABSENT : utc(row.lastFileAt)) },
+  {
+    head: 'Expected every',
+    cell: (row) => (row.expectEveryHours === null ? ABSENT : span(row.expectEveryHours)),
+    numeric: true,
+  },
+  { head: 'State', cell: (row) => (row.silent ? html`<strong class="attention">silent</strong>` : 'on time') },
+];
+
+const QUARANTINE: readonly Column<QuarantinedRow>[] = [
+  { head: 'When, UTC', cell: (row) => utc(row.at) },
+  { head: 'Feed', cell: (row) => html`<bdi>${visible(row.feed)}</bdi>` },
+  { head: 'File', cell: (row) => html`<bdi class="path">${visible(row.file)}</bdi>` },
+  { head: 'Line', cell: (row) => (row.line === null ? 'whole file' : String(row.line)), numeric: true },
+  { head: 'Reason', cell: (row) => html`<bdi>${visible(row.reason)}</bdi>` },
+];
+
+const FILES: readonly Column<FileRecord>[] = [
+  { head: 'When, UTC', cell: (row) => utc(row.takenInAt) },
+  { head: 'Feed', cell: (row) => html`<bdi>${visible(row.feed)}</bdi>` },
+  { head: 'File', cell: (row) => html`<bdi class="path">${visible(row.path)}</bdi>` },
+  { head: 'Rows', cell: (row) => String(row.rows), numeric: true },
+  { head: 'Stored', cell: (row) => String(row.stored), numeric: true },
+  { head: 'Known before', cell: (row) => String(row.same), numeric: true },
+  { head: 'Revised', cell: (row) => String(row.revised), numeric: true },
+  {
+    head: 'Quarantined',
+    cell: (row) => (row.quarantined === 0 ? '0' : html`<strong class="attention">${row.quarantined}</strong>`),
+    numeric: true,
+  },
+  {
+    head: 'Fault',
+    cell: (row) =>
+      row.fault === null ? ABSENT : html`<strong class="attention"><bdi>${visible(row.fault)}</bdi></strong>`,
+  },
+];
+
+const MAIL: readonly Column<OutboxRecord>[] = [
+  { head: 'Written, UTC', cell: (row) => utc(row.createdAt) },
+  { head: 'To', cell: (row) => html`<bdi>${visible(row.recipient)}</bdi>` },
+  {
+    head: 'Subject',
+    cell: (row) =>
+      row.eventId === null
+        ? html`<bdi>${visible(row.subject)}</bdi>`
+        : html`<a href="${eventPath(row.eventId)}"><bdi>${visible(row.subject)}</bdi></a>`,
+  },
+  { head: 'Kind', cell: (row) => row.kind },
+  { head: 'State', cell: mailState },
+  { head: 'Attempts', cell: (row) => String(row.attempts), numeric: true },
+  { head: 'Last error', cell: (row) => (row.lastError === null ? ABSENT : html`<bdi>${visible(row.lastError)}</bdi>`) },
+];
+
+function mailState(row: OutboxRecord): Html | string {
+  switch (row.state) {
+    case 'delivered':
+      return row.deliveredAt === null ? 'delivered' : html`delivered <small>${utc(row.deliveredAt)}</small>`;
+    case 'queued':
+      return html`queued <small>next try ${utc(row.dueAt)}</small>`;
+    case 'attempting':
+      return 'being sent';
+    case 'refused':
+    case 'expired':
+      return html`<strong class="attention">${row.state}</strong>`;
+  }
+}

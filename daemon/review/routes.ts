@@ -1,0 +1,181 @@
+import { randomUUID } from 'node:crypto';
+import { type Context, Hono } from 'hono';
+import { bodyLimit } from 'hono/body-limit';
+import { eventJson, eventsCsv } from '../../alerts/index.ts';
+import type { ReviewDesk } from './desk.ts';
+import { MARK } from './looks/mark.ts';
+import { SCRIPT } from './looks/script.ts';
+import { STYLE } from './looks/style.ts';
+import { eventPage } from './pages/event.ts';
+import { type Frame, type PageContent, page, plainPage } from './pages/layout.ts';
+import { feedsPage, mailPage, pulsarsPage } from './pages/overviews.ts';
+import { tonightPage } from './pages/tonight.ts';
+import type { RefusedVerdict } from './pages/verdict.ts';
+import { eventPath, subjectOf } from './pages/wording.ts';
+import { complaintAbout, LARGEST_FORM_BYTES, readSubmittedVerdict, type SubmittedVerdict } from './verdictForm.ts';
+import type { VerdictTokens } from './verdictToken.ts';
+
+export interface ReviewApp {
+  readonly desk: ReviewDesk;
+  readonly observatory: string;
+  /** Empty: any name may sign. */
+  readonly reviewers: readonly string[];
+  readonly now: () => Date;
+  readonly tokens: VerdictTokens;
+  /** Told of every fault; the visitor sees only its id. */
+  readonly onFault: (fault: ReviewFault) => void;
+}
+
+export interface ReviewFault {
+  readonly id: string;
+  readonly error: unknown;
+}
+
+const LONGEST_LIST = 200;
+const RECENT_DECISIONS = 20;
+
+/** The closed list of what the page answers. Nothing is read from disk; what is not listed is 404. */
+export function createReviewApp(app: ReviewApp): Hono {
+  const { desk } = app;
+  const frame = (): Frame => ({
+    observatory: app.observatory,
+    now: app.now(),
+    version: desk.version(),
+    health: desk.health(),
+  });
+  const show = (c: Context, content: PageContent, status: 200 | 403 | 409 | 422 = 200) =>
+    c.html(page(frame(), content), status);
+
+  const routes = new Hono();
+  routes.get('/', (c) => {
+    const content = { morning: desk.morning(), decisions: desk.decisions(RECENT_DECISIONS), pulsars: desk.pulsars() };
+    return show(c, { title: 'Tonight', section: 'Tonight', main: tonightPage(content) });
+  });
+  routes.get('/pulsars', (c) => show(c, { title: 'Pulsars', section: 'Pulsars', main: pulsarsPage(desk.pulsars()) }));
+  routes.get('/feeds', (c) => {
+    const lists = { feeds: desk.feeds(), quarantine: desk.quarantine(LONGEST_LIST), files: desk.files(LONGEST_LIST) };
+    return show(c, { title: 'Feeds', section: 'Feeds', main: feedsPage({ ...lists, most: LONGEST_LIST }) });
+  });
+  routes.get('/mail', (c) =>
+    show(c, { title: 'Mail', section: 'Mail', main: mailPage(desk.outbox(LONGEST_LIST), LONGEST_LIST) }),
+  );
+  addEventRoutes(routes, app, show);
+  addMachineRoutes(routes, desk);
+
+  routes.get('/assets/review.css', (c) => c.body(STYLE, 200, { 'Content-Type': 'text/css; charset=utf-8' }));
+  routes.get('/assets/review.js', (c) => c.body(SCRIPT, 200, { 'Content-Type': 'text/javascript; charset=utf-8' }));
+  routes.get('/assets/mark.svg', (c) => c.body(MARK, 200, { 'Content-Type': 'image/svg+xml' }));
+
+  routes.notFound((c) => c.html(plainPage('Nothing here', ['This page has no such address.']), 404));
+  routes.onError((error, c) => {
+    const id = randomUUID().slice(0, 8);
+    app.onFault({ id, error });
+    const lines = ['The page failed; the watch itself goes on.', `The log has the details under ${id}.`];
+    return c.html(plainPage('Something went wrong', lines), 500);
+  });
+  return routes;
+}
+
+type Show = (c: Context, content: PageContent, status?: 200 | 403 | 409 | 422) => Response | Promise<Response>;
+
+function addEventRoutes(routes: Hono, app: ReviewApp, show: Show): void {
+  const { desk } = app;
+  const unknown = (c: Context) => c.html(plainPage('No such event', ['No event on record has this id.']), 404);
+  const showEvent = (c: Context, id: string, refused: RefusedVerdict | null, status: 200 | 403 | 409 | 422) => {
+    const record = desk.event(id);
+    if (record === null) return unknown(c);
+    const token = app.tokens.issue(record.event.id, record.revision);
+    const main = eventPage(record, { token, reviewers: app.reviewers, refused });
+    return show(c, { title: subjectOf(record.event), section: null, main }, status);
+  };
+
+  routes.get('/events/:id', (c) => showEvent(c, c.req.param('id'), null, 200));
+  routes.get('/events/:id/event.json', (c) => {
+    const record = desk.event(c.req.param('id'));
+    return record === null ? unknown(c) : download(c, eventJson(record.event), 'application/json', 'event.json');
+  });
+  routes.get('/events/:id/event.csv', (c) => {
+    const record = desk.event(c.req.param('id'));
+    return record === null
+      ? unknown(c)
+      : download(c, eventsCsv([record.event]), 'text/csv; charset=utf-8', 'event.csv');
+  });
+  routes.get('/events/:id/notice.xml', (c) => {
+    const notice = desk.notice(c.req.param('id'), app.now());
+    return notice === null ? unknown(c) : download(c, notice, 'application/xml', 'notice.xml');
+  });
+
+  const limit = bodyLimit({
+    maxSize: LARGEST_FORM_BYTES,
+    onError: (c) => {
+      c.header('Connection', 'close');
+      return c.html(plainPage('Too long', ['A verdict fits into 64 kB. Nothing was changed.']), 413);
+    },
+  });
+  routes.post('/events/:id/verdict', limit, async (c) => {
+    const id = c.req.param('id');
+    if (!isPlainForm(c.req.header('content-type'), c.req.header('content-encoding'))) {
+      return c.html(plainPage('Not a form', ['A verdict is an ordinary form. Nothing was changed.']), 415);
+    }
+    const submitted = readSubmittedVerdict(new Uint8Array(await c.req.arrayBuffer()));
+    if (submitted === null) {
+      return c.html(plainPage('Malformed form', ['The form could not be read. Nothing was changed.']), 400);
+    }
+    const refusal = signVerdict(app, id, submitted);
+    if (refusal === 'signed') return c.redirect(eventPath(id), 303);
+    return showEvent(c, id, refusal.refused, refusal.status);
+  });
+}
+
+interface VerdictRefusal {
+  readonly status: 403 | 409 | 422;
+  readonly refused: RefusedVerdict;
+}
+
+function signVerdict(app: ReviewApp, eventId: string, submitted: SubmittedVerdict): 'signed' | VerdictRefusal {
+  const { draft, revision } = submitted;
+  const refuse = (status: VerdictRefusal['status'], reason: string, judgedRevision: number | null = null) => ({
+    status,
+    refused: { reason, draft, judgedRevision },
+  });
+  if (!app.tokens.accepts(submitted.token, eventId, revision)) {
+    return refuse(
+      403,
+      'This form is from before the daemon was restarted, or not from this page. Check it and sign again.',
+    );
+  }
+  const complaint = complaintAbout(draft, app.reviewers);
+  if (complaint !== null || draft.verdict === null) return refuse(422, complaint ?? '');
+  const outcome = app.desk.recordVerdict({
+    eventId,
+    expectedRevision: revision,
+    verdict: draft.verdict,
+    by: draft.by,
+    note: draft.note,
+    at: app.now().toISOString(),
+  });
+  // Of an event that is gone, the redirect tells the truth: there is none.
+  return outcome.kind === 'conflict' ? refuse(409, outcome.message, revision) : 'signed';
+}
+
+function addMachineRoutes(routes: Hono, desk: ReviewDesk): void {
+  routes.get('/api/version', (c) => c.json({ version: desk.version() }));
+  routes.get('/api/events', (c) => c.json(desk.events().map((entry) => entry.event)));
+  routes.get('/api/events/:id', (c) => {
+    const record = desk.event(c.req.param('id'));
+    return record === null ? c.json({ error: 'no such event' }, 404) : c.json(record);
+  });
+  routes.get('/healthz', (c) => {
+    const health = desk.health();
+    return c.json({ status: health.ok ? 'ok' : 'degraded', problems: health.problems }, health.ok ? 200 : 503);
+  });
+}
+
+function isPlainForm(contentType: string | undefined, encoding: string | undefined): boolean {
+  const [kind = ''] = (contentType ?? '').split(';', 1);
+  return kind.trim().toLowerCase() === 'application/x-www-form-urlencoded' && encoding === undefined;
+}
+
+function download(c: Context, text: string, type: string, name: string): Response {
+  return c.body(text, 200, { 'Content-Type': type, 'Content-Disposition': `attachment; filename="${name}"` });
+}

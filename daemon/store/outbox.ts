@@ -1,0 +1,218 @@
+import type { OutboxRecord } from '../records.ts';
+import { type Db, inTransaction, row, rows, run } from './connection.ts';
+import { step } from './crashStep.ts';
+import { currentId } from './events.ts';
+import * as meta from './meta.ts';
+import type { ClaimedMail, MailOutcome, NewMessage, OutboxCounts, OutboxFilter } from './shapes.ts';
+
+/**
+ * Mail that must leave: one row a message and recipient, written in the transaction that caused it. States go one way,
+ * queued → attempting → delivered | refused | expired; back to queued only after an attempt that may be repeated.
+ */
+
+interface OutboxRow extends Omit<OutboxRecord, 'possibleDuplicate'> {
+  readonly possibleDuplicate: number;
+}
+
+const SELECT = `SELECT o.id, o.message_id AS messageId, o.recipient, m.subject, m.kind, m.event_id AS eventId, o.state,
+  o.attempts, o.due_at AS dueAt, o.last_error AS lastError, o.possible_duplicate AS possibleDuplicate,
+  m.created_at AS createdAt, o.delivered_at AS deliveredAt
+  FROM outbox o JOIN messages m ON m.message_id = o.message_id`;
+
+/** Queues for each recipient that does not have this message yet; a Message-ID known before is the same message. */
+export function enqueue(db: Db, message: NewMessage, at: string): void {
+  run(
+    db,
+    `INSERT INTO messages (message_id, kind, event_id, subject, in_reply_to, content, created_at)
+     VALUES (?, ?, ?, ?, ?, ?, ?) ON CONFLICT (message_id) DO NOTHING`,
+    message.messageId,
+    message.kind,
+    message.eventId,
+    message.subject,
+    message.inReplyTo,
+    message.content,
+    at,
+  );
+  for (const recipient of message.recipients) {
+    const before = row<{ delivered_at: string }>(
+      db,
+      'SELECT delivered_at FROM delivered_before WHERE message_id = ? AND recipient = ?',
+      message.messageId,
+      recipient,
+    );
+    run(
+      db,
+      `INSERT INTO outbox (message_id, recipient, state, attempts, due_at, last_error, possible_duplicate, unknown_ends,
+         delivered_at) VALUES (?, ?, ?, 0, ?, NULL, 0, 0, ?) ON CONFLICT (message_id, recipient) DO NOTHING`,
+      message.messageId,
+      recipient,
+      before === undefined ? 'queued' : 'delivered',
+      message.dueAt,
+      before?.delivered_at ?? null,
+    );
+    step('outbox row written');
+  }
+}
+
+export function supersede(db: Db, messageId: string): void {
+  run(
+    db,
+    `UPDATE outbox SET state = 'expired', last_error = 'a newer message replaced it before it left'
+     WHERE message_id = ? AND state = 'queued'`,
+    messageId,
+  );
+}
+
+export function commitDigest(db: Db, civilDate: string, message: NewMessage, at: string): boolean {
+  return inTransaction(db, () => {
+    if (row(db, 'SELECT 1 FROM digests WHERE civil_date = ?', civilDate) !== undefined) return false;
+    enqueue(db, message, at);
+    run(db, 'INSERT INTO digests (civil_date, message_id, at) VALUES (?, ?, ?)', civilDate, message.messageId, at);
+    step('digest written');
+    return true;
+  });
+}
+
+export function lastDigest(db: Db): { readonly civilDate: string; readonly at: string } | null {
+  return (
+    row<{ civilDate: string; at: string }>(
+      db,
+      'SELECT civil_date AS civilDate, at FROM digests ORDER BY civil_date DESC LIMIT 1',
+    ) ?? null
+  );
+}
+
+export function commitNotice(
+  db: Db,
+  message: NewMessage,
+  at: string,
+  remember: Readonly<Record<string, string>>,
+): void {
+  inTransaction(db, () => {
+    enqueue(db, message, at);
+    for (const [key, value] of Object.entries(remember)) meta.write(db, key, value);
+  });
+}
+
+/** First tries go before repeated ones; about one event, a recipient gets the messages in the order they were queued. */
+export function claimDue(db: Db, now: string): ClaimedMail | null {
+  return inTransaction(db, () => {
+    const due = row<OutboxRow & { inReplyTo: string | null; content: string }>(
+      db,
+      `${SELECT.replace('SELECT', 'SELECT m.in_reply_to AS inReplyTo, m.content,')}
+       WHERE o.state = 'queued' AND o.due_at <= ? AND NOT EXISTS (
+         SELECT 1 FROM outbox e JOIN messages em ON em.message_id = e.message_id
+         WHERE e.recipient = o.recipient AND e.state IN ('queued', 'attempting') AND e.id < o.id AND em.event_id = m.event_id)
+       ORDER BY o.attempts > 0, o.due_at, o.id LIMIT 1`,
+      now,
+    );
+    if (due === undefined) return null;
+    run(
+      db,
+      "UPDATE outbox SET state = 'attempting', attempts = attempts + 1 WHERE id = ? AND state = 'queued'",
+      due.id,
+    );
+    step('mail claimed');
+    if (due.eventId !== null) run(db, 'UPDATE events SET told = 1 WHERE id = ?', due.eventId);
+    step('event told');
+    return {
+      ...due,
+      state: 'attempting',
+      attempts: due.attempts + 1,
+      possibleDuplicate: due.possibleDuplicate === 1,
+    };
+  });
+}
+
+export function settle(db: Db, id: number, outcome: MailOutcome): void {
+  inTransaction(db, () => {
+    const found = row<{ state: string; unknown_ends: number }>(
+      db,
+      'SELECT state, unknown_ends FROM outbox WHERE id = ?',
+      id,
+    );
+    if (found?.state !== 'attempting') {
+      throw new Error(`Outbox row ${id} is ${found?.state ?? 'not on record'}: only an attempt can be settled.`);
+    }
+    if (outcome.kind === 'delivered') {
+      run(
+        db,
+        "UPDATE outbox SET state = 'delivered', delivered_at = ?, last_error = NULL WHERE id = ?",
+        outcome.at,
+        id,
+      );
+    } else if (outcome.kind === 'later') {
+      requeue(db, id, outcome.dueAt, outcome.error);
+    } else if (outcome.kind === 'unknown') {
+      run(db, 'UPDATE outbox SET possible_duplicate = 1, unknown_ends = unknown_ends + 1 WHERE id = ?', id);
+      if (found.unknown_ends === 0) requeue(db, id, outcome.dueAt, outcome.error);
+      else end(db, id, 'expired', `may have arrived, twice without an answer: ${outcome.error}`);
+    } else {
+      end(db, id, outcome.kind, outcome.error);
+    }
+    step('mail settled');
+  });
+}
+
+function requeue(db: Db, id: number, dueAt: string, error: string): void {
+  run(db, "UPDATE outbox SET state = 'queued', due_at = ?, last_error = ? WHERE id = ?", dueAt, error, id);
+}
+
+function end(db: Db, id: number, state: 'refused' | 'expired', error: string): void {
+  run(db, 'UPDATE outbox SET state = ?, last_error = ? WHERE id = ?', state, error, id);
+}
+
+/** At start nobody is attempting: such a row was cut off, and its message may have arrived. It goes again, marked. */
+export function requeueCutOff(db: Db): void {
+  run(
+    db,
+    `UPDATE outbox SET state = 'queued', possible_duplicate = 1, last_error = 'the program stopped during the attempt'
+     WHERE state = 'attempting'`,
+  );
+}
+
+export function expireOlderThan(db: Db, createdBefore: string, reason: string): OutboxRecord[] {
+  return inTransaction(db, () => {
+    const old = rows<OutboxRow>(
+      db,
+      `${SELECT} WHERE o.state = 'queued' AND m.created_at < ? ORDER BY o.id`,
+      createdBefore,
+    );
+    for (const { id } of old) end(db, id, 'expired', reason);
+    return old.map((r) => ({ ...toRecord(r), state: 'expired', lastError: reason }));
+  });
+}
+
+export function listOutbox(db: Db, filter: OutboxFilter): OutboxRecord[] {
+  return rows<OutboxRow>(
+    db,
+    `${SELECT} WHERE (@state IS NULL OR o.state = @state) AND (@kind IS NULL OR m.kind = @kind)
+       AND (@eventId IS NULL OR m.event_id = @eventId) AND (@since IS NULL OR m.created_at >= @since) ORDER BY o.id`,
+    {
+      state: filter.state ?? null,
+      kind: filter.kind ?? null,
+      eventId: filter.eventId === undefined ? null : (currentId(db, filter.eventId) ?? filter.eventId),
+      since: filter.since ?? null,
+    },
+  ).map(toRecord);
+}
+
+export function outboxCounts(db: Db): OutboxCounts {
+  const counts = { queued: 0, attempting: 0, delivered: 0, refused: 0, expired: 0 };
+  for (const { state, n } of rows<{ state: OutboxRecord['state']; n: number }>(
+    db,
+    'SELECT state, count(*) AS n FROM outbox GROUP BY state',
+  )) {
+    counts[state] = n;
+  }
+  const oldest = row<{ at: string | null }>(
+    db,
+    `SELECT min(m.created_at) AS at FROM outbox o JOIN messages m ON m.message_id = o.message_id
+     WHERE o.state IN ('queued', 'attempting')`,
+  );
+  return { ...counts, oldestWaitingSince: oldest?.at ?? null };
+}
+
+function toRecord(r: OutboxRow): OutboxRecord {
+  return { ...r, possibleDuplicate: r.possibleDuplicate === 1 };
+}

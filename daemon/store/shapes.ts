@@ -1,0 +1,226 @@
+import type { BarycentredArrival, Quality, ReceivedArrival } from '../../detectors/arrival.ts';
+import type { NoiseModel } from '../../detectors/report.ts';
+import type { EventPicture, PulsarEvent } from '../../detectors/steps/pulsarEvent.ts';
+import type { EventRecord, FileRecord, OutboxRecord } from '../records.ts';
+
+/** What callers hand to the store and get from it. Every time is ISO 8601 UTC and passed in: the store has no clock. */
+
+/**
+ * One change of the record, committed whole or not at all: what a file said, what it changed, and the mail that causes.
+ * Without a file (`file: null`): a new decision on old arrivals, after a changed model or clock table.
+ */
+export interface IntakeBatch {
+  readonly at: string;
+  readonly file: NewFile | null;
+  /** Rows not on record before. */
+  readonly arrivals: readonly NewArrival[];
+  /** Rows of this file that are on record already, by content. */
+  readonly sightings: readonly Sighting[];
+  /** Older arrivals that were revised, withdrawn, or stand again. */
+  readonly statusChanges: readonly StatusChange[];
+  /** Arrivals brought to the barycentre anew, with better tables. */
+  readonly retimed: readonly RetimedArrival[];
+  readonly quarantined: readonly QuarantinedLine[];
+  readonly reports: readonly PulsarReportRow[];
+  readonly events: readonly EventUpsert[];
+  /** Events that nobody was told of and that the detector no longer holds. */
+  readonly droppedEvents: readonly string[];
+  readonly messages: readonly NewMessage[];
+  /** Message-IDs still queued that newer ones replace: they will not be sent. */
+  readonly supersededMessages: readonly string[];
+}
+
+/** A batch that changes nothing: spread it and fill in what there is. */
+export function emptyBatch(at: string): IntakeBatch {
+  return {
+    at,
+    file: null,
+    arrivals: [],
+    sightings: [],
+    statusChanges: [],
+    retimed: [],
+    quarantined: [],
+    reports: [],
+    events: [],
+    droppedEvents: [],
+    messages: [],
+    supersededMessages: [],
+  };
+}
+
+export interface NewFile {
+  readonly feed: string;
+  readonly path: string;
+  /** The name's bytes in hexadecimal, where the name is not UTF-8; the identity of the path. Absent: those of `path`. */
+  readonly pathBytesHex?: string;
+  readonly sha256: string;
+  readonly bytes: number;
+  /** What `stat` said, in the watcher's own words; equal means unchanged. */
+  readonly signature: string;
+  /** Rows the reader saw. The store refuses the batch unless every one is stored, same, revising or quarantined. */
+  readonly rows: number;
+  /** Why the whole file could not be read; its earlier revision then goes on standing. */
+  readonly fault: string | null;
+}
+
+/** A path's last revision, with what tells whether it must be read again. */
+export interface KnownFile extends FileRecord {
+  readonly revision: number;
+  readonly signature: string;
+}
+
+export interface NewArrival {
+  readonly key: string;
+  readonly line: number;
+  readonly received: ReceivedArrival;
+  /** Null with quality `unusable`. */
+  readonly barycentred: BarycentredArrival | null;
+  readonly quality: Quality;
+  readonly qualityReasons: readonly string[];
+  /** Key of the earlier arrival whose value this one replaces. */
+  readonly revises: string | null;
+}
+
+export interface Sighting {
+  readonly key: string;
+  readonly line: number;
+}
+
+export interface StatusChange {
+  readonly key: string;
+  readonly status: 'live' | 'revised' | 'withdrawn';
+  readonly reason: string;
+}
+
+export interface RetimedArrival {
+  readonly key: string;
+  readonly barycentred: BarycentredArrival | null;
+  readonly quality: Quality;
+  readonly qualityReasons: readonly string[];
+}
+
+export interface QuarantinedLine {
+  /** Null: the whole file. */
+  readonly line: number | null;
+  readonly reason: string;
+}
+
+/** What the detector said last about one pulsar alone, before events of several pulsars were joined. */
+export interface PulsarReportRow {
+  readonly pulsar: string;
+  /** What it rests on (model, settings), in the caller's words: another value means that it must be decided again. */
+  readonly basis: string;
+  readonly events: readonly PulsarEvent[];
+  readonly locked: boolean;
+  readonly noise: NoiseModel;
+  readonly lastArrivalMjd: number | null;
+}
+
+export interface EventUpsert {
+  /** With the detector's own state; a standing verdict goes on being shown. */
+  readonly event: PulsarEvent;
+  readonly picture: EventPicture | null;
+  /** The event on record that this one continues under a new id. */
+  readonly formerId: string | null;
+  /** The revision it becomes: that on record when `change` is null, else one more (1 for a new event). */
+  readonly revision: number;
+  /** The line for its history; null refreshes the numbers without a new revision. */
+  readonly change: string | null;
+}
+
+export interface NewMessage {
+  readonly messageId: string;
+  readonly kind: OutboxRecord['kind'];
+  readonly eventId: string | null;
+  readonly subject: string;
+  readonly recipients: readonly string[];
+  readonly inReplyTo: string | null;
+  /** The composed message, in the mailer's own form; kept as it is. */
+  readonly content: string;
+  readonly dueAt: string;
+}
+
+/** `stale`: the event changed meanwhile (a verdict, a mail that left). Nothing was written: read again and decide again. */
+export type CommitOutcome =
+  | { readonly kind: 'committed'; readonly fileId: number | null }
+  | { readonly kind: 'stale'; readonly eventId: string };
+
+export interface EventFilter {
+  /** Changed at or after this time. */
+  readonly since?: string;
+  readonly pulsar?: string;
+  /** The shown state. */
+  readonly state?: PulsarEvent['state'];
+  readonly epochFromMjd?: number;
+}
+
+export interface VerdictInput {
+  readonly verdict: 'accept' | 'reject' | 'reopen';
+  readonly by: string;
+  readonly note: string;
+  readonly at: string;
+  /** The revision the reviewer had on the screen; another on record is a conflict. */
+  readonly expectedRevision?: number;
+}
+
+export type VerdictOutcome =
+  /** `repeated`: the very same verdict was on record already; nothing was added. */
+  | { readonly kind: 'recorded' | 'repeated'; readonly record: EventRecord }
+  | { readonly kind: 'conflict'; readonly message: string; readonly record: EventRecord }
+  | { readonly kind: 'unknown event' };
+
+/** One message to one recipient, marked as being attempted before the caller opens a socket. */
+export interface ClaimedMail extends OutboxRecord {
+  readonly inReplyTo: string | null;
+  readonly content: string;
+}
+
+/** What became of an attempt. */
+export type MailOutcome =
+  | { readonly kind: 'delivered'; readonly at: string }
+  /** It certainly did not arrive; try again then. */
+  | { readonly kind: 'later'; readonly dueAt: string; readonly error: string }
+  /** It may have arrived. Sent once more, marked; a second such end expires it. */
+  | { readonly kind: 'unknown'; readonly dueAt: string; readonly error: string }
+  | { readonly kind: 'refused'; readonly error: string }
+  | { readonly kind: 'expired'; readonly error: string };
+
+export interface OutboxFilter {
+  readonly state?: OutboxRecord['state'];
+  readonly kind?: OutboxRecord['kind'];
+  readonly eventId?: string;
+  /** Queued first at or after this time. */
+  readonly since?: string;
+}
+
+export interface OutboxCounts {
+  readonly queued: number;
+  readonly attempting: number;
+  readonly delivered: number;
+  readonly refused: number;
+  readonly expired: number;
+  /** When the oldest message not yet settled was queued first. */
+  readonly oldestWaitingSince: string | null;
+}
+
+export interface EventChangeLine {
+  readonly event: PulsarEvent;
+  readonly what: string;
+  readonly at: string;
+}
+
+export type OpenFailureKind =
+  | 'held by another instance'
+  | 'newer schema'
+  | 'older schema'
+  | 'damaged'
+  | 'nothing on record'
+  | 'unsafe folder'
+  | 'unsuitable library'
+  | 'storage fault';
+
+/** Why the state folder was not opened, in words for the operator; nothing was changed. */
+export interface OpenFailure {
+  readonly kind: OpenFailureKind;
+  readonly message: string;
+}

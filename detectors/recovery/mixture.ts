@@ -1,0 +1,110 @@
+import { normalTail } from '../math/normal.ts';
+import type { Interval } from '../steps/pulsarEvent.ts';
+
+/** A quantity's marginal posterior: moments, median, and central intervals that hold 68.27 % and 95.45 %. */
+export interface Estimate {
+  readonly mean: number;
+  readonly median: number;
+  readonly sd: number;
+  readonly interval68: Interval;
+  readonly interval95: Interval;
+}
+
+/** P(|Z| < 1) and P(|Z| < 2) of a normal variable. */
+const WITHIN_ONE = 1 - 2 * normalTail(1);
+const WITHIN_TWO = 1 - 2 * normalTail(2);
+
+/** A mixture of Gaussians; weights need not be normalised. An sd of 0 is a point. */
+export interface GaussianMixture {
+  readonly weights: Float64Array;
+  readonly means: Float64Array;
+  readonly sds: Float64Array;
+}
+
+export function mixtureEstimate(mixture: GaussianMixture): Estimate {
+  return estimate(moments(mixture), (probability) => mixtureQuantile(mixture, probability));
+}
+
+/** x below which the mixture holds `probability`: regula falsi (Illinois) on the distribution function. */
+export function mixtureQuantile({ weights, means, sds }: GaussianMixture, probability: number): number {
+  let total = 0;
+  let low = Number.POSITIVE_INFINITY;
+  let high = Number.NEGATIVE_INFINITY;
+  for (let i = 0; i < weights.length; i++) {
+    total += weights[i]!;
+    low = Math.min(low, means[i]! - 8 * sds[i]!);
+    high = Math.max(high, means[i]! + 8 * sds[i]!);
+  }
+  const excess = (x: number): number => {
+    let sum = 0;
+    for (let i = 0; i < weights.length; i++) sum += weights[i]! * cumulative((x - means[i]!) / sds[i]!);
+    return sum / total - probability;
+  };
+  const smallest = 1e-10 * (high - low);
+  let atLow = -probability;
+  let atHigh = 1 - probability;
+  for (let k = 0; k < 100 && high - low > smallest; k++) {
+    // Every third step halves the bracket, so that a flat stretch between two components cannot stall the search.
+    const x = k % 3 === 2 ? 0.5 * (low + high) : (low * atHigh - high * atLow) / (atHigh - atLow);
+    const value = excess(x);
+    if (Math.abs(value) < 1e-7) return x;
+    if (value < 0) {
+      low = x;
+      atLow = value;
+      atHigh *= 0.5;
+    } else {
+      high = x;
+      atHigh = value;
+      atLow *= 0.5;
+    }
+  }
+  return 0.5 * (low + high);
+}
+
+/** The estimate of a quantity known on weighted grid points, each standing for its neighbourhood. */
+export function gridEstimate(values: Float64Array, weights: Float64Array): Estimate {
+  const order = Array.from(values.keys()).sort((a, b) => values[a]! - values[b]!);
+  const total = weights.reduce((sum, weight) => sum + weight, 0);
+  const middles = new Float64Array(order.length);
+  let before = 0;
+  order.forEach((index, i) => {
+    middles[i] = (before + 0.5 * weights[index]!) / total;
+    before += weights[index]!;
+  });
+  const quantile = (probability: number): number => {
+    let i = middles.findIndex((middle) => middle >= probability);
+    if (i < 0) i = order.length;
+    if (i === 0 || i === order.length) return values[order[Math.min(i, order.length - 1)]!]!;
+    const left = values[order[i - 1]!]!;
+    const right = values[order[i]!]!;
+    const part = (probability - middles[i - 1]!) / (middles[i]! - middles[i - 1]!);
+    return left + part * (right - left);
+  };
+  return estimate(moments({ weights, means: values, sds: new Float64Array(values.length) }), quantile);
+}
+
+function estimate(
+  { mean, sd }: { readonly mean: number; readonly sd: number },
+  quantile: (probability: number) => number,
+): Estimate {
+  const central = (within: number): Interval => [quantile(0.5 - within / 2), quantile(0.5 + within / 2)];
+  return { mean, sd, median: quantile(0.5), interval68: central(WITHIN_ONE), interval95: central(WITHIN_TWO) };
+}
+
+function moments({ weights, means, sds }: GaussianMixture): { mean: number; sd: number } {
+  let total = 0;
+  let first = 0;
+  for (let i = 0; i < weights.length; i++) {
+    total += weights[i]!;
+    first += weights[i]! * means[i]!;
+  }
+  const mean = first / total;
+  let second = 0;
+  for (let i = 0; i < weights.length; i++) second += weights[i]! * ((means[i]! - mean) ** 2 + sds[i]! ** 2);
+  return { mean, sd: Math.sqrt(second / total) };
+}
+
+function cumulative(z: number): number {
+  if (!(z < 8)) return z > 0 ? 1 : 0.5;
+  return z < -8 ? 0 : normalTail(-z);
+}

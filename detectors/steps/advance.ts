@@ -1,0 +1,36 @@
+/**
+ * The fold at the heart: one arrival after the other, in time order, into the bank of hypotheses and a decision.
+ */
+
+import type { TimedArrival } from '../arrival.ts';
+import { newBank } from './bank.ts';
+import { decide } from './decide.ts';
+import { searchLargeStep } from './largeStep.ts';
+import type { PulsarWatch } from './pulsarWatch.ts';
+import { learningDue, relearn } from './relearn.ts';
+import { addNuisance, canLock, startBeam } from './start.ts';
+import { stepAt } from './stepAt.ts';
+import { append } from './timeline.ts';
+
+/** Takes one arrival in. Arrivals must come in time order: an earlier one means a rebuild from the log. */
+export function advance(watch: PulsarWatch, arrival: TimedArrival): void {
+  const { line } = watch;
+  const news = append(line, arrival, watch.phaseAt(arrival.tdb));
+  const index = line.seen.length - 1;
+  if (watch.bank === null) {
+    watch.bank = newBank(watch.noise, startBeam(watch));
+    return;
+  }
+  if (news.newGroup) addNuisance(watch, 'offset');
+  if (news.newBand) addNuisance(watch, 'dispersion');
+  stepAt(watch, index, watch.locked);
+  if (!watch.locked && canLock(watch, index)) {
+    watch.locked = true;
+    watch.oldestGap = index + 1;
+  }
+  if (watch.locked) {
+    searchLargeStep(watch, index);
+    decide(watch, index);
+  }
+  if (learningDue(watch, index)) relearn(watch, index);
+}

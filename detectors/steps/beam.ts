@@ -1,0 +1,159 @@
+/**
+ * A beam: a few hypotheses of one kind that keep their own count. An arrival may lie a whole number of turns off, or be
+ * an outlier; each hypothesis branches into what is still credible, and the beam is pruned by weight.
+ */
+
+import { logAddExp } from '../math/logSumExp.ts';
+import { absorb, copyOf, type Hypothesis, type Prediction, predict, type Sight } from './hypothesis.ts';
+
+/** One arrival as every hypothesis sees it. */
+export interface Observation {
+  readonly index: number;
+  /** Wrapped deviation in turns, late positive. */
+  readonly deviation: number;
+  /** Measurement variance after scale and floor, turns². */
+  readonly variance: number;
+  readonly sight: Sight;
+  /** In the same session (same site, minutes apart) as the arrival before. */
+  readonly sameSession: boolean;
+}
+
+/** Share of arrivals that are bad in ways no error bar covers (common practice, no source). */
+const OUTLIER_SHARE = 0.02;
+/** A bad session is paid for once: the next arrival of a session that began badly is likely bad too. */
+const OUTLIER_SHARE_AFTER_OUTLIER = 0.8;
+/** A turn, or the outlier branch, is followed while it is within e^-9 of the best branch. */
+const BRANCH_NATS = 9;
+/** Above this spread (turns) of the prediction more than the nearest turn is looked at. */
+const AMBIGUOUS_SPREAD = 0.1;
+const LOG_TWO_PI = Math.log(2 * Math.PI);
+
+/** A branch not yet followed: weights are compared before any state is copied. */
+interface Branch {
+  readonly parent: Hypothesis;
+  readonly logWeight: number;
+  readonly used: boolean;
+  readonly turns: number;
+  readonly slipped: boolean;
+}
+
+/**
+ * Takes one arrival into every hypothesis of the beam, already carried to its time; returns the beam anew, at most
+ * `keep` long, heaviest first.
+ */
+export function observe(
+  beam: readonly Hypothesis[],
+  seen: Observation,
+  keep: number,
+  scratch: Prediction,
+): Hypothesis[] {
+  const branches: Branch[] = [];
+  for (const h of beam) branch(h, seen, scratch, branches);
+  branches.sort((a, b) => b.logWeight - a.logWeight);
+  const floor = branches[0]!.logWeight - 2 * BRANCH_NATS;
+  const taken: Branch[] = [];
+  const branchesOf = new Map<Hypothesis, number>();
+  for (const b of branches) {
+    if (b.logWeight < floor || taken.length >= 2 * keep) break;
+    taken.push(b);
+    branchesOf.set(b.parent, (branchesOf.get(b.parent) ?? 0) + 1);
+  }
+  const next = taken.map((b) => follow(b, branchesOf.get(b.parent) === 1 ? b.parent : copyOf(b.parent), seen, scratch));
+  return next.length <= 1 ? next : pruned(next, keep);
+}
+
+function branch(h: Hypothesis, seen: Observation, scratch: Prediction, into: Branch[]): void {
+  predict(h, seen.sight, scratch);
+  const spread2 = scratch.variance + seen.variance;
+  const offset = seen.deviation - scratch.deviation;
+  const nearest = -Math.round(offset);
+  const outlierShare = seen.sameSession && h.lastSetAside ? OUTLIER_SHARE_AFTER_OUTLIER : OUTLIER_SHARE;
+  const level = Math.log(1 - outlierShare) - 0.5 * (LOG_TWO_PI + Math.log(spread2));
+  const logOutlier = Math.log(outlierShare);
+  const reach = spread2 < AMBIGUOUS_SPREAD * AMBIGUOUS_SPREAD ? 0 : Math.min(8, Math.ceil(4 * Math.sqrt(spread2)));
+  const best = Math.max(level - (0.5 * (offset + nearest) ** 2) / spread2, logOutlier);
+  const { logWeight } = h;
+  if (logOutlier > best - BRANCH_NATS)
+    into.push({ parent: h, logWeight: logWeight + logOutlier, used: false, turns: nearest, slipped: false });
+  for (let turns = nearest - reach; turns <= nearest + reach; turns++) {
+    const innovation = offset + turns;
+    const logDensity = level - (0.5 * innovation * innovation) / spread2;
+    if (logDensity > best - BRANCH_NATS)
+      into.push({ parent: h, logWeight: logWeight + logDensity, used: true, turns, slipped: turns !== nearest });
+  }
+}
+
+/** Turns `child`, a copy of the branch's parent or the parent itself where it has no other branch, into the branch. */
+function follow(b: Branch, child: Hypothesis, seen: Observation, scratch: Prediction): Hypothesis {
+  const { used, turns, slipped } = b;
+  if (used) {
+    predict(child, seen.sight, scratch);
+    absorb(child, scratch, seen.deviation + turns - scratch.deviation, scratch.variance + seen.variance);
+  }
+  child.logWeight = b.logWeight;
+  child.story = { index: seen.index, turns, used, slipped, before: b.parent.story };
+  child.lastSetAside = !used;
+  return child;
+}
+
+/**
+ * The same without branching, in place: each hypothesis takes its likeliest branch and the weight of all of them. For
+ * beams whose counts are settled; the cost is one filter step each.
+ */
+export function observeFirmly(beam: readonly Hypothesis[], seen: Observation, scratch: Prediction): void {
+  for (const h of beam) {
+    predict(h, seen.sight, scratch);
+    const spread2 = scratch.variance + seen.variance;
+    const offset = seen.deviation - scratch.deviation;
+    const turns = -Math.round(offset);
+    const innovation = offset + turns;
+    const outlierShare = seen.sameSession && h.lastSetAside ? OUTLIER_SHARE_AFTER_OUTLIER : OUTLIER_SHARE;
+    const good =
+      ((1 - outlierShare) * Math.exp((-0.5 * innovation * innovation) / spread2)) / Math.sqrt(2 * Math.PI * spread2);
+    h.logWeight += Math.log(good + outlierShare);
+    h.lastSetAside = good < outlierShare;
+    if (!h.lastSetAside) absorb(h, scratch, innovation, spread2);
+    h.story = { index: seen.index, turns, used: !h.lastSetAside, slipped: false, before: h.story };
+  }
+}
+
+/** Heaviest first; near-equal states merged; what cannot matter dropped. */
+export function pruned(beam: Hypothesis[], keep: number): Hypothesis[] {
+  beam.sort(byWeight);
+  const floor = beam[0]!.logWeight - 2 * BRANCH_NATS;
+  const kept: Hypothesis[] = [];
+  for (const h of beam) {
+    if (h.logWeight < floor) break;
+    const twin = kept.find((k) => alike(k, h));
+    if (twin) twin.logWeight = logAddExp(twin.logWeight, h.logWeight);
+    else if (kept.length < keep) kept.push(h);
+  }
+  return kept;
+}
+
+function byWeight(a: Hypothesis, b: Hypothesis): number {
+  return b.logWeight - a.logWeight;
+}
+
+/** The same events, and states that no further arrival will tell apart. */
+function alike(a: Hypothesis, b: Hypothesis): boolean {
+  if (a.lastSetAside !== b.lastSetAside || a.tracks.length !== b.tracks.length) return false;
+  for (let i = 0; i < a.tracks.length; i++) if (a.tracks[i] !== b.tracks[i]) return false;
+  const size = a.mean.length;
+  for (let i = 0; i < size; i++) {
+    const va = a.cov[i * size + i]!;
+    const vb = b.cov[i * size + i]!;
+    if (va > 1.2 * vb || vb > 1.2 * va) return false;
+    if ((a.mean[i]! - b.mean[i]!) ** 2 > 0.01 * Math.min(va, vb)) return false;
+  }
+  return true;
+}
+
+export function logWeightOf(beam: readonly Hypothesis[]): number {
+  let highest = -Infinity;
+  for (const h of beam) if (h.logWeight > highest) highest = h.logWeight;
+  if (highest === -Infinity) return highest;
+  let sum = 0;
+  for (const h of beam) sum += Math.exp(h.logWeight - highest);
+  return highest + Math.log(sum);
+}

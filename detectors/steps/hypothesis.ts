@@ -1,0 +1,152 @@
+/**
+ * One hypothesis: a Kalman filter with its own count of turns, its own story and its own weight.
+ *
+ * State, in turns and days: (deviation, its rate, its second derivative, then static nuisances). The deviation is
+ * late-positive, so a spin-up of Δν appears as a rate step of −86400 Δν. Discretisation: method of Willsky & Jones 1976
+ * for the jump, exact random-walk covariances for the gap between arrivals.
+ */
+
+import { SPIN_STATES, writeProcessNoise } from '../filter/stateSpace.ts';
+import type { NoiseModel } from '../report.ts';
+
+/** What was done with each arrival, newest first; hypotheses share the part of their past that is common. */
+export interface Story {
+  readonly index: number;
+  /** Whole turns added to the wrapped deviation. */
+  readonly turns: number;
+  readonly used: boolean;
+  /** Not the turn that the prediction called nearest. */
+  readonly slipped: boolean;
+  readonly before: Story | null;
+}
+
+export interface Hypothesis {
+  readonly mean: Float64Array;
+  /** Row-major, symmetric, size² entries. */
+  readonly cov: Float64Array;
+  logWeight: number;
+  story: Story | null;
+  /** Numbers of the event tracks that this hypothesis holds for true. */
+  readonly tracks: readonly number[];
+  /** The last arrival was taken for an outlier. */
+  lastSetAside: boolean;
+}
+
+/** The gap between two arrivals, worked out once and applied to every hypothesis. */
+export interface Gap {
+  readonly days: number;
+  /** Covariance that the random walks add, 3×3. */
+  readonly walk: Float64Array;
+}
+
+export function gapOf(days: number, noise: NoiseModel): Gap {
+  const walk = new Float64Array(SPIN_STATES * SPIN_STATES);
+  writeProcessNoise(days, noise, walk);
+  return { days, walk };
+}
+
+export function copyOf(h: Hypothesis, tracks: readonly number[] = h.tracks): Hypothesis {
+  return {
+    mean: h.mean.slice(),
+    cov: h.cov.slice(),
+    logWeight: h.logWeight,
+    story: h.story,
+    tracks,
+    lastSetAside: h.lastSetAside,
+  };
+}
+
+/** Carries mean and covariance over the gap: x ← F x, P ← F P Fᵀ + Q. */
+export function propagate(h: Hypothesis, gap: Gap): void {
+  const { mean, cov } = h;
+  const size = mean.length;
+  const t = gap.days;
+  const half = (t * t) / 2;
+  mean[0]! += t * mean[1]! + half * mean[2]!;
+  mean[1]! += t * mean[2]!;
+  for (let j = 0; j < size; j++) {
+    const c2 = cov[2 * size + j]!;
+    cov[j]! += t * cov[size + j]! + half * c2;
+    cov[size + j]! += t * c2;
+  }
+  for (let row = 0; row < size * size; row += size) {
+    const c2 = cov[row + 2]!;
+    cov[row]! += t * cov[row + 1]! + half * c2;
+    cov[row + 1]! += t * c2;
+  }
+  for (let i = 0; i < SPIN_STATES; i++)
+    for (let j = 0; j < SPIN_STATES; j++) cov[i * size + j]! += gap.walk[i * SPIN_STATES + j]!;
+}
+
+/** How an arrival sees the state: the deviation plus the given multiples of the nuisances. */
+export interface Sight {
+  /** Coefficients of all states; the first is 1. */
+  readonly row: Float64Array;
+  /** True when only the deviation is seen: the common and faster case. */
+  readonly plain: boolean;
+}
+
+/** Scratch of one prediction: expected deviation, its variance without measurement noise, and P·row. */
+export interface Prediction {
+  deviation: number;
+  variance: number;
+  readonly gain: Float64Array;
+}
+
+export function predict(h: Hypothesis, sight: Sight, into: Prediction): void {
+  const { mean, cov } = h;
+  const size = mean.length;
+  const { gain } = into;
+  if (sight.plain) {
+    for (let i = 0; i < size; i++) gain[i] = cov[i]!;
+    into.deviation = mean[0]!;
+    into.variance = cov[0]!;
+    return;
+  }
+  let deviation = 0;
+  let variance = 0;
+  for (let i = 0; i < size; i++) {
+    let sum = 0;
+    for (let j = 0; j < size; j++) sum += cov[i * size + j]! * sight.row[j]!;
+    gain[i] = sum;
+    deviation += mean[i]! * sight.row[i]!;
+    variance += sum * sight.row[i]!;
+  }
+  into.deviation = deviation;
+  into.variance = variance;
+}
+
+/** Takes the innovation in: x ← x + P h e/S, P ← P − P h hᵀ P / S, symmetric by construction. */
+export function absorb(h: Hypothesis, prediction: Prediction, innovation: number, innovationVariance: number): void {
+  const { mean, cov } = h;
+  const size = mean.length;
+  const { gain } = prediction;
+  const inverse = 1 / innovationVariance;
+  for (let i = 0; i < size; i++) {
+    const k = gain[i]! * inverse;
+    mean[i]! += k * innovation;
+    for (let j = 0; j <= i; j++) {
+      const value = cov[i * size + j]! - k * gain[j]!;
+      cov[i * size + j] = value;
+      cov[j * size + i] = value;
+    }
+  }
+}
+
+/** A copy with more states: the new one has mean 0 and the given variance. */
+export function withState(h: Hypothesis, variance: number): Hypothesis {
+  const size = h.mean.length;
+  const mean = new Float64Array(size + 1);
+  mean.set(h.mean);
+  const cov = new Float64Array((size + 1) * (size + 1));
+  for (let i = 0; i < size; i++) for (let j = 0; j < size; j++) cov[i * (size + 1) + j] = h.cov[i * size + j]!;
+  cov[(size + 1) * (size + 1) - 1] = variance;
+  return { ...h, mean, cov };
+}
+
+/** Lets the state jump along `direction` by a Gaussian of the given variance. */
+export function loosen(h: Hypothesis, direction: ArrayLike<number>, variance: number): void {
+  const size = h.mean.length;
+  for (let i = 0; i < size; i++)
+    for (let j = 0; j < size; j++) h.cov[i * size + j]! += variance * direction[i]! * direction[j]!;
+}

@@ -1,0 +1,62 @@
+/** Where an event may enter: the gap before an arrival, and the directions in state space that a step may take. */
+
+import type { BirthPlace } from './births.ts';
+import type { PulsarWatch } from './pulsarWatch.ts';
+import { dispersionWeight } from './timeline.ts';
+
+/** K of the cold-plasma law, s MHz² pc⁻¹ cm³: 1/2.41e-4. */
+const DISPERSION_CONSTANT = 1 / 2.41e-4;
+
+/** Turns at 1 GHz per pc cm⁻³. */
+export function turnsPerDispersion(watch: PulsarWatch): number {
+  return (DISPERSION_CONSTANT / 1e6) * watch.model.spin.frequencyHz.hi;
+}
+
+export function birthPlace(watch: PulsarWatch, index: number, gapDays: number): BirthPlace {
+  const { spin } = watch.model;
+  return {
+    frequencyHz: spin.frequencyHz.hi,
+    frequencyDerivativeHzPerS: spin.frequencyDerivativeHzPerS,
+    gapDays,
+    offsetDirections: offsetDirections(watch, index),
+    dispersionDirection: dispersionDirection(watch),
+    turnsPerDispersion: turnsPerDispersion(watch),
+  };
+}
+
+/** A time offset of the arrival's whole site and, where that is not the same, of its receiver alone. */
+function offsetDirections(watch: PulsarWatch, index: number): Float64Array[] {
+  const { groups, seen } = watch.line;
+  const own = seen[index]!.group;
+  const site = `${seen[index]!.arrival.site}|`;
+  const members = groups.map((name) => name.startsWith(site));
+  const directions = [offsetDirection(watch, members)];
+  if (members.filter(Boolean).length > 1)
+    directions.push(
+      offsetDirection(
+        watch,
+        groups.map((_, g) => g === own),
+      ),
+    );
+  return directions;
+}
+
+/** Offsets are kept against the reference group: its own step is one of the deviation, undone in all others. */
+function offsetDirection(watch: PulsarWatch, members: readonly boolean[]): Float64Array {
+  const direction = new Float64Array(watch.states.size);
+  const base = members[0] === true ? 1 : 0;
+  direction[0] = base;
+  watch.states.offsets.forEach((at, group) => {
+    if (at !== null) direction[at] = (members[group] === true ? 1 : 0) - base;
+  });
+  return direction;
+}
+
+function dispersionDirection(watch: PulsarWatch): Float64Array | null {
+  const { dispersion, size } = watch.states;
+  if (dispersion === null) return null;
+  const direction = new Float64Array(size);
+  direction[0] = dispersionWeight(watch.line.firstBandMhz!);
+  direction[dispersion] = 1;
+  return direction;
+}

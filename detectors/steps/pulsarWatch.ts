@@ -1,0 +1,61 @@
+/** What is remembered of one pulsar between arrivals. A function of (model, arrivals in time order, settings). */
+
+import { type NoisePrior, noisePrior } from '../filter/noisePrior.ts';
+import type { DetectorSettings, NoiseModel } from '../report.ts';
+import type { PulsarModel } from '../spin/pulsarModel.ts';
+import { type PhaseAtArrival, phaseEvaluator } from '../spin/spinDownModel.ts';
+import type { Mjd } from '../time/mjd.ts';
+import type { Bank } from './bank.ts';
+import { newStateMap, newTimeline, type StateMap, type Timeline } from './timeline.ts';
+import type { Track } from './track.ts';
+
+export interface PulsarWatch {
+  readonly model: PulsarModel;
+  readonly settings: DetectorSettings;
+  readonly phaseAt: (tdb: Mjd) => PhaseAtArrival;
+  readonly prior: NoisePrior;
+  readonly line: Timeline;
+  states: StateMap;
+  bank: Bank | null;
+  noise: NoiseModel;
+  readonly tracks: Track[];
+  /** One pulse count has won; nothing is born, and nothing decided, before. */
+  locked: boolean;
+  /** Index of the oldest gap that may still hold a new event. */
+  oldestGap: number;
+  /** Arrivals at which the noise is learned next. */
+  nextLearning: number;
+  /** Run of unexplained arrivals at which the search for a large step is tried next. */
+  nextSearch: number;
+}
+
+const FIRST_LEARNING = 10;
+
+export function startWatch(model: PulsarModel, settings: DetectorSettings): PulsarWatch {
+  const prior = noisePrior(model.spin.frequencyHz.hi, model.spin.frequencyDerivativeHzPerS);
+  return {
+    model,
+    settings,
+    phaseAt: phaseEvaluator(model),
+    prior,
+    line: newTimeline(model.spin.epochTdb),
+    states: newStateMap(),
+    bank: null,
+    noise: firstNoise(prior),
+    tracks: [],
+    locked: false,
+    oldestGap: 1,
+    nextLearning: FIRST_LEARNING,
+    nextSearch: 0,
+  };
+}
+
+function firstNoise(prior: NoisePrior): NoiseModel {
+  return {
+    phaseWalk: prior.phaseWalk.median,
+    frequencyWalk: prior.frequencyWalk.median,
+    torqueWalk: prior.torqueWalk.median,
+    uncertaintyScale: prior.uncertaintyScale.median,
+    floorTurns: 0,
+  };
+}

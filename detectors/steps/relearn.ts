@@ -1,0 +1,133 @@
+/** Learning the noise anew, and going through the past again with what was learned. */
+
+import type { CountedArrival, Disturbance } from '../filter/countedArrival.ts';
+import { learnNoise } from '../filter/noiseLearning.ts';
+import { logAddExp } from '../math/logSumExp.ts';
+import { newBank } from './bank.ts';
+import { glitch } from './births.ts';
+import { absorb, gapOf, type Hypothesis, loosen, predict, propagate, type Story } from './hypothesis.ts';
+import { birthPlace } from './places.ts';
+import type { PulsarWatch } from './pulsarWatch.ts';
+import { shareOfCount, startBeam } from './start.ts';
+import { stepAt } from './stepAt.ts';
+import { observationOf } from './timeline.ts';
+import type { Track } from './track.ts';
+
+/** The noise is learned when the arrivals have grown by this factor. */
+const LEARNING_GROWTH = 1.3;
+/** An open question may hold learning back for so long. */
+const PATIENCE = 1.4;
+const SURE_SHARE = 0.95;
+/** σ of a believed glitch when the past is gone through again: wide, its size is known from the arrivals. */
+const BELIEVED_GLITCH_SIZE = 2e-5;
+const BELIEVED_RATE_CHANGE = 0.2;
+
+export function learningDue(watch: PulsarWatch, index: number): boolean {
+  const count = index + 1;
+  if (count < watch.nextLearning) return false;
+  if (count >= PATIENCE * watch.nextLearning) return true;
+  const best = watch.bank!.beam[0]!;
+  const open = watch.tracks.some((t) => t.state === 'suspected' || (t.confirmedAt !== null && !t.settled));
+  return !open && !best.lastSetAside && shareOfCount(watch.bank!, best) > SURE_SHARE;
+}
+
+export function relearn(watch: PulsarWatch, index: number): void {
+  watch.nextLearning = Math.ceil((index + 1) * LEARNING_GROWTH);
+  const best = bestOf(watch);
+  const counted = countedArrivals(watch, best);
+  watch.noise = learnNoise(counted, disturbances(watch), watch.prior, watch.noise);
+  rebuild(watch, index, best);
+}
+
+/** The heaviest hypothesis of all, event or not. */
+export function bestOf(watch: PulsarWatch): Hypothesis {
+  const bank = watch.bank!;
+  let best = bank.beam[0]!;
+  for (const family of bank.families) for (const h of family.beam) if (h.logWeight > best.logWeight) best = h;
+  return best;
+}
+
+/** The arrivals with the whole turns that the hypothesis gives them. */
+export function countedArrivals(watch: PulsarWatch, h: Hypothesis): CountedArrival[] {
+  const decisions: Story[] = new Array(watch.line.seen.length);
+  for (let s = h.story; s !== null; s = s.before) decisions[s.index] = s;
+  return watch.line.seen.map((seen, i) => ({
+    tDays: seen.tDays,
+    deviationTurns: seen.deviation + decisions[i]!.turns,
+    sigmaTurns: seen.sigmaTurns,
+    frequencyMhz: seen.arrival.frequencyMhz,
+    group: seen.group,
+    used: decisions[i]!.used,
+  }));
+}
+
+/** Events as free steps of their own, so that they are neither learned as noise nor found again. */
+export function disturbances(watch: PulsarWatch, except?: Track): Disturbance[] {
+  return watch.tracks
+    .filter((t) => t !== except && t.state !== 'withdrawn')
+    .map((t) => ({ beforeIndex: t.bestGap, ...freed(watch, t) }));
+}
+
+function freed(watch: PulsarWatch, track: Track): Pick<Disturbance, 'kind' | 'group'> {
+  if (track.kind === 'dispersion step' && watch.states.dispersion !== null) return { kind: 'dispersion' };
+  if (track.kind === 'clock step') return { kind: 'phase' };
+  return { kind: 'spin' };
+}
+
+/**
+ * Goes through all arrivals again: up to the window with the count that has won, then with the whole bank. Nothing is
+ * decided on the way.
+ */
+function rebuild(watch: PulsarWatch, index: number, best: Hypothesis): void {
+  const decisions: Story[] = [];
+  for (let s = best.story; s !== null; s = s.before) decisions[s.index] = s;
+  const windowStart = Math.max(watch.oldestGap, index - watch.settings.windowArrivals + 1, 1);
+  let [h] = startBeam(watch);
+  const beam = startBeam(watch);
+  for (let i = 1; i < Math.min(windowStart, index + 1); i++) for (const b of beam) retrace(watch, b, decisions[i]!);
+  // The start errors differ only at the very beginning; the heaviest has seen the same arrivals as all.
+  h = beam.reduce((a, b) => (b.logWeight > a.logWeight ? b : a));
+  const total = beam.reduce((sum, b) => logAddExp(sum, b.logWeight), -Infinity);
+  h.logWeight -= total;
+  watch.bank = newBank(watch.noise, windowStart > LEAST_PAST ? [h] : beam);
+  for (let i = windowStart; i <= index; i++) stepAt(watch, i, watch.locked);
+}
+const LEAST_PAST = 10;
+
+/** One arrival with its known count; a believed event sets its states free in the gap before it. */
+function retrace(watch: PulsarWatch, h: Hypothesis, decision: Story): void {
+  const { line, states, noise } = watch;
+  const i = decision.index;
+  const gapDays = line.seen[i]!.tDays - line.seen[i - 1]!.tDays;
+  propagate(h, gapOf(gapDays, noise));
+  const mutable = h as { tracks: readonly number[] };
+  for (const track of watch.tracks)
+    if (track.bestGap === i && track.state === 'confirmed') {
+      setFree(watch, h, track, gapDays);
+      mutable.tracks = [...h.tracks, track.number];
+    }
+  const seen = observationOf(line, i, states, noise);
+  h.story = { ...decision, before: h.story };
+  h.lastSetAside = !decision.used;
+  if (!decision.used) return;
+  const { scratch } = watch.bank!;
+  predict(h, seen.sight, scratch);
+  const variance = scratch.variance + seen.variance;
+  const innovation = seen.deviation + decision.turns - scratch.deviation;
+  absorb(h, scratch, innovation, variance);
+  h.logWeight -= 0.5 * ((innovation * innovation) / variance + Math.log(2 * Math.PI * variance));
+}
+
+function setFree(watch: PulsarWatch, h: Hypothesis, track: Track, gapDays: number): void {
+  const place = birthPlace(watch, track.bestGap, gapDays);
+  const nu = place.frequencyHz;
+  if (track.kind === 'glitch') {
+    glitch(h, BELIEVED_GLITCH_SIZE * nu * 86_400, place);
+  } else if (track.kind === 'clock step') {
+    for (const direction of place.offsetDirections) loosen(h, direction, 1);
+  } else if (track.kind === 'dispersion step' && place.dispersionDirection !== null) {
+    loosen(h, place.dispersionDirection, (0.3 * place.turnsPerDispersion) ** 2);
+  }
+  const size = h.mean.length;
+  h.cov[2 * size + 2]! += (BELIEVED_RATE_CHANGE * Math.abs(place.frequencyDerivativeHzPerS) * 86_400 ** 2) ** 2;
+}

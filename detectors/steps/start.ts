@@ -1,0 +1,80 @@
+/** The first hypotheses of a pulsar: how far its start model may be off, and when one count has won. */
+
+import { arrivalVariance } from '../filter/stateSpace.ts';
+import { addState, type Bank } from './bank.ts';
+import type { Hypothesis } from './hypothesis.ts';
+import { turnsPerDispersion } from './places.ts';
+import type { PulsarWatch } from './pulsarWatch.ts';
+
+/**
+ * The start model's own error, as a mixture: share, σ of the rate (turns/day) and of its derivative (turns/day²). A model
+ * fitted to a noisy first year can be off by a third of a turn over it.
+ */
+const START_ERRORS: readonly (readonly [share: number, rate: number, derivative: number])[] = [
+  [0.5, 1e-4, 1e-7],
+  [0.3, 1e-3, 3e-6],
+  [0.2, 1e-2, 3e-5],
+];
+/** σ of an offset between receivers, turns: anything. */
+const RECEIVER_OFFSET_TURNS = 0.3;
+/** σ of the error of the start model's dispersion measure, pc cm⁻³. */
+const DISPERSION_ERROR = 0.03;
+/** Arrivals before a pulsar can be locked, spread (turns) of the prediction and share of the weight that lock it. */
+const LOCK_ARRIVALS = 12;
+const LOCK_SPREAD_TURNS = 0.1;
+const LOCK_SHARE = 0.98;
+
+/** Hypotheses after the first arrival: the deviation is what it was seen to be; the model's rates may be wrong. */
+export function startBeam(watch: PulsarWatch): Hypothesis[] {
+  const first = watch.line.seen[0]!;
+  const size = watch.states.size;
+  const variance = arrivalVariance(first.sigmaTurns, watch.noise);
+  return START_ERRORS.map(([share, rate, derivative]) => {
+    const mean = new Float64Array(size);
+    mean[0] = first.deviation;
+    const cov = new Float64Array(size * size);
+    cov[0] = variance;
+    cov[size + 1] = rate * rate;
+    cov[2 * size + 2] = derivative * derivative;
+    watch.states.offsets.forEach((at) => {
+      if (at !== null) cov[at * size + at] = RECEIVER_OFFSET_TURNS ** 2;
+    });
+    const { dispersion } = watch.states;
+    if (dispersion !== null) cov[dispersion * size + dispersion] = dispersionError(watch) ** 2;
+    const story = { index: 0, turns: 0, used: true, slipped: false, before: null };
+    return { mean, cov, logWeight: Math.log(share), story, tracks: [], lastSetAside: false };
+  });
+}
+
+/** A receiver or a band seen for the first time: one more state in every hypothesis. */
+export function addNuisance(watch: PulsarWatch, what: 'offset' | 'dispersion'): void {
+  const at = watch.states.size++;
+  if (what === 'offset') watch.states.offsets.push(at);
+  else watch.states.dispersion = at;
+  const sigma = what === 'offset' ? RECEIVER_OFFSET_TURNS : dispersionError(watch);
+  watch.bank = addState(watch.bank!, sigma * sigma);
+}
+
+function dispersionError(watch: PulsarWatch): number {
+  return DISPERSION_ERROR * turnsPerDispersion(watch);
+}
+
+/** One count has won and predicts the next arrival to a fraction of a turn. */
+export function canLock(watch: PulsarWatch, index: number): boolean {
+  if (index + 1 < LOCK_ARRIVALS) return false;
+  const [best] = watch.bank!.beam;
+  if (best === undefined || Math.sqrt(best.cov[0]!) > LOCK_SPREAD_TURNS || best.lastSetAside) return false;
+  return shareOfCount(watch.bank!, best) > LOCK_SHARE;
+}
+
+/** Share of the weight of the null beam that agrees with `best` on the count of the last arrivals. */
+export function shareOfCount(bank: Bank, best: Hypothesis): number {
+  let agreeing = 0;
+  let total = 0;
+  for (const h of bank.beam) {
+    const weight = Math.exp(h.logWeight - best.logWeight);
+    total += weight;
+    if (Math.abs(h.mean[0]! - best.mean[0]!) < 0.5) agreeing += weight;
+  }
+  return agreeing / total;
+}

@@ -1,0 +1,235 @@
+import { uniformFloat64 } from 'pure-rand/distribution/uniformFloat64';
+import { xoroshiro128plus } from 'pure-rand/generator/xoroshiro128plus';
+import type { EventRecord, FileRecord, OutboxRecord } from '../../daemon/records.ts';
+import type { ReviewDesk, VerdictOrder, VerdictOutcome } from '../../daemon/review/desk.ts';
+import type { EventPicture, EventState, PulsarEvent } from '../../detectors/steps/pulsarEvent.ts';
+
+/** A desk in memory with one evening of an invented observatory; every text of it can be replaced by a hostile one. */
+
+export const NOW = new Date('2026-12-01T04:22:10Z');
+const EPOCH = 61_370.41;
+
+export function sampleEvent(change: Partial<PulsarEvent> = {}): PulsarEvent {
+  return {
+    id: 'kr-0417-61370',
+    pulsar: 'KR 0417+31',
+    state: 'confirmed',
+    explanation: 'glitch',
+    explanations: { glitch: 0.9983, 'slow spin-up': 0.0011, wandering: 0.0004, 'clock step': 0.0002 },
+    epochMjd: EPOCH,
+    epochInterval68: [EPOCH - 0.31, EPOCH + 0.39],
+    epochInterval95: [EPOCH - 0.6, EPOCH + 0.8],
+    deltaNuHz: 1.08e-7,
+    deltaNuHzInterval68: [1.05e-7, 1.11e-7],
+    deltaNuHzInterval95: [1.02e-7, 1.14e-7],
+    deltaNuOverNu: 1.702e-8,
+    deltaNuOverNuInterval68: [1.655e-8, 1.75e-8],
+    deltaNuDot: -1.1e-15,
+    deltaNuDotInterval68: [-1.6e-15, -6e-16],
+    deltaNuDotOverNuDot: 2.7e-3,
+    deltaNuDotOverNuDotInterval68: [1.5e-3, 3.9e-3],
+    timeStepUs: null,
+    timeStepUsInterval68: null,
+    recovery: {
+      terms: [
+        { fraction: 0.021, fractionInterval68: [0.014, 0.03], timescaleDays: 18, timescaleDaysInterval68: [12, 27] },
+      ],
+      q: 0.021,
+    },
+    aliases: [
+      { deltaNuHz: 1.08e-7, probability: 0.991 },
+      { deltaNuHz: 1.167e-5, probability: 0.009 },
+    ],
+    firstArrivalMjd: EPOCH + 0.4,
+    suspectedAtMjd: EPOCH + 0.4,
+    confirmedAtMjd: EPOCH + 3.4,
+    arrivalsUsed: 142,
+    logBayesFactor: 31.2,
+    falseAlertsPerYearAtThisLevel: 2e-9,
+    pulsars: ['KR 0417+31'],
+    site: null,
+    ...change,
+  };
+}
+
+/** Arrivals every third day for 200 days, with a spin-up of 1.08e-7 Hz at the epoch and seeded measurement noise. */
+export function samplePicture(): EventPicture {
+  const random = xoroshiro128plus(417);
+  const noise = () => [1, 2, 3, 4].reduce((sum) => sum + uniformFloat64(random) - 0.5, 0) * Math.sqrt(3);
+  const step = 1.08e-7;
+  const deviation = (mjd: number) => (mjd < EPOCH ? 0 : -step * (mjd - EPOCH) * 86_400);
+  const days = Array.from({ length: 68 }, (_, i) => EPOCH - 140.6 + 3 * i + 0.2 * uniformFloat64(random));
+  return {
+    points: days.map((mjd, i) => ({
+      key: `a${i}`,
+      mjd,
+      deviationTurns: deviation(mjd) + 6e-3 * noise() + (i === 20 ? 0.04 : 0),
+      uncertaintyTurns: 6e-3,
+      used: i !== 20,
+    })),
+    fit: days.map((mjd) => ({ mjd, deviationTurns: deviation(mjd) })),
+    frequencyTrack: Array.from({ length: 16 }, (_, i) => {
+      const mjd = EPOCH - 135 + 12.4 * i;
+      return { mjd, deltaNuHz: (mjd < EPOCH ? 0 : step) + 8e-9 * noise(), uncertaintyHz: 8e-9 };
+    }),
+    frequencyFit: [-135, -0.001, 0, 60].map((day) => ({ mjd: EPOCH + day, deltaNuHz: day < 0 ? 0 : step })),
+    epochMjd: EPOCH,
+    epochInterval68: [EPOCH - 0.31, EPOCH + 0.39],
+    frequencyHz: 6.3417701123349,
+  };
+}
+
+export function sampleRecord(change: Partial<PulsarEvent> = {}): EventRecord {
+  const event = sampleEvent(change);
+  const suspected = { ...event, state: 'suspected' as const, arrivalsUsed: 139, explanations: { glitch: 0.71 } };
+  return {
+    event,
+    detectorState: event.state,
+    lastKept: event,
+    revision: 2,
+    told: event.state === 'confirmed',
+    createdAt: '2026-11-28T05:10:00.000Z',
+    changedAt: '2026-12-01T03:58:00.000Z',
+    formerIds: [],
+    picture: samplePicture(),
+    history: [
+      { revision: 1, at: '2026-11-28T05:10:00.000Z', what: 'suspected', event: suspected },
+      { revision: 2, at: '2026-12-01T03:58:00.000Z', what: 'confirmed', event },
+    ],
+    verdicts: [],
+  };
+}
+
+export interface MemoryDesk extends ReviewDesk {
+  /** Replaces or adds a record, as the pipeline would. */
+  put(record: EventRecord): void;
+  verdictCount(): number;
+}
+
+export interface DeskTexts {
+  readonly file?: string;
+  readonly reason?: string;
+  readonly subject?: string;
+  readonly problem?: string;
+}
+
+export function memoryDesk(records: readonly EventRecord[] = [sampleRecord()], texts: DeskTexts = {}): MemoryDesk {
+  const byId = new Map(records.map((record) => [record.event.id, record]));
+  const all = () => [...byId.values()];
+  const inState = (...states: EventState[]) => all().filter(({ event }) => states.includes(event.state));
+  const quarantine = [
+    {
+      feed: 'north dish',
+      file: texts.file ?? '2026-11/night-30.csv',
+      line: 17,
+      reason: texts.reason ?? 'uncertainty_us is not a number: "n/a"',
+      at: '2026-12-01T03:57:00.000Z',
+    },
+  ];
+  return {
+    version: () => JSON.stringify(all().map(({ event, revision }) => [event.id, revision])),
+    events: all,
+    decisions: (most) =>
+      inState('accepted', 'rejected', 'withdrawn')
+        .map(({ event, changedAt, verdicts }) => ({ event, at: changedAt, verdict: verdicts.at(-1) ?? null }))
+        .slice(0, most),
+    event: (id) => byId.get(id) ?? null,
+    notice: (id) => (byId.has(id) ? '<?xml version="1.0"?><notice/>\n' : null),
+    morning: () => ({
+      observatory: 'Kestrel Ridge',
+      date: '2026-12-01',
+      since: '2026-11-30T08:00:00.000Z',
+      until: NOW.toISOString(),
+      waiting: inState('confirmed').map(({ event }) => event),
+      suspected: inState('suspected').map(({ event }) => event),
+      changed: [],
+      quarantined: quarantine,
+      silentFeeds: [{ feed: 'south dish', hoursSilent: 41, expectedHours: 24 }],
+      silentPulsars: [],
+      unlockedPulsars: ['KR 2210-05'],
+      intake: { files: 3, arrivals: 128, pulsars: 41 },
+      limits: [{ pulsar: 'KR 0417+31', deltaNuOverNu90: 2.1e-9, delayDays90: 6.5 }],
+      mail: { waiting: 1, refused: 0, oldestWaitingHours: 0.3 },
+      warnings: ['The leap-second table ends on 2027-06-28.'],
+    }),
+    pulsars: () => [
+      { pulsar: 'KR 0417+31', lastArrivalMjd: EPOCH + 3.4, locked: true, deltaNuOverNu90: 2.1e-9, delayDays90: 6.5 },
+      { pulsar: 'KR 1118+62', lastArrivalMjd: EPOCH + 3.3, locked: true, deltaNuOverNu90: 7.4e-10, delayDays90: 9 },
+      { pulsar: 'KR 2210-05', lastArrivalMjd: null, locked: false, deltaNuOverNu90: null, delayDays90: null },
+    ],
+    feeds: () => [
+      { feed: 'north dish', lastFileAt: '2026-12-01T03:57:00.000Z', expectEveryHours: 24, silent: false },
+      { feed: 'south dish', lastFileAt: '2026-11-29T11:20:00.000Z', expectEveryHours: 24, silent: true },
+    ],
+    files: () => [sampleFile(texts.file ?? '2026-11/night-30.csv')],
+    quarantine: () => quarantine,
+    outbox: () => [sampleMail(texts.subject ?? 'Kestrel Ridge: KR 0417+31: candidate glitch')],
+    health: () => ({ ok: texts.problem === undefined, problems: texts.problem === undefined ? [] : [texts.problem] }),
+    recordVerdict: (order) => judge(byId, order),
+    put: (record) => void byId.set(record.event.id, record),
+    verdictCount: () => all().reduce((sum, { verdicts }) => sum + verdicts.length, 0),
+  };
+}
+
+function judge(byId: Map<string, EventRecord>, order: VerdictOrder): VerdictOutcome {
+  const { eventId, expectedRevision, at, ...said } = order;
+  const record = byId.get(eventId);
+  if (record === undefined) return { kind: 'unknown' };
+  const last = record.verdicts.at(-1);
+  const repeated =
+    last?.revision === expectedRevision &&
+    record.revision === expectedRevision + 1 &&
+    last.verdict === said.verdict &&
+    last.by === said.by &&
+    last.note === said.note;
+  if (repeated) return { kind: 'ok' };
+  if (record.revision !== expectedRevision)
+    return { kind: 'conflict', message: 'The event changed since it was read.' };
+  const state = ({ accept: 'accepted', reject: 'rejected', reopen: record.detectorState } as const)[said.verdict];
+  const event = { ...record.event, state };
+  const revision = record.revision + 1;
+  byId.set(eventId, {
+    ...record,
+    event,
+    revision,
+    changedAt: at,
+    history: [...record.history, { revision, at, what: `${state} by ${said.by}`, event }],
+    verdicts: [...record.verdicts, { ...said, at, revision: expectedRevision }],
+  });
+  return { kind: 'ok' };
+}
+
+function sampleFile(path: string): FileRecord {
+  return {
+    id: 9,
+    feed: 'north dish',
+    path,
+    sha256: 'a'.repeat(64),
+    bytes: 8123,
+    takenInAt: '2026-12-01T03:57:00.000Z',
+    rows: 62,
+    stored: 44,
+    same: 17,
+    revised: 0,
+    quarantined: 1,
+    fault: null,
+  };
+}
+
+function sampleMail(subject: string): OutboxRecord {
+  return {
+    id: 4,
+    messageId: '<kr-0417-61370.2@kestrel.example>',
+    recipient: 'duty@kestrel.example',
+    subject,
+    kind: 'event',
+    eventId: 'kr-0417-61370',
+    state: 'queued',
+    attempts: 1,
+    dueAt: '2026-12-01T04:30:00.000Z',
+    lastError: 'the server answered 451 try later',
+    possibleDuplicate: false,
+    createdAt: '2026-12-01T03:58:00.000Z',
+    deliveredAt: null,
+  };
+}
