@@ -97,7 +97,7 @@ export function list(items: readonly string[]): Markup {
   const rows = items.map(
     (
       item,
-    ) => markup`<li class="ink" style="${FONT}font-size:16px;line-height:23px;color:${TEXT};margin:0 0 6px;">${item}</li>
+    ) => markup`<li class="ink" style="${FONT}font-size:16px;line-height:23px;color:${TEXT};margin:0 0 6px;overflow-wrap:anywhere;">${item}</li>
 `,
   );
   return markup`<ul style="margin:0 0 6px;padding-left:20px;">
@@ -109,7 +109,7 @@ export function rowTable(rows: readonly { readonly label: string; readonly value
   const cells = rows.map(
     ({ label, value }) => markup`<tr>
 <td class="faint rule" width="34%" style="${FONT}font-size:14px;line-height:21px;color:${FAINT};border-bottom:1px solid ${RULE};padding:5px 8px 5px 0;vertical-align:top;">${label}</td>
-<td class="ink rule" style="${FONT}font-size:15px;line-height:21px;color:${TEXT};border-bottom:1px solid ${RULE};padding:5px 0;vertical-align:top;">${value}</td>
+<td class="ink rule" style="${FONT}font-size:15px;line-height:21px;color:${TEXT};border-bottom:1px solid ${RULE};padding:5px 0;vertical-align:top;overflow-wrap:anywhere;">${value}</td>
 </tr>
 `,
   );
@@ -120,7 +120,7 @@ ${cells}</table>
 
 /** The address is written out, so that it is seen before it is followed. */
 export function link(label: string, address: string): Markup {
-  return markup`<p class="ink" style="${FONT}font-size:16px;line-height:24px;color:${TEXT};margin:12px 0 0;">${label}: <a class="link" href="${address}" style="color:#2f5d9b;">${address}</a></p>
+  return markup`<p class="ink" style="${FONT}font-size:16px;line-height:24px;color:${TEXT};margin:12px 0 0;overflow-wrap:anywhere;">${label}: <a class="link" href="${address}" style="color:#2f5d9b;">${address}</a></p>
 `;
 }
 

@@ -41,9 +41,7 @@ const ESCAPES: Readonly<Record<string, string>> = {
 };
 
 /** Characters that are not text: controls but tab and line feed, lone surrogates, and those that reverse or hide what follows. */
-// biome-ignore lint/suspicious/noControlCharactersInRegex: finding them is the point
-const UNSEEN =
-  /[\u0000-\u0008\u000b-\u001f\u007f-\u009f\u200b\u200e\u200f\u2028-\u202e\u2060-\u2069\ufeff\ufffe\uffff]|\p{Surrogate}/gu;
+const UNSEEN = /(?![\t\n])[\p{Cc}\p{Cs}\u200b\u200e\u200f\u2028-\u202e\u2060-\u2069\ufeff\ufffe\uffff]/gu;
 
 /** The text with every unseen character shown as U+FFFD. */
 export function visible(text: string): string {

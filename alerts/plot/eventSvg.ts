@@ -34,7 +34,7 @@ export function eventSvg(picture: EventPicture, title: PlotWords, palette: PlotP
   const canvas: Canvas = { picture, view, palette, x: { domain: [view.from, view.to], range: [LEFT, RIGHT] } };
   return markup`<svg xmlns="http://www.w3.org/2000/svg" width="${WIDTH}" height="${HEIGHT}" viewBox="0 0 ${WIDTH} ${HEIGHT}" role="img" aria-label="${title.title}. ${title.subtitle}">
 <rect width="${WIDTH}" height="${HEIGHT}" fill="${palette.background}"/>
-${words(40, 66, title.title, { size: titleSize(title.title), fill: palette.ink, bold: true })}${words(40, 116, title.subtitle, { size: 32, fill: palette.ink })}${legend(canvas)}${phasePanel(canvas)}${leftOverPanel(canvas)}${frequencyPanel(canvas)}${timeAxis(canvas)}</svg>
+${words(40, 66, title.title, { size: titleSize(title.title), fill: palette.ink, bold: true })}${words(40, 116, title.subtitle, { size: 34, fill: palette.ink })}${legend(canvas)}${phasePanel(canvas)}${leftOverPanel(canvas)}${frequencyPanel(canvas)}${timeAxis(canvas)}</svg>
 `.source;
 }
 
@@ -45,11 +45,11 @@ function titleSize(title: string): number {
 
 function legend({ palette, view }: Canvas): Markup {
   const mark = (x: number, after: boolean, used: boolean) =>
-    markOf({ x, y: 163, halfError: 0, after, used }, palette, 8);
-  const label = (x: number, text: string) => words(x, 172, text, { size: 25, fill: palette.faint });
-  const aside = view.points.some((p) => !p.used) ? [mark(770, false, false), label(788, 'set aside')] : [];
-  return markup`${mark(50, false, true)}${label(68, 'before')}${mark(196, true, true)}${label(214, 'after')}${line(320, 163, 366, 163, palette.fit, 4)}${label(378, 'fit')}<rect x="452" y="148" width="30" height="30" fill="${palette.epoch}" fill-opacity="0.6"/>
-${label(494, 'epoch (68 % band)')}${aside}`;
+    markOf({ x, y: 163, halfError: 0, after, used }, palette, 9);
+  const label = (x: number, text: string) => words(x, 173, text, { size: 28, fill: palette.faint });
+  const aside = view.points.some((p) => !p.used) ? [mark(806, false, false), label(826, 'set aside')] : [];
+  return markup`${mark(50, false, true)}${label(70, 'before')}${mark(206, true, true)}${label(226, 'after')}${line(334, 163, 382, 163, palette.fit, 4)}${label(394, 'fit')}<rect x="468" y="148" width="30" height="30" fill="${palette.epoch}" fill-opacity="0.6"/>
+${label(510, 'epoch (68 % band)')}${aside}`;
 }
 
 function phasePanel(canvas: Canvas): Markup {
@@ -209,12 +209,18 @@ function axisLine(x: Scale, box: PanelBox, palette: PlotPalette): Markup {
   return markup`${line(LEFT, box.bottom, RIGHT, box.bottom, palette.faint, 2.5)}${ticks.map((t) => line(place(x, t), box.bottom, place(x, t), box.bottom + 10, palette.faint, 2.5))}`;
 }
 
-/** MJD on the tick, the civil date under it. */
+/** MJD on every tick, the civil date under as many of them as have room. */
 function timeAxis({ x, palette }: Canvas): Markup {
   const { values, decimals } = ticksOf(x.domain, 5);
   const base = FREQUENCY.bottom;
-  return markup`${values.map((t) => [
-    words(place(x, t), base + 44, tickLabel(t, decimals), { size: 27, fill: palette.ink, anchor: 'middle' }),
-    words(place(x, t), base + 80, isoDay(dateOfMjd(t), 'UTC'), { size: 23, fill: palette.faint, anchor: 'middle' }),
-  ])}${words((LEFT + RIGHT) / 2, base + 132, 'MJD (TDB, at the barycentre) and civil date (UTC)', { size: 26, fill: palette.ink, anchor: 'middle' })}`;
+  const spacing = values.length < 2 ? Infinity : place(x, values[1]!) - place(x, values[0]!);
+  const stride = Math.max(1, Math.ceil(DATE_WIDTH / spacing));
+  const dated = values.filter((_, i) => i % stride === 0);
+  return markup`${values.map((t) =>
+    words(place(x, t), base + 44, tickLabel(t, decimals), { size: 30, fill: palette.ink, anchor: 'middle' }),
+  )}${dated.map((t) =>
+    words(place(x, t), base + 80, isoDay(dateOfMjd(t), 'UTC'), { size: 26, fill: palette.faint, anchor: 'middle' }),
+  )}${words((LEFT + RIGHT) / 2, base + 132, 'MJD (TDB, at the barycentre) and civil date (UTC)', { size: 28, fill: palette.ink, anchor: 'middle' })}`;
 }
+
+const DATE_WIDTH = 185;

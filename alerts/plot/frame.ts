@@ -4,11 +4,11 @@ import { place, type Scale, tickLabel, ticksOf } from './scale.ts';
 
 /** What every panel has: ground, grid, axes, words. Sizes are for a picture 1080 px wide that a phone shows at a third. */
 export const WIDTH = 1080;
-export const LEFT = 138;
-export const RIGHT = WIDTH - 138;
+export const LEFT = 148;
+export const RIGHT = WIDTH - 148;
 export const FONT = 'DejaVu Sans';
-const TICK_TEXT = 27;
-const TITLE_TEXT = 28;
+const TICK_TEXT = 30;
+const TITLE_TEXT = 31;
 
 export interface PanelBox {
   readonly top: number;
@@ -61,7 +61,7 @@ export function panelGround(
   const { values, decimals } = ticksOf(y.domain, ticks);
   return markup`<rect x="${LEFT}" y="${px(box.top)}" width="${RIGHT - LEFT}" height="${px(box.bottom - box.top)}" fill="${palette.panel}"/>
 ${values.map((v) => line(LEFT, place(y, v), RIGHT, place(y, v), palette.grid, v === 0 ? 3 : 1.5))}${values.map((v) =>
-  words(LEFT - 14, place(y, v) + 9, tickLabel(v, decimals), { size: TICK_TEXT, fill: palette.faint, anchor: 'end' }),
+  words(LEFT - 14, place(y, v) + 11, tickLabel(v, decimals), { size: TICK_TEXT, fill: palette.faint, anchor: 'end' }),
 )}${words(LEFT, box.top - 24, name, { size: TITLE_TEXT, fill: palette.ink, bold: true })}${words(LEFT - 14, box.top - 24, unit, { size: TICK_TEXT - 1, fill: palette.faint, anchor: 'end' })}`;
 }
 
@@ -70,6 +70,6 @@ export function rightAxis(box: PanelBox, y: Scale, unit: string, palette: PlotPa
   const { values, decimals } = ticksOf(y.domain, ticks);
   return markup`${values.map((v) => [
     line(RIGHT, place(y, v), RIGHT + 8, place(y, v), palette.faint, 2),
-    words(RIGHT + 14, place(y, v) + 9, tickLabel(v, decimals), { size: TICK_TEXT, fill: palette.faint }),
+    words(RIGHT + 14, place(y, v) + 11, tickLabel(v, decimals), { size: TICK_TEXT, fill: palette.faint }),
   ])}${words(RIGHT + 14, box.top - 24, unit, { size: TICK_TEXT - 1, fill: palette.faint })}`;
 }

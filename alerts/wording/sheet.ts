@@ -30,7 +30,7 @@ export function eventSheet(event: PulsarEvent, picture: EventPicture | null, tim
     title: `${subjectOf(event)}: ${eventName(event)}`,
     size: sizeText(event),
     meaning: meaningOf(event),
-    rows: [...whenRows(event, timezone), ...sizeRows(event), ...recoveryRows(event), ...trustRows(event)],
+    rows: [...whenRows(event, picture, timezone), ...sizeRows(event), ...recoveryRows(event), ...trustRows(event)],
     caution: decided ? '' : CAUTION,
     check: decided ? [] : whatToCheck(event),
     observe: whatToObserve(event, picture),
@@ -58,11 +58,13 @@ function relation(text: string): string {
   return text.startsWith(NOT_CONSTRAINED) ? text : `= ${text}`;
 }
 
-function whenRows(event: PulsarEvent, timezone: string): SheetRow[] {
+function whenRows(event: PulsarEvent, picture: EventPicture | null, timezone: string): SheetRow[] {
+  const before = picture?.points.filter((p) => p.used && p.mjd <= picture.epochMjd).map((p) => p.mjd) ?? [];
   const on = (mjd: number) => `${mjdText(mjd)}, ${dayText(dateOfMjd(mjd), 'UTC')}`;
   return [
     { label: 'Epoch', value: epochText(event.epochMjd, event.epochInterval68) },
     { label: 'On the calendar', value: civilEpoch(event.epochMjd, event.epochInterval68, timezone) },
+    ...(before.length === 0 ? [] : [{ label: 'Last arrival before', value: on(Math.max(...before)) }]),
     { label: 'First arrival after', value: on(event.firstArrivalMjd) },
     ...(event.confirmedAtMjd === null ? [] : [{ label: 'Confirmed by arrival', value: on(event.confirmedAtMjd) }]),
   ];

@@ -62,11 +62,13 @@ export function isProblem(result: ReceivedArrival | RowProblem): result is RowPr
   return 'reason' in result;
 }
 
-/** Carries the first complaint about a row out of the reading of its cells; never leaves this file. */
-class Unusable extends Error {
+/**
+ * Carries the first complaint about a row out of the reading of its cells, and never leaves this file. Not an Error: taking down
+ * the stack for each bad row would cost ten times the reading.
+ */
+class Unusable {
   readonly problem: RowProblem;
   constructor(column: Column | null, reason: string) {
-    super(reason);
     this.problem = { column, reason };
   }
 }

@@ -89,7 +89,11 @@ function addEventRoutes(routes: Hono, app: ReviewApp, show: Show): void {
     return show(c, { title: subjectOf(record.event), section: null, main }, status);
   };
 
-  routes.get('/events/:id', (c) => showEvent(c, c.req.param('id'), null, 200));
+  routes.get('/events/:id', (c) => {
+    const id = c.req.param('id');
+    const current = desk.event(id)?.event.id ?? id;
+    return current === id ? showEvent(c, id, null, 200) : c.redirect(eventPath(current), 302);
+  });
   routes.get('/events/:id/event.json', (c) => {
     const record = desk.event(c.req.param('id'));
     return record === null ? unknown(c) : download(c, eventJson(record.event), 'application/json', 'event.json');

@@ -31,6 +31,8 @@ export interface ServerLimits {
   readonly headersMs: number;
   readonly requestMs: number;
   readonly idleMs: number;
+  /** Between two requests on one connection. */
+  readonly keepAliveMs: number;
   readonly checkEveryMs: number;
   readonly connections: number;
 }
@@ -46,10 +48,10 @@ const DEFAULT_LIMITS: ServerLimits = {
   headersMs: 8_000,
   requestMs: 15_000,
   idleMs: 20_000,
+  keepAliveMs: 5_000,
   checkEveryMs: 1_000,
   connections: 128,
 };
-const KEEP_ALIVE_MS = 5_000;
 const LARGEST_HEAD_BYTES = 16 * 1024;
 const MOST_HEADERS = 60;
 const REQUESTS_A_CONNECTION = 200;
@@ -95,7 +97,7 @@ function serverOptions(limits: ServerLimits): ServerOptions {
     headersTimeout: limits.headersMs,
     requestTimeout: limits.requestMs,
     connectionsCheckingInterval: limits.checkEveryMs,
-    keepAliveTimeout: KEEP_ALIVE_MS,
+    keepAliveTimeout: limits.keepAliveMs,
     maxHeaderSize: LARGEST_HEAD_BYTES,
     insecureHTTPParser: false,
     requireHostHeader: false, // the guard asks for it, and answers with our own page

@@ -5,9 +5,9 @@ import type { Station } from '../station.ts';
 import type { PulsarReportRow } from '../store/index.ts';
 
 /** What is published, from what the detector says about each pulsar alone: a step that a whole site shows is one event, of the site. */
-export function publishedEvents(station: Station, reports: readonly PulsarReport[]): readonly PulsarEvent[] {
-  const own = new Map(station.store.pulsarReports().map((report) => [report.pulsar, report.events]));
-  for (const report of reports) own.set(report.pulsar, report.events);
+export function publishedEvents({ store }: Station, changed: readonly PulsarReportRow[]): readonly PulsarEvent[] {
+  const own = new Map(store.pulsarReports().map((report) => [report.pulsar, report.events]));
+  for (const report of changed) own.set(report.pulsar, report.events);
   const inOrder = [...own].sort(([a], [b]) => (a < b ? -1 : 1));
   return combineSiteEvents(inOrder.flatMap(([, events]) => events));
 }

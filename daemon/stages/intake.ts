@@ -1,11 +1,12 @@
 import { createHash } from 'node:crypto';
-import { closestName } from '../config/closestName.ts';
+import { closestName } from '../closestName.ts';
 import { BARYCENTRE } from '../intake/arrivalFields.ts';
 import { type Reconciliation, reconcile } from '../intake/reconcile.ts';
 import { type ArrivalFile, type ReceivedRow, readArrivalFile } from '../intake/rows.ts';
 import type { Station } from '../station.ts';
 import type { NewFile, QuarantinedLine } from '../store/index.ts';
 import { quoted } from '../visibleText.ts';
+import type { TakenFile } from '../watch/feedMemory.ts';
 
 /** A file that stood still, as the watcher or `replay` hands it over. */
 export interface FileInHand {
@@ -40,18 +41,18 @@ export function takeRows(station: Station, inHand: FileInHand): Intake {
     line,
     reason: column === null ? reason : `${column} ${reason}`,
   }));
-  const held = new Set<string>();
+  let waiting = false;
   for (const row of read.rows) {
     const missing = missingFor(station, row);
     if (missing === null) known.push(row);
     else {
-      quarantined.push({ line: row.line, reason: missing.reason });
-      held.add(missing.name);
+      quarantined.push({ line: row.line, reason: missing });
+      waiting = true;
     }
   }
   if (read.fault !== null) quarantined.push({ line: null, reason: read.fault });
   return {
-    file: describeFile(station, inHand, { read, held }),
+    file: describeFile(station, inHand, { read, waiting }),
     reconciliation: reconcileWithRecord(station, inHand, read.fault === null ? known : null),
     quarantined: quarantined.sort((a, b) => (a.line ?? 0) - (b.line ?? 0)),
     unterminated: read.unterminated,
@@ -59,44 +60,77 @@ export function takeRows(station: Station, inHand: FileInHand): Intake {
 }
 
 /** What the configuration lacks for a row; null: nothing. */
-function missingFor({ configuration, sites }: Station, row: ReceivedRow): { name: string; reason: string } | null {
+function missingFor({ configuration, sites }: Station, row: ReceivedRow): string | null {
   if (!configuration.models.has(row.pulsar)) {
     const near = closestName(row.pulsar, [...configuration.models.keys()]);
     const guess = near === null ? '' : ` (did you mean ${quoted(near)}?)`;
-    const reason = `pulsar ${quoted(row.pulsar)} has no model${guess}: add a file with that name to ${configuration.modelsFolder} and start again`;
-    return { name: row.pulsar, reason };
+    return `pulsar ${quoted(row.pulsar)} has no model${guess}: add one with that name to ${configuration.modelsFolder} and start again`;
   }
   if (row.site === BARYCENTRE || sites.has(row.site)) return null;
   const near = closestName(row.site, [...sites.keys()]);
   const guess = near === null ? '' : ` (did you mean ${quoted(near)}?)`;
-  const reason = `site ${quoted(row.site)} is not known${guess}: add a [[site]] with that name to ${configuration.file} and start again`;
-  return { name: row.site, reason };
+  return `site ${quoted(row.site)} is not known${guess}: add a [[site]] with that name to ${configuration.file} and start again`;
 }
 
 function describeFile(
   station: Station,
   inHand: FileInHand,
-  { read, held }: { readonly read: ArrivalFile; readonly held: ReadonlySet<string> },
+  { read, waiting }: { readonly read: ArrivalFile; readonly waiting: boolean },
 ): NewFile {
   return {
     feed: inHand.feed,
     path: inHand.path,
     pathBytesHex: inHand.pathBytes.toString('hex'),
-    sha256: createHash('sha256').update(inHand.bytes).digest('hex'),
+    sha256: sha256Of(inHand.bytes),
     bytes: inHand.bytes.length,
-    signature: held.size === 0 ? inHand.signature : heldSignature(station, inHand.signature),
+    signature: waiting ? inHand.signature + waitingMark(station) : inHand.signature,
     rows: read.rows.length + read.rejects.length,
     fault: read.fault,
   };
 }
 
 /**
- * The signature under which a file goes on record whose rows wait for a model or a site: with the names that were known, so that the file
- * is read again, by itself, once the configuration knows others.
+ * Rows that wait for a model or a site leave a mark in the signature of their file: the names that were known. So the file is read again, by
+ * itself, once the configuration knows others.
  */
-export function heldSignature({ configuration, sites }: Station, signature: string): string {
+function waitingMark({ configuration, sites }: Station): string {
   const names = JSON.stringify([[...configuration.models.keys()].sort(), [...sites.keys()].sort()]);
-  return `${signature} held ${createHash('sha256').update(names).digest('hex').slice(0, 16)}`;
+  return ` waiting:${createHash('sha256').update(names).digest('hex').slice(0, 16)}`;
+}
+
+/** The fault of a file that was set aside unread begins with this. */
+export const SET_ASIDE = 'set aside';
+
+/** What the watcher needs to know of a path: the content that was taken in last, unless its rows wait for names known now. */
+export function recall(station: Station, feed: string, pathBytes: Buffer): TakenFile | null {
+  const known = station.store.knownFile(feed, { bytesHex: pathBytes.toString('hex') });
+  if (known === null) return null;
+  const mark = markOf(known.signature);
+  const isCurrent = mark === '' || mark === waitingMark(station);
+  return {
+    signature: isCurrent ? known.signature.slice(0, known.signature.length - mark.length) : '',
+    bytes: known.bytes,
+  };
+}
+
+function markOf(signature: string): string {
+  return / waiting:[0-9a-f]{16}$/.exec(signature)?.[0] ?? '';
+}
+
+/** Whether a file stands on record as it is now; one that was only touched is noted as such. */
+export function isOnRecord(station: Station, inHand: FileInHand): boolean {
+  const { store } = station;
+  const before = recall(station, inHand.feed, inHand.pathBytes);
+  if (before === null || before.signature === '') return false;
+  if (before.signature === inHand.signature) return true;
+  const known = store.knownFile(inHand.feed, { bytesHex: inHand.pathBytes.toString('hex') });
+  if (known?.sha256 !== sha256Of(inHand.bytes) || known.fault?.startsWith(SET_ASIDE)) return false;
+  store.noteUnchanged(known.id, inHand.signature + markOf(known.signature));
+  return true;
+}
+
+function sha256Of(bytes: Buffer): string {
+  return createHash('sha256').update(bytes).digest('hex');
 }
 
 /** Rows within this of each other may be values of one arrival; a little more than the 1 µs of the rule does no harm. */

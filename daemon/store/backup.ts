@@ -17,7 +17,7 @@ export async function writeBackup(db: Db, file: string): Promise<void> {
     await db.backup(partial);
     finish(partial, file);
   } finally {
-    discard(partial);
+    removeDatabase(partial);
   }
 }
 
@@ -28,20 +28,21 @@ export function writeCopySync(db: Db, file: string): void {
     db.prepare('VACUUM INTO ?').run(partial);
     finish(partial, file);
   } finally {
-    discard(partial);
+    removeDatabase(partial);
   }
 }
 
 /** Made here, empty, new and for the owner alone: nobody else can plant or read it. */
 function startPartial(file: string): string {
   const partial = `${file}.partial`;
-  discard(partial);
+  removeDatabase(partial);
   closeSync(openSync(partial, 'wx', 0o600));
   return partial;
 }
 
-function discard(partial: string): void {
-  for (const suffix of ['', '-journal', '-wal', '-shm']) rmSync(partial + suffix, { force: true });
+/** With what SQLite may have left beside it. Only for files that nobody has open. */
+export function removeDatabase(file: string): void {
+  for (const suffix of ['', '-journal', '-wal', '-shm']) rmSync(file + suffix, { force: true });
 }
 
 function refuseOwnFile(db: Db, file: string): void {

@@ -1,8 +1,9 @@
 import { existsSync, renameSync, statSync } from 'node:fs';
 import { join } from 'node:path';
 import Database from 'better-sqlite3';
-import { copyProblem, writeCopySync } from './backup.ts';
+import { copyProblem, removeDatabase, writeCopySync } from './backup.ts';
 import { connect, type Db, inTransaction } from './connection.ts';
+import { step } from './crashStep.ts';
 import { type InstanceLock, takeInstanceLock } from './instanceLock.ts';
 import { SCHEMA_VERSION, schemaVersion } from './migrations.ts';
 import { failureFrom, heldByAnother } from './openStore.ts';
@@ -23,7 +24,7 @@ interface Delivered {
 /**
  * Brings a copy back. The present record is kept aside, and the copy flows into its place through SQLite, as one transaction:
  * a command that has it open sees the old or the new, and a crash leaves the old. What was mailed since the copy was
- * made is remembered, so that it is not mailed again. `at` (ISO 8601 UTC) names what is kept aside.
+ * made is remembered in it beforehand, so that it is not mailed again. `at` (ISO 8601 UTC) names what is kept aside.
  */
 export async function restore(copyFile: string, folder: string, at: string): Promise<Restored> {
   let lock: InstanceLock | null = null;
@@ -35,13 +36,16 @@ export async function restore(copyFile: string, folder: string, at: string): Pro
 
     const aside = join(folder, `before-restore-${at.replaceAll(/[^0-9TZ]/g, '')}.db`);
     const { keptAside, delivered } = keepAside(recordFile(folder), aside);
-    const source = new Database(copyFile, { readonly: true, fileMustExist: true });
-    try {
-      await source.backup(recordFile(folder));
-    } finally {
-      source.close();
-    }
-    settleRestored(recordFile(folder), delivered);
+    step('record kept aside');
+    const staged = join(folder, 'restoring.db');
+    removeDatabase(staged);
+    await copyInto(copyFile, staged);
+    settleMail(staged, delivered);
+    step('copy staged');
+    await copyInto(staged, recordFile(folder));
+    forceLogToDisk(recordFile(folder));
+    step('copy in place');
+    removeDatabase(staged);
     if (!lock.recordWasMade) lock.markRecordMade();
     return { ok: true, keptAside };
   } catch (error) {
@@ -112,8 +116,18 @@ function deliveredIn(present: Db): Delivered[] {
     .all() as Delivered[];
 }
 
+/** Page by page, as one transaction of the target, whoever has it open. */
+async function copyInto(from: string, to: string): Promise<void> {
+  const source = new Database(from, { readonly: true, fileMustExist: true });
+  try {
+    await source.backup(to);
+  } finally {
+    source.close();
+  }
+}
+
 /** What the old record delivered counts as delivered; what waits in the copy may have left since, and says so. */
-function settleRestored(file: string, delivered: readonly Delivered[]): void {
+function settleMail(file: string, delivered: readonly Delivered[]): void {
   const db = connect(file, { mustExist: true });
   try {
     inTransaction(db, () => {
@@ -128,6 +142,14 @@ function settleRestored(file: string, delivered: readonly Delivered[]): void {
             SELECT 1 FROM delivered_before d WHERE d.message_id = outbox.message_id AND d.recipient = outbox.recipient);
         UPDATE outbox SET possible_duplicate = 1 WHERE state IN ('queued', 'attempting');`);
     });
+  } finally {
+    db.close();
+  }
+}
+
+function forceLogToDisk(file: string): void {
+  const db = connect(file, { mustExist: true });
+  try {
     db.pragma('wal_checkpoint(TRUNCATE)');
   } finally {
     db.close();

@@ -1,6 +1,6 @@
 import type { QuarantinedRow } from '../../alerts/morningReview.ts';
 import type { Mjd } from '../../detectors/time/mjd.ts';
-import type { ArrivalRecord, EventRecord, ListedEvent, OutboxRecord } from '../records.ts';
+import type { ArrivalRecord, EventRecord, FileRecord, ListedEvent, OutboxRecord } from '../records.ts';
 import * as arrivals from './arrivals.ts';
 import { writeBackup } from './backup.ts';
 import { commitIntake } from './commitIntake.ts';
@@ -11,6 +11,7 @@ import type { InstanceLock } from './instanceLock.ts';
 import * as meta from './meta.ts';
 import * as morning from './morning.ts';
 import * as outbox from './outbox.ts';
+import * as recent from './recent.ts';
 import * as reports from './reports.ts';
 import type {
   ClaimedMail,
@@ -175,6 +176,16 @@ export class Store {
 
   quarantinedSince(since: string): QuarantinedRow[] {
     return morning.quarantinedSince(this.#db, since);
+  }
+
+  /** Newest first. */
+  recentFiles(most: number): FileRecord[] {
+    return recent.recentFiles(this.#db, most);
+  }
+
+  /** Newest first, without that of files delivered again since. */
+  recentQuarantine(most: number): QuarantinedRow[] {
+    return recent.recentQuarantine(this.#db, most);
   }
 
   intakeSince(since: string): { files: number; arrivals: number } {

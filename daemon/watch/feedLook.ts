@@ -1,30 +1,46 @@
 import type { Feed } from '../config/configuration.ts';
+import {
+  createFeedMemory,
+  type FeedMemory,
+  forgetAllBut,
+  noteRoot,
+  settle,
+  type TakenFile,
+  type Trouble,
+  type WaitingFile,
+  waitingEntry,
+} from './feedMemory.ts';
 import { type FoundFile, type Scan, scanFolder } from './scan.ts';
-import { isSettled, type Stillness, stillness } from './settle.ts';
+import { isSettled } from './settle.ts';
 
-/**
- * One look at a feed after the other: which files are new or changed and stand still, which still move, and what is wrong just
- * now. Only what the store has not taken in yet is remembered here, so that a restart forgets nothing that matters.
- */
-export interface LookSettings {
-  /** No change for this long: the file is whole. */
-  readonly settleMs: number;
-  /** For files that look cut: without an end of line, or shorter than before. */
-  readonly longSettleMs: number;
-  /** A file that moves for longer is reported. */
-  readonly restlessMs: number;
+/** One look at a feed after the other: which files are new or changed and stand still, which still move, what is wrong now. */
+export interface FeedLook {
+  look(nowMs: number): Promise<Look>;
+  /** The store has it. */
+  taken(file: FoundFile): void;
+  /** It cannot be taken in this form: not offered again until it changes. */
+  refused(file: FoundFile, reason: string): void;
+  /** Offered again after standing still for long. */
+  notYetWhole(file: FoundFile): void;
+  /** Offered again from `notBeforeMs` on. */
+  tryLater(file: FoundFile, again: { readonly notBeforeMs: number; readonly trouble: Trouble | null }): void;
 }
 
-/** The last content of a path that was taken in, as the store has it. */
-export interface TakenFile {
-  readonly signature: string;
-  readonly bytes: number;
+export interface Look {
+  /** Oldest first, by modification time and then by name. */
+  readonly ready: readonly ReadyFile[];
+  /** Files that wait until they stand still. */
+  readonly moving: number;
+  /** When the next of them may be ready; null: none waits. */
+  readonly nextReadyInMs: number | null;
+  /** Null while the folder is gone. */
+  readonly root: { readonly folder: Buffer; readonly identity: string; readonly files: number } | null;
+  readonly problems: readonly WatchProblem[];
 }
-
-export type Recall = (feed: string, file: { readonly path: string; readonly pathBytes: Buffer }) => TakenFile | null;
 
 export interface ReadyFile extends FoundFile {
   readonly feed: string;
+  /** The feed's folder, links resolved. */
   readonly root: Buffer;
   /** True once the file has stood still for `longSettleMs`. */
   readonly stoodLong: boolean;
@@ -36,198 +52,138 @@ export interface WatchProblem {
     | 'root gone'
     | 'root emptied'
     | 'refused'
-    | 'unreadable'
     | 'shrunk'
     | 'restless'
-    | 'not taken in'
-    | 'no notices';
+    | 'no notices'
+    | 'look failed'
+    | Trouble['kind'];
   /** Null: the feed as a whole. */
   readonly path: string | null;
   readonly message: string;
 }
 
-export interface Look {
-  /** Oldest first, by modification time and then by name. */
-  readonly ready: readonly ReadyFile[];
-  /** Files that are watched until they stand still. */
-  readonly moving: number;
-  /** Files in the folder; null while it is gone. */
-  readonly files: number | null;
-  /** When the next file may be ready; null: none waits. */
-  readonly nextReadyInMs: number | null;
-  readonly rootIdentity: string | null;
-  readonly problems: readonly WatchProblem[];
+export interface LookSettings {
+  /** No change for this long: the file is whole. */
+  readonly settleMs: number;
+  /** For files that look cut: without an end of line, or shorter than before. */
+  readonly longSettleMs: number;
+  /** A file that moves for longer is reported. */
+  readonly restlessMs: number;
 }
 
-export interface FeedLook {
-  look(nowMs: number): Promise<Look>;
-  /** The store has it. */
-  taken(file: FoundFile): void;
-  /** It cannot be taken in this form: not offered again until it changes. */
-  refused(file: FoundFile, reason: string): void;
-  /** Offered again after standing still for long. */
-  notYetWhole(file: FoundFile): void;
-  /** Offered again after `waitMs`. */
-  tryLater(
-    file: FoundFile,
-    trouble: { readonly nowMs: number; readonly waitMs: number; readonly problem: WatchProblem | null },
-  ): void;
-}
+/** What the store has of a path; null: nothing. */
+export type Recall = (feed: string, file: FoundFile) => TakenFile | null;
 
-/** A file that is new or changed and not taken in yet. */
-interface Waiting {
-  still: Stillness;
-  readonly firstSeenMs: number;
-  needsLong: boolean;
-  shrunkFrom: number | null;
-  notBeforeMs: number;
-  problem: WatchProblem | null;
-}
+type WatchedFeed = Pick<Feed, 'name' | 'folder' | 'recursive'>;
 
-export function createFeedLook(
-  feed: Pick<Feed, 'name' | 'folder' | 'recursive'>,
-  recall: Recall,
-  settings: LookSettings,
-): FeedLook {
-  const waiting = new Map<string, Waiting>();
-  /** Path → signature of what is settled: taken in, or refused with the problem. */
-  const settled = new Map<string, { readonly signature: string; readonly problem: WatchProblem | null }>();
-  let last: { readonly identity: string; readonly files: number } | null = null;
-  let emptied: WatchProblem | null = null;
-
-  const problem = (kind: WatchProblem['kind'], path: string | null, message: string): WatchProblem => ({
-    feed: feed.name,
-    kind,
-    path,
-    message,
-  });
-
+export function createFeedLook(feed: WatchedFeed, recall: Recall, settings: LookSettings): FeedLook {
+  const memory = createFeedMemory();
   return {
     async look(nowMs) {
       const scan = await scanFolder(feed.folder, { recursive: feed.recursive });
-      if (scan.kind === 'root gone') {
-        // Nothing is forgotten: the files may come back with the disk.
-        const gone = problem(
-          'root gone',
-          null,
-          `the feed's folder ${feed.folder} ${scan.reason}; nothing can be read until it is back`,
-        );
-        return {
-          ready: [],
-          moving: waiting.size,
-          files: null,
-          nextReadyInMs: null,
-          rootIdentity: null,
-          problems: [gone],
-        };
-      }
-      noteRoot(scan);
-      forgetAllBut(new Set(scan.files.map(({ path }) => path)));
-      const ready: ReadyFile[] = [];
-      const problems = scan.refused.map(({ path, reason }) => problem('refused', path, reason));
-      if (emptied !== null) problems.push(emptied);
-      let nextReadyInMs: number | null = null;
-      for (const file of scan.files) {
-        const known = settledAs(file);
-        if (known !== null) {
-          if (known.problem !== null) problems.push(known.problem);
-          continue;
-        }
-        const entry = waitingFor(file, nowMs);
-        problems.push(...troublesOf(file, entry, nowMs));
-        const neededMs = entry.needsLong ? settings.longSettleMs : settings.settleMs;
-        if (nowMs >= entry.notBeforeMs && isSettled(entry.still, nowMs, neededMs)) {
-          const stoodLong = isSettled(entry.still, nowMs, settings.longSettleMs);
-          ready.push({ ...file, feed: feed.name, root: scan.root, stoodLong });
-        } else {
-          const inMs = Math.max(entry.notBeforeMs - nowMs, entry.still.sinceMs + neededMs - nowMs, 1);
-          nextReadyInMs = Math.min(nextReadyInMs ?? inMs, inMs);
-        }
-      }
-      ready.sort(oldestFirst);
-      return {
-        ready,
-        moving: waiting.size,
-        files: scan.files.length,
-        nextReadyInMs,
-        rootIdentity: scan.rootIdentity,
-        problems,
-      };
+      return scan.kind === 'listed'
+        ? sort(scan, { feed, memory, recall, settings, nowMs })
+        : gone(feed, memory, scan.reason);
     },
-    taken({ path, stamp }) {
-      waiting.delete(path);
-      settled.set(path, { signature: stamp.signature, problem: null });
-    },
-    refused({ path, stamp }, reason) {
-      waiting.delete(path);
-      settled.set(path, { signature: stamp.signature, problem: problem('refused', path, reason) });
-    },
+    taken: (file) => settle(memory, file, null),
+    refused: (file, reason) => settle(memory, file, reason),
     notYetWhole({ path }) {
-      const entry = waiting.get(path);
+      const entry = memory.waiting.get(path);
       if (entry !== undefined) entry.needsLong = true;
     },
-    tryLater({ path }, trouble) {
-      const entry = waiting.get(path);
-      if (entry === undefined) return;
-      entry.notBeforeMs = trouble.nowMs + trouble.waitMs;
-      entry.problem = trouble.problem;
+    tryLater({ path }, again) {
+      const entry = memory.waiting.get(path);
+      if (entry !== undefined) Object.assign(entry, again);
     },
   };
+}
 
-  /** Another folder under the name, and nothing in it: more likely a lost mount than a cleared feed. */
-  function noteRoot({ rootIdentity: identity, files }: Extract<Scan, { kind: 'listed' }>): void {
-    if (files.length > 0) emptied = null;
-    else if (last !== null && last.identity !== identity && last.files > 0) {
-      const message = `another, empty folder stands in place of ${feed.folder}, which held ${last.files} files; is a disk not mounted?`;
-      emptied = problem('root emptied', null, message);
+/** Nothing is forgotten: the files may come back with the disk. */
+function gone(feed: WatchedFeed, memory: FeedMemory, reason: string): Look {
+  const message = `the folder ${feed.folder} ${reason}; nothing can be read until it is back`;
+  const problem: WatchProblem = { feed: feed.name, kind: 'root gone', path: null, message };
+  return { ready: [], moving: memory.waiting.size, nextReadyInMs: null, root: null, problems: [problem] };
+}
+
+interface Looking {
+  readonly feed: WatchedFeed;
+  readonly memory: FeedMemory;
+  readonly recall: Recall;
+  readonly settings: LookSettings;
+  readonly nowMs: number;
+}
+
+/** Sorts what the scan found into what is done with, what waits and what is ready. */
+function sort(scan: Extract<Scan, { kind: 'listed' }>, looking: Looking): Look {
+  const { feed, memory, settings, nowMs } = looking;
+  noteRoot(memory, scan);
+  forgetAllBut(memory, scan.files);
+  const ready: ReadyFile[] = [];
+  const problems: WatchProblem[] = [];
+  const report = (kind: WatchProblem['kind'], path: string | null, message: string) =>
+    problems.push({ feed: feed.name, kind, path, message });
+  if (memory.emptiedFrom !== null) report('root emptied', null, emptiedMessage(feed, memory.emptiedFrom));
+  for (const { path, reason } of scan.refused) report('refused', path, reason);
+
+  let nextReadyInMs = Number.POSITIVE_INFINITY;
+  for (const file of scan.files) {
+    const entry = entryOf(file, looking);
+    if ('refusal' in entry) {
+      if (entry.refusal !== null) report('refused', file.path, entry.refusal);
+      continue;
     }
-    last = { identity, files: files.length };
-  }
-
-  function forgetAllBut(present: ReadonlySet<string>): void {
-    for (const path of waiting.keys()) if (!present.has(path)) waiting.delete(path);
-    for (const path of settled.keys()) if (!present.has(path)) settled.delete(path);
-  }
-
-  function settledAs(file: FoundFile): { readonly problem: WatchProblem | null } | null {
-    const known = settled.get(file.path);
-    if (known?.signature === file.stamp.signature) return known;
-    if (waiting.get(file.path)?.still.signature === file.stamp.signature) return null;
-    if (recall(feed.name, file)?.signature !== file.stamp.signature) return null;
-    settled.set(file.path, { signature: file.stamp.signature, problem: null });
-    waiting.delete(file.path);
-    return { problem: null };
-  }
-
-  function waitingFor(file: FoundFile, nowMs: number): Waiting {
-    const { signature, bytes } = file.stamp;
-    const earlier = waiting.get(file.path);
-    if (earlier?.still.signature === signature) return earlier;
-    const before = recall(feed.name, file);
-    const shrunkFrom = before !== null && bytes < before.bytes ? before.bytes : null;
-    const entry: Waiting = {
-      still: stillness(earlier?.still, signature, nowMs),
-      firstSeenMs: earlier?.firstSeenMs ?? nowMs,
-      needsLong: shrunkFrom !== null,
-      shrunkFrom,
-      notBeforeMs: 0,
-      problem: null,
-    };
-    waiting.set(file.path, entry);
-    return entry;
-  }
-
-  function troublesOf(file: FoundFile, entry: Waiting, nowMs: number): WatchProblem[] {
-    const troubles = entry.problem === null ? [] : [entry.problem];
-    if (entry.shrunkFrom !== null) {
-      const message = `is shorter than when it was read (${entry.shrunkFrom} bytes then); it is read again once it has stood still for long`;
-      troubles.push(problem('shrunk', file.path, message));
+    for (const { kind, message } of troublesOf(entry, looking)) report(kind, file.path, message);
+    const neededMs = entry.needsLong ? settings.longSettleMs : settings.settleMs;
+    if (nowMs >= entry.notBeforeMs && isSettled(entry.still, nowMs, neededMs)) {
+      const stoodLong = isSettled(entry.still, nowMs, settings.longSettleMs);
+      ready.push({ ...file, feed: feed.name, root: scan.root, stoodLong });
+    } else {
+      const readyAtMs = Math.max(entry.notBeforeMs, entry.still.sinceMs + neededMs);
+      nextReadyInMs = Math.min(nextReadyInMs, Math.max(1, readyAtMs - nowMs));
     }
-    if (nowMs - entry.firstSeenMs > settings.restlessMs && entry.problem === null) {
-      troubles.push(problem('restless', file.path, 'has not stopped changing; it is read once it stands still'));
-    }
-    return troubles;
   }
+  return {
+    ready: ready.sort(oldestFirst),
+    moving: memory.waiting.size,
+    nextReadyInMs: Number.isFinite(nextReadyInMs) ? nextReadyInMs : null,
+    root: { folder: scan.root, identity: scan.rootIdentity, files: scan.files.length },
+    problems,
+  };
+}
+
+/** The file as one that is done with, or as one that waits. The store is asked once for each new content. */
+function entryOf(
+  file: FoundFile,
+  { feed, memory, recall, nowMs }: Looking,
+): WaitingFile | { readonly refusal: string | null } {
+  const { signature } = file.stamp;
+  const settled = memory.settled.get(file.path);
+  if (settled?.signature === signature) return settled;
+  const waiting = memory.waiting.get(file.path);
+  if (waiting?.still.signature === signature) return waiting;
+  const before = recall(feed.name, file);
+  if (before?.signature !== signature) return waitingEntry(memory, file, { before, nowMs });
+  settle(memory, file, null);
+  return { refusal: null };
+}
+
+function troublesOf(
+  entry: WaitingFile,
+  { settings, nowMs }: Looking,
+): { kind: WatchProblem['kind']; message: string }[] {
+  const troubles: { kind: WatchProblem['kind']; message: string }[] = entry.trouble === null ? [] : [entry.trouble];
+  if (entry.shrunkFrom !== null) {
+    const message = `is shorter than the ${entry.shrunkFrom} bytes that were read before; it is read once it has stood still for long`;
+    troubles.push({ kind: 'shrunk', message });
+  }
+  if (nowMs - entry.firstSeenMs > settings.restlessMs && entry.trouble === null) {
+    troubles.push({ kind: 'restless', message: 'does not stop changing; it is read once it stands still' });
+  }
+  return troubles;
+}
+
+function emptiedMessage(feed: WatchedFeed, files: number): string {
+  return `an empty folder stands in place of ${feed.folder}, which held ${files} files; is a disk not mounted?`;
 }
 
 function oldestFirst(a: FoundFile, b: FoundFile): number {

@@ -1,6 +1,7 @@
 import type { Clock } from '../clock.ts';
 import type { Feed } from '../config/configuration.ts';
 import { reasonOf } from '../errors.ts';
+import { type Beat, createBeat } from './beat.ts';
 import {
   createFeedLook,
   type FeedLook,
@@ -9,8 +10,11 @@ import {
   type Recall,
   type WatchProblem,
 } from './feedLook.ts';
-import { type Notices, type Watch, watchForNotices } from './notices.ts';
-import { readStill } from './open.ts';
+import type { Trouble } from './feedMemory.ts';
+import { createNoticeKeeper } from './noticeKeeper.ts';
+import type { Watch } from './notices.ts';
+import { LARGEST_FILE_BYTES, readStill } from './open.ts';
+import { createProblemLedger } from './problemLedger.ts';
 
 /**
  * Watches the feeds: looks at each on its own beat, sooner after a notice, and hands over what has settled, one file at a time
@@ -58,7 +62,6 @@ export const DEFAULT_SETTLE_MS = 2000;
 /** A writer that pauses for longer inside a row will be believed. */
 const LONG_SETTLE_FACTOR = 10;
 const RESTLESS_MS = 3_600_000;
-const NOTICE_GATHERING_MS = 50;
 const SHORTEST_BREAK_MS = 100;
 /** Looking may take a quarter of the time at most, however many notices come. */
 const BREAK_PER_LOOK = 3;
@@ -79,8 +82,10 @@ export function createWatcher(options: WatcherOptions): Watcher {
   };
 }
 
+type Turns = <Result>(work: () => Promise<Result>) => Promise<Result>;
+
 /** One at a time, in the order of asking. */
-function createTurns(): <Result>(work: () => Promise<Result>) => Promise<Result> {
+function createTurns(): Turns {
   let last: Promise<unknown> = Promise.resolve();
   return (work) => {
     const mine = last.then(work);
@@ -95,48 +100,48 @@ interface FeedLoop {
   stop(): Promise<void>;
 }
 
-function startFeed(feed: Feed, options: WatcherOptions, turns: ReturnType<typeof createTurns>): FeedLoop {
-  const { clock } = options;
+interface Loop {
+  readonly feed: Feed;
+  readonly options: WatcherOptions;
+  readonly watched: FeedLook;
+  readonly turns: Turns;
+  readonly beat: Beat;
+  /** Path → how often taking it in failed. */
+  readonly failures: Map<string, number>;
+}
+
+function startFeed(feed: Feed, options: WatcherOptions, turns: Turns): FeedLoop {
   const settleMs = options.settleMs ?? DEFAULT_SETTLE_MS;
-  const watched = createFeedLook(feed, options.recall, {
-    settleMs,
-    longSettleMs: settleMs * LONG_SETTLE_FACTOR,
-    restlessMs: RESTLESS_MS,
-  });
+  const settings = { settleMs, longSettleMs: settleMs * LONG_SETTLE_FACTOR, restlessMs: RESTLESS_MS };
   const beat = createBeat();
-  const ledger = createProblemLedger(options);
-  const notices = createNoticeKeeper(feed, options, beat.wake);
-  const retries = new Map<string, number>();
+  const loop: Loop = {
+    feed,
+    options,
+    watched: createFeedLook(feed, options.recall, settings),
+    turns,
+    beat,
+    failures: new Map(),
+  };
+  const ledger = createProblemLedger(options.onProblem, options.onProblemEnded ?? (() => {}));
+  const notices = createNoticeKeeper(feed, beat.wake, options.arm);
   let status: FeedStatus = { feed: feed.name, lastLookMs: null, files: null, moving: 0, problems: [] };
 
   const run = async () => {
     while (!beat.stopped) {
-      const startMs = clock.monotonicMs();
-      const look = await watched.look(startMs);
-      const problems = notices.follow(look.rootIdentity);
-      ledger.update([...look.problems, ...problems]);
+      const startMs = options.clock.monotonicMs();
+      const look = await lookOnce(loop, startMs);
+      const lookMs = options.clock.monotonicMs() - startMs;
+      ledger.update([...look.problems, ...notices.follow(look.root)]);
+      const { root, moving } = look;
       status = {
         feed: feed.name,
-        lastLookMs: clock.monotonicMs(),
-        files: look.files,
-        moving: look.moving,
+        lastLookMs: startMs + lookMs,
+        files: root?.files ?? null,
+        moving,
         problems: ledger.current(),
       };
-      const lookMs = clock.monotonicMs() - startMs;
-      await handOver(look, {
-        feed,
-        options,
-        watched,
-        turns,
-        retries,
-        until: () => beat.stopped || clock.monotonicMs() - startMs > feed.pollSeconds * 1000,
-      });
-      const breakMs = Math.max(SHORTEST_BREAK_MS, lookMs * BREAK_PER_LOOK);
-      const nextMs =
-        look.ready.length > 0
-          ? breakMs
-          : Math.min(feed.pollSeconds * 1000, look.nextReadyInMs ?? Number.POSITIVE_INFINITY);
-      await beat.rest({ atLeastMs: breakMs, atMostMs: Math.max(nextMs, breakMs) });
+      await handOver(look, loop, startMs);
+      await beat.rest(restAfter(look, { lookMs, pollMs: feed.pollSeconds * 1000 }));
     }
   };
   const running = run();
@@ -151,136 +156,54 @@ function startFeed(feed: Feed, options: WatcherOptions, turns: ReturnType<typeof
   };
 }
 
-interface HandOver {
-  readonly feed: Feed;
-  readonly options: WatcherOptions;
-  readonly watched: FeedLook;
-  readonly turns: ReturnType<typeof createTurns>;
-  /** Path → how often taking it in failed. */
-  readonly retries: Map<string, number>;
-  /** True when it is time to stop or to look again, so that fresh files do not wait behind a backlog for ever. */
-  until(): boolean;
-}
-
-async function handOver(look: Look, work: HandOver): Promise<void> {
-  for (const file of look.ready) {
-    if (work.until()) return;
-    await handOverOne(file, work);
+/** A look must not end the loop, whatever happens in it: a feed that is not looked at any more would be silent for ever. */
+async function lookOnce({ feed, watched }: Loop, nowMs: number): Promise<Look> {
+  try {
+    return await watched.look(nowMs);
+  } catch (error) {
+    const problem: WatchProblem = { feed: feed.name, kind: 'look failed', path: null, message: reasonOf(error) };
+    return { ready: [], moving: 0, nextReadyInMs: FIRST_RETRY_MS, root: null, problems: [problem] };
   }
 }
 
-async function handOverOne(file: ReadyFile, { feed, options, watched, turns, retries }: HandOver): Promise<void> {
-  const limit = options.largestBytes === undefined ? {} : { largestBytes: options.largestBytes };
-  const { pathBytes, root } = file;
-  const reading = await readStill({ root, pathBytes, signature: file.stamp.signature }, limit);
-  const later = (waitMs: number, problem: WatchProblem | null) =>
-    watched.tryLater(file, { nowMs: options.clock.monotonicMs(), waitMs, problem });
-  if (reading.kind === 'refused') return watched.refused(file, reading.reason);
+function restAfter(look: Look, { lookMs, pollMs }: { readonly lookMs: number; readonly pollMs: number }) {
+  const atLeastMs = Math.max(SHORTEST_BREAK_MS, lookMs * BREAK_PER_LOOK);
+  const wantedMs = look.ready.length > 0 ? atLeastMs : Math.min(pollMs, look.nextReadyInMs ?? pollMs);
+  return { atLeastMs, atMostMs: Math.max(atLeastMs, wantedMs) };
+}
+
+/** Breaks off for the next look after a while, so that what the backlog hides is seen. */
+async function handOver(look: Look, loop: Loop, startMs: number): Promise<void> {
+  const { beat, feed, options } = loop;
+  for (const file of look.ready) {
+    if (beat.stopped || options.clock.monotonicMs() - startMs > feed.pollSeconds * 1000) return;
+    await handOverOne(file, loop);
+  }
+}
+
+async function handOverOne(file: ReadyFile, { options, watched, turns, failures }: Loop): Promise<void> {
+  const tryLater = (waitMs: number, trouble: Trouble | null) =>
+    watched.tryLater(file, { notBeforeMs: options.clock.monotonicMs() + waitMs, trouble });
+  const wanted = { root: file.root, pathBytes: file.pathBytes, signature: file.stamp.signature };
+  const reading = await readStill(wanted, { largestBytes: options.largestBytes ?? LARGEST_FILE_BYTES });
+  if (reading.kind === 'refused') {
+    watched.refused(file, reading.reason);
+    return;
+  }
   if (reading.kind === 'later') {
-    const problem: WatchProblem = { feed: feed.name, kind: 'unreadable', path: file.path, message: reading.reason };
-    return later(reading.quiet ? 0 : FIRST_RETRY_MS, reading.quiet ? null : problem);
+    if (reading.quiet) tryLater(0, null);
+    else tryLater(FIRST_RETRY_MS, { kind: 'unreadable', message: reading.reason });
+    return;
   }
   try {
     const outcome = await turns(() => options.onSettled(file, reading.bytes));
-    retries.delete(file.path);
+    failures.delete(file.path);
     if (outcome === 'taken') watched.taken(file);
     else watched.notYetWhole(file);
   } catch (error) {
-    const times = retries.get(file.path) ?? 0;
-    retries.set(file.path, times + 1);
-    const message = `could not be taken in: ${reasonOf(error)}`;
-    later(Math.min(LONGEST_RETRY_MS, FIRST_RETRY_MS * 2 ** times), {
-      feed: feed.name,
-      kind: 'not taken in',
-      path: file.path,
-      message,
-    });
+    const times = failures.get(file.path) ?? 0;
+    failures.set(file.path, times + 1);
+    const waitMs = Math.min(LONGEST_RETRY_MS, FIRST_RETRY_MS * 2 ** times);
+    tryLater(waitMs, { kind: 'not taken in', message: `could not be taken in: ${reasonOf(error)}` });
   }
-}
-
-/** Sleeps between looks: at least so long, at most so long, and until somebody wakes it. */
-function createBeat() {
-  let stopped = false;
-  let woken = false;
-  let ring: () => void = () => {};
-  const sleep = (ms: number, endedBy: () => boolean) =>
-    new Promise<void>((resolve) => {
-      if (stopped || endedBy()) return resolve();
-      const timer = setTimeout(end, Math.max(0, ms));
-      ring = () => {
-        if (stopped || endedBy()) end();
-      };
-      function end() {
-        clearTimeout(timer);
-        resolve();
-      }
-    });
-  return {
-    get stopped() {
-      return stopped;
-    },
-    wake: () => {
-      woken = true;
-      ring();
-    },
-    stop: () => {
-      stopped = true;
-      ring();
-    },
-    async rest({ atLeastMs, atMostMs }: { readonly atLeastMs: number; readonly atMostMs: number }) {
-      await sleep(atLeastMs, () => false);
-      await sleep(atMostMs - atLeastMs, () => woken);
-      // Notices come in swarms: one look serves those of the next moment too.
-      if (woken) await sleep(NOTICE_GATHERING_MS, () => false);
-      woken = false;
-    },
-  };
-}
-
-/** Says once when a problem begins and once when it is over. */
-function createProblemLedger(options: Pick<WatcherOptions, 'onProblem' | 'onProblemEnded'>) {
-  let current = new Map<string, WatchProblem>();
-  return {
-    update(problems: readonly WatchProblem[]) {
-      const now = new Map(
-        problems.map((problem) => [JSON.stringify([problem.kind, problem.path, problem.message]), problem]),
-      );
-      for (const [id, problem] of now) if (!current.has(id)) options.onProblem(problem);
-      for (const [id, problem] of current) if (!now.has(id)) options.onProblemEnded?.(problem);
-      current = now;
-    },
-    current: () => [...current.values()],
-  };
-}
-
-/** Holds the notices of one feed; sets them up anew when another folder stands under the feed's name. */
-function createNoticeKeeper(feed: Feed, options: WatcherOptions, onNotice: () => void) {
-  let notices: Notices | null = null;
-  let armedFor: string | null = null;
-  let failure: WatchProblem | null = null;
-  return {
-    follow(rootIdentity: string | null): WatchProblem[] {
-      if (rootIdentity !== null && rootIdentity !== armedFor) {
-        void notices?.close();
-        armedFor = rootIdentity;
-        failure = null;
-        notices = watchForNotices(
-          {
-            ...feed,
-            onNotice,
-            onFailure: (reason) => {
-              const message = `no notices of new files: ${reason}; the folder is looked at every ${feed.pollSeconds} s`;
-              failure = { feed: feed.name, kind: 'no notices', path: null, message };
-              onNotice();
-            },
-          },
-          options.arm,
-        );
-      }
-      return failure === null ? [] : [failure];
-    },
-    close: async () => {
-      await notices?.close();
-    },
-  };
 }

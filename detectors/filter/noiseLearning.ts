@@ -35,7 +35,8 @@ export function learnNoise(
     prior.floorOverSigma,
   ].map((p: LogNormal) => p.lnScatter);
   if (problem.count === 0) return noiseAt(centre);
-  const cost = (point: Float64Array): number => penalty(point, centre, scatter) - logLikelihood(problem, noiseAt(point));
+  const cost = (point: Float64Array): number =>
+    penalty(point, centre, scatter) - logLikelihood(problem, noiseAt(point));
   const begin = bestStart(cost, startPoints(centre, scatter, start));
   const { point } = nelderMead(cost, begin, {
     steps: [1.5, 1.5, 1.5, 0.3, 0.7],
@@ -64,17 +65,15 @@ function penalty(point: Float64Array, centre: Float64Array, scatter: readonly nu
   return sum;
 }
 
-/** The likelihood can have a peak for each kind of walk: look at weak and strong walks of each before descending. */
+/** In scatters of the prior (phase, frequency, torque): the likelihood can have a peak for each kind of walk. */
+const FIRST_LOOKS = [
+  ...[-1, 0, 1].flatMap((frequency) => [-1, 0, 1].map((torque) => [0, frequency, torque] as const)),
+  [1, -1, -1],
+  [2, -1, -1],
+] as const;
+
 function startPoints(centre: Float64Array, scatter: readonly number[], start: NoiseModel | undefined): Float64Array[] {
-  const points: Float64Array[] = [];
-  for (const frequency of [-1, 0, 1]) {
-    for (const torque of [-1, 0, 1]) {
-      const point = Float64Array.from(centre);
-      point[1] = point[1]! + frequency * scatter[1]!;
-      point[2] = point[2]! + torque * scatter[2]!;
-      points.push(point);
-    }
-  }
+  const points = FIRST_LOOKS.map((look) => centre.map((value, walk) => value + (look[walk] ?? 0) * scatter[walk]!));
   if (start) {
     const { phaseWalk, frequencyWalk, torqueWalk, uncertaintyScale, floorTurns } = start;
     const values = [phaseWalk, frequencyWalk, torqueWalk, uncertaintyScale, floorTurns];
@@ -95,4 +94,3 @@ function bestStart(cost: (point: Float64Array) => number, points: readonly Float
   }
   return best;
 }
-

@@ -35,8 +35,7 @@ const END_OVER_RESIDUAL = { phase: 4.8, frequency: 29.2, torque: 53.0 } as const
  */
 export function noisePrior(frequencyHz: number, frequencyDerivativeHzPerS: number): NoisePrior {
   const spinDown = Math.max(Math.abs(frequencyDerivativeHzPerS), 1e-18) / 1e-15;
-  const lnSigmaUs =
-    1.6 - 1.4 * Math.log(frequencyHz) + 1.1 * Math.log(spinDown) + 2 * Math.log(REFERENCE_SPAN_YEARS);
+  const lnSigmaUs = 1.6 - 1.4 * Math.log(frequencyHz) + 1.1 * Math.log(spinDown) + 2 * Math.log(REFERENCE_SPAN_YEARS);
   const residualTurns = Math.exp(lnSigmaUs) * 1e-6 * frequencyHz;
   const variance = residualTurns * residualTurns;
   const spanDays = REFERENCE_SPAN_YEARS * DAYS_PER_YEAR;

@@ -4,16 +4,7 @@ const HALF_LN_2PI = 0.5 * Math.log(2 * Math.PI);
 const STIRLING_FROM = 15;
 
 /** B₂ₖ / (2k (2k − 1)), k = 1…8 (Abramowitz & Stegun 6.1.40). */
-const STIRLING = [
-  1 / 12,
-  -1 / 360,
-  1 / 1260,
-  -1 / 1680,
-  1 / 1188,
-  -691 / 360360,
-  1 / 156,
-  -3617 / 122400,
-] as const;
+const STIRLING = [1 / 12, -1 / 360, 1 / 1260, -1 / 1680, 1 / 1188, -691 / 360360, 1 / 156, -3617 / 122400] as const;
 
 /** ln Γ(x) for x > 0; NaN otherwise. */
 export function logGamma(x: number): number {

@@ -79,7 +79,10 @@ export function leastSquares(columns: readonly Float64Array[], y: Float64Array):
   const p = columns.length;
   const solution = new Float64Array(p);
   const covariance = new Float64Array(p * p);
-  const inverse = inverseOfUpper(independent.map((j) => reduced[j]!), rank);
+  const inverse = inverseOfUpper(
+    independent.map((j) => reduced[j]!),
+    rank,
+  );
   let logDeterminant = 0;
   for (let a = 0; a < rank; a++) {
     for (let k = a; k < rank; k++) solution[independent[a]!]! += inverse[a * rank + k]! * target[k]!;

@@ -40,7 +40,7 @@ export function epochGrids(system: GapSystem, recovery: RecoveryColumn, widest: 
       const width = curve.sd(peak) / Math.max(Math.abs(curve.slope(peak)), 1e-300);
       if (width > lengthDays / 8) narrow = false;
       for (let i = 0; i <= FINE; i++) {
-        const lead = peak + (10 * i / FINE - 5) * width;
+        const lead = peak + ((10 * i) / FINE - 5) * width;
         if (lead > 0 && lead < lengthDays) leads.push(lead);
       }
     }

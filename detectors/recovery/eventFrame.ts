@@ -66,7 +66,14 @@ export function eventFrame(event: EventData): EventFrame {
     addDisturbance(disturbance, arrivals, from, layout, add);
   }
   const data = Float64Array.from(arrivals, ({ deviationTurns }) => deviationTurns);
-  const frame = { arrivals, plan, nuisance, data, gaps, windowDays: gaps.reduce((sum, gap) => sum + gap.lengthDays, 0) };
+  const frame = {
+    arrivals,
+    plan,
+    nuisance,
+    data,
+    gaps,
+    windowDays: gaps.reduce((sum, gap) => sum + gap.lengthDays, 0),
+  };
   reduce(frame, data, 0);
   return frame;
 }

@@ -1,7 +1,7 @@
 import { logSumExp } from '../math/logSumExp.ts';
 import { type EventData, type EventFrame, eventFrame } from './eventFrame.ts';
-import { explore, type GlitchPoint } from './glitchPosterior.ts';
 import { gapSystem, withoutRecovery } from './gapSystem.ts';
+import { explore, type GlitchPoint } from './glitchPosterior.ts';
 import { type Estimate, gridEstimate, mixtureEstimate } from './mixture.ts';
 import { defaultSizePrior, type SizePrior, sizeScales } from './sizePrior.ts';
 import { scanTimescales } from './timescaleScan.ts';
@@ -89,10 +89,7 @@ function significant(points: readonly GlitchPoint[]): GlitchPoint[] {
   return points.filter(({ logMass }) => logMass > heaviest - 12);
 }
 
-type Description = Omit<
-  GlitchFit,
-  'logEvidenceNone' | 'logEvidencePlain' | 'logEvidenceRecovery' | 'recoveryTerms'
->;
+type Description = Omit<GlitchFit, 'logEvidenceNone' | 'logEvidencePlain' | 'logEvidenceRecovery' | 'recoveryTerms'>;
 
 function describe(points: readonly GlitchPoint[], recovers: boolean): Description {
   const heaviest = points.reduce((most, { logMass }) => Math.max(most, logMass), Number.NEGATIVE_INFINITY);
@@ -108,14 +105,20 @@ function describe(points: readonly GlitchPoint[], recovers: boolean): Descriptio
   const hzPerS = hz / SECONDS_PER_DAY;
   return {
     bestEpochDays: best.epochDays,
-    epochDays: gridEstimate(Float64Array.from(points, ({ epochDays }) => epochDays), weights),
+    epochDays: gridEstimate(
+      Float64Array.from(points, ({ epochDays }) => epochDays),
+      weights,
+    ),
     deltaNuHz: marginal((point) => project(point, [1, 0, 1]), hz),
     deltaNuDotHzPerS: marginal((point) => project(point, [0, 1, -1 / point.timescaleDays]), hzPerS),
     persistentNuHz: marginal((point) => project(point, [1, 0, 0]), hz),
     persistentNuDotHzPerS: marginal((point) => project(point, [0, 1, 0]), hzPerS),
     recovery: recovers
       ? {
-          timescaleDays: gridEstimate(Float64Array.from(points, ({ timescaleDays }) => timescaleDays), weights),
+          timescaleDays: gridEstimate(
+            Float64Array.from(points, ({ timescaleDays }) => timescaleDays),
+            weights,
+          ),
           fraction: marginal(fraction, 1),
           frequencyStepHz: marginal((point) => project(point, [0, 0, 1]), hz),
         }

@@ -1,6 +1,6 @@
 import { logAddExp, logSumExp } from '../math/logSumExp.ts';
-import type { EventFrame } from './eventFrame.ts';
 import { epochGrids } from './epochGrid.ts';
+import type { EventFrame } from './eventFrame.ts';
 import { type GapSystem, type RecoveryColumn, ROWS } from './gapSystem.ts';
 import type { SizeScale } from './sizePrior.ts';
 

@@ -47,7 +47,9 @@ export function fitStep(input: StepFitInput): StepFit {
   const square = frame.data.reduce((sum, entry) => sum + entry * entry, 0);
   const widths = sizeWidths(input);
   const points = candidates.flatMap((candidate) => widths.map((width) => stepPoint(candidate, width, square)));
-  const logMasses = points.map(({ logMass }, i) => logMass + Math.log(candidates[Math.floor(i / widths.length)]!.weight));
+  const logMasses = points.map(
+    ({ logMass }, i) => logMass + Math.log(candidates[Math.floor(i / widths.length)]!.weight),
+  );
   const logEvidenceStep = logSumExp(logMasses) - Math.log(widths.length);
   const weights = Float64Array.from(logMasses, (mass) => Math.exp(mass - Math.max(...logMasses)));
   const best = points.reduce((a, b) => (b.logMass > a.logMass ? b : a));

@@ -1,7 +1,7 @@
 import { logSumExp } from '../math/logSumExp.ts';
 import type { EventFrame } from './eventFrame.ts';
-import { explore, type GlitchPoint, type PointCloud } from './glitchPosterior.ts';
 import { type GapSystem, recoveryColumn } from './gapSystem.ts';
+import { explore, type GlitchPoint, type PointCloud } from './glitchPosterior.ts';
 import type { SizeScale } from './sizePrior.ts';
 
 /** Shortest recovery looked for, days. */
@@ -38,9 +38,7 @@ export function scanTimescales(
     evaluate(low + ((high - low) * i) / (FIRST_NODES - 1), systems, scales),
   );
   const best = Math.max(...nodes.map(({ logEvidence }) => logEvidence));
-  const hopeful = systems.filter((_, g) =>
-    nodes.some(({ clouds }) => clouds[g]!.logEvidence > best - HOPELESS),
-  );
+  const hopeful = systems.filter((_, g) => nodes.some(({ clouds }) => clouds[g]!.logEvidence > best - HOPELESS));
   while (nodes.length < MOST_NODES) {
     const at = roughestInterval(nodes);
     if (at === null) break;

@@ -20,7 +20,8 @@ export function parseEarthOrientation(
     if (row === 'blank day') break;
     if (row === 'bad') return { problem: `line ${index + 1}: not a row of finals2000A or EOP C04` };
     const last = rows.at(-1);
-    if (last !== undefined && row.mjd <= last.mjd) return { problem: `line ${index + 1}: MJD ${row.mjd} does not rise` };
+    if (last !== undefined && row.mjd <= last.mjd)
+      return { problem: `line ${index + 1}: MJD ${row.mjd} does not rise` };
     rows.push(row);
   }
   if (rows.length === 0) return { problem: 'no row of finals2000A or EOP C04 in it' };

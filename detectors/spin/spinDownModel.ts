@@ -25,8 +25,7 @@ export function phaseEvaluator(model: PulsarModel): (tdb: Mjd) => PhaseAtArrival
     const t = toNumber(seconds);
     let frequencyHz =
       spin.frequencyHz.hi +
-      (spin.frequencyHz.lo +
-        t * (spin.frequencyDerivativeHzPerS + 0.5 * t * spin.frequencySecondDerivativeHzPerS2));
+      (spin.frequencyHz.lo + t * (spin.frequencyDerivativeHzPerS + 0.5 * t * spin.frequencySecondDerivativeHzPerS2));
     for (const glitch of glitches) {
       const since = toNumber(secondsBetween(tdb, glitch.epochTdb));
       if (since <= 0) continue;

@@ -6,6 +6,7 @@ import type { PulsarModel } from '../spin/pulsarModel.ts';
 import { type PhaseAtArrival, phaseEvaluator } from '../spin/spinDownModel.ts';
 import type { Mjd } from '../time/mjd.ts';
 import type { Bank } from './bank.ts';
+import type { MeasuredTrack } from './measure.ts';
 import { newStateMap, newTimeline, type StateMap, type Timeline } from './timeline.ts';
 import type { Track } from './track.ts';
 
@@ -27,6 +28,8 @@ export interface PulsarWatch {
   nextLearning: number;
   /** Run of unexplained arrivals at which the search for a large step is tried next. */
   nextSearch: number;
+  /** Measurements already made, by track: a cache of a pure function. */
+  readonly measured: Map<number, MeasuredTrack>;
 }
 
 const FIRST_LEARNING = 10;
@@ -47,6 +50,7 @@ export function startWatch(model: PulsarModel, settings: DetectorSettings): Puls
     oldestGap: 1,
     nextLearning: FIRST_LEARNING,
     nextSearch: 0,
+    measured: new Map(),
   };
 }
 

@@ -2,6 +2,7 @@
 
 import type { CountedArrival, Disturbance } from '../filter/countedArrival.ts';
 import { learnNoise } from '../filter/noiseLearning.ts';
+import { withMargin } from '../filter/noiseMargin.ts';
 import { logAddExp } from '../math/logSumExp.ts';
 import { newBank } from './bank.ts';
 import { glitch } from './births.ts';
@@ -35,7 +36,8 @@ export function relearn(watch: PulsarWatch, index: number): void {
   watch.nextLearning = Math.ceil((index + 1) * LEARNING_GROWTH);
   const best = bestOf(watch);
   const counted = countedArrivals(watch, best);
-  watch.noise = learnNoise(counted, disturbances(watch), watch.prior, watch.noise);
+  const known = disturbances(watch);
+  watch.noise = withMargin(learnNoise(counted, known, watch.prior, watch.noise), counted, known, watch.prior);
   rebuild(watch, index, best);
 }
 

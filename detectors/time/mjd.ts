@@ -49,8 +49,7 @@ export function parseMjd(text: string): Mjd | null {
   return normalMjd(Number(match[1]), match[2] === undefined ? 0 : Number(`0.${match[2]}`));
 }
 
-/** `day.fraction` with at least 16 decimals; `parseMjd` gives the same date back from 17. */
+/** `day.fraction` with at least 16 decimals, which is enough for no fraction to round up to 1; 17 (the default) read back as the same date. */
 export function formatMjd(t: Mjd, decimals = 17): string {
-  const fraction = t.fraction.toFixed(Math.max(16, decimals));
-  return fraction.startsWith('1') ? `${t.day + 1}${fraction.slice(1)}` : `${t.day}${fraction.slice(1)}`;
+  return `${t.day}${t.fraction.toFixed(Math.max(16, decimals)).slice(1)}`;
 }

@@ -25,7 +25,10 @@ function processorMs(): number {
   return process.cpuUsage().user / 1000;
 }
 
-function measure(name: string, run: (arrival: ReceivedArrival) => { readonly tdb: { readonly fraction: number } }): void {
+function measure(
+  name: string,
+  run: (arrival: ReceivedArrival) => { readonly tdb: { readonly fraction: number } },
+): void {
   const rates: number[] = [];
   let check = 0;
   for (let round = 0; round < ROUNDS; round++) {

@@ -1,5 +1,5 @@
-import { xoroshiro128plus } from 'pure-rand/generator/xoroshiro128plus';
 import { uniformFloat64 } from 'pure-rand/distribution/uniformFloat64';
+import { xoroshiro128plus } from 'pure-rand/generator/xoroshiro128plus';
 import type { CountedArrival } from '../../detectors/filter/countedArrival.ts';
 import type { Walks } from '../../detectors/filter/stateSpace.ts';
 
@@ -54,7 +54,12 @@ export function observingDays(count: number, cadenceDays: number, jitter: number
 }
 
 /** One receiver, one band. */
-export function simulateArrivals(days: readonly number[], walks: Walks, sigmaTurns: number, random: Dice): CountedArrival[] {
+export function simulateArrivals(
+  days: readonly number[],
+  walks: Walks,
+  sigmaTurns: number,
+  random: Dice,
+): CountedArrival[] {
   const walk = simulateWalk(days, walks, random);
   return days.map((tDays, i) => ({
     tDays,

@@ -1,6 +1,8 @@
+import { readFileSync } from 'node:fs';
 import type { ReceivedArrival } from '../../detectors/arrival.ts';
 import type { EarthOrientationTable } from '../../detectors/sky/earthOrientation.ts';
 import type { PulsarModel } from '../../detectors/spin/pulsarModel.ts';
+import { type LeapSecondTable, parseLeapSeconds } from '../../detectors/time/leapSeconds.ts';
 import { parseMjd } from '../../detectors/time/mjd.ts';
 
 /** A pulsar of which only the place, its motion and the dispersion matter. */
@@ -53,4 +55,12 @@ export function orientationOf(ut1MinusUtcS: number, xArcsec: number, yArcsec: nu
     xArcsec: Float64Array.of(xArcsec, xArcsec),
     yArcsec: Float64Array.of(yArcsec, yArcsec),
   };
+}
+
+/** The list that ships with the program. */
+export function leapSecondTable(): LeapSecondTable {
+  const file = new URL('../../daemon/tables/leap-seconds.list', import.meta.url);
+  const parsed = parseLeapSeconds(readFileSync(file, 'utf8'));
+  if ('problem' in parsed) throw new Error(parsed.problem);
+  return parsed.table;
 }

@@ -21,6 +21,8 @@ export interface Import {
   readonly specifier: string;
   /** The file it names when relative; null for a package or a builtin. */
   readonly target: string | null;
+  /** `import type …`: gone when the program runs. */
+  readonly typeOnly: boolean;
 }
 
 export interface Located {
@@ -92,10 +94,8 @@ export function parseSource(path: string, text: string): SourceFile {
 
   const specifiers = [
     ...module.staticImports.map((found) => ({ start: found.start, specifier: found.moduleRequest.value })),
-    ...module.staticExports.flatMap((found) =>
-      found.entries.flatMap(({ start, moduleRequest }) =>
-        moduleRequest ? [{ start, specifier: moduleRequest.value }] : [],
-      ),
+    ...module.staticExports.flatMap(({ start, entries }) =>
+      entries.flatMap(({ moduleRequest }) => (moduleRequest ? [{ start, specifier: moduleRequest.value }] : [])),
     ),
     ...module.dynamicImports.map(({ start, moduleRequest }) => ({
       start,
@@ -108,6 +108,7 @@ export function parseSource(path: string, text: string): SourceFile {
     imports: specifiers.map(({ start, specifier }) => ({
       line: lineAt(start),
       specifier,
+      typeOnly: /^(import|export)\s+type\b/.test(text.slice(start, start + 20)),
       target: specifier.startsWith('.') ? posix.join(posix.dirname(path), specifier) : null,
     })),
     uses,

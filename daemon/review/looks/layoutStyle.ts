@@ -4,16 +4,17 @@ export const LAYOUT_STYLE = `
 html { -webkit-text-size-adjust: 100%; }
 body {
   margin: 0; background: var(--paper); color: var(--ink);
-  font: 15px/1.45 system-ui, "Segoe UI", "DejaVu Sans", sans-serif; font-variant-numeric: tabular-nums;
+  font: 0.9375rem/1.45 system-ui, "Segoe UI", "DejaVu Sans", sans-serif; font-variant-numeric: tabular-nums;
 }
 main { max-width: 78rem; margin: 0 auto; padding: 0 1.25rem 1.5rem; }
 h1, h2, h3 { line-height: 1.2; font-weight: 650; margin: 0; }
 h1 { font-size: 1.45rem; }
+main > h1 { margin-top: 1.4rem; }
 h2 { font-size: 1.02rem; margin-top: 1.75rem; }
 h3 { font-size: 0.95rem; }
 p { margin: 0.35rem 0; }
 a { color: var(--link); text-underline-offset: 0.15em; }
-small, .quiet, .lead, .asof, .foot { color: var(--quiet); font-size: 0.87rem; }
+small, .quiet, .lead, .asof, .foot { color: var(--quiet); font-size: 0.93em; }
 .unseen { position: absolute; width: 1px; height: 1px; overflow: hidden; clip-path: inset(50%); white-space: nowrap; }
 :focus-visible { outline: 2px solid var(--focus); outline-offset: 2px; border-radius: 2px; }
 .skip { position: absolute; left: -999rem; }
@@ -41,7 +42,6 @@ small, .quiet, .lead, .asof, .foot { color: var(--quiet); font-size: 0.87rem; }
 kbd { font: inherit; border: 1px solid var(--line); border-radius: 3px; padding: 0 0.3em; background: var(--panel); }
 .plain { max-width: 36rem; padding-top: 3rem; }
 
-.headline { margin-top: 1.4rem; }
 .glance { display: grid; grid-template-columns: repeat(auto-fit, minmax(11rem, 1fr)); gap: 0.6rem; margin-top: 1rem; }
 .tile {
   display: flex; flex-direction: column; gap: 0.05rem; padding: 0.55rem 0.75rem; text-decoration: none; color: var(--ink);
@@ -60,7 +60,7 @@ tbody tr:hover { background: var(--paper); }
 th { color: var(--quiet); font-weight: 600; font-size: 0.85rem; vertical-align: bottom; }
 .number { text-align: right; }
 td.number { white-space: nowrap; }
-td small, .size { white-space: nowrap; }
+td small, td.whole { white-space: nowrap; }
 .path, .note, td bdi { overflow-wrap: anywhere; }
 .note { white-space: pre-wrap; }
 td .note { display: block; min-width: 9rem; }
@@ -128,7 +128,7 @@ blockquote { margin: 0.2rem 0; }
   table { border: 0; background: none; }
   tr { background: var(--panel); border: 1px solid var(--line); border-radius: 4px; padding: 0.35rem 0.7rem; margin-top: 0.5rem; }
   td, td.number { display: flex; justify-content: space-between; gap: 1rem; text-align: right; white-space: normal; border: 0; padding: 0.15rem 0; }
-  td small, .size, a.event { white-space: normal; }
+  td small, td.whole, a.event { white-space: normal; }
   td > div { min-width: 0; }
   td .note { min-width: 0; }
   td::before { content: attr(data-head); color: var(--quiet); font-size: 0.85rem; text-align: left; flex: none; max-width: 50%; }
@@ -136,7 +136,10 @@ blockquote { margin: 0.2rem 0; }
 @media (prefers-reduced-motion: no-preference) { a, .tile { transition: border-color 0.1s, background-color 0.1s; } }
 @media print {
   :root { --paper: #fff; --panel: #fff; }
-  body { font-size: 9.5pt; }
+  html { font-size: 9.5pt; }
+  th, td { padding: 0.25rem 0.45rem; }
+  td.whole, td small { white-space: normal; }
+  td .note { min-width: 0; }
   .crop { max-width: 13cm; }
   .bars { max-width: 13cm; }
   nav, .skip, .live, .verdict, .downloads, .keys { display: none !important; }

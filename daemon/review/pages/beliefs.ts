@@ -56,7 +56,7 @@ const SIZES: readonly Column<PulsarEvent['aliases'][number]>[] = [
 
 const BELIEFS: readonly Column<EventChange>[] = [
   { head: 'Revision', cell: (change) => String(change.revision), numeric: true },
-  { head: 'When, UTC', cell: (change) => utc(change.at) },
+  { head: 'When, UTC', cell: (change) => utc(change.at), whole: true },
   { head: 'What', cell: (change) => html`<span class="note">${visible(change.what)}</span>` },
   { head: 'State', cell: ({ event }) => event.state },
   {
@@ -64,6 +64,6 @@ const BELIEFS: readonly Column<EventChange>[] = [
     cell: ({ event }) => html`${event.explanation} <small>${ownProbability(event)}</small>`,
   },
   { head: 'Epoch', cell: ({ event }) => mjdAndDay(event.epochMjd)[0] },
-  { head: 'Size', cell: ({ event }) => html`<span class="size">${sizeText(event) || ABSENT}</span>` },
+  { head: 'Size', cell: ({ event }) => sizeText(event) || ABSENT, whole: true },
   { head: 'Arrivals', cell: ({ event }) => String(event.arrivalsUsed), numeric: true },
 ];

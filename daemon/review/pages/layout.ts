@@ -96,7 +96,9 @@ function healthBar(health: WatchHealth): Html {
 export interface Column<Row> {
   readonly head: string;
   readonly cell: (row: Row) => Html | string;
-  readonly numeric?: boolean;
+  readonly numeric?: true;
+  /** Kept on one line where the width allows. */
+  readonly whole?: true;
 }
 
 /** One table for the whole page; on a phone each row becomes a card, its cells labelled by their column. */
@@ -119,5 +121,6 @@ export function table<Row>(options: {
 }
 
 function classOf<Row>(column: Column<Row>): Html {
-  return column.numeric === true ? html` class="number"` : html``;
+  if (column.numeric) return html` class="number"`;
+  return column.whole ? html` class="whole"` : html``;
 }

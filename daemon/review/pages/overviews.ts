@@ -78,7 +78,7 @@ function smallest(size: number | null): string {
 
 const FEEDS: readonly Column<FeedOverview>[] = [
   { head: 'Feed', cell: (row) => html`<bdi>${visible(row.feed)}</bdi>` },
-  { head: 'Last file, UTC', cell: (row) => (row.lastFileAt === null ? ABSENT : utc(row.lastFileAt)) },
+  { head: 'Last file, UTC', cell: (row) => (row.lastFileAt === null ? ABSENT : utc(row.lastFileAt)), whole: true },
   {
     head: 'Expected every',
     cell: (row) => (row.expectEveryHours === null ? ABSENT : span(row.expectEveryHours)),
@@ -88,7 +88,7 @@ const FEEDS: readonly Column<FeedOverview>[] = [
 ];
 
 const QUARANTINE: readonly Column<QuarantinedRow>[] = [
-  { head: 'When, UTC', cell: (row) => utc(row.at) },
+  { head: 'When, UTC', cell: (row) => utc(row.at), whole: true },
   { head: 'Feed', cell: (row) => html`<bdi>${visible(row.feed)}</bdi>` },
   { head: 'File', cell: (row) => html`<bdi class="path">${visible(row.file)}</bdi>` },
   { head: 'Line', cell: (row) => (row.line === null ? 'whole file' : String(row.line)), numeric: true },
@@ -96,7 +96,7 @@ const QUARANTINE: readonly Column<QuarantinedRow>[] = [
 ];
 
 const FILES: readonly Column<FileRecord>[] = [
-  { head: 'When, UTC', cell: (row) => utc(row.takenInAt) },
+  { head: 'When, UTC', cell: (row) => utc(row.takenInAt), whole: true },
   { head: 'Feed', cell: (row) => html`<bdi>${visible(row.feed)}</bdi>` },
   { head: 'File', cell: (row) => html`<bdi class="path">${visible(row.path)}</bdi>` },
   { head: 'Rows', cell: (row) => String(row.rows), numeric: true },
@@ -116,7 +116,7 @@ const FILES: readonly Column<FileRecord>[] = [
 ];
 
 const MAIL: readonly Column<OutboxRecord>[] = [
-  { head: 'Written, UTC', cell: (row) => utc(row.createdAt) },
+  { head: 'Written, UTC', cell: (row) => utc(row.createdAt), whole: true },
   { head: 'To', cell: (row) => html`<bdi>${visible(row.recipient)}</bdi>` },
   {
     head: 'Subject',

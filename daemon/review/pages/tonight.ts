@@ -158,7 +158,7 @@ const QUEUE: readonly Column<PulsarEvent>[] = [
   { head: 'Pulsar', cell: eventLink },
   { head: 'Explanation', cell: (event) => html`${eventName(event)} <small>${ownProbability(event)}</small>` },
   { head: 'Epoch', cell: (event) => epoch(event) },
-  { head: 'Size', cell: size },
+  { head: 'Size', cell: size, whole: true },
   { head: 'ln Bayes factor', cell: (event) => plain(event.logBayesFactor, 3), numeric: true },
   { head: 'False alerts a year', cell: falseAlerts, numeric: true },
   { head: 'Arrivals', cell: (event) => String(event.arrivalsUsed), numeric: true },
@@ -169,8 +169,8 @@ const DECIDED: readonly Column<Decision>[] = [
   { head: 'Decision', cell: decision },
   { head: 'Explanation', cell: ({ event }) => event.explanation },
   { head: 'Epoch', cell: ({ event }) => epoch(event) },
-  { head: 'Size', cell: ({ event }) => size(event) },
-  { head: 'When, UTC', cell: ({ at }) => utc(at) },
+  { head: 'Size', cell: ({ event }) => size(event), whole: true },
+  { head: 'When, UTC', cell: ({ at }) => utc(at), whole: true },
   {
     head: 'Note',
     cell: ({ verdict }) => (verdict === null ? ABSENT : html`<span class="note">${visible(verdict.note)}</span>`),
@@ -186,8 +186,8 @@ function epoch(event: PulsarEvent): Html {
   return html`${mjd} <small>${day}</small>`;
 }
 
-function size(event: PulsarEvent): Html {
-  return html`<span class="size">${sizeText(event) || ABSENT}</span>`;
+function size(event: PulsarEvent): string {
+  return sizeText(event) || ABSENT;
 }
 
 /** That noise alone would bring about at this level, in the whole programme. */

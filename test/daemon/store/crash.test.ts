@@ -2,15 +2,17 @@ import { existsSync, rmSync } from 'node:fs';
 import { join } from 'node:path';
 import Database from 'better-sqlite3';
 import { afterAll, beforeAll, expect, test } from 'vitest';
-import type { Store } from '../../../daemon/store/index.ts';
+import { restore, type Store } from '../../../daemon/store/index.ts';
 import { bundle, type Ended, start } from './childProgram.ts';
 import { oneNight } from './oneNight.ts';
-import { open, temporaryFolder } from './sample.ts';
+import { AT, fileBatch, LATER, NEXT_DAY, notice, open, temporaryFolder } from './sample.ts';
 
 // A fault is moved one step later each time until a run ends without meeting it, as SQLite's own tests do it
 // (sqlite.org/testing.html, "I/O error testing" and "Crash testing").
 
 const STEPS_AT_MOST = 80;
+/** Some sixty starts of a process: minutes on a machine that is busy with other things. */
+const PATIENCE_MS = 240_000;
 const folder = temporaryFolder();
 let program = '';
 
@@ -22,7 +24,7 @@ afterAll(() => folder.remove());
 const runWithKillAt = (state: string, n: number): Promise<Ended> =>
   start(program, [state], { SPINVIGIL_TEST_KILL_AT: String(n) }).ended;
 
-test('killed at any step, the record is whole, keeps what was acknowledged, and the work goes on', async () => {
+test('killed at any step, the record is whole, keeps what was acknowledged, and the work goes on', { timeout: PATIENCE_MS }, async () => {
   const unharmed = await runWithKillAt(join(folder.path, 'unharmed'), 0);
   expect(unharmed, unharmed.errors).toMatchObject({ code: 0, signal: null });
   expect(unharmed.lines.at(-1)).toBe('done');
@@ -40,6 +42,41 @@ test('killed at any step, the record is whole, keeps what was acknowledged, and 
   await Promise.all([work(), work()]);
   expect(next).toBeLessThan(STEPS_AT_MOST);
   expect(killed).toBeGreaterThan(30);
+});
+
+test('a restore that is killed leaves the old record or the new one, and can be done again', { timeout: PATIENCE_MS }, async () => {
+  const restoring = await bundle('restoreScenario.ts', join(folder.path, 'bundle'));
+  let n = 0;
+  for (let killed = true; killed; ) {
+    n += 1;
+    const state = join(folder.path, `restore-${n}`);
+    const copy = join(folder.path, `copy-${n}.db`);
+    const store = open(state);
+    store.commitIntake(fileBatch(0, 2));
+    store.commitNotice(notice(1), AT);
+    await store.backup(copy);
+    store.settle(store.claimDue(AT)!.id, { kind: 'delivered', at: LATER });
+    store.commitIntake(fileBatch(2, 2, { path: 'night-2.csv' }));
+    store.close();
+
+    const run = await start(restoring, [copy, state], { SPINVIGIL_TEST_KILL_AT: String(n) }).ended;
+    killed = run.signal === 'SIGKILL';
+    if (!killed) expect(run.lines).toEqual(['restored']);
+    const between = open(state);
+    expect(between.verify()).toEqual([]);
+    expect([2, 4]).toContain(between.arrivals('KR 0417+31').length);
+    // Whichever record it is: the notice has left and does not leave again.
+    expect(between.outbox()).toMatchObject([{ state: 'delivered' }]);
+    between.close();
+
+    expect(await restore(copy, state, NEXT_DAY)).toMatchObject({ ok: true });
+    const after = open(state);
+    expect(after.arrivals('KR 0417+31')).toHaveLength(2);
+    expect(after.outbox()).toMatchObject([{ state: 'delivered' }]);
+    expect(existsSync(join(state, 'restoring.db'))).toBe(false);
+    after.close();
+  }
+  expect(n).toBeGreaterThan(4);
 });
 
 /** False: the run ended before its n-th step. */

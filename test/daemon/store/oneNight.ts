@@ -46,7 +46,7 @@ export async function oneNight(folder: string, acknowledge: (what: string) => vo
   const judged = store.recordVerdict('KR0417-60003', { verdict: 'accept', by: 'duty', note: 'clear', at: LATER });
   if (judged.kind !== 'recorded' && judged.kind !== 'repeated') throw new Error(judged.kind);
   acknowledge('verdict');
-  store.commitDigest('2026-03-02', notice(1, { kind: 'digest' }), NEXT_DAY);
+  store.commitDigest('2026-03-02', notice(1, { kind: 'digest', dueAt: NEXT_DAY }), NEXT_DAY);
   acknowledge('digest');
   await store.backup(join(folder, 'copy.db'));
   acknowledge('backup');

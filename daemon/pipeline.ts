@@ -1,0 +1,221 @@
+import type { PulsarReport } from '../detectors/report.ts';
+import { reasonOf } from './errors.ts';
+import { bringToBarycentre, retime } from './stages/arrival.ts';
+import { type Consequences, consequencesOf, NO_CONSEQUENCES } from './stages/consequences.ts';
+import { reportRow } from './stages/decision.ts';
+import { followPulsar, type LogChanges } from './stages/deviation.ts';
+import { type FileInHand, type Intake, isOnRecord, SET_ASIDE, takeRows } from './stages/intake.ts';
+import { PulsarWatches } from './stages/pulsarWatches.ts';
+import type { Station } from './station.ts';
+import { step } from './store/crashStep.ts';
+import { emptyBatch, type IntakeBatch, type NewArrival, type PulsarReportRow } from './store/index.ts';
+
+/**
+ * The way of the data, as DEVELOPERS.md draws it. A file comes in at one end; what a person is shown comes out at the other. Everything
+ * that a file changes is written in one transaction, at the end: a crash before it leaves nothing, a crash after it loses nothing.
+ *
+ *     file       a watcher or `replay` hands over a file that stands still
+ *     intake     its rows, against those on record                          stages/intake
+ *     arrival    new rows at the barycentre                                 stages/arrival
+ *     deviation  the detector follows each pulsar through its log           stages/deviation
+ *     decision   steps of one site are one event                            stages/decision
+ *     event      what that means for the events on record                   stages/eventChanges
+ *     alert      whom to tell, and the mail                                 stages/alert
+ *     review     all of it on record, for the page and for people           store
+ */
+export const STAGES = ['file', 'intake', 'arrival', 'deviation', 'decision', 'event', 'alert', 'review'] as const;
+
+export interface TakenIn {
+  /** `cut short`: the last row may still be growing; nothing was taken in. */
+  readonly kind: 'taken in' | 'known' | 'quarantined whole' | 'cut short';
+  readonly rows: number;
+  readonly newArrivals: number;
+  readonly quarantined: number;
+  /** Pulsars whose live arrivals changed. */
+  readonly pulsars: readonly string[];
+  readonly events: number;
+  readonly mails: number;
+}
+
+export interface TakeInOptions {
+  /** `later`: `decide` will be called, once for many files. */
+  readonly decide: 'now' | 'later';
+  readonly mail: boolean;
+  /** Take the last row even without a line end. */
+  readonly acceptUnterminated: boolean;
+}
+
+export interface DecideOptions {
+  readonly mail: boolean;
+  readonly onPulsar?: (done: number) => void;
+}
+
+const NOTHING: Omit<TakenIn, 'kind'> = { rows: 0, newArrivals: 0, quarantined: 0, pulsars: [], events: 0, mails: 0 };
+/** A file whose reading was begun so often and never ended takes the program down each time. */
+const MOST_READINGS = 3;
+/** A verdict may come in while events are decided about: then they are decided about again. */
+const MOST_ROUNDS = 5;
+const DECISIONS_OPEN = 'decisions_open';
+
+/** Takes one file after the other: calls wait for those before them. */
+export class Pipeline {
+  readonly #station: Station;
+  readonly #watches = new PulsarWatches();
+  #last: Promise<unknown> = Promise.resolve();
+
+  constructor(station: Station) {
+    this.#station = station;
+  }
+
+  takeIn(file: FileInHand, options: TakeInOptions): Promise<TakenIn> {
+    return this.#inTurn(() => this.#takeIn(file, options));
+  }
+
+  /** Times and decides again: pulsars whose arrivals were taken in with `later`, or whose model, tables or settings changed. */
+  decide(pulsars: readonly string[], options: DecideOptions): Promise<void> {
+    return this.#inTurn(async () => {
+      const recorded = pulsars.flatMap((pulsar) => this.#station.store.liveArrivals(pulsar));
+      this.#watches.forget(pulsars);
+      await this.#decideAndRecord({ ...this.#batch(), retimed: retime(this.#station, recorded) }, pulsars, options);
+    });
+  }
+
+  /** Pulsars on record whose decisions rest on another model, other tables or settings than those of now, or were left open. */
+  undecided(): readonly string[] {
+    const { store, configuration } = this.#station;
+    const open = store.meta(DECISIONS_OPEN) === 'yes';
+    const basis = new Map(store.pulsarReports().map((report) => [report.pulsar, report.basis]));
+    return store.pulsars().filter((pulsar) => {
+      const model = configuration.models.get(pulsar);
+      return model !== undefined && (open || basis.get(pulsar) !== this.#station.basisOf(model));
+    });
+  }
+
+  /** Notes that arrivals go on record without a decision: should the work be cut off, the next start sees to them. */
+  leaveDecisionsOpen(open: boolean): void {
+    this.#station.store.setMeta(DECISIONS_OPEN, open ? 'yes' : 'no');
+  }
+
+  /** Done when all that was asked for is. */
+  async idle(): Promise<void> {
+    await this.#last;
+  }
+
+  #inTurn<Result>(work: () => Promise<Result>): Promise<Result> {
+    const mine = this.#last.then(work);
+    this.#last = mine.catch(() => {});
+    return mine;
+  }
+
+  async #takeIn(inHand: FileInHand, options: TakeInOptions): Promise<TakenIn> {
+    const { store } = this.#station;
+    if (isOnRecord(this.#station, inHand)) return { kind: 'known', ...NOTHING };
+    step('file in hand');
+    const intake = takeRows(this.#station, inHand);
+    if (intake.unterminated && !options.acceptUnterminated) return { kind: 'cut short', ...NOTHING };
+    const readings = store.noteReadingStarts(inHand.feed, intake.file.path, intake.file.sha256);
+    if (readings > MOST_READINGS) return this.#setAside(intake, readings - 1);
+
+    const batch = this.#timed(intake);
+    const pulsars = intake.reconciliation.pulsarsToDecide;
+    const decided = options.decide === 'now' ? pulsars : [];
+    const { events, messages } = await this.#decideAndRecord(batch, decided, options);
+    const result: TakenIn = {
+      kind: intake.file.fault === null ? 'taken in' : 'quarantined whole',
+      rows: intake.file.rows,
+      newArrivals: batch.arrivals.length,
+      quarantined: batch.quarantined.length,
+      pulsars,
+      events: events.length,
+      mails: messages.length,
+    };
+    this.#say(intake, result);
+    return result;
+  }
+
+  #timed({ file, reconciliation, quarantined }: Intake): IntakeBatch {
+    const arrivals = reconciliation.added.map(({ key, row, revises }): NewArrival => {
+      const { line, ...received } = row;
+      return { key, line, received, revises, ...bringToBarycentre(this.#station, received) };
+    });
+    const { same: sightings, statusChanges } = reconciliation;
+    return { ...this.#batch(), file, arrivals, sightings, statusChanges, quarantined };
+  }
+
+  /** The stages from deviation on, and all of it on record. */
+  async #decideAndRecord(
+    batch: IntakeBatch,
+    pulsars: readonly string[],
+    options: DecideOptions,
+  ): Promise<Consequences> {
+    try {
+      const { reports, rows } = await this.#follow(pulsars, batch, options);
+      for (let round = 1; round <= MOST_ROUNDS; round++) {
+        const consequences =
+          rows.length === 0 ? NO_CONSEQUENCES : await consequencesOf(this.#station, { reports, rows }, options);
+        step('decided');
+        const outcome = this.#station.store.commitIntake({ ...batch, ...consequences });
+        if (outcome.kind === 'committed') return consequences;
+        this.#station.log.info({ event: outcome.eventId }, 'an event changed meanwhile: deciding again');
+      }
+      throw new Error('the events on record kept changing while they were decided about');
+    } catch (error) {
+      this.#watches.forget(pulsars);
+      throw error;
+    }
+  }
+
+  /** The detector's work, pulsar by pulsar; between them the page, the mail and a signal to stop get their turn. */
+  async #follow(
+    pulsars: readonly string[],
+    changes: LogChanges,
+    { onPulsar }: DecideOptions,
+  ): Promise<{ reports: readonly PulsarReport[]; rows: readonly PulsarReportRow[] }> {
+    const reports: PulsarReport[] = [];
+    const rows: PulsarReportRow[] = [];
+    for (const [i, pulsar] of pulsars.entries()) {
+      try {
+        const report = followPulsar(this.#station, this.#watches, pulsar, changes);
+        reports.push(report);
+        rows.push(reportRow(this.#station, report));
+      } catch (error) {
+        rows.push(...this.#leftOpen(pulsar, error));
+      }
+      onPulsar?.(i + 1);
+      await new Promise((resolve) => setImmediate(resolve));
+    }
+    return { reports, rows };
+  }
+
+  /** One pulsar that cannot be decided about holds up no other, and loses no arrival: it is tried again at its next arrival and start. */
+  #leftOpen(pulsar: string, error: unknown): PulsarReportRow[] {
+    this.#station.log.error({ pulsar, err: error }, 'no decision about this pulsar: a fault of the program');
+    const before = this.#station.store.pulsarReport(pulsar);
+    return before === null ? [] : [{ ...before, basis: `left open: ${reasonOf(error)}` }];
+  }
+
+  #setAside({ file }: Intake, readings: number): TakenIn {
+    const fault = `${SET_ASIDE}: its reading was begun ${readings} times and never finished; see the log, then touch the file to try again`;
+    this.#station.store.commitIntake({
+      ...this.#batch(),
+      file: { ...file, rows: 0, fault },
+      quarantined: [{ line: null, reason: fault }],
+    });
+    this.#station.log.error({ feed: file.feed, file: file.path, reason: fault }, 'quarantined whole');
+    return { kind: 'quarantined whole', ...NOTHING, quarantined: 1 };
+  }
+
+  #batch(): IntakeBatch {
+    return emptyBatch(this.#station.clock.now().toISOString());
+  }
+
+  #say({ file, quarantined }: Intake, { pulsars, ...result }: TakenIn): void {
+    const facts = { feed: file.feed, file: file.path, ...result, pulsars: pulsars.length };
+    if (quarantined.length === 0) this.#station.log.info(facts, 'file taken in');
+    else
+      this.#station.log.warn(
+        { ...facts, firstReason: quarantined[0]?.reason },
+        'file taken in, some of it quarantined',
+      );
+  }
+}

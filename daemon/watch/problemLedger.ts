@@ -1,0 +1,30 @@
+import type { WatchProblem } from './feedLook.ts';
+
+/** Says once when a problem begins and once when it is over, however often it is seen. */
+export interface ProblemLedger {
+  /** All that is wrong now. */
+  update(problems: readonly WatchProblem[]): void;
+  current(): readonly WatchProblem[];
+}
+
+export function createProblemLedger(
+  onProblem: (problem: WatchProblem) => void,
+  onProblemEnded: (problem: WatchProblem) => void,
+): ProblemLedger {
+  let current = new Map<string, WatchProblem>();
+  return {
+    update(problems) {
+      const now = new Map(problems.map((problem) => [identityOf(problem), problem]));
+      const ended = [...current].filter(([id]) => !now.has(id));
+      const begun = [...now].filter(([id]) => !current.has(id));
+      current = now;
+      for (const [, problem] of begun) onProblem(problem);
+      for (const [, problem] of ended) onProblemEnded(problem);
+    },
+    current: () => [...current.values()],
+  };
+}
+
+function identityOf({ kind, path, message }: WatchProblem): string {
+  return JSON.stringify([kind, path, message]);
+}
