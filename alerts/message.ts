@@ -167,5 +167,5 @@ function opening(planned: PlannedMessage): string {
 
 /** Where the page shows the event. */
 export function eventUrl(reviewUrl: string, eventId: string): string {
-  return `${reviewUrl}/events/${encodeURIComponent(eventId)}`;
+  return `${reviewUrl}/events/${encodeURIComponent(eventId.replace(/\p{Cs}/gu, '\ufffd'))}`;
 }

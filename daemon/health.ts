@@ -1,16 +1,18 @@
 import type { Clock } from './clock.ts';
+import type { Configuration } from './config/configuration.ts';
+import type { FeedIntake } from './feedIntake.ts';
 import type { WatchHealth } from './review/desk.ts';
+import type { DeliveryLoop } from './schedule/deliver.ts';
 import type { Store } from './store/index.ts';
-import type { FeedStatus } from './watch/watcher.ts';
 
 /** What keeps the watch from being trusted, in words for a person. Silence about glitches is worth something only while this is empty. */
 export interface HealthSources {
+  readonly configuration: Configuration;
   readonly store: Store;
   readonly clock: Clock;
-  readonly feeds: () => readonly FeedStatus[];
-  readonly pollSecondsOf: (feed: string) => number;
-  readonly mailTrouble: () => string | null;
-  readonly storageTrouble: () => string | null;
+  /** Null before they have started. */
+  readonly intake: Pick<FeedIntake, 'status' | 'storageTrouble'> | null;
+  readonly delivery: Pick<DeliveryLoop, 'trouble'> | null;
 }
 
 /** A look that is late by this many beats: the feed hangs (a dead mount, a loop that ended). */
@@ -20,14 +22,15 @@ const MAIL_LATE_MS = 3_600_000;
 
 export function watchHealth(sources: HealthSources): WatchHealth {
   const problems = [...feedProblems(sources), ...mailProblems(sources), ...decisionProblems(sources)];
-  const storage = sources.storageTrouble();
+  const storage = sources.intake?.storageTrouble() ?? null;
   if (storage !== null) problems.push(`Nothing can be written: ${storage}. Intake pauses and nothing is lost.`);
   return { ok: problems.length === 0, problems };
 }
 
-function feedProblems({ feeds, clock, pollSecondsOf }: HealthSources): string[] {
-  return feeds().flatMap(({ feed, lastLookMs, problems }) => {
-    const limitMs = Math.max(LEAST_LATE_MS, BEATS_LATE * 1000 * pollSecondsOf(feed));
+function feedProblems({ configuration, intake, clock }: HealthSources): string[] {
+  const pollSeconds = new Map(configuration.feeds.map((feed) => [feed.name, feed.pollSeconds]));
+  return (intake?.status() ?? []).flatMap(({ feed, lastLookMs, problems }) => {
+    const limitMs = Math.max(LEAST_LATE_MS, BEATS_LATE * 1000 * (pollSeconds.get(feed) ?? 0));
     const late = lastLookMs !== null && clock.monotonicMs() - lastLookMs > limitMs;
     const told = problems
       .filter(({ kind }) => kind !== 'refused')
@@ -36,11 +39,11 @@ function feedProblems({ feeds, clock, pollSecondsOf }: HealthSources): string[] 
   });
 }
 
-function mailProblems({ store, clock, mailTrouble }: HealthSources): string[] {
+function mailProblems({ store, clock, delivery }: HealthSources): string[] {
   const { oldestWaitingSince } = store.outboxCounts();
   const waitingMs = oldestWaitingSince === null ? 0 : clock.now().getTime() - Date.parse(oldestWaitingSince);
   if (waitingMs < MAIL_LATE_MS) return [];
-  const why = mailTrouble();
+  const why = delivery?.trouble() ?? null;
   return [`Mail has been waiting for ${Math.floor(waitingMs / 3_600_000)} h${why === null ? '' : `: ${why}`}.`];
 }
 

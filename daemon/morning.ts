@@ -1,32 +1,32 @@
 import { median } from 'simple-statistics';
 import type { MorningReview } from '../alerts/index.ts';
 import type { PulsarEvent } from '../detectors/steps/pulsarEvent.ts';
-import { type Clock, civilTime, instantOf, mjdOf } from './clock.ts';
+import { civilTime, instantOf, mjdOf } from './clock.ts';
 import type { Configuration } from './config/configuration.ts';
-import { digestRule } from './schedule/digestDue.ts';
+import { type DigestRule, digestRule } from './schedule/digestDue.ts';
 import { silentFeeds } from './schedule/silentFeeds.ts';
+import { clockStepWarnings } from './schedule/upkeep.ts';
+import type { Station } from './station.ts';
 import type { Store } from './store/index.ts';
+import { leapSecondWarning } from './tables/loadTables.ts';
 
 /** What the morning review is made from. It reads what is on record and decides nothing. */
-export interface MorningSources {
-  readonly configuration: Configuration;
-  readonly store: Store;
-  readonly clock: Clock;
-  /** Known to the caller alone: tables that ran out, a wall clock that stepped. */
-  readonly warnings: readonly string[];
+export interface MorningSources extends Pick<Station, 'configuration' | 'store' | 'tables' | 'clock'> {
+  /** What loading the tables complained of. */
+  readonly tableWarnings: readonly string[];
 }
 
 const DAY_MS = 86_400_000;
 const HOUR_MS = 3_600_000;
 
 /**
- * The review of a civil date in the observatory's zone (absent: of today). It covers what came in since the digest before; for a
- * date gone by, up to that day's own digest. Events stand in it as they are now.
+ * The review of a civil date in the observatory's zone (absent: of today). It covers what came in since the digest before that date's;
+ * for a date gone by, up to that date's own. Events stand in it as they are now.
  */
 export function morningReview(sources: MorningSources, date?: string): MorningReview {
   const { configuration, store, clock } = sources;
   const now = clock.now();
-  const period = date === undefined ? sinceLastDigest(sources, now) : ofDate(configuration, date, now);
+  const period = periodOf(sources, now, date);
   const events = store.events();
   const confirmed = events.filter(({ event }) => event.state === 'confirmed').map(({ event }) => event);
   const counts = store.outboxCounts();
@@ -52,28 +52,43 @@ export function morningReview(sources: MorningSources, date?: string): MorningRe
       refused: counts.refused,
       oldestWaitingHours: oldest === null ? null : (now.getTime() - Date.parse(oldest)) / HOUR_MS,
     },
-    warnings: [...sources.warnings, ...clockTableWarnings(configuration, now)],
+    warnings: warningsOf(sources, now),
   };
 }
 
 type Period = Pick<MorningReview, 'date' | 'since' | 'until'>;
 
-function sinceLastDigest({ configuration, store }: MorningSources, now: Date): Period {
-  const { date } = civilTime(now, configuration.mail.timezone);
-  const since = store.lastDigest()?.at ?? new Date(now.getTime() - DAY_MS).toISOString();
-  return { date, since, until: now.toISOString() };
+function periodOf({ configuration, store }: MorningSources, now: Date, askedFor: string | undefined): Period {
+  const { timezone, digestCron } = configuration.mail;
+  const rule = digestRule(digestCron, timezone);
+  const date = askedFor ?? civilTime(now, timezone).date;
+  const before = instantOf({ date: digestDateBefore(rule, date), time: rule.time }, timezone).toISOString();
+  if (askedFor === undefined) {
+    // After days of downtime the digest of today covers them all.
+    const [since = before] = [before, store.lastDigest()?.at ?? before].sort();
+    return { date, since, until: now.toISOString() };
+  }
+  const own = instantOf({ date, time: rule.time }, timezone);
+  return { date, since: before, until: (own < now ? own : now).toISOString() };
 }
 
-function ofDate(configuration: Configuration, date: string, now: Date): Period {
-  const { timezone, digestCron } = configuration.mail;
-  const { time } = digestRule(digestCron, timezone);
-  const dayBefore = new Date(Date.parse(`${date}T12:00:00Z`) - DAY_MS).toISOString().slice(0, 10);
-  const until = instantOf({ date, time }, timezone);
-  return {
-    date,
-    since: instantOf({ date: dayBefore, time }, timezone).toISOString(),
-    until: (until < now ? until : now).toISOString(),
-  };
+const MOST_DAYS_BACK = 40;
+
+function digestDateBefore(rule: DigestRule, date: string): string {
+  const noon = Date.parse(`${date}T12:00:00Z`);
+  const back = (days: number) => new Date(noon - days * DAY_MS).toISOString().slice(0, 10);
+  for (let days = 1; days < MOST_DAYS_BACK; days++) if (rule.matchesDate(back(days))) return back(days);
+  return back(MOST_DAYS_BACK);
+}
+
+function warningsOf(sources: MorningSources, now: Date): string[] {
+  const leapSeconds = leapSecondWarning(sources.tables.leapSeconds, mjdOf(now));
+  return [
+    ...sources.tableWarnings,
+    ...(leapSeconds === null ? [] : [leapSeconds]),
+    ...clockTableWarnings(sources.configuration, now),
+    ...clockStepWarnings(sources),
+  ];
 }
 
 function mostCredibleFirst(a: PulsarEvent, b: PulsarEvent): number {

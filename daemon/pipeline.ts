@@ -8,7 +8,7 @@ import { type FileInHand, type Intake, isOnRecord, SET_ASIDE, takeRows } from '.
 import { PulsarWatches } from './stages/pulsarWatches.ts';
 import type { Station } from './station.ts';
 import { step } from './store/crashStep.ts';
-import { emptyBatch, type IntakeBatch, type NewArrival, type PulsarReportRow } from './store/index.ts';
+import { emptyBatch, type IntakeBatch, type NewArrival, type PulsarReportRow, storageTrouble } from './store/index.ts';
 
 /**
  * The way of the data, as DEVELOPERS.md draws it. A file comes in at one end; what a person is shown comes out at the other. Everything
@@ -57,11 +57,18 @@ const MOST_READINGS = 3;
 const MOST_ROUNDS = 5;
 const DECISIONS_OPEN = 'decisions_open';
 
+class Stopped extends Error {
+  constructor() {
+    super('the program is stopping; this is taken up at the next start');
+  }
+}
+
 /** Takes one file after the other: calls wait for those before them. */
 export class Pipeline {
   readonly #station: Station;
   readonly #watches = new PulsarWatches();
   #last: Promise<unknown> = Promise.resolve();
+  #stopping = false;
 
   constructor(station: Station) {
     this.#station = station;
@@ -96,13 +103,16 @@ export class Pipeline {
     this.#station.store.setMeta(DECISIONS_OPEN, open ? 'yes' : 'no');
   }
 
-  /** Done when all that was asked for is. */
-  async idle(): Promise<void> {
-    await this.#last;
+  /** Leaves what is in hand at the next pulsar, with nothing of it on record, and refuses what comes. */
+  stop(): void {
+    this.#stopping = true;
   }
 
   #inTurn<Result>(work: () => Promise<Result>): Promise<Result> {
-    const mine = this.#last.then(work);
+    const mine = this.#last.then(() => {
+      if (this.#stopping) throw new Stopped();
+      return work();
+    });
     this.#last = mine.catch(() => {});
     return mine;
   }
@@ -113,9 +123,19 @@ export class Pipeline {
     step('file in hand');
     const intake = takeRows(this.#station, inHand);
     if (intake.unterminated && !options.acceptUnterminated) return { kind: 'cut short', ...NOTHING };
-    const readings = store.noteReadingStarts(inHand.feed, intake.file.path, intake.file.sha256);
+    const path = { bytesHex: inHand.pathBytes.toString('hex') };
+    const readings = store.noteReadingStarts(inHand.feed, path, intake.file.sha256);
     if (readings > MOST_READINGS) return this.#setAside(intake, readings - 1);
+    try {
+      return await this.#takeInRead(intake, options);
+    } catch (error) {
+      // Not the file's fault: what was noted against it is overwritten.
+      if (error instanceof Stopped || storageTrouble(error) !== null) store.noteReadingStarts(inHand.feed, path, '');
+      throw error;
+    }
+  }
 
+  async #takeInRead(intake: Intake, options: TakeInOptions): Promise<TakenIn> {
     const batch = this.#timed(intake);
     const pulsars = intake.reconciliation.pulsarsToDecide;
     const decided = options.decide === 'now' ? pulsars : [];
@@ -174,6 +194,7 @@ export class Pipeline {
     const reports: PulsarReport[] = [];
     const rows: PulsarReportRow[] = [];
     for (const [i, pulsar] of pulsars.entries()) {
+      if (this.#stopping) throw new Stopped();
       try {
         const report = followPulsar(this.#station, this.#watches, pulsar, changes);
         reports.push(report);

@@ -180,7 +180,7 @@ function halfError(y: Scale, uncertainty: number): number {
 /** A nested viewport cuts what leaves the panel. */
 function inPanel(box: PanelBox, marks: readonly (Markup | null)[]): Markup {
   const height = px(box.bottom - box.top);
-  return markup`<svg x="${LEFT}" y="${px(box.top)}" width="${RIGHT - LEFT}" height="${height}" viewBox="${LEFT} ${px(box.top)} ${RIGHT - LEFT} ${height}">
+  return markup`<svg aria-hidden="true" x="${LEFT}" y="${px(box.top)}" width="${RIGHT - LEFT}" height="${height}" viewBox="${LEFT} ${px(box.top)} ${RIGHT - LEFT} ${height}">
 ${marks}</svg>
 `;
 }

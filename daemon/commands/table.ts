@@ -1,3 +1,5 @@
+import { visibleText } from '../visibleText.ts';
+
 /** Aligned columns of plain text: no borders, no colour, the same on a screen and in a pipe. */
 export interface Column<Row> {
   readonly title: string;
@@ -11,7 +13,7 @@ export function table<Row>(rows: readonly Row[], columns: readonly Column<Row>[]
   if (rows.length === 0) return whenEmpty;
   const cells = [
     columns.map((column) => column.title),
-    ...rows.map((row) => columns.map((column) => oneLine(column.text(row)))),
+    ...rows.map((row) => columns.map((column) => visibleText(column.text(row)))),
   ];
   const widths = columns.map((_, c) => Math.max(...cells.map((line) => displayWidth(line[c] ?? ''))));
   return cells
@@ -25,11 +27,6 @@ export function table<Row>(rows: readonly Row[], columns: readonly Column<Row>[]
         .trimEnd(),
     )
     .join('\n');
-}
-
-/** Text from outside cannot move the cursor or start a line of its own. */
-export function oneLine(text: string): string {
-  return text.replace(/[\p{Cc}\p{Cf}\u2028\u2029]/gu, (c) => `\\u{${(c.codePointAt(0) ?? 0).toString(16)}}`);
 }
 
 function displayWidth(text: string): number {

@@ -106,18 +106,18 @@ function valuesOfOneArrival(statements: readonly Statement[]): Statement[][] {
     if (group === undefined) byMeasurement.set(measurement, [statement]);
     else group.push(statement);
   }
+  return [...byMeasurement.values()].flatMap((group) =>
+    chainsIn(group.sort((a, b) => compareMjd(a.arrival.time, b.arrival.time) || (a.key < b.key ? -1 : 1))),
+  );
+}
+
+function chainsIn(inTimeOrder: readonly Statement[]): Statement[][] {
   const chains: Statement[][] = [];
-  for (const group of byMeasurement.values()) {
-    group.sort((a, b) => compareMjd(a.arrival.time, b.arrival.time) || (a.key < b.key ? -1 : 1));
-    let chain: Statement[] = [];
-    for (const statement of group) {
-      const last = chain.at(-1);
-      if (last !== undefined && isSameTime(last.arrival, statement.arrival)) chain.push(statement);
-      else {
-        chain = [statement];
-        chains.push(chain);
-      }
-    }
+  let last: Statement | null = null;
+  for (const statement of inTimeOrder) {
+    if (last !== null && isSameTime(last.arrival, statement.arrival)) chains.at(-1)!.push(statement);
+    else chains.push([statement]);
+    last = statement;
   }
   return chains;
 }
@@ -128,55 +128,57 @@ interface Changes {
   readonly pulsars: Set<string>;
 }
 
-/** Decides which value of one arrival counts, and notes what that changes. */
+/**
+ * Decides which value counts, and notes what that changes. A value that no file states any more may have been the bridge between
+ * others that are not within 1 µs of each other: those that stand are chained anew without it, and each chain has its own winner.
+ */
 function settle(values: readonly Statement[], source: string, changes: Changes): void {
-  const live = values.find(({ record }) => record?.status === 'live') ?? null;
-  const winner = winnerOf(values, live);
-  for (const value of values) {
-    const status = statusOf(value, winner);
-    if ((status === 'live') !== (value.record?.status === 'live')) changes.pulsars.add(value.arrival.pulsar);
-    if (value.record === null) {
-      changes.added.push({
-        key: value.key,
-        row: value.arrival as ReceivedRow,
-        revises: value === winner && live !== null ? live.key : null,
-      });
+  const winners: Statement[] = [];
+  for (const chain of chainsIn(values.filter(({ stands }) => stands))) {
+    const winner = winnerOf(chain);
+    winners.push(winner);
+    const replaced =
+      chain.find(isLive) ??
+      values.find((value) => isLive(value) && !value.stands && isSameTime(value.arrival, winner.arrival));
+    for (const value of chain) {
+      const revises = value === winner && replaced !== undefined ? replaced.key : null;
+      if (value.record === null) changes.added.push({ key: value.key, row: value.arrival as ReceivedRow, revises });
+      if (value === winner) setStatus(value, 'live', reasonToCount(value, source), changes);
+      else setStatus(value, 'revised', reasonToYield(winner, source), changes);
     }
-    if (status !== (value.record?.status ?? 'live')) {
-      changes.statusChanges.push({ key: value.key, status, reason: reasonFor(value, { status, winner, source }) });
-    }
+  }
+  for (const gone of values.filter((value) => isLive(value) && !value.stands)) {
+    const heir = winners.find((winner) => winner.isNews && isSameTime(winner.arrival, gone.arrival));
+    if (heir === undefined) setStatus(gone, 'withdrawn', `no longer in ${source}`, changes);
+    else setStatus(gone, 'revised', reasonToYield(heir, source), changes);
   }
 }
 
-function winnerOf(values: readonly Statement[], live: Statement | null): Statement | null {
-  const standing = values.filter(({ stands }) => stands);
-  const news = standing.filter(({ isNews }) => isNews).sort((a, b) => b.line - a.line);
-  if (news[0] !== undefined) return news[0];
-  if (live?.stands) return live;
-  const latestFirst = (a: Statement, b: Statement) =>
+function isLive({ record }: Statement): boolean {
+  return record?.status === 'live';
+}
+
+/** A value with new content is live on the log unless it is told otherwise. */
+function setStatus(value: Statement, status: ArrivalRecord['status'], reason: string, changes: Changes): void {
+  if ((status === 'live') !== isLive(value)) changes.pulsars.add(value.arrival.pulsar);
+  if (status !== (value.record?.status ?? 'live')) changes.statusChanges.push({ key: value.key, status, reason });
+}
+
+/** Of values that all stand: the latest news, else what counted, else what was taken in last. */
+function winnerOf(chain: readonly Statement[]): Statement {
+  const byLine = (a: Statement, b: Statement) => b.line - a.line;
+  const byIntake = (a: Statement, b: Statement) =>
     (b.record?.fileId ?? 0) - (a.record?.fileId ?? 0) || (b.record?.line ?? 0) - (a.record?.line ?? 0);
-  return standing.sort(latestFirst)[0] ?? null;
+  const news = chain.filter(({ isNews }) => isNews).sort(byLine);
+  return news[0] ?? chain.find(isLive) ?? [...chain].sort(byIntake)[0]!;
 }
 
-/** What stands nowhere and counted for nothing keeps its status: it was settled when it went. */
-function statusOf(value: Statement, winner: Statement | null): ArrivalRecord['status'] {
-  if (value === winner) return 'live';
-  if (winner === null)
-    return value.record?.status === 'live' || value.record === null ? 'withdrawn' : value.record.status;
-  return value.record?.status === 'withdrawn' && !value.stands ? 'withdrawn' : 'revised';
+function reasonToCount(value: Statement, source: string): string {
+  return value.line > 0
+    ? `stated again by ${source}, line ${value.line}`
+    : `counts again: its revision is no longer in ${source}`;
 }
 
-function reasonFor(
-  value: Statement,
-  outcome: { readonly status: ArrivalRecord['status']; readonly winner: Statement | null; readonly source: string },
-): string {
-  const { status, winner, source } = outcome;
-  if (status === 'withdrawn') return `no longer in ${source}`;
-  if (status === 'live')
-    return value.line > 0
-      ? `stated again by ${source}, line ${value.line}`
-      : `counts again: its revision is no longer in ${source}`;
-  return winner !== null && winner.line > 0
-    ? `revised by ${source}, line ${winner.line}`
-    : `another value of this arrival counts`;
+function reasonToYield(winner: Statement, source: string): string {
+  return winner.line > 0 ? `revised by ${source}, line ${winner.line}` : 'another value of this arrival counts';
 }

@@ -55,7 +55,7 @@ export function startDigestSchedule(options: {
   ];
   return {
     catchUp,
-    async stop() {
+    stop: async () => {
       for (const task of tasks) await task.destroy();
       await running;
     },

@@ -35,7 +35,7 @@ export function startLoop(options: {
   };
   const running = run();
   return {
-    async stop() {
+    stop: async () => {
       stopped = true;
       endPause();
       await running;

@@ -25,7 +25,7 @@ export async function reportGivenUp(
   if (others.length === 0) return;
   const setting = mailSetting(station);
   const notice = {
-    name: `${state}-${mail.id}`,
+    name: `${state}.${mail.id}`,
     subject: `mail to ${mail.recipient} was ${state === 'refused' ? 'refused' : 'not delivered'}`,
     paragraphs: [
       `“${mail.subject}” did not reach ${mail.recipient} after ${mail.attempts} ${mail.attempts === 1 ? 'attempt' : 'attempts'}: ${why}.`,

@@ -32,7 +32,7 @@ export async function reportSilences(station: Station): Promise<number> {
     const key = `silence_reported:${feed}`;
     if (store.meta(key) === silence) continue;
     const setting = mailSetting(station);
-    const name = `silence-${feed}-${silence.replace(/[^0-9a-z]/g, '')}`;
+    const name = `silence.${feed}.${silence.replace(/[^0-9a-z]/g, '')}`;
     const notice = {
       name,
       subject: `feed ${feed} has been silent for ${Math.floor(hoursSilent)} h`,

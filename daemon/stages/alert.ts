@@ -1,12 +1,11 @@
 import {
   type ComposedMessage,
   composeEventMail,
-  composeOperatorNotice,
+  composeStormNotice,
   DEFAULT_HISTORICAL_DAYS,
   type EventMail,
   mailOrSummary,
   messagesFor,
-  type OperatorNotice,
   type ToldBefore,
 } from '../../alerts/index.ts';
 import type { EventPicture, PulsarEvent } from '../../detectors/steps/pulsarEvent.ts';
@@ -121,7 +120,7 @@ function stormWatch({ store, clock }: Station): Storm {
     new Set(recent.filter((copy) => copy.kind === kind).map((copy) => copy.messageId));
   return {
     eventMails: messages('event').size,
-    summarySent: [...messages('notice')].some((id) => id.startsWith(`<${STORM_NOTICE}-`)),
+    summarySent: [...messages('notice')].some((id) => id.startsWith(`<notice.${STORM_NOTICE}.`)),
   };
 }
 
@@ -136,23 +135,16 @@ async function composeWithin(
   const setting = mailSetting(station);
   if (verdict === 'summary') {
     storm.summarySent = true;
-    const notice = stormNotice(storm.eventMails, setting.now);
-    return newMessage(await composeOperatorNotice(notice, planned.recipients, setting), null, setting.now);
+    const name = `${STORM_NOTICE}.${setting.now
+      .toISOString()
+      .slice(0, 13)
+      .replace(/[^0-9]/g, '')}`;
+    const notice = { name, mailedInTheHour: storm.eventMails };
+    return newMessage(await composeStormNotice(notice, planned.recipients, setting), null, setting.now);
   }
   storm.eventMails += 1;
   const model = station.configuration.models.get(event.pulsar) ?? null;
   return newMessage(await composeEventMail({ ...mail, model }, setting), planned.inReplyTo, setting.now);
-}
-
-function stormNotice(eventMails: number, now: Date): OperatorNotice {
-  return {
-    name: `${STORM_NOTICE}-${now.toISOString().replace(/[^0-9]/g, '')}`,
-    subject: 'many events at once: further mail is held back for an hour',
-    paragraphs: [
-      `${eventMails} event mails were sent within an hour. That many at once usually have one cause: a fault at a site, or a wrong clock table or model.`,
-      'Further events of this hour are on the review page and in the morning digest. Withdrawals are still mailed.',
-    ],
-  };
 }
 
 /** A composed message as the outbox keeps it: one character a byte. */

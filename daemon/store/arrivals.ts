@@ -1,7 +1,7 @@
-import type { BarycentredArrival, Quality } from '../../detectors/arrival.ts';
+import type { BarycentredArrival, Quality, TimedArrival } from '../../detectors/arrival.ts';
 import { daysBetween, type Mjd, SECONDS_PER_DAY } from '../../detectors/time/mjd.ts';
 import type { ArrivalRecord } from '../records.ts';
-import { type Db, row, rows, run } from './connection.ts';
+import { type Db, prepared, row, rows, run } from './connection.ts';
 import { pathBytes } from './files.ts';
 import { fromJson, toJson } from './json.ts';
 import type { NewArrival, RetimedArrival, Sighting, StatusChange } from './shapes.ts';
@@ -53,6 +53,34 @@ export function arrivalsOf(db: Db, pulsar: string): ArrivalRecord[] {
 
 export function liveArrivalsOf(db: Db, pulsar: string): ArrivalRecord[] {
   return rows<ArrivalRow>(db, `${SELECT} WHERE pulsar = ? AND status = 'live' ${IN_TIME_ORDER}`, pulsar).map(toRecord);
+}
+
+type TimedRow = [string, number, number, number, number, number, string, string, number | null];
+
+/** Rows as arrays and only what the detector needs: several times faster than whole records. */
+export function timedArrivalsOf(db: Db, pulsar: string): TimedArrival[] {
+  const found = prepared(
+    db,
+    `SELECT key, tdb_day, tdb_fraction, uncertainty_us, dispersion_removed, frequency_mhz, site, receiver, pulse_number
+     FROM arrivals a JOIN barycentred b ON b.arrival_id = a.id WHERE pulsar = ? AND status = 'live'
+     ORDER BY tdb_day, tdb_fraction, key`,
+  )
+    .raw()
+    .all(pulsar) as TimedRow[];
+  return found.map(([key, day, fraction, uncertaintyUs, removed, frequency, site, receiver, pulseNumber]) => ({
+    key,
+    tdb: { day, fraction },
+    uncertaintyUs,
+    frequencyMhz: frequencyMhz(removed, frequency),
+    site,
+    receiver,
+    pulseNumber,
+  }));
+}
+
+/** How the record says infinite frequency. */
+function frequencyMhz(dispersionRemoved: number, frequency: number): number {
+  return dispersionRemoved === 1 ? Number.POSITIVE_INFINITY : frequency;
 }
 
 export function arrivalsNear(db: Db, pulsar: string, time: Mjd, seconds: number): ArrivalRecord[] {
@@ -119,7 +147,7 @@ function toRecord(r: ArrivalRow): ArrivalRecord {
     timeScale: r.time_scale,
     time: { day: r.time_day, fraction: r.time_fraction },
     uncertaintyUs: r.uncertainty_us,
-    frequencyMhz: r.dispersion_removed === 1 ? Number.POSITIVE_INFINITY : r.frequency_mhz,
+    frequencyMhz: frequencyMhz(r.dispersion_removed, r.frequency_mhz),
     site: r.site,
     receiver: r.receiver,
     pulseNumber: r.pulse_number,

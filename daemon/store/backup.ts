@@ -1,8 +1,12 @@
 import { closeSync, fsyncSync, openSync, renameSync, rmSync } from 'node:fs';
-import { dirname } from 'node:path';
+import { dirname, resolve } from 'node:path';
 import Database from 'better-sqlite3';
 import { APPLICATION_ID, type Db } from './connection.ts';
 import { step } from './crashStep.ts';
+import { lockFile } from './stateFolder.ts';
+
+/** The copy that was made does not check: what it was made from is damaged. */
+export class UnsoundCopy extends Error {}
 
 /**
  * Copies, made by SQLite's own means: never by reading the file, which would miss the write-ahead log and drop our locks. A
@@ -46,8 +50,9 @@ export function removeDatabase(file: string): void {
 }
 
 function refuseOwnFile(db: Db, file: string): void {
-  if (['', '-wal', '-shm'].some((suffix) => file === db.name + suffix)) {
-    throw new Error(`${file} is the record itself; give the copy another name.`);
+  const ours = ['', '-wal', '-shm'].map((suffix) => resolve(db.name + suffix));
+  if ([...ours, resolve(lockFile(dirname(db.name)))].includes(resolve(file))) {
+    throw new Error(`${file} belongs to the record itself; give the copy another name.`);
   }
 }
 
@@ -58,7 +63,7 @@ function finish(partial: string, file: string): void {
     // A plain single file, without a log beside it.
     copy.pragma('journal_mode = DELETE');
     const problem = copyProblem(copy);
-    if (problem !== null) throw new Error(`The copy ${file} is not sound: ${problem}. Nothing was kept.`);
+    if (problem !== null) throw new UnsoundCopy(`The copy ${file} is not sound: ${problem}. Nothing was kept.`);
   } finally {
     copy.close();
   }

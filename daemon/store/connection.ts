@@ -18,12 +18,16 @@ const FULL = 2;
 
 export class UnsuitableLibrary extends Error {}
 
+/** A database that is not ours: it is left exactly as it was. */
+export class ForeignDatabase extends Error {}
+
 /** Opens read-write with write-ahead log, full synchronisation and foreign keys, and makes sure that they are on. */
 export function connect(file: string, options: { readonly mustExist: boolean }): Db {
   const db = new Database(file, { timeout: BUSY_TIMEOUT_MS, fileMustExist: options.mustExist });
   try {
     chmodSync(file, 0o600);
     requireLibrary(db.prepare('SELECT sqlite_version()').pluck().get() as string);
+    refuseForeign(db);
     db.pragma('trusted_schema = OFF');
     db.pragma('cell_size_check = ON');
     if (db.pragma('journal_mode = WAL', { simple: true }) !== 'wal') {
@@ -37,6 +41,13 @@ export function connect(file: string, options: { readonly mustExist: boolean }):
   } catch (error) {
     db.close();
     throw error;
+  }
+}
+
+function refuseForeign(db: Db): void {
+  const isEmpty = db.prepare('SELECT count(*) FROM sqlite_schema').pluck().get() === 0;
+  if (!isEmpty && db.pragma('application_id', { simple: true }) !== APPLICATION_ID) {
+    throw new ForeignDatabase('this is not a record of this program');
   }
 }
 

@@ -129,17 +129,16 @@ function renameEvent(db: Db, from: string, to: string, at: string): void {
   run(db, 'INSERT INTO former_ids (former_id, event_id, at) VALUES (?, ?, ?)', from, to, at);
 }
 
-/** Forgets an event that nobody was told of, and the mail about it that still waits. */
+/**
+ * Forgets an event that nobody was told of, as if it had never been, with the mail about it, none of which was ever attempted.
+ * Should it come about again, its first message has the same Message-ID, and must be sent.
+ */
 export function dropEvent(db: Db, id: string): 'dropped' | 'stale' {
   const found = row<{ told: number }>(db, 'SELECT told FROM events WHERE id = ?', id);
   if (found === undefined) throw new Error(`There is no event ${id} on record to drop.`);
   if (found.told === 1) return 'stale';
-  run(
-    db,
-    `UPDATE outbox SET state = 'expired', last_error = 'the event was dropped before this left'
-     WHERE state = 'queued' AND message_id IN (SELECT message_id FROM messages WHERE event_id = ?)`,
-    id,
-  );
+  run(db, 'DELETE FROM outbox WHERE message_id IN (SELECT message_id FROM messages WHERE event_id = ?)', id);
+  run(db, 'DELETE FROM messages WHERE event_id = ?', id);
   run(db, 'DELETE FROM events WHERE id = ?', id);
   return 'dropped';
 }

@@ -15,12 +15,13 @@ export function quarantinedSince(db: Db, since: string): QuarantinedRow[] {
   );
 }
 
-export function intakeSince(db: Db, since: string): { files: number; arrivals: number } {
-  return row<{ files: number; arrivals: number }>(
+export function intakeSince(db: Db, since: string): { files: number; arrivals: number; pulsars: number } {
+  return row<{ files: number; arrivals: number; pulsars: number }>(
     db,
-    `SELECT count(*) AS files, coalesce(sum(stored + revised), 0) AS arrivals FROM files
-     WHERE taken_in_at >= ? AND fault IS NULL`,
-    since,
+    `SELECT count(*) AS files, coalesce(sum(stored + revised), 0) AS arrivals, (
+       SELECT count(DISTINCT pulsar) FROM arrivals a JOIN files f ON f.id = a.file_id WHERE f.taken_in_at >= @since
+     ) AS pulsars FROM files WHERE taken_in_at >= @since AND fault IS NULL`,
+    { since },
   )!;
 }
 

@@ -1,5 +1,5 @@
 import { statSync } from 'node:fs';
-import { APPLICATION_ID, connect, type Db, UnsuitableLibrary } from './connection.ts';
+import { connect, type Db, ForeignDatabase, UnsuitableLibrary } from './connection.ts';
 import { type InstanceLock, takeInstanceLock } from './instanceLock.ts';
 import { migrate, SCHEMA_VERSION, schemaVersion } from './migrations.ts';
 import { requeueCutOff } from './outbox.ts';
@@ -63,17 +63,14 @@ function absenceProblem(folder: string, lock: InstanceLock | null): OpenFailure 
   const file = recordFile(folder);
   const size = statSync(file, { throwIfNoEntry: false })?.size ?? 0;
   if (size > 0 || (lock !== null && !lock.recordWasMade)) return null;
-  if (lock === null)
-    return { kind: 'nothing on record', message: `${file}: nothing is on record yet; the daemon has not run.` };
-  return damaged(folder, 'the record that was kept here is gone or empty');
+  return lock === null ? nothingYet(file) : goneOrEmpty(folder);
 }
 
 function recordProblem(db: Db, folder: string, lock: InstanceLock | null): OpenFailure | null {
   const version = schemaVersion(db);
-  const isNew = version === 0 && db.prepare('SELECT count(*) FROM sqlite_schema').pluck().get() === 0;
-  if (isNew && lock !== null && !lock.recordWasMade) return null;
-  if (db.pragma('application_id', { simple: true }) !== APPLICATION_ID) {
-    return damaged(folder, 'this is not a record of this program');
+  if (db.prepare('SELECT count(*) FROM sqlite_schema').pluck().get() === 0) {
+    if (lock === null) return nothingYet(db.name);
+    return lock.recordWasMade ? goneOrEmpty(folder) : null;
   }
   if (version > SCHEMA_VERSION) {
     return {
@@ -92,6 +89,14 @@ function recordProblem(db: Db, folder: string, lock: InstanceLock | null): OpenF
   return check === 'ok' ? null : damaged(folder, String(check));
 }
 
+function nothingYet(file: string): OpenFailure {
+  return { kind: 'nothing on record', message: `${file}: nothing is on record yet; the daemon has not run.` };
+}
+
+function goneOrEmpty(folder: string): OpenFailure {
+  return damaged(folder, 'the record that was kept here is gone or empty');
+}
+
 function damaged(folder: string, what: string): OpenFailure {
   return {
     kind: 'damaged',
@@ -102,7 +107,7 @@ function damaged(folder: string, what: string): OpenFailure {
 export function failureFrom(error: unknown, folder: string): OpenFailure {
   if (error instanceof UnsuitableLibrary) return { kind: 'unsuitable library', message: error.message };
   const trouble = storageTrouble(error);
-  if (trouble === 'damaged') return damaged(folder, (error as Error).message);
+  if (trouble === 'damaged' || error instanceof ForeignDatabase) return damaged(folder, (error as Error).message);
   if (trouble !== null || (error instanceof Error && 'syscall' in error)) {
     return {
       kind: 'storage fault',

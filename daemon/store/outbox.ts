@@ -19,7 +19,10 @@ const SELECT = `SELECT o.id, o.message_id AS messageId, o.recipient, m.subject, 
   m.created_at AS createdAt, o.delivered_at AS deliveredAt
   FROM outbox o JOIN messages m ON m.message_id = o.message_id`;
 
-/** Queues for each recipient that does not have this message yet; a Message-ID known before is the same message. */
+/**
+ * Queues for each recipient that does not have this message yet; a Message-ID on record is the same message. What a restore
+ * found delivered is not sent again, but other news under its Message-ID is, marked: rather twice than never.
+ */
 export function enqueue(db: Db, message: NewMessage, at: string): void {
   run(
     db,
@@ -34,24 +37,39 @@ export function enqueue(db: Db, message: NewMessage, at: string): void {
     at,
   );
   for (const recipient of message.recipients) {
-    const before = row<{ delivered_at: string }>(
-      db,
-      'SELECT delivered_at FROM delivered_before WHERE message_id = ? AND recipient = ?',
-      message.messageId,
-      recipient,
-    );
+    const before = deliveredBefore(db, message.messageId, recipient);
+    const leftAlready = before?.subject === message.subject;
     run(
       db,
       `INSERT INTO outbox (message_id, recipient, state, attempts, due_at, last_error, possible_duplicate, unknown_ends,
-         delivered_at) VALUES (?, ?, ?, 0, ?, NULL, 0, 0, ?) ON CONFLICT (message_id, recipient) DO NOTHING`,
+         delivered_at) VALUES (?, ?, ?, 0, ?, NULL, ?, 0, ?) ON CONFLICT (message_id, recipient) DO NOTHING`,
       message.messageId,
       recipient,
-      before === undefined ? 'queued' : 'delivered',
+      leftAlready ? 'delivered' : 'queued',
       message.dueAt,
-      before?.delivered_at ?? null,
+      before !== undefined && !leftAlready ? 1 : 0,
+      leftAlready ? before.delivered_at : null,
     );
+    if (before !== undefined && message.eventId !== null) markTold(db, message.eventId);
     step('outbox row written');
   }
+}
+
+function deliveredBefore(
+  db: Db,
+  messageId: string,
+  recipient: string,
+): { readonly subject: string; readonly delivered_at: string } | undefined {
+  return row(
+    db,
+    'SELECT subject, delivered_at FROM delivered_before WHERE message_id = ? AND recipient = ?',
+    messageId,
+    recipient,
+  );
+}
+
+function markTold(db: Db, eventId: string): void {
+  run(db, 'UPDATE events SET told = 1 WHERE id = ?', eventId);
 }
 
 export function supersede(db: Db, messageId: string): void {
@@ -113,7 +131,7 @@ export function claimDue(db: Db, now: string): ClaimedMail | null {
       due.id,
     );
     step('mail claimed');
-    if (due.eventId !== null) run(db, 'UPDATE events SET told = 1 WHERE id = ?', due.eventId);
+    if (due.eventId !== null) markTold(db, due.eventId);
     step('event told');
     return {
       ...due,

@@ -1,8 +1,8 @@
 import { existsSync, renameSync, statSync } from 'node:fs';
-import { join } from 'node:path';
+import { join, resolve } from 'node:path';
 import Database from 'better-sqlite3';
-import { copyProblem, removeDatabase, writeCopySync } from './backup.ts';
-import { connect, type Db, inTransaction } from './connection.ts';
+import { copyProblem, removeDatabase, UnsoundCopy, writeCopySync } from './backup.ts';
+import { connect, type Db, ForeignDatabase, inTransaction } from './connection.ts';
 import { step } from './crashStep.ts';
 import { type InstanceLock, takeInstanceLock } from './instanceLock.ts';
 import { SCHEMA_VERSION, schemaVersion } from './migrations.ts';
@@ -18,6 +18,7 @@ export type Restored =
 interface Delivered {
   readonly message_id: string;
   readonly recipient: string;
+  readonly subject: string;
   readonly delivered_at: string;
 }
 
@@ -29,7 +30,7 @@ interface Delivered {
 export async function restore(copyFile: string, folder: string, at: string): Promise<Restored> {
   let lock: InstanceLock | null = null;
   try {
-    const problem = prepareFolder(folder) ?? sourceProblem(copyFile);
+    const problem = prepareFolder(folder) ?? sourceProblem(copyFile, recordFile(folder));
     if (problem !== null) return { ok: false, failure: problem };
     lock = takeInstanceLock(lockFile(folder));
     if (lock === null) return { ok: false, failure: heldByAnother(folder) };
@@ -56,11 +57,12 @@ export async function restore(copyFile: string, folder: string, at: string): Pro
 }
 
 /** A copy is trusted only when all of it checks and this version can read it. */
-function sourceProblem(copyFile: string): OpenFailure | null {
+function sourceProblem(copyFile: string, record: string): OpenFailure | null {
   const refuse = (what: string): OpenFailure => ({
     kind: 'damaged',
     message: `${copyFile}: ${what}. Nothing was changed.`,
   });
+  if (resolve(copyFile) === resolve(record)) return refuse('this is the record itself, not a copy of it');
   if (!statSync(copyFile, { throwIfNoEntry: false })?.isFile()) return refuse('there is no such file');
   try {
     const copy = new Database(copyFile, { readonly: true, fileMustExist: true });
@@ -91,8 +93,9 @@ function keepAside(file: string, aside: string): { keptAside: string | null; del
     return { keptAside: aside, delivered };
   } catch (error) {
     present?.close();
-    if (storageTrouble(error) !== 'damaged' && !(error instanceof Error && error.message.includes('not sound')))
-      throw error;
+    const ruined =
+      error instanceof ForeignDatabase || error instanceof UnsoundCopy || storageTrouble(error) === 'damaged';
+    if (!ruined) throw error;
     moveAside(file, aside);
     return { keptAside: aside, delivered: [] };
   } finally {
@@ -110,8 +113,8 @@ function moveAside(file: string, aside: string): void {
 function deliveredIn(present: Db): Delivered[] {
   return present
     .prepare(
-      `SELECT message_id, recipient, delivered_at FROM outbox WHERE state = 'delivered'
-       UNION SELECT message_id, recipient, delivered_at FROM delivered_before`,
+      `SELECT message_id, recipient, subject, delivered_at FROM outbox JOIN messages USING (message_id) WHERE state = 'delivered'
+       UNION SELECT message_id, recipient, subject, delivered_at FROM delivered_before`,
     )
     .all() as Delivered[];
 }
@@ -132,7 +135,7 @@ function settleMail(file: string, delivered: readonly Delivered[]): void {
   try {
     inTransaction(db, () => {
       const remember = db.prepare(
-        'INSERT OR IGNORE INTO delivered_before VALUES (@message_id, @recipient, @delivered_at)',
+        'INSERT OR IGNORE INTO delivered_before VALUES (@message_id, @recipient, @subject, @delivered_at)',
       );
       for (const one of delivered) remember.run({ ...one });
       db.exec(`

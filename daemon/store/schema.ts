@@ -167,7 +167,7 @@ CREATE TRIGGER verdicts_stay BEFORE DELETE ON verdicts BEGIN SELECT RAISE(ABORT,
 CREATE TABLE messages (
   message_id TEXT PRIMARY KEY,
   kind TEXT NOT NULL CHECK (kind IN ('event', 'digest', 'notice', 'test')),
-  event_id TEXT REFERENCES events (id) ON UPDATE CASCADE ON DELETE SET NULL,
+  event_id TEXT REFERENCES events (id) ON UPDATE CASCADE,
   subject TEXT NOT NULL,
   in_reply_to TEXT,
   content TEXT NOT NULL,
@@ -199,6 +199,8 @@ BEGIN SELECT RAISE(ABORT, 'a settled message does not change its state'); END;
 CREATE TABLE delivered_before (
   message_id TEXT NOT NULL,
   recipient TEXT NOT NULL,
+  -- The same Message-ID may come about again with other news, which must be sent.
+  subject TEXT NOT NULL,
   delivered_at TEXT NOT NULL,
   PRIMARY KEY (message_id, recipient)
 ) STRICT, WITHOUT ROWID;

@@ -1,4 +1,5 @@
 import type { QuarantinedRow } from '../../alerts/morningReview.ts';
+import type { TimedArrival } from '../../detectors/arrival.ts';
 import type { Mjd } from '../../detectors/time/mjd.ts';
 import type { ArrivalRecord, EventRecord, FileRecord, ListedEvent, OutboxRecord } from '../records.ts';
 import * as arrivals from './arrivals.ts';
@@ -60,7 +61,7 @@ export class Store {
   }
 
   /** Marks that reading begins; answers how often it began, this time included, without an end: 1 when all is well. */
-  noteReadingStarts(feed: string, path: string, sha256: string): number {
+  noteReadingStarts(feed: string, path: string | { readonly bytesHex: string }, sha256: string): number {
     return files.noteReadingStarts(this.#db, feed, path, sha256);
   }
 
@@ -90,6 +91,11 @@ export class Store {
 
   liveArrivals(pulsar: string): ArrivalRecord[] {
     return arrivals.liveArrivalsOf(this.#db, pulsar);
+  }
+
+  /** What the detector takes in: the live arrivals that have a TDB, by TDB and then key. */
+  timedArrivals(pulsar: string): TimedArrival[] {
+    return arrivals.timedArrivalsOf(this.#db, pulsar);
   }
 
   /** Names of all pulsars with arrivals, sorted by code point. */
@@ -188,7 +194,7 @@ export class Store {
     return recent.recentQuarantine(this.#db, most);
   }
 
-  intakeSince(since: string): { files: number; arrivals: number } {
+  intakeSince(since: string): { files: number; arrivals: number; pulsars: number } {
     return morning.intakeSince(this.#db, since);
   }
 

@@ -1,5 +1,5 @@
 import { logSumExp } from '../math/logSumExp.ts';
-import { type EventData, type EventFrame, eventFrame } from './eventFrame.ts';
+import { type EventData, eventFrame } from './eventFrame.ts';
 import { gapSystem, withoutRecovery } from './gapSystem.ts';
 import { explore, type GlitchPoint } from './glitchPosterior.ts';
 import { type Estimate, gridEstimate, mixtureEstimate } from './mixture.ts';
@@ -7,12 +7,12 @@ import { defaultSizePrior, type SizePrior, sizeScales } from './sizePrior.ts';
 import { scanTimescales } from './timescaleScan.ts';
 
 const SECONDS_PER_DAY = 86_400;
+/** Turns per day, and per day², in Hz and Hz/s. */
+const HZ = 1 / SECONDS_PER_DAY;
+const HZ_PER_S = HZ / SECONDS_PER_DAY;
 
-/**
- * Prior odds of a measurable exponential: 119 of 726 catalogued glitches have one
- * (Moragues et al. 2022, arXiv:2210.09907).
- */
-const LN_RECOVERY_PRIOR_ODDS = Math.log(119 / (726 - 119));
+/** A recovery is stated as one when its evidence is ten times that of a glitch without. */
+const LN_RECOVERY_EVIDENCE = Math.log(10);
 
 export interface GlitchFitInput extends EventData {
   readonly frequencyHz: number;
@@ -33,7 +33,7 @@ export interface GlitchFit {
   readonly logEvidenceNone: number;
   readonly logEvidencePlain: number;
   readonly logEvidenceRecovery: number;
-  /** 0 or 1, as evidence and prior odds chose; the estimates below are of the chosen model. */
+  /** 1 when the evidence for a recovery is at least tenfold. */
   readonly recoveryTerms: 0 | 1;
   /** Most probable epoch, days from the pivot. */
   readonly bestEpochDays: number;
@@ -57,6 +57,8 @@ export interface GlitchFit {
  * and everything else linear marginalised exactly. Phase is continuous at the epoch. Epoch flat over the candidate gaps;
  * timescale flat in its logarithm; sizes by `SizePrior`; spin, offsets, dispersion and other events flat.
  * The whole turns given are one solution: others that put the epoch elsewhere in the gap are part of the posterior.
+ * Epoch and sizes are averaged over both models, each weighted by its evidence: with few arrivals a recovery can be
+ * hidden, and the intervals must say so.
  * Model and symbols as in Yu et al. 2013, MNRAS 429, 688.
  * @throws RangeError when no candidate gap lies between arrivals in use.
  */
@@ -68,64 +70,90 @@ export function fitGlitch(input: GlitchFitInput): GlitchFit {
   const plain = systems.map((system) => explore(frame, system, withoutRecovery(system), scales));
   const logEvidencePlain = logSumExp(plain.map(({ logEvidence }) => logEvidence));
   const recovery = scanTimescales(frame, systems, scales);
-  const recovers = recovery.logEvidence - logEvidencePlain + LN_RECOVERY_PRIOR_ODDS > 0;
-  const points = recovers ? recovery.points : plain.flatMap((cloud) => cloud.points);
+  const plainPoints = significant(plain.flatMap((cloud) => cloud.points));
+  const decayingPoints = significant(recovery.points);
+  const recovers = recovery.logEvidence - logEvidencePlain > LN_RECOVERY_EVIDENCE;
   return {
-    logEvidenceNone: logEvidenceNone(frame),
+    logEvidenceNone: -0.5 * frame.data.reduce((sum, entry) => sum + entry * entry, 0),
     logEvidencePlain,
     logEvidenceRecovery: recovery.logEvidence,
     recoveryTerms: recovers ? 1 : 0,
-    ...describe(significant(points), recovers),
+    ...describeSizes(significant([...plainPoints, ...decayingPoints])),
+    recovery: recovers ? describeRecovery(decayingPoints) : null,
+    ...describeBest(recovers ? decayingPoints : plainPoints),
   };
 }
 
-function logEvidenceNone(frame: EventFrame): number {
-  return -0.5 * frame.data.reduce((sum, entry) => sum + entry * entry, 0);
-}
-
-/** The points that hold all but a millionth of the posterior or so. */
+/** The points that hold all but a hundred-thousandth of the posterior or so. */
 function significant(points: readonly GlitchPoint[]): GlitchPoint[] {
-  const heaviest = points.reduce((most, { logMass }) => Math.max(most, logMass), Number.NEGATIVE_INFINITY);
+  const heaviest = heaviestOf(points);
   return points.filter(({ logMass }) => logMass > heaviest - 12);
 }
 
-type Description = Omit<GlitchFit, 'logEvidenceNone' | 'logEvidencePlain' | 'logEvidenceRecovery' | 'recoveryTerms'>;
+type Sizes = Pick<
+  GlitchFit,
+  'epochDays' | 'deltaNuHz' | 'deltaNuDotHzPerS' | 'persistentNuHz' | 'persistentNuDotHzPerS'
+>;
 
-function describe(points: readonly GlitchPoint[], recovers: boolean): Description {
-  const heaviest = points.reduce((most, { logMass }) => Math.max(most, logMass), Number.NEGATIVE_INFINITY);
-  const weights = Float64Array.from(points, ({ logMass }) => Math.exp(logMass - heaviest));
-  const best = points.reduce((a, b) => (b.logDensity > a.logDensity ? b : a));
-  const marginal = (of: (point: GlitchPoint) => Gaussian, unit: number): Estimate =>
-    mixtureEstimate({
-      weights,
-      means: Float64Array.from(points, (point) => of(point).mean * unit),
-      sds: Float64Array.from(points, (point) => of(point).sd * unit),
-    });
-  const hz = 1 / SECONDS_PER_DAY;
-  const hzPerS = hz / SECONDS_PER_DAY;
+function describeSizes(points: readonly GlitchPoint[]): Sizes {
+  const weights = weightsOf(points);
   return {
-    bestEpochDays: best.epochDays,
     epochDays: gridEstimate(
       Float64Array.from(points, ({ epochDays }) => epochDays),
       weights,
     ),
-    deltaNuHz: marginal((point) => project(point, [1, 0, 1]), hz),
-    deltaNuDotHzPerS: marginal((point) => project(point, [0, 1, -1 / point.timescaleDays]), hzPerS),
-    persistentNuHz: marginal((point) => project(point, [1, 0, 0]), hz),
-    persistentNuDotHzPerS: marginal((point) => project(point, [0, 1, 0]), hzPerS),
-    recovery: recovers
-      ? {
-          timescaleDays: gridEstimate(
-            Float64Array.from(points, ({ timescaleDays }) => timescaleDays),
-            weights,
-          ),
-          fraction: marginal(fraction, 1),
-          frequencyStepHz: marginal((point) => project(point, [0, 0, 1]), hz),
-        }
-      : null,
+    deltaNuHz: marginal(points, weights, (point) => project(point, [1, 0, 1]), HZ),
+    deltaNuDotHzPerS: marginal(points, weights, (point) => project(point, [0, 1, -1 / point.timescaleDays]), HZ_PER_S),
+    persistentNuHz: marginal(points, weights, (point) => project(point, [1, 0, 0]), HZ),
+    persistentNuDotHzPerS: marginal(points, weights, (point) => project(point, [0, 1, 0]), HZ_PER_S),
+  };
+}
+
+function describeRecovery(points: readonly GlitchPoint[]): RecoveryEstimate {
+  const weights = weightsOf(points);
+  return {
+    timescaleDays: gridEstimate(
+      Float64Array.from(points, ({ timescaleDays }) => timescaleDays),
+      weights,
+    ),
+    fraction: marginal(points, weights, fraction, 1),
+    frequencyStepHz: marginal(points, weights, (point) => project(point, [0, 0, 1]), HZ),
+  };
+}
+
+function describeBest(points: readonly GlitchPoint[]): Pick<GlitchFit, 'bestEpochDays' | 'curve' | 'frequencyCurve'> {
+  const best = points.reduce((a, b) => (b.logDensity > a.logDensity ? b : a));
+  return {
+    bestEpochDays: best.epochDays,
     curve: (tDays) => addedDeviation(best, tDays),
     frequencyCurve: (tDays) => addedFrequency(best, tDays),
   };
+}
+
+function weightsOf(points: readonly GlitchPoint[]): Float64Array {
+  const heaviest = heaviestOf(points);
+  return Float64Array.from(points, ({ logMass }) => Math.exp(logMass - heaviest));
+}
+
+function heaviestOf(points: readonly GlitchPoint[]): number {
+  return points.reduce((most, { logMass }) => Math.max(most, logMass), Number.NEGATIVE_INFINITY);
+}
+
+/** @param unit factor from turns and days to the unit stated. */
+function marginal(
+  points: readonly GlitchPoint[],
+  weights: Float64Array,
+  of: (point: GlitchPoint) => Gaussian,
+  unit: number,
+): Estimate {
+  const means = new Float64Array(points.length);
+  const sds = new Float64Array(points.length);
+  points.forEach((point, i) => {
+    const { mean, sd } = of(point);
+    means[i] = mean * unit;
+    sds[i] = sd * unit;
+  });
+  return mixtureEstimate({ weights, means, sds });
 }
 
 interface Gaussian {

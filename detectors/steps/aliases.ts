@@ -31,14 +31,17 @@ export interface SizedGlitch {
   readonly aliases: readonly Alias[];
 }
 
-export function aliasesOf(input: GlitchFitInput): SizedGlitch {
+/** `bestGap`: index of the first arrival after the most probable gap; the other counts begin there. */
+export function aliasesOf(input: GlitchFitInput, bestGap: number): SizedGlitch {
   const asCounted = { fit: fitGlitch(input), counted: input.arrivals };
   const candidates = [asCounted];
   for (const order of ORDERS) {
     const sized = asCounted.fit.deltaNuHz.mean + order / SIDEREAL_DAY_S;
     if (sized < LOWEST * input.frequencyHz || sized > HIGHEST * input.frequencyHz) continue;
-    const counted = recounted(input, order);
-    if (counted !== null) candidates.push({ fit: fitGlitch({ ...input, arrivals: counted }), counted });
+    const counted = recounted(input, order, bestGap);
+    if (counted === null) continue;
+    const there = { firstGapBeforeIndex: bestGap, lastGapBeforeIndex: bestGap };
+    candidates.push({ fit: fitGlitch({ ...input, ...there, arrivals: counted }), counted });
   }
   const logEvidence = candidates.map(({ fit }) => Math.max(fit.logEvidencePlain, fit.logEvidenceRecovery));
   const highest = Math.max(...logEvidence);
@@ -57,8 +60,7 @@ export function aliasesOf(input: GlitchFitInput): SizedGlitch {
 }
 
 /** The counts after the event for `order` more turns a sidereal day; null when the arrivals rule that out at sight. */
-function recounted(input: GlitchFitInput, order: number): CountedArrival[] | null {
-  const after = input.lastGapBeforeIndex;
+function recounted(input: GlitchFitInput, order: number, after: number): CountedArrival[] | null {
   const turnsPerDay = (order * SECONDS_PER_DAY) / SIDEREAL_DAY_S;
   const reference = input.arrivals[after]!.tDays;
   let sum = 0;

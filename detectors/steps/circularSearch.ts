@@ -28,14 +28,25 @@ const MOST_PEAKS = 25;
 /** Bounds the work for millisecond pulsars over long runs. */
 const MOST_TRIALS = 400_000;
 
-/** Peaks of the circular likelihood for steps in [lowest, highest] turns per day, best first. */
-export function searchStep(points: readonly SearchPoint[], lowest: number, highest: number): SearchPeak[] {
+/** Spread, turns, that the grid's own step leaves at a peak. */
+const GRID_SPREAD = 0.02;
+
+/**
+ * Peaks of the circular likelihood for steps in [lowest, highest] turns per day, most probable first: by the fit, for a
+ * scatter of `spread` turns about the prediction, and by a log-uniform prior on the size. Regular schedules make combs of
+ * peaks that fit alike; the prior puts the small steps of a comb first.
+ */
+export function searchStep(
+  points: readonly SearchPoint[],
+  lowest: number,
+  highest: number,
+  spread: number,
+): SearchPeak[] {
   const span = points.at(-1)!.days - points[0]!.days;
   const trials = Math.min(MOST_TRIALS, Math.ceil((highest - lowest) * OVERSAMPLING * span) + 1);
   const width = (highest - lowest) / Math.max(1, trials - 1);
   const power = new Float64Array(trials);
   const phase = new Float64Array(trials);
-  // One rotation a trial and point: cos and sin by the recurrence of the angle, restarted from the exact value often.
   const angle0 = points.map((p) => 2 * Math.PI * (p.deviation + lowest * p.days));
   const stepAngle = points.map((p) => 2 * Math.PI * width * p.days);
   for (let k = 0; k < trials; k++) {
@@ -55,5 +66,8 @@ export function searchStep(points: readonly SearchPoint[], lowest: number, highe
     if (p < LEAST_CONCENTRATION || p < (power[k - 1] ?? 0) || p <= (power[k + 1] ?? 0)) continue;
     peaks.push({ frequencyStep: lowest + k * width, phase: phase[k]!, concentration: p, width });
   }
-  return peaks.sort((a, b) => b.concentration - a.concentration).slice(0, MOST_PEAKS);
+  const sharpness = points.length / ((2 * Math.PI) ** 2 * (spread * spread + GRID_SPREAD * GRID_SPREAD));
+  const score = (p: SearchPeak) =>
+    sharpness * (p.concentration - 1) - Math.log(Math.max(Math.abs(p.frequencyStep), p.width));
+  return peaks.sort((a, b) => score(b) - score(a)).slice(0, MOST_PEAKS);
 }

@@ -56,7 +56,8 @@ export function searchLargeStep(watch: PulsarWatch, index: number): boolean {
     days: s.tDays - seen[start]!.tDays,
     deviation: wrapped(s.deviation - predictedDeviation(before, s.tDays)),
   }));
-  const peaks = searchStep(points, LOWEST_STEP * turnsPerDay, HIGHEST_STEP * turnsPerDay);
+  const spread = predictionSpread(watch, before, seen[index]!.tDays);
+  const peaks = searchStep(points, LOWEST_STEP * turnsPerDay, HIGHEST_STEP * turnsPerDay, spread);
   const found = peaks.flatMap((peak) => followed(watch, before, peak, start, index));
   if (found.length === 0) return false;
   const family = bank.families.find((f) => f.gap === start && f.kind === 'glitch');
@@ -70,6 +71,13 @@ function predictedDeviation(from: Snapshot, tDays: number): number {
   const t = tDays - from.tDays;
   const { mean } = from.hypothesis;
   return mean[0]! + t * mean[1]! + (t * t * mean[2]!) / 2;
+}
+
+/** σ of the prediction at the end of the run, turns. */
+function predictionSpread(watch: PulsarWatch, from: Snapshot, tDays: number): number {
+  const h = copyOf(from.hypothesis);
+  propagate(h, gapOf(tDays - from.tDays, watch.noise));
+  return Math.sqrt(h.cov[0]!);
 }
 
 function wrapped(turns: number): number {

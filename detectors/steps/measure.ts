@@ -90,7 +90,7 @@ function fitted(
   if (!arrivals.slice(0, input.firstGapBeforeIndex).some(used)) return null;
   if (!arrivals.slice(input.lastGapBeforeIndex).some(used)) return null;
   if (track.kind === 'glitch') {
-    const { fit, counted, aliases } = aliasesOf(input);
+    const { fit, counted, aliases } = aliasesOf(input, track.bestGap - from);
     return {
       glitch: fit,
       step: null,

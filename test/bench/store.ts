@@ -28,6 +28,8 @@ const read = seconds(() => {
   found = store.arrivals('KR 0417+31').length;
 });
 console.log(`read back: ${Math.round(found / read)} arrivals/s`);
+const timed = seconds(() => store.timedArrivals('KR 0417+31'));
+console.log(`for the detector: ${Math.round(found / timed)} arrivals/s`);
 const near = seconds(() => {
   for (let n = 0; n < ROWS; n += 1)
     store.arrivalsNear('KR 0417+31', { day: 60_000 + n, fraction: 0.1234567890123457 }, 1e-6);

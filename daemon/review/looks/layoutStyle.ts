@@ -63,7 +63,7 @@ td.number { white-space: nowrap; }
 td small, td.whole { white-space: nowrap; }
 .path, .note, td bdi { overflow-wrap: anywhere; }
 .note { white-space: pre-wrap; }
-td .note { display: block; min-width: 9rem; }
+td .note { display: -webkit-box; -webkit-box-orient: vertical; -webkit-line-clamp: 3; overflow: hidden; min-width: 9rem; }
 .empty { color: var(--quiet); padding: 0.45rem 0; }
 a.event { font-weight: 600; text-decoration: none; white-space: nowrap; }
 a.event bdi { text-decoration: underline; overflow-wrap: normal; }
@@ -142,6 +142,7 @@ blockquote { margin: 0.2rem 0; }
   td .note { min-width: 0; }
   .crop { max-width: 13cm; }
   .bars { max-width: 13cm; }
+  .numbers { grid-template-columns: 1fr 1fr; }
   nav, .skip, .live, .verdict, .downloads, .keys { display: none !important; }
   main, .top, .foot { max-width: none; padding-left: 0; padding-right: 0; }
   a { color: inherit; text-decoration: none; }

@@ -49,7 +49,6 @@ export function page(frame: Frame, content: PageContent): Html {
       <main id="main">${content.main}</main>
       <footer class="foot">
         <p>Intervals are 68 %. Times are UTC; epochs are MJD (TDB) at the barycentre. Positive Δν is a spin-up.</p>
-        <p class="keys">Keys: <kbd>j</kbd> next event, <kbd>k</kbd> previous, <kbd>Enter</kbd> opens it.</p>
       </footer>`,
   });
 }

@@ -117,7 +117,7 @@ const FILES: readonly Column<FileRecord>[] = [
 
 const MAIL: readonly Column<OutboxRecord>[] = [
   { head: 'Written, UTC', cell: (row) => utc(row.createdAt), whole: true },
-  { head: 'To', cell: (row) => html`<bdi>${visible(row.recipient)}</bdi>` },
+  { head: 'To', cell: (row) => html`<bdi>${visible(row.recipient)}</bdi>`, whole: true },
   {
     head: 'Subject',
     cell: (row) =>

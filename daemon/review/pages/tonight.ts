@@ -52,7 +52,8 @@ export function tonightPage(content: TonightContent): Html {
         rows: content.decisions,
         empty: 'Nothing has been decided yet.',
       })}
-    </section>`;
+    </section>
+    <p class="keys quiet">Keys: <kbd>j</kbd> next event, <kbd>k</kbd> previous, <kbd>Enter</kbd> opens it.</p>`;
 }
 
 function headline({ morning, pulsars }: TonightContent): string {

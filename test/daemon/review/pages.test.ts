@@ -2,7 +2,7 @@ import { beforeAll, describe, expect, test } from 'vitest';
 import { DAY, NIGHT } from '../../../daemon/review/looks/style.ts';
 import { memoryDesk, sampleEvent, sampleRecord } from '../../support/reviewDesk.ts';
 import { hostileRecord, hostileTexts, PAYLOADS } from './hostileTexts.ts';
-import { fillForm, postVerdict, startSite } from './reviewSite.ts';
+import { fillForm, postVerdict, startSampleSite, startSite } from './reviewSite.ts';
 
 const PATHS = ['', 'pulsars', 'feeds', 'mail'];
 
@@ -62,7 +62,7 @@ describe('E4: script injection', () => {
       expect([id, (await fetch(`${url}events/${encodeURIComponent(id)}`)).status]).toEqual([id, 200]);
       expect((await postVerdict(url, await fillForm(url, id), {}, id)).status).toBe(303);
     }
-    const { url } = await startSite();
+    const { url } = await startSampleSite();
     for (const id of ['__proto__', 'constructor', 'toString']) {
       expect((await fetch(`${url}events/${id}`)).status).toBe(404);
     }
@@ -91,7 +91,7 @@ describe('pages', () => {
   });
 
   test('an event is a candidate, with its caution, until it is accepted', async () => {
-    const { url } = await startSite();
+    const { url } = await startSampleSite();
     const before = await pageText(url, 'events/kr-0417-61370');
     expect(before).toContain('candidate glitch');
     expect(before).toContain('must be vetted by a person');
@@ -104,7 +104,7 @@ describe('pages', () => {
   });
 
   test('programs get the event as JSON and CSV, and the health', async () => {
-    const { url } = await startSite();
+    const { url } = await startSampleSite();
     expect(await (await fetch(`${url}api/events`)).json()).toEqual([sampleEvent()]);
     expect(await (await fetch(`${url}api/events/kr-0417-61370`)).json()).toMatchObject({ event: sampleEvent() });
     expect((await fetch(`${url}api/events/none`)).status).toBe(404);

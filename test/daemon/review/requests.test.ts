@@ -2,7 +2,7 @@ import { describe, expect, test } from 'vitest';
 import { SECURITY_HEADERS } from '../../../daemon/review/headers.ts';
 import { memoryDesk } from '../../support/reviewDesk.ts';
 import { portOf, sendRaw, sendRequest } from './rawHttp.ts';
-import { fillForm, postVerdict, startSite } from './reviewSite.ts';
+import { fillForm, postVerdict, startSampleSite, startSite } from './reviewSite.ts';
 
 // Requests that no browser on the page would send. Ids are those of the fault list.
 
@@ -25,7 +25,7 @@ const TRAVERSALS = [
 
 describe('E1: path traversal', () => {
   test.each(TRAVERSALS)('%s', async (target) => {
-    const { url } = await startSite();
+    const { url } = await startSampleSite();
     const answer = await sendRequest(url, `GET ${target} HTTP/1.1`);
     expect([400, 404]).toContain(answer.status);
     expect(answer.body).not.toContain('root:');
@@ -52,7 +52,7 @@ describe('E3: names of this page', () => {
   });
 
   test('answers under its own names only, whatever is asked for', async () => {
-    const { url } = await startSite();
+    const { url } = await startSampleSite();
     const { good, foreign } = names(portOf(url));
     for (const name of good) {
       expect([name, (await sendRequest(url, 'GET / HTTP/1.1', [`Host: ${name}`])).status]).toEqual([name, 200]);
@@ -67,7 +67,7 @@ describe('E3: names of this page', () => {
   });
 
   test('needs exactly one Host', async () => {
-    const { url } = await startSite();
+    const { url } = await startSampleSite();
     const host = `Host: 127.0.0.1:${portOf(url)}`;
     expect((await sendRequest(url, 'GET / HTTP/1.1', [])).status).toBe(400);
     expect((await sendRequest(url, 'GET / HTTP/1.0', [])).status).toBe(400);
@@ -77,7 +77,7 @@ describe('E3: names of this page', () => {
   });
 
   test('takes no notice of what a proxy may claim', async () => {
-    const { url } = await startSite();
+    const { url } = await startSampleSite();
     const claims = [`Host: evil.test`, `X-Forwarded-Host: 127.0.0.1:${portOf(url)}`, 'X-Forwarded-For: 127.0.0.1'];
     expect((await sendRequest(url, 'GET / HTTP/1.1', claims)).status).toBe(421);
   });
@@ -85,7 +85,7 @@ describe('E3: names of this page', () => {
 
 describe('E6: sizes', () => {
   test('a huge head is 431, and many bytes of body 413, with flat memory', async () => {
-    const { url, desk } = await startSite();
+    const { url, desk } = await startSampleSite();
     const host = `Host: 127.0.0.1:${portOf(url)}`;
     expect((await sendRequest(url, 'GET / HTTP/1.1', [host, `X-Long: ${'a'.repeat(20_000)}`])).status).toBe(431);
     expect((await sendRequest(url, `GET /${'a'.repeat(3000)} HTTP/1.1`)).status).toBe(414);
@@ -95,7 +95,7 @@ describe('E6: sizes', () => {
   });
 
   test('a body that never ends is cut off', async () => {
-    const { url } = await startSite();
+    const { url } = await startSampleSite();
     const head = [
       'POST /events/kr-0417-61370/verdict HTTP/1.1',
       `Host: 127.0.0.1:${portOf(url)}`,
@@ -115,14 +115,14 @@ describe('E6: sizes', () => {
     ['Content-Length: 99999999999999999999'],
     ['Transfer-Encoding: chunked, gzip'],
   ])('a head that contradicts itself is refused: %s %s', async (...lengths) => {
-    const { url } = await startSite();
+    const { url } = await startSampleSite();
     const headers = [`Host: 127.0.0.1:${portOf(url)}`, `Origin: ${url.slice(0, -1)}`, ...lengths];
     const answer = await sendRequest(url, 'POST /events/kr-0417-61370/verdict HTTP/1.1', headers, 'a=b&c');
     expect(answer.status).toBe(400);
   });
 
   test('a compressed body or another kind of body is refused', async () => {
-    const { url, desk } = await startSite();
+    const { url, desk } = await startSampleSite();
     const form = await fillForm(url);
     expect((await postVerdict(url, form, { 'Content-Encoding': 'gzip' })).status).toBe(415);
     expect((await postVerdict(url, JSON.stringify(form), { 'Content-Type': 'application/json' })).status).toBe(415);
@@ -131,7 +131,7 @@ describe('E6: sizes', () => {
   });
 
   test('other methods are refused', async () => {
-    const { url } = await startSite();
+    const { url } = await startSampleSite();
     for (const method of ['PUT', 'DELETE', 'PATCH', 'OPTIONS', 'TRACE']) {
       const answer = await sendRequest(url, `${method} / HTTP/1.1`);
       expect([method, answer.status, answer.headers.get('allow')]).toEqual([method, 405, 'GET, HEAD, POST']);
@@ -148,7 +148,7 @@ describe('E13: encodings', () => {
   test.each(['/%', '/%zz', '/events/%ff', '/events/%c3%28', '/events/%ed%a0%80', '/events/a%0d%0ab'])(
     'malformed address %s is 400',
     async (target) => {
-      const { url } = await startSite();
+      const { url } = await startSampleSite();
       expect((await sendRequest(url, `GET ${target} HTTP/1.1`)).status).toBe(400);
     },
   );
@@ -156,7 +156,7 @@ describe('E13: encodings', () => {
   test.each(['note=%', 'note=%zz', 'note=%ff', 'note=%ed%a0%80', 'note=a&note=b', 'stranger=1'])(
     'malformed form %s is 400 and changes nothing',
     async (extra) => {
-      const { url, desk } = await startSite();
+      const { url, desk } = await startSampleSite();
       const { note: _, ...rest } = await fillForm(url);
       const answer = await postVerdict(url, `${new URLSearchParams(rest)}&${extra}`);
       expect([answer.status, desk.verdictCount()]).toEqual([400, 0]);
@@ -164,7 +164,7 @@ describe('E13: encodings', () => {
   );
 
   test('odd text in a note is kept as it is, but for control characters', async () => {
-    const { url, desk } = await startSite();
+    const { url, desk } = await startSampleSite();
     const note = 'ν̇ jumped — 𝛿ν/ν 二; =HYPERLINK("x") \u202e txt\ttab\r\nline\rline\u0000\u0007\u009b';
     expect((await postVerdict(url, await fillForm(url, undefined, { note }))).status).toBe(303);
     const kept = desk.event('kr-0417-61370')?.verdicts[0]?.note;
@@ -175,12 +175,14 @@ describe('E13: encodings', () => {
 
 describe('E14: beyond loopback', () => {
   test.each(['0.0.0.0', '::', '192.0.2.7', 'kestrel.example'])('refuses to listen on %s', async (host) => {
-    await expect(startSite({ host })).rejects.toThrow(/no login/);
+    await expect(startSampleSite({ host })).rejects.toThrow(/no login/);
   });
 
   test('says which port is taken', async () => {
-    const { url } = await startSite();
-    await expect(startSite({ port: portOf(url) })).rejects.toThrow(`127.0.0.1:${portOf(url)}: the port is in use`);
+    const { url } = await startSampleSite();
+    await expect(startSampleSite({ port: portOf(url) })).rejects.toThrow(
+      `127.0.0.1:${portOf(url)}: the port is in use`,
+    );
   });
 });
 
@@ -209,7 +211,7 @@ describe('E17: headers', () => {
   const MORE = ['/api/events', '/api/version', '/assets/review.css', '/assets/review.js', '/assets/mark.svg', '/%ff'];
 
   test('stand on every answer, errors and refusals included', async () => {
-    const { url } = await startSite();
+    const { url } = await startSampleSite();
     const host = `Host: 127.0.0.1:${portOf(url)}`;
     const answers = [
       ...(await Promise.all([...PATHS, ...MORE].map((path) => sendRequest(url, `GET ${path} HTTP/1.1`)))),

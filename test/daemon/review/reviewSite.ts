@@ -1,6 +1,7 @@
 import { afterEach } from 'vitest';
+import type { ReviewDesk } from '../../../daemon/review/desk.ts';
 import { type ReviewServer, type ReviewSettings, startReviewServer } from '../../../daemon/review/server.ts';
-import { type MemoryDesk, memoryDesk, NOW } from '../../support/reviewDesk.ts';
+import { memoryDesk, NOW } from '../../support/reviewDesk.ts';
 
 const open: ReviewServer[] = [];
 
@@ -9,10 +10,9 @@ afterEach(async () => {
 });
 
 /** A page on a free loopback port, closed after the test. */
-export async function startSite(
-  change: Partial<Omit<ReviewSettings, 'desk'>> & { readonly desk?: MemoryDesk } = {},
-): Promise<{ readonly url: string; readonly desk: MemoryDesk }> {
-  const desk = change.desk ?? memoryDesk();
+export async function startSite<Desk extends ReviewDesk>(
+  change: Partial<Omit<ReviewSettings, 'desk'>> & { readonly desk: Desk },
+): Promise<{ readonly url: string; readonly desk: Desk }> {
   const server = await startReviewServer({
     host: '127.0.0.1',
     port: 0,
@@ -20,10 +20,14 @@ export async function startSite(
     reviewers: [],
     now: () => NOW,
     ...change,
-    desk,
   });
   open.push(server);
-  return { url: server.url, desk };
+  return { url: server.url, desk: change.desk };
+}
+
+/** The same over a desk in memory with one candidate on it. */
+export function startSampleSite(change: Partial<Omit<ReviewSettings, 'desk'>> = {}) {
+  return startSite({ ...change, desk: memoryDesk() });
 }
 
 export interface VerdictFields {

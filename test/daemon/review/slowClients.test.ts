@@ -4,7 +4,7 @@ import { describe, expect, test } from 'vitest';
 import { startReviewServer } from '../../../daemon/review/server.ts';
 import { memoryDesk, NOW } from '../../support/reviewDesk.ts';
 import { parseAnswer, portOf, readToEnd } from './rawHttp.ts';
-import { startSite } from './reviewSite.ts';
+import { startSampleSite } from './reviewSite.ts';
 
 // E5. The limits are shortened so that the tests are quick; what is asserted is that the server ends the connection by
 // itself while the client would go on, and that others are served meanwhile.
@@ -31,7 +31,7 @@ async function drip(url: string, text: string): Promise<{ readonly endedByServer
 
 describe('E5: slow and broken clients', () => {
   test('a head that drips is cut off while others are served', async () => {
-    const { url } = await startSite({ limits: LIMITS });
+    const { url } = await startSampleSite({ limits: LIMITS });
     const dripping = Array.from({ length: 10 }, () => drip(url, 'GET / HTTP/1.1\r\nX-A: '));
     expect((await fetch(`${url}healthz`)).status).toBe(200);
     for (const { endedByServer, answer } of await Promise.all(dripping)) {
@@ -41,7 +41,7 @@ describe('E5: slow and broken clients', () => {
   });
 
   test('a body that drips is cut off', async () => {
-    const { url, desk } = await startSite({ limits: LIMITS });
+    const { url, desk } = await startSampleSite({ limits: LIMITS });
     const head = [
       'POST /events/kr-0417-61370/verdict HTTP/1.1',
       `Host: 127.0.0.1:${portOf(url)}`,
@@ -60,7 +60,7 @@ describe('E5: slow and broken clients', () => {
   });
 
   test('a thousand silent connections end by themselves, and the page answers again', async () => {
-    const { url } = await startSite({ limits: LIMITS });
+    const { url } = await startSampleSite({ limits: LIMITS });
     const ends: Promise<string>[] = [];
     for (let i = 0; i < 1000; i++) ends.push(readToEnd(connect(portOf(url), '127.0.0.1')));
     await Promise.all(ends);
@@ -68,7 +68,7 @@ describe('E5: slow and broken clients', () => {
   });
 
   test('a pipelined flood is answered in part and then ended', async () => {
-    const { url } = await startSite({ limits: LIMITS });
+    const { url } = await startSampleSite({ limits: LIMITS });
     const socket = connect(portOf(url), '127.0.0.1');
     socket.write(`GET /healthz HTTP/1.1\r\nHost: 127.0.0.1:${portOf(url)}\r\n\r\n`.repeat(2000));
     const answered = (await readToEnd(socket)).split('HTTP/1.1 200 OK').length - 1;
@@ -78,7 +78,7 @@ describe('E5: slow and broken clients', () => {
   });
 
   test('half-closed and reset connections do no harm', async () => {
-    const { url } = await startSite({ limits: LIMITS });
+    const { url } = await startSampleSite({ limits: LIMITS });
     const request = `GET / HTTP/1.1\r\nHost: 127.0.0.1:${portOf(url)}\r\n\r\n`;
     const sockets: Socket[] = [];
     for (let i = 0; i < 20; i++) {

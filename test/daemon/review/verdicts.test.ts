@@ -2,13 +2,13 @@ import { describe, expect, test } from 'vitest';
 import { createVerdictTokens } from '../../../daemon/review/verdictToken.ts';
 import { memoryDesk, NOW, sampleEvent, sampleRecord } from '../../support/reviewDesk.ts';
 import { portOf, sendRequest } from './rawHttp.ts';
-import { fillForm, postVerdict, startSite } from './reviewSite.ts';
+import { fillForm, postVerdict, startSampleSite, startSite } from './reviewSite.ts';
 
 const ID = 'kr-0417-61370';
 
 describe('a verdict', () => {
   test('is signed with name, time and the revision judged', async () => {
-    const { url, desk } = await startSite({ reviewers: ['duty', 'timing'] });
+    const { url, desk } = await startSampleSite({ reviewers: ['duty', 'timing'] });
     const answer = await postVerdict(url, await fillForm(url));
     expect([answer.status, answer.headers.get('location')]).toEqual([303, `/events/${ID}`]);
     expect(desk.event(ID)?.verdicts).toEqual([
@@ -21,7 +21,7 @@ describe('a verdict', () => {
   });
 
   test('can be reopened and given anew', async () => {
-    const { url, desk } = await startSite();
+    const { url, desk } = await startSampleSite();
     for (const verdict of ['reject', 'reopen', 'accept']) {
       expect((await postVerdict(url, await fillForm(url, ID, { verdict }))).status).toBe(303);
     }
@@ -40,7 +40,7 @@ describe('a verdict', () => {
     [{ verdict: 'erase' }, 'Choose a verdict'],
     [{ note: '𝛿'.repeat(4001) }, '4001 characters'],
   ])('%j is 422, keeps the draft and changes nothing', async (change, words) => {
-    const { url, desk } = await startSite({ reviewers: ['duty'] });
+    const { url, desk } = await startSampleSite({ reviewers: ['duty'] });
     const answer = await postVerdict(url, await fillForm(url, ID, change));
     const page = await answer.text();
     expect([answer.status, desk.verdictCount()]).toEqual([422, 0]);
@@ -49,7 +49,7 @@ describe('a verdict', () => {
   });
 
   test('of 4000 characters is kept whole', async () => {
-    const { url, desk } = await startSite();
+    const { url, desk } = await startSampleSite();
     const note = '𝛿'.repeat(4000);
     expect((await postVerdict(url, await fillForm(url, ID, { note }))).status).toBe(303);
     expect(desk.event(ID)?.verdicts[0]?.note).toBe(note);
@@ -69,7 +69,7 @@ describe('E2: requests from elsewhere', () => {
   ];
 
   test.each(SITES)('%s: 403, though the token is right', async (_, change) => {
-    const { url, desk } = await startSite();
+    const { url, desk } = await startSampleSite();
     const body = new URLSearchParams(await fillForm(url)).toString();
     const headers: Record<string, string | undefined> = {
       Host: `127.0.0.1:${portOf(url)}`,
@@ -86,7 +86,7 @@ describe('E2: requests from elsewhere', () => {
   });
 
   test('a same-origin mark of the browser is proof enough beside the token', async () => {
-    const { url, desk } = await startSite();
+    const { url, desk } = await startSampleSite();
     const body = new URLSearchParams(await fillForm(url)).toString();
     const headers = [
       `Host: 127.0.0.1:${portOf(url)}`,
@@ -122,7 +122,7 @@ describe('E2: requests from elsewhere', () => {
   });
 
   test('GET and HEAD change nothing, whatever they carry', async () => {
-    const { url, desk } = await startSite();
+    const { url, desk } = await startSampleSite();
     const query = new URLSearchParams(await fillForm(url)).toString();
     for (const method of ['GET', 'HEAD']) {
       expect((await fetch(`${url}events/${ID}/verdict?${query}`, { method })).status).toBe(404);
@@ -133,7 +133,7 @@ describe('E2: requests from elsewhere', () => {
 
 describe('E11: two reviewers', () => {
   test('one verdict stands; the other sees both views and keeps the draft', async () => {
-    const { url, desk } = await startSite();
+    const { url, desk } = await startSampleSite();
     const [first, second] = [
       await fillForm(url),
       await fillForm(url, ID, { verdict: 'reject', by: 'timing', note: 'Only one band.' }),
@@ -153,7 +153,7 @@ describe('E11: two reviewers', () => {
   });
 
   test('posts at the same moment leave one verdict', async () => {
-    const { url, desk } = await startSite();
+    const { url, desk } = await startSampleSite();
     const form = await fillForm(url);
     const answers = await Promise.all(
       Array.from({ length: 12 }, (_, i) => postVerdict(url, { ...form, by: `reviewer ${i}` })),
@@ -164,7 +164,7 @@ describe('E11: two reviewers', () => {
   });
 
   test('a double click is one verdict', async () => {
-    const { url, desk } = await startSite();
+    const { url, desk } = await startSampleSite();
     const form = await fillForm(url);
     const answers = await Promise.all([postVerdict(url, form), postVerdict(url, form)]);
     expect(answers.map(({ status }) => status)).toEqual([303, 303]);
@@ -173,7 +173,7 @@ describe('E11: two reviewers', () => {
   });
 
   test('new arrivals between reading and signing are a conflict too', async () => {
-    const { url, desk } = await startSite();
+    const { url, desk } = await startSampleSite();
     const form = await fillForm(url);
     const before = sampleRecord();
     const event = sampleEvent({ state: 'withdrawn', arrivalsUsed: 150 });

@@ -54,7 +54,9 @@ describe('a backup', () => {
   test('that cannot be made leaves the older copy and no remains', async () => {
     const store = open(state);
     await expect(store.backup(join(folder.path, 'no such folder', 'copy.db'))).rejects.toThrow();
-    await expect(store.backup(join(state, 'record.db'))).rejects.toThrow(/record itself/);
+    for (const own of ['record.db', 'record.db-wal', 'lock.db', '../state/record.db']) {
+      await expect(store.backup(`${state}/${own}`)).rejects.toThrow(/record itself/);
+    }
     mkdirSync(copy);
     await expect(store.backup(copy)).rejects.toThrow();
     expect(readdirSync(folder.path).sort()).toEqual(['copy.db', 'state']);
@@ -92,7 +94,7 @@ describe('a restore', () => {
 
     const outcome = await restore(copy, state, NEXT_DAY);
     expect(outcome).toEqual({ ok: true, keptAside: join(state, 'before-restore-20260302T060000000Z.db') });
-    const restored = open(state);
+    let restored = open(state);
     expect(restored.verify()).toEqual([]);
     expect(restored.knownFile('nightly', 'night-2.csv')).toBeNull();
     expect(restored.outbox().map(({ state: end, possibleDuplicate }) => [end, possibleDuplicate])).toEqual([
@@ -102,6 +104,12 @@ describe('a restore', () => {
     ]);
     restored.commitNotice(notice(2), NEXT_DAY);
     expect(restored.outbox({ kind: 'notice' }).at(-1)).toMatchObject({ state: 'delivered', deliveredAt: LATER });
+    restored.close();
+    // The same Message-ID with other news: rather twice than never.
+    await restore(copy, state, LATER);
+    restored = open(state);
+    restored.commitNotice(notice(2, { subject: 'other news' }), NEXT_DAY);
+    expect(restored.outbox({ kind: 'notice' }).at(-1)).toMatchObject({ state: 'queued', possibleDuplicate: true });
     restored.close();
 
     const aside = new Database(join(state, 'before-restore-20260302T060000000Z.db'), { readonly: true });
@@ -140,6 +148,10 @@ describe('a restore', () => {
     newer.close();
     expect(await restore(foreign, state, AT)).toMatchObject({ ok: false, failure: { kind: 'damaged' } });
     expect(await restore(text, state, AT)).toMatchObject({ ok: false, failure: { kind: 'damaged' } });
+    expect(await restore(join(state, 'record.db'), state, AT)).toMatchObject({
+      ok: false,
+      failure: { kind: 'damaged' },
+    });
     expect(await restore(join(folder.path, 'none'), state, AT)).toMatchObject({
       ok: false,
       failure: { kind: 'damaged' },

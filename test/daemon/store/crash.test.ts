@@ -24,7 +24,9 @@ afterAll(() => folder.remove());
 const runWithKillAt = (state: string, n: number): Promise<Ended> =>
   start(program, [state], { SPINVIGIL_TEST_KILL_AT: String(n) }).ended;
 
-test('killed at any step, the record is whole, keeps what was acknowledged, and the work goes on', { timeout: PATIENCE_MS }, async () => {
+test('killed at any step, the record is whole, keeps what was acknowledged, and the work goes on', {
+  timeout: PATIENCE_MS,
+}, async () => {
   const unharmed = await runWithKillAt(join(folder.path, 'unharmed'), 0);
   expect(unharmed, unharmed.errors).toMatchObject({ code: 0, signal: null });
   expect(unharmed.lines.at(-1)).toBe('done');
@@ -44,7 +46,9 @@ test('killed at any step, the record is whole, keeps what was acknowledged, and 
   expect(killed).toBeGreaterThan(30);
 });
 
-test('a restore that is killed leaves the old record or the new one, and can be done again', { timeout: PATIENCE_MS }, async () => {
+test('a restore that is killed leaves the old record or the new one, and can be done again', {
+  timeout: PATIENCE_MS,
+}, async () => {
   const restoring = await bundle('restoreScenario.ts', join(folder.path, 'bundle'));
   let n = 0;
   for (let killed = true; killed; ) {

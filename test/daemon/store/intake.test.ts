@@ -120,6 +120,9 @@ describe('a file', () => {
     expect(store.noteReadingStarts('nightly', 'night-1.csv', 'bb')).toBe(2);
     store.commitIntake(fileBatch(0, 1));
     expect(store.noteReadingStarts('nightly', 'night-1.csv', 'bb')).toBe(1);
+    expect(store.noteReadingStarts('nightly', { bytesHex: 'FF' }, 'bb')).toBe(1);
+    store.commitIntake(fileBatch(1, 1, { path: '\\xFF', pathBytesHex: 'ff' }));
+    expect(store.noteReadingStarts('nightly', { bytesHex: 'ff' }, 'bb')).toBe(1);
   });
 });
 
@@ -177,6 +180,28 @@ describe('arrivals', () => {
     store.commitIntake({ ...fileBatch(0, 0, { rows: 4 }), arrivals });
     expect(keys(store.arrivals('KR 0417+31'))).toEqual(['key-000001', 'key-000004', 'key-000002', 'key-000003']);
     expect(store.arrival('key-000004')).toMatchObject({ tdb: null, delays: null, quality: 'unusable' });
+  });
+
+  test('go to the detector when they are live and have a TDB', () => {
+    const infinite = sampleArrival(1, { frequencyMhz: Number.POSITIVE_INFINITY, pulseNumber: 42 });
+    const arrivals = [sampleArrival(2), infinite, { ...sampleArrival(3), barycentred: null }, sampleArrival(4)];
+    store.commitIntake({
+      ...fileBatch(0, 0, { rows: 4 }),
+      arrivals,
+      statusChanges: [{ key: 'key-000004', status: 'withdrawn', reason: 'gone' }],
+    });
+    const timed = store.timedArrivals('KR 0417+31');
+    expect(keys(timed)).toEqual(['key-000001', 'key-000002']);
+    expect(timed[0]).toEqual({
+      key: 'key-000001',
+      tdb: infinite.barycentred?.tdb,
+      uncertaintyUs: 12.5,
+      frequencyMhz: Number.POSITIVE_INFINITY,
+      site: 'Kestrel Ridge',
+      receiver: 'L-wide',
+      pulseNumber: 42,
+    });
+    expect(timed[1]?.frequencyMhz).toBe(1400);
   });
 
   test('are brought to the barycentre anew without a file', () => {

@@ -27,9 +27,9 @@ test('what came in and what was quarantined since a time', () => {
     file: sampleFile(0, { path: 'junk.csv', fault: 'not UTF-8' }),
     quarantined: [{ line: null, reason: 'not UTF-8' }],
   });
-  expect(store.intakeSince(LATER)).toEqual({ files: 1, arrivals: 2 });
-  expect(store.intakeSince(AT)).toEqual({ files: 2, arrivals: 5 });
-  expect(store.intakeSince('2027-01-01T00:00:00Z')).toEqual({ files: 0, arrivals: 0 });
+  expect(store.intakeSince(LATER)).toEqual({ files: 1, arrivals: 2, pulsars: 1 });
+  expect(store.intakeSince(AT)).toEqual({ files: 2, arrivals: 5, pulsars: 1 });
+  expect(store.intakeSince('2027-01-01T00:00:00Z')).toEqual({ files: 0, arrivals: 0, pulsars: 0 });
   expect(store.quarantinedSince(LATER)).toEqual([
     { feed: 'south', file: 'night-2.csv', line: 5, reason: 'site: unknown', at: NEXT_DAY },
     { feed: 'nightly', file: 'junk.csv', line: null, reason: 'not UTF-8', at: NEXT_DAY },
@@ -40,6 +40,21 @@ test('what came in and what was quarantined since a time', () => {
       ['south', NEXT_DAY],
     ]),
   );
+});
+
+test('the latest files and their quarantined rows, without what was delivered again since', () => {
+  store.commitIntake({ ...fileBatch(0, 1, { rows: 2 }), quarantined: [{ line: 9, reason: 'site: unknown' }] });
+  store.commitIntake({ ...fileBatch(1, 1, { rows: 2, path: 'b.csv' }), quarantined: [{ line: 4, reason: 'no time' }] });
+  expect(store.recentQuarantine(10).map(({ file, line }) => [file, line])).toEqual([
+    ['b.csv', 4],
+    ['night-1.csv', 9],
+  ]);
+  store.commitIntake({ ...emptyBatch(LATER), file: sampleFile(1), sightings: [{ key: 'key-000000', line: 2 }] });
+  expect(store.recentQuarantine(10).map(({ file }) => file)).toEqual(['b.csv']);
+  expect(store.recentFiles(2).map(({ path, same, takenInAt }) => [path, same, takenInAt])).toEqual([
+    ['night-1.csv', 1, LATER],
+    ['b.csv', 0, AT],
+  ]);
 });
 
 test('the last live arrival of each pulsar', () => {

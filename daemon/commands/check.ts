@@ -1,0 +1,73 @@
+import { composeTestMail, type DeliveryOutcome } from '../../alerts/index.ts';
+import { mjdOf, systemClock } from '../clock.ts';
+import type { Configuration } from '../config/configuration.ts';
+import { loadConfiguration } from '../config/loadConfiguration.ts';
+import { EXIT, OperatorError, reasonOf } from '../errors.ts';
+import { mailerFor } from '../mailerFor.ts';
+import { problemLine } from '../opening.ts';
+import { leapSecondWarning, loadTables } from '../tables/loadTables.ts';
+import { printJson, type Terminal } from './terminal.ts';
+
+export interface CheckOptions {
+  readonly config: string;
+  readonly sendTestMail?: boolean;
+  readonly json?: boolean;
+}
+
+/** `check`: everything that can be known to be wrong before the watch starts. Writes nothing but a test mail that was asked for. */
+export async function check(terminal: Terminal, options: CheckOptions): Promise<void> {
+  const { configuration, problems } = loadConfiguration(options.config);
+  const mail = configuration === null ? [] : await tryMail(configuration, options.sendTestMail ?? false);
+  const warnings = tableWarnings();
+  if (options.json) printJson(terminal, { ok: configuration !== null && mail.every(isWell), problems, warnings, mail });
+  else {
+    for (const problem of problems) terminal.out(`${problem.severity}: ${problemLine(problem)}`);
+    for (const warning of warnings) terminal.out(`warning: ${warning}`);
+    for (const { what, state, detail } of mail)
+      terminal.out(`mail: ${what}: ${state === 'delivered' ? 'well' : state} (${detail})`);
+    if (configuration !== null) terminal.out(soundLine(configuration));
+  }
+  if (configuration === null)
+    throw new OperatorError('the configuration cannot be used', { exitCode: EXIT.wrongUsage });
+  if (!mail.every(isWell)) throw new OperatorError('mail cannot be sent', { exitCode: EXIT.workFailed });
+}
+
+interface MailTry {
+  readonly what: string;
+  readonly state: DeliveryOutcome['state'];
+  readonly detail: string;
+}
+
+const isWell = ({ state }: MailTry): boolean => state === 'delivered';
+
+async function tryMail({ mail, observatory }: Configuration, sendTestMail: boolean): Promise<MailTry[]> {
+  const mailer = mailerFor(mail);
+  const tries: MailTry[] = [{ what: 'login', ...(await outcomeOf(() => mailer.verify())) }];
+  if (!sendTestMail || !tries.every(isWell)) return tries;
+  const setting = { observatory, from: mail.from, timezone: mail.timezone, reviewUrl: null, now: systemClock.now() };
+  const { mime } = await composeTestMail(mail.to, setting);
+  for (const recipient of mail.to) {
+    const outcome = await outcomeOf(() => mailer.send({ from: mail.from, recipient, mime }));
+    tries.push({ what: `test mail to ${recipient}`, ...outcome });
+  }
+  return tries;
+}
+
+async function outcomeOf(attempt: () => Promise<DeliveryOutcome>): Promise<Omit<MailTry, 'what'>> {
+  try {
+    const { state, detail } = await attempt();
+    return { state, detail };
+  } catch (error) {
+    return { state: 'later', detail: reasonOf(error) };
+  }
+}
+
+function tableWarnings(): string[] {
+  const { tables, warnings } = loadTables();
+  const leapSeconds = leapSecondWarning(tables.leapSeconds, mjdOf(systemClock.now()));
+  return leapSeconds === null ? [...warnings] : [...warnings, leapSeconds];
+}
+
+function soundLine({ file, feeds, sites, models }: Configuration): string {
+  return `${file} is sound: ${feeds.length} feeds, ${sites.length} sites, ${models.size} pulsars.`;
+}

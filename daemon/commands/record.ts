@@ -1,0 +1,29 @@
+import type { Configuration } from '../config/configuration.ts';
+import { EXIT, OperatorError } from '../errors.ts';
+import { loadOrders, openRecord } from '../opening.ts';
+import type { EventRecord } from '../records.ts';
+import type { Store } from '../store/index.ts';
+
+/** Runs a command beside a daemon, or without one: it looks at the record, and may give a verdict. */
+export async function withRecord<Result>(
+  configFile: string,
+  work: (store: Store, configuration: Configuration) => Result | Promise<Result>,
+): Promise<Result> {
+  const { configuration } = loadOrders(configFile);
+  const store = openRecord(configuration, 'reader');
+  try {
+    return await work(store, configuration);
+  } finally {
+    store.close();
+  }
+}
+
+/** The event of an id, or of one it had before. */
+export function eventOf(store: Store, id: string): EventRecord {
+  const record = store.event(id);
+  if (record !== null) return record;
+  throw new OperatorError(`there is no event ${id}`, {
+    exitCode: EXIT.workFailed,
+    advice: 'spinvigil events lists them',
+  });
+}

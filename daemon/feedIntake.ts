@@ -1,0 +1,88 @@
+import { systemClock } from './clock.ts';
+import { reasonOf } from './errors.ts';
+import { Pipeline } from './pipeline.ts';
+import { type FileInHand, recall } from './stages/intake.ts';
+import type { Station } from './station.ts';
+import { storageTrouble } from './store/index.ts';
+import type { ReadyFile } from './watch/feedLook.ts';
+import { createWatcher, type FeedStatus } from './watch/watcher.ts';
+
+/** From the watched folders into the pipeline, for as long as the daemon runs. */
+export interface FeedIntake {
+  status(): readonly FeedStatus[];
+  /** Why nothing can be written at the moment; null: it can. */
+  storageTrouble(): string | null;
+  /** Ends after the file in hand, or leaves it for the next start when that takes long. */
+  stop(): Promise<void>;
+}
+
+export interface IntakeOptions {
+  /** Mail was queued. */
+  readonly onMail: () => void;
+  /** The storage failed in a way that must not be retried. */
+  readonly onFatal: (error: unknown) => void;
+}
+
+export function startIntake(station: Station, { onMail, onFatal }: IntakeOptions): FeedIntake {
+  const { configuration, log } = station;
+  const pipeline = new Pipeline(station);
+  let trouble: string | null = null;
+
+  const guarded = async <Result>(work: () => Promise<Result>): Promise<Result> => {
+    try {
+      const result = await work();
+      trouble = null;
+      return result;
+    } catch (error) {
+      const family = storageTrouble(error);
+      if (family === 'fault' || family === 'damaged') onFatal(error);
+      else if (family !== null) trouble = reasonOf(error);
+      throw error;
+    }
+  };
+
+  const catchUp = decideWhatIsOpen(station, pipeline, guarded);
+  const watcher = createWatcher({
+    feeds: configuration.feeds,
+    recall: (feed, file) => recall(station, feed, file.pathBytes),
+    clock: systemClock,
+    onProblem: ({ message, ...problem }) => log.warn(problem, message),
+    onProblemEnded: (problem) => log.info(problem, 'problem ended'),
+    async onSettled(file, bytes) {
+      const options = { decide: 'now', mail: true, acceptUnterminated: file.stoodLong } as const;
+      const result = await guarded(() => pipeline.takeIn(inHand(file, bytes), options));
+      if (result.mails > 0) onMail();
+      return result.kind === 'cut short' ? 'not yet whole' : 'taken';
+    },
+  });
+  return {
+    status: () => watcher.status(),
+    storageTrouble: () => trouble,
+    stop: async () => {
+      pipeline.stop();
+      await watcher.stop();
+      await catchUp;
+    },
+  };
+}
+
+function inHand({ feed, path, pathBytes, stamp }: ReadyFile, bytes: Buffer): FileInHand {
+  return { feed, path, pathBytes, bytes, signature: stamp.signature };
+}
+
+/** After a changed model, clock table or program, or a replay that was cut off. Files wait their turn behind it. */
+async function decideWhatIsOpen(
+  { log }: Station,
+  pipeline: Pipeline,
+  guarded: <Result>(work: () => Promise<Result>) => Promise<Result>,
+): Promise<void> {
+  const pulsars = pipeline.undecided();
+  if (pulsars.length === 0) return;
+  log.info({ pulsars: pulsars.length }, 'deciding again: the model, the tables, the settings or the program changed');
+  try {
+    for (const pulsar of pulsars) await guarded(() => pipeline.decide([pulsar], { mail: true }));
+    pipeline.leaveDecisionsOpen(false);
+  } catch (error) {
+    log.error({ reason: reasonOf(error) }, 'not decided again; the next start tries it once more');
+  }
+}

@@ -1,0 +1,126 @@
+import { simpleParser } from 'mailparser';
+import { describe, expect, it } from 'vitest';
+import { composeDigest, digestHtml, digestText, type MorningReview } from '../../alerts/index.ts';
+import { TEXT_COLUMNS, width } from '../../alerts/text.ts';
+import { expectGolden } from './golden.ts';
+import { GLITCH, SETTING, SITE_STEP } from './samples.ts';
+
+const QUIET: MorningReview = {
+  observatory: 'Kestrel Ridge',
+  date: '2023-07-02',
+  since: '2023-07-01T05:00:00Z',
+  until: '2023-07-02T05:00:00Z',
+  waiting: [],
+  suspected: [],
+  changed: [],
+  quarantined: [],
+  silentFeeds: [],
+  silentPulsars: [],
+  unlockedPulsars: [],
+  intake: { files: 27, arrivals: 312, pulsars: 41 },
+  limits: [
+    { pulsar: 'KR 1902-08', deltaNuOverNu90: 2.13e-9, delayDays90: 6 },
+    { pulsar: 'KR 2231+44', deltaNuOverNu90: 4e-8, delayDays90: 9 },
+  ],
+  mail: { waiting: 0, refused: 0, oldestWaitingHours: null },
+  warnings: [],
+};
+
+const BUSY: MorningReview = {
+  ...QUIET,
+  waiting: [GLITCH, SITE_STEP],
+  suspected: [{ ...GLITCH, id: 'b', pulsar: 'KR 1902-08', state: 'suspected', confirmedAtMjd: null }],
+  changed: [
+    {
+      event: { ...GLITCH, id: 'c', state: 'withdrawn' },
+      what: 'withdrawn: later arrivals agree with the model',
+      at: '2023-07-01T11:00:00Z',
+    },
+  ],
+  quarantined: [
+    {
+      feed: 'ridge',
+      file: 'a/b.csv',
+      line: 12,
+      reason: 'uncertainty_us is not a number: "<b>"',
+      at: '2023-07-01T11:00:00Z',
+    },
+    { feed: 'ridge', file: 'a/c.csv', line: null, reason: 'not UTF-8', at: '2023-07-01T11:00:00Z' },
+  ],
+  silentFeeds: [{ feed: 'ridge', hoursSilent: 31, expectedHours: 24 }],
+  silentPulsars: [{ pulsar: 'KR 2231+44', lastArrivalMjd: 60_100, daysSilent: 27.2 }],
+  unlockedPulsars: ['KR 0001+00'],
+  mail: { waiting: 1, refused: 2, oldestWaitingHours: 3 },
+  warnings: ['the leap-second table ended on 2023-06-28'],
+};
+
+describe('the morning review', () => {
+  it('says that all is quiet, what was looked at, and what would have been seen', () => {
+    const text = digestText(QUIET, SETTING);
+    expect(text).toContain('All quiet.');
+    expect(text).toContain('312 arrivals of 41 pulsars in 27 files');
+    expect(text.replace(/\s+/g, ' ')).toContain(
+      'A glitch of Δν/ν = 2.1 × 10⁻⁹ or more would have been confirmed with 90 % probability in half of 2 pulsars; the blindest is KR 2231+44, 40 × 10⁻⁹.',
+    );
+  });
+
+  it('without arrivals silence says nothing, and it does not claim quiet', () => {
+    const text = digestText({ ...QUIET, intake: { files: 0, arrivals: 0, pulsars: 0 } }, SETTING);
+    expect(text).toContain('No arrivals: silence says nothing.');
+    expect(text).not.toMatch(/quiet/i);
+  });
+
+  it('any single thing ends the quiet', () => {
+    const lists = [
+      'waiting',
+      'suspected',
+      'changed',
+      'quarantined',
+      'silentFeeds',
+      'silentPulsars',
+      'unlockedPulsars',
+      'warnings',
+      'mail',
+    ] as const;
+    for (const name of lists) expect(digestText({ ...QUIET, [name]: BUSY[name] }, SETTING)).not.toMatch(/all quiet/i);
+  });
+
+  it('GOLDEN: a busy morning, verdicts first', () => {
+    const text = digestText(BUSY, SETTING);
+    for (const line of text.split('\n')) expect(width(line)).toBeLessThanOrEqual(TEXT_COLUMNS);
+    expect(text.indexOf('Waits for your verdict')).toBeLessThan(text.indexOf('Site events'));
+    expectGolden('digest.txt', text);
+  });
+
+  it('shows a long list in part and counts the rest', () => {
+    const quarantined = Array.from({ length: 1_000 }, (_, i) => ({
+      feed: 'ridge',
+      file: 'a.csv',
+      line: i + 1,
+      reason: 'bad',
+      at: QUIET.since,
+    }));
+    const text = digestText({ ...QUIET, quarantined }, SETTING);
+    expect(text).toContain('and 975 more on the review page');
+    expect(text).toContain('1000 quarantined rows');
+    expect(text.length).toBeLessThan(5_000);
+  });
+
+  it('escapes what came from files', () => {
+    expect(digestHtml(BUSY, SETTING)).toContain('uncertainty_us is not a number: &quot;&lt;b&gt;&quot;');
+    expect(digestHtml(BUSY, SETTING)).not.toContain('<b>');
+  });
+
+  it('is one message a civil date', async () => {
+    const [once, later] = [
+      await composeDigest(BUSY, ['duty@kestrel-ridge.example'], SETTING),
+      await composeDigest(QUIET, ['duty@kestrel-ridge.example'], { ...SETTING, now: new Date('2023-07-02T09:00:00Z') }),
+    ];
+    expect(once.messageId).toBe('<morning.2023-07-02@kestrel-ridge.example>');
+    expect(later.messageId).toBe(once.messageId);
+    const mail = await simpleParser(later.mime);
+    expect(mail.subject).toBe('Kestrel Ridge · Morning review 2023-07-02: all quiet');
+    expect(mail.headers.get('auto-submitted')).toBe('auto-generated');
+    expect(mail.text).toContain('All quiet.');
+  });
+});
