@@ -11,6 +11,7 @@ export {
   type MailerDependencies,
   type MailTransport,
   markPossibleDuplicate,
+  safeFileName,
 } from './mailer/index.ts';
 export { composeEventMail, type EventMail } from './message.ts';
 export type { MorningReview, QuarantinedRow } from './morningReview.ts';
@@ -32,3 +33,7 @@ export {
   type PlannedMessage,
   type ToldBefore,
 } from './policy.ts';
+export { dateOfMjd, isoDay, mjdText, momentText } from './wording/dates.ts';
+export { percent, quantity } from './wording/numbers.ts';
+export { eventName, subjectOf } from './wording/phrases.ts';
+export { type EventSheet, eventSheet, sizeText } from './wording/sheet.ts';

@@ -5,7 +5,7 @@ import { type FeedIntake, startIntake } from './feedIntake.ts';
 import { watchHealth } from './health.ts';
 import type { Log } from './log.ts';
 import { mailerFor } from './mailerFor.ts';
-import { morningReview } from './morning.ts';
+import { morningReview, tableWarnings } from './morning.ts';
 import { loadOrders, openRecord, problemLine } from './opening.ts';
 import { createStoreDesk } from './review/storeDesk.ts';
 import { openReviewPage, type ReviewPage } from './reviewPage.ts';
@@ -43,10 +43,18 @@ export async function runWatch({ configFile, log, stop, say }: WatchOptions): Pr
   let intake: FeedIntake | null = null;
   try {
     const clock = systemClock;
-    const { tables, warnings } = loadTables();
-    for (const warning of warnings) log.warn(warning);
-    const station = createStation({ configuration, store, tables, clock, log, reviewUrl: () => page?.url() ?? null });
-    const morning = () => morningReview({ ...station, tableWarnings: warnings });
+    const sky = loadTables();
+    const warnings = () => tableWarnings(sky, clock.now());
+    for (const warning of warnings()) log.warn(warning);
+    const station = createStation({
+      configuration,
+      store,
+      tables: sky.tables,
+      clock,
+      log,
+      reviewUrl: () => page?.url() ?? null,
+    });
+    const morning = () => morningReview({ configuration, store, clock, warnings: warnings() });
     const health = () => watchHealth({ configuration, store, clock, intake, delivery });
     const desk = createStoreDesk({ configuration, store, clock, morning, health });
 

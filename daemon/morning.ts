@@ -8,12 +8,12 @@ import { silentFeeds } from './schedule/silentFeeds.ts';
 import { clockStepWarnings } from './schedule/upkeep.ts';
 import type { Station } from './station.ts';
 import type { Store } from './store/index.ts';
-import { leapSecondWarning } from './tables/loadTables.ts';
+import { type LoadedTables, leapSecondWarning } from './tables/loadTables.ts';
 
 /** What the morning review is made from. It reads what is on record and decides nothing. */
-export interface MorningSources extends Pick<Station, 'configuration' | 'store' | 'tables' | 'clock'> {
-  /** What loading the tables complained of. */
-  readonly tableWarnings: readonly string[];
+export interface MorningSources extends Pick<Station, 'configuration' | 'store' | 'clock'> {
+  /** What the caller alone knows (`tableWarnings`). */
+  readonly warnings: readonly string[];
 }
 
 const DAY_MS = 86_400_000;
@@ -52,7 +52,7 @@ export function morningReview(sources: MorningSources, date?: string): MorningRe
       refused: counts.refused,
       oldestWaitingHours: oldest === null ? null : (now.getTime() - Date.parse(oldest)) / HOUR_MS,
     },
-    warnings: warningsOf(sources, now),
+    warnings: [...sources.warnings, ...clockTableWarnings(configuration, now), ...clockStepWarnings(sources)],
   };
 }
 
@@ -81,16 +81,6 @@ function digestDateBefore(rule: DigestRule, date: string): string {
   return back(MOST_DAYS_BACK);
 }
 
-function warningsOf(sources: MorningSources, now: Date): string[] {
-  const leapSeconds = leapSecondWarning(sources.tables.leapSeconds, mjdOf(now));
-  return [
-    ...sources.tableWarnings,
-    ...(leapSeconds === null ? [] : [leapSeconds]),
-    ...clockTableWarnings(sources.configuration, now),
-    ...clockStepWarnings(sources),
-  ];
-}
-
 function mostCredibleFirst(a: PulsarEvent, b: PulsarEvent): number {
   return b.logBayesFactor - a.logBayesFactor || a.epochMjd - b.epochMjd;
 }
@@ -115,6 +105,12 @@ function usualGapDays(store: Store, pulsar: string): number {
   const days = [...new Set(store.liveArrivals(pulsar).map((arrival) => arrival.time.day))].slice(-RECENT_SESSIONS);
   const gaps = days.slice(1).map((day, i) => day - days[i]!);
   return gaps.length === 0 ? Number.POSITIVE_INFINITY : median(gaps);
+}
+
+/** What is to be said of the tables that the way to the barycentre is read from. */
+export function tableWarnings({ tables, warnings }: LoadedTables, now: Date): string[] {
+  const leapSeconds = leapSecondWarning(tables.leapSeconds, mjdOf(now));
+  return leapSeconds === null ? [...warnings] : [...warnings, leapSeconds];
 }
 
 function clockTableWarnings(configuration: Configuration, now: Date): string[] {

@@ -1,9 +1,10 @@
 import type { PulsarModel } from '../../detectors/spin/pulsarModel.ts';
-import type { Interval, PulsarEvent } from '../../detectors/steps/pulsarEvent.ts';
+import type { PulsarEvent } from '../../detectors/steps/pulsarEvent.ts';
 import { type Markup, markup } from '../markup.ts';
 import { domainOf } from '../messageId.ts';
 import { dateOfMjd } from '../wording/dates.ts';
 import { eventName, explanationName, meaningOf } from '../wording/phrases.ts';
+import { whatParams } from './whatParams.ts';
 
 /**
  * The event as a VOEvent 2.0 packet (IVOA Recommendation of 11 July 2011, "Sky Event Reporting Metadata"): what was measured under What
@@ -37,7 +38,7 @@ function packet(event: PulsarEvent, context: NoticeContext): Markup {
     </Author>
   </Who>
   <What>
-${whatParams(event, context).map((p) => markup`    ${p}\n`)}  </What>
+${whatParams(event, context.model, context.revision).map((p) => markup`    ${p}\n`)}  </What>
   <WhereWhen>
     <ObsDataLocation>
       <ObservatoryLocation id="SOLAR_SYSTEM_BARYCENTER"/>
@@ -73,150 +74,6 @@ function description(event: PulsarEvent): string {
       ? 'Accepted by a reviewer.'
       : 'Found by a program and not yet accepted by a reviewer: to be vetted before it is announced.';
   return `${event.pulsar}: ${eventName(event)}. ${meaningOf(event)} ${vetted}`;
-}
-
-interface Param {
-  readonly name: string;
-  readonly value: number | null;
-  readonly interval68?: Interval | null;
-  readonly unit?: string;
-  /** From the IVOA's controlled vocabulary (UCD1+). */
-  readonly ucd?: string;
-  readonly meaning: string;
-}
-
-function whatParams(event: PulsarEvent, { model, revision }: NoticeContext): Markup[] {
-  const spin = model?.spin;
-  const params: Param[] = [
-    {
-      name: 'epoch',
-      value: event.epochMjd,
-      interval68: event.epochInterval68,
-      unit: 'd',
-      ucd: 'time.epoch',
-      meaning: 'MJD, TDB at the barycentre',
-    },
-    {
-      name: 'delta_nu',
-      value: event.deltaNuHz,
-      interval68: event.deltaNuHzInterval68,
-      unit: 'Hz',
-      meaning: 'step in rotation frequency, positive is a spin-up',
-    },
-    {
-      name: 'delta_nu_over_nu',
-      value: event.deltaNuOverNu,
-      interval68: event.deltaNuOverNuInterval68,
-      meaning: 'relative step in rotation frequency',
-    },
-    {
-      name: 'delta_nu_dot',
-      value: event.deltaNuDot,
-      interval68: event.deltaNuDotInterval68,
-      unit: 'Hz/s',
-      meaning: 'step in the derivative of the rotation frequency',
-    },
-    {
-      name: 'delta_nu_dot_over_nu_dot',
-      value: event.deltaNuDotOverNuDot,
-      interval68: event.deltaNuDotOverNuDotInterval68,
-      meaning: 'relative step in the derivative of the rotation frequency',
-    },
-    {
-      name: 'time_step',
-      value: event.timeStepUs,
-      interval68: event.timeStepUsInterval68,
-      unit: 'us',
-      meaning: 'step in arrival time, positive is late',
-    },
-    ...event.recovery.terms.flatMap((term, i): Param[] => [
-      {
-        name: `recovery_${i + 1}_fraction`,
-        value: term.fraction,
-        interval68: term.fractionInterval68,
-        meaning: 'part of the frequency step that decays',
-      },
-      {
-        name: `recovery_${i + 1}_timescale`,
-        value: term.timescaleDays,
-        interval68: term.timescaleDaysInterval68,
-        unit: 'd',
-        ucd: 'time.duration',
-        meaning: 'e-folding time of the decay',
-      },
-    ]),
-    {
-      name: 'reference_epoch',
-      value: spin ? spin.epochTdb.day + spin.epochTdb.fraction : null,
-      unit: 'd',
-      ucd: 'time.epoch',
-      meaning: 'MJD (TDB) of the reference spin values',
-    },
-    {
-      name: 'reference_nu',
-      value: spin?.frequencyHz.hi ?? null,
-      unit: 'Hz',
-      meaning: 'rotation frequency before the event',
-    },
-    {
-      name: 'reference_nu_dot',
-      value: spin?.frequencyDerivativeHzPerS ?? null,
-      unit: 'Hz/s',
-      meaning: 'its derivative',
-    },
-    {
-      name: 'first_arrival_after',
-      value: event.firstArrivalMjd,
-      unit: 'd',
-      ucd: 'time.epoch',
-      meaning: 'MJD of the first arrival after the event',
-    },
-    {
-      name: 'arrivals_used',
-      value: event.arrivalsUsed,
-      ucd: 'meta.number',
-      meaning: 'arrival times that the numbers rest on',
-    },
-    {
-      name: 'log_bayes_factor',
-      value: event.logBayesFactor,
-      ucd: 'stat.likelihood',
-      meaning: 'natural logarithm, against no event',
-    },
-    {
-      name: 'false_alerts_per_year',
-      value: event.falseAlertsPerYearAtThisLevel,
-      unit: 'yr-1',
-      meaning: 'expected from noise alone in the whole programme at this level',
-    },
-    { name: 'revision', value: revision, ucd: 'meta.version', meaning: 'of this event on record' },
-  ];
-  const words = [
-    textParam('pulsar', event.pulsar, 'meta.id;meta.main'),
-    textParam('state', event.state, 'meta.code.status'),
-  ];
-  if (event.site !== null)
-    words.push(
-      textParam('site', event.site, 'meta.id;instr.obsty'),
-      textParam('pulsars', event.pulsars.join(', '), 'meta.id'),
-    );
-  return [...words, ...params.flatMap(numberParams)];
-}
-
-/** The value, and its interval as two more numbers, in a group. What is not known is left out. */
-function numberParams({ name, value, interval68, unit, ucd, meaning }: Param): Markup[] {
-  if (value === null || !Number.isFinite(value)) return [];
-  const attributes = markup`${unit === undefined ? null : markup` unit="${unit}"`}${ucd === undefined ? null : markup` ucd="${ucd}"`} dataType="float"`;
-  const main = markup`<Param name="${name}" value="${value}"${attributes}><Description>${meaning}</Description></Param>`;
-  if (!interval68) return [main];
-  const end = (which: string, x: number) => markup`<Param name="${name}_${which}" value="${x}"${attributes}/>`;
-  return [
-    markup`<Group name="${name}" type="measurement with 68 % interval">${main}${end('low', interval68[0])}${end('high', interval68[1])}</Group>`,
-  ];
-}
-
-function textParam(name: string, value: string, ucd: string): Markup {
-  return markup`<Param name="${name}" value="${value}" ucd="${ucd}" dataType="string"/>`;
 }
 
 function position(event: PulsarEvent, model: PulsarModel | null): Markup | null {

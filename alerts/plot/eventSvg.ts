@@ -82,7 +82,7 @@ const TIME_UNITS = [
   [1e-9, 'ns'],
 ] as const;
 
-/** What the fit leaves of the used arrivals; says so where there is no fit to compare with. */
+/** What the fit leaves. Scaled by the used arrivals: one that was set aside may stand outside. */
 function leftOverPanel(canvas: Canvas): Markup {
   const { picture, view, palette, x } = canvas;
   const fit = picture.fit.map((p) => ({ mjd: p.mjd, value: p.deviationTurns }));

@@ -1,11 +1,12 @@
 import { composeTestMail, type DeliveryOutcome } from '../../alerts/index.ts';
-import { mjdOf, systemClock } from '../clock.ts';
+import { systemClock } from '../clock.ts';
 import type { Configuration } from '../config/configuration.ts';
 import { loadConfiguration } from '../config/loadConfiguration.ts';
 import { EXIT, OperatorError, reasonOf } from '../errors.ts';
 import { mailerFor } from '../mailerFor.ts';
+import { tableWarnings } from '../morning.ts';
 import { problemLine } from '../opening.ts';
-import { leapSecondWarning, loadTables } from '../tables/loadTables.ts';
+import { loadTables } from '../tables/loadTables.ts';
 import { printJson, type Terminal } from './terminal.ts';
 
 export interface CheckOptions {
@@ -18,7 +19,7 @@ export interface CheckOptions {
 export async function check(terminal: Terminal, options: CheckOptions): Promise<void> {
   const { configuration, problems } = loadConfiguration(options.config);
   const mail = configuration === null ? [] : await tryMail(configuration, options.sendTestMail ?? false);
-  const warnings = tableWarnings();
+  const warnings = tableWarnings(loadTables(), systemClock.now());
   if (options.json) printJson(terminal, { ok: configuration !== null && mail.every(isWell), problems, warnings, mail });
   else {
     for (const problem of problems) terminal.out(`${problem.severity}: ${problemLine(problem)}`);
@@ -60,12 +61,6 @@ async function outcomeOf(attempt: () => Promise<DeliveryOutcome>): Promise<Omit<
   } catch (error) {
     return { state: 'later', detail: reasonOf(error) };
   }
-}
-
-function tableWarnings(): string[] {
-  const { tables, warnings } = loadTables();
-  const leapSeconds = leapSecondWarning(tables.leapSeconds, mjdOf(systemClock.now()));
-  return leapSeconds === null ? [...warnings] : [...warnings, leapSeconds];
 }
 
 function soundLine({ file, feeds, sites, models }: Configuration): string {

@@ -2,7 +2,7 @@ import { writeFile } from 'node:fs/promises';
 import { digestHtml, digestText } from '../../alerts/index.ts';
 import { systemClock } from '../clock.ts';
 import { EXIT, OperatorError } from '../errors.ts';
-import { morningReview } from '../morning.ts';
+import { morningReview, tableWarnings } from '../morning.ts';
 import { loadTables } from '../tables/loadTables.ts';
 import { withRecord } from './record.ts';
 import { printJson, type Terminal } from './terminal.ts';
@@ -19,9 +19,10 @@ export async function morning(terminal: Terminal, { config, date, html, json }: 
   if (date !== undefined && !isCivilDate(date)) {
     throw new OperatorError(`“${date}” is not a date such as 2026-03-29`, { exitCode: EXIT.wrongUsage });
   }
-  const { tables, warnings: tableWarnings } = loadTables();
+  const clock = systemClock;
+  const warnings = tableWarnings(loadTables(), clock.now());
   await withRecord(config, async (store, configuration) => {
-    const review = morningReview({ configuration, store, tables, clock: systemClock, tableWarnings }, date);
+    const review = morningReview({ configuration, store, clock, warnings }, date);
     const setting = { observatory: configuration.observatory, timezone: configuration.mail.timezone, reviewUrl: null };
     if (html !== undefined) {
       await writeFile(html, digestHtml(review, setting));

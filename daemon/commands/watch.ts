@@ -12,4 +12,8 @@ export async function watch(terminal: Terminal, options: { readonly config: stri
   for (const signal of ['SIGTERM', 'SIGINT', 'SIGHUP'] as const) process.on(signal, onSignal);
   const log = createLog();
   await runWatch({ configFile: options.config, log, stop: stop.signal, say: (line) => terminal.out(line) });
+  // A mail server that does not answer may still hold a connection open; its message goes again at the next start.
+  setTimeout(() => process.exit(), LAST_GRACE_MS).unref();
 }
+
+const LAST_GRACE_MS = 500;

@@ -16,7 +16,7 @@ export interface DigestSchedule {
   stop(): Promise<void>;
 }
 
-/** A wall clock that was set, a missed tick, or the hour that spring skips: found again within this time. */
+/** A wall clock that was set, a tick missed while the program was busy, or the hour that spring skips: found again within this time. */
 const CATCH_UP_CRON = '*/5 * * * *';
 
 export function startDigestSchedule(options: {
@@ -50,8 +50,8 @@ export function startDigestSchedule(options: {
   };
 
   const tasks: ScheduledTask[] = [
-    schedule(options.cron, catchUp, { name: 'digest', timezone: options.zone }),
-    schedule(CATCH_UP_CRON, catchUp, { name: 'digest catch-up', timezone: 'UTC' }),
+    schedule(options.cron, catchUp, { name: 'digest', timezone: options.zone, suppressMissedWarning: true }),
+    schedule(CATCH_UP_CRON, catchUp, { name: 'digest catch-up', timezone: 'UTC', suppressMissedWarning: true }),
   ];
   return {
     catchUp,

@@ -43,6 +43,8 @@ export function watchForNotices(options: NoticeOptions, arm: Watch = watch): Not
       // Folders alone are watched: their notices name the files in them, and a watch a file would use up the system's stock.
       ignored: (_path, stats) => stats !== undefined && !stats.isDirectory(),
     });
+    // What came between the last look and now was not heard.
+    watcher.on('ready', () => options.onNotice());
     watcher.on('raw', () => options.onNotice());
     watcher.on('all', () => options.onNotice());
     watcher.on('error', fail);

@@ -63,8 +63,9 @@ export const DEFAULT_SETTLE_MS = 2000;
 const LONG_SETTLE_FACTOR = 10;
 const RESTLESS_MS = 3_600_000;
 const SHORTEST_BREAK_MS = 100;
-/** Looking may take a quarter of the time at most, however many notices come. */
+/** Looking takes a quarter of the time at most, however many notices come; unless it is so slow that files would wait for it. */
 const BREAK_PER_LOOK = 3;
+const LONGEST_BREAK_MS = 5000;
 const FIRST_RETRY_MS = 5000;
 const LONGEST_RETRY_MS = 600_000;
 
@@ -167,7 +168,7 @@ async function lookOnce({ feed, watched }: Loop, nowMs: number): Promise<Look> {
 }
 
 function restAfter(look: Look, { lookMs, pollMs }: { readonly lookMs: number; readonly pollMs: number }) {
-  const atLeastMs = Math.max(SHORTEST_BREAK_MS, lookMs * BREAK_PER_LOOK);
+  const atLeastMs = Math.min(LONGEST_BREAK_MS, Math.max(SHORTEST_BREAK_MS, lookMs * BREAK_PER_LOOK));
   const wantedMs = look.ready.length > 0 ? atLeastMs : Math.min(pollMs, look.nextReadyInMs ?? pollMs);
   return { atLeastMs, atMostMs: Math.max(atLeastMs, wantedMs) };
 }

@@ -69,14 +69,15 @@ export function fitGlitch(input: GlitchFitInput): GlitchFit {
   const systems = frame.gaps.map((gap) => gapSystem(frame, gap));
   const plain = systems.map((system) => explore(frame, system, withoutRecovery(system), scales));
   const logEvidencePlain = logSumExp(plain.map(({ logEvidence }) => logEvidence));
-  const recovery = scanTimescales(frame, systems, scales);
+  const decaying = systems.map((system) => scanTimescales(frame, system, scales));
+  const logEvidenceRecovery = logSumExp(decaying.map(({ logEvidence }) => logEvidence));
   const plainPoints = significant(plain.flatMap((cloud) => cloud.points));
-  const decayingPoints = significant(recovery.points);
-  const recovers = recovery.logEvidence - logEvidencePlain > LN_RECOVERY_EVIDENCE;
+  const decayingPoints = significant(decaying.flatMap((cloud) => cloud.points));
+  const recovers = logEvidenceRecovery - logEvidencePlain > LN_RECOVERY_EVIDENCE;
   return {
     logEvidenceNone: -0.5 * frame.data.reduce((sum, entry) => sum + entry * entry, 0),
     logEvidencePlain,
-    logEvidenceRecovery: recovery.logEvidence,
+    logEvidenceRecovery,
     recoveryTerms: recovers ? 1 : 0,
     ...describeSizes(significant([...plainPoints, ...decayingPoints])),
     recovery: recovers ? describeRecovery(decayingPoints) : null,

@@ -14,7 +14,7 @@ export interface GlitchPoint {
   /** Whole turns added to the deviations after the event. */
   readonly countShift: number;
   /** ln of the posterior mass (not normalised) that the point stands for. */
-  logMass: number;
+  readonly logMass: number;
   /** ln of the posterior density per day at the point. */
   readonly logDensity: number;
   readonly mean: readonly [persistent: number, persistentSecond: number, decaying: number];
@@ -28,8 +28,6 @@ const NEGLIGIBLE = 14;
 export interface PointCloud {
   readonly points: readonly GlitchPoint[];
   readonly logEvidence: number;
-  /** ln evidence by rung of the size prior. */
-  readonly logByScale: Float64Array;
 }
 
 /** The posterior over one gap at one timescale (or without recovery), integrated over the epoch. */
@@ -40,7 +38,6 @@ export function explore(
   scales: readonly SizeScale[],
 ): PointCloud {
   const points: GlitchPoint[] = [];
-  const logByScale = new Float64Array(scales.length).fill(Number.NEGATIVE_INFINITY);
   let logEvidence = Number.NEGATIVE_INFINITY;
   let heaviest = Number.NEGATIVE_INFINITY;
   const workspace = createWorkspace(scales.length);
@@ -52,9 +49,6 @@ export function explore(
       const logDensity = workspace.logDensity + grid.logWeight - Math.log(frame.windowDays);
       const logMass = logDensity + Math.log(width);
       logEvidence = logAddExp(logEvidence, logMass);
-      for (let k = 0; k < scales.length; k++) {
-        logByScale[k] = logAddExp(logByScale[k]!, logMass + workspace.logShares[k]! - workspace.logDensity);
-      }
       if (logMass < heaviest - NEGLIGIBLE) continue;
       heaviest = Math.max(heaviest, logMass);
       const [p = 0, q = 0, d = 0] = workspace.mean;
@@ -70,7 +64,7 @@ export function explore(
       });
     }
   }
-  return { points: points.filter(({ logMass }) => logMass > heaviest - NEGLIGIBLE), logEvidence, logByScale };
+  return { points: points.filter(({ logMass }) => logMass > heaviest - NEGLIGIBLE), logEvidence };
 }
 
 function widestOf(scales: readonly SizeScale[]): SizeScale {

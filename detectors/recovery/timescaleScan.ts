@@ -8,66 +8,56 @@ import type { SizeScale } from './sizePrior.ts';
 const SHORTEST_DAYS = 0.5;
 const FIRST_NODES = 14;
 const MOST_NODES = 44;
-/** Gaps and rungs of the prior lighter than this after the first nodes are dropped, nats. */
-const HOPELESS = 14;
+/** Neighbouring nodes may differ by so many nats near the maximum. */
+const SMOOTH = 0.5;
+/** Nodes so many nats below the maximum need no neighbours. */
+const NEAR_MAXIMUM = 6;
+const CLOSEST = 1e-3;
 
 interface Node {
   readonly lnTimescale: number;
-  readonly clouds: readonly PointCloud[];
-  readonly logEvidence: number;
+  readonly cloud: PointCloud;
 }
 
 /**
- * The posterior with one exponential: nodes evenly spaced in ln τ (its prior is flat there) from half a day, or half the
- * spacing of the first arrivals after the event, to three times the span after it; then every interval in which the
- * evidence changes by more than a little, near its maximum, is halved.
+ * The posterior of a glitch in one gap with one exponential: nodes evenly spaced in ln τ, where the prior is flat, from
+ * half a day, or half the spacing of the first arrivals after the event, to three times the span after it; then every
+ * interval near the maximum over which the evidence changes by more than a little is halved.
  */
-export function scanTimescales(
-  frame: EventFrame,
-  systems: readonly GapSystem[],
-  scales: readonly SizeScale[],
-): { readonly points: GlitchPoint[]; readonly logEvidence: number } {
-  const { low, high } = timescaleRange(frame, systems);
-  const evaluate = (lnTimescale: number, from: readonly GapSystem[], rungs: readonly SizeScale[]): Node => {
-    const clouds = from.map((system) =>
-      explore(frame, system, recoveryColumn(frame, system, Math.exp(lnTimescale)), rungs),
-    );
-    return { lnTimescale, clouds, logEvidence: logSumExp(clouds.map((cloud) => cloud.logEvidence)) };
-  };
-  const nodes = Array.from({ length: FIRST_NODES }, (_, i) =>
-    evaluate(low + ((high - low) * i) / (FIRST_NODES - 1), systems, scales),
-  );
-  const best = Math.max(...nodes.map(({ logEvidence }) => logEvidence));
-  const hopeful = systems.filter((_, g) => nodes.some(({ clouds }) => clouds[g]!.logEvidence > best - HOPELESS));
+export function scanTimescales(frame: EventFrame, system: GapSystem, scales: readonly SizeScale[]): PointCloud {
+  const { low, high } = timescaleRange(frame, system);
+  const evaluate = (lnTimescale: number): Node => ({
+    lnTimescale,
+    cloud: explore(frame, system, recoveryColumn(frame, system, Math.exp(lnTimescale)), scales),
+  });
+  const nodes = Array.from({ length: FIRST_NODES }, (_, i) => evaluate(low + ((high - low) * i) / (FIRST_NODES - 1)));
   while (nodes.length < MOST_NODES) {
     const at = roughestInterval(nodes);
     if (at === null) break;
-    const middle = 0.5 * (nodes[at]!.lnTimescale + nodes[at + 1]!.lnTimescale);
-    nodes.splice(at + 1, 0, evaluate(middle, hopeful, scales));
+    nodes.splice(at + 1, 0, evaluate(0.5 * (nodes[at]!.lnTimescale + nodes[at + 1]!.lnTimescale)));
   }
   return integrate(nodes, high - low);
 }
 
-function timescaleRange(frame: EventFrame, systems: readonly GapSystem[]): { low: number; high: number } {
-  const { arrivals } = frame;
-  const first = systems[0]!.gap.after;
-  const span = arrivals.at(-1)!.tDays - arrivals[first]!.tDays;
-  const spacing = (arrivals[first + 1]?.tDays ?? arrivals[first]!.tDays) - arrivals[first]!.tDays;
+function timescaleRange({ arrivals }: EventFrame, { gap }: GapSystem): { low: number; high: number } {
+  const first = arrivals[gap.after]!.tDays;
+  const span = arrivals.at(-1)!.tDays - first;
+  const spacing = (arrivals[gap.after + 1]?.tDays ?? first) - first;
   const low = Math.max(SHORTEST_DAYS, 0.5 * spacing);
   return { low: Math.log(low), high: Math.log(Math.max(3 * span, 4 * low)) };
 }
 
 /** The interval, near the maximum, over which the evidence changes most; null when all are resolved. */
 function roughestInterval(nodes: readonly Node[]): number | null {
-  const best = Math.max(...nodes.map(({ logEvidence }) => logEvidence));
+  const best = Math.max(...nodes.map(({ cloud }) => cloud.logEvidence));
   let roughest: number | null = null;
-  let largest = 0.5;
+  let largest = SMOOTH;
   for (let i = 0; i + 1 < nodes.length; i++) {
     const left = nodes[i]!;
     const right = nodes[i + 1]!;
-    if (Math.max(left.logEvidence, right.logEvidence) < best - 6) continue;
-    if (right.lnTimescale - left.lnTimescale < 2e-3) continue;
-    const change = Math.min(10, Math.abs(left.logEvidence - right.logEvidence));
+    const higher = Math.max(left.cloud.logEvidence, right.cloud.logEvidence);
+    if (higher < best - NEAR_MAXIMUM || right.lnTimescale - left.lnTimescale < CLOSEST) continue;
+    const change = Math.abs(left.cloud.logEvidence - right.cloud.logEvidence);
     if (change > largest) {
       largest = change;
       roughest = i;
@@ -76,16 +66,17 @@ function roughestInterval(nodes: readonly Node[]): number | null {
   return roughest;
 }
 
-/** Trapezoidal rule in ln τ under a flat prior there. */
-function integrate(nodes: readonly Node[], range: number): { points: GlitchPoint[]; logEvidence: number } {
-  const logWeights = nodes.map(({ lnTimescale }, i) => {
+/** Trapezoidal rule in ln τ. */
+function integrate(nodes: readonly Node[], range: number): PointCloud {
+  const logWeights = nodes.map((_, i) => {
     const left = nodes[Math.max(i - 1, 0)]!.lnTimescale;
     const right = nodes[Math.min(i + 1, nodes.length - 1)]!.lnTimescale;
     return Math.log((0.5 * (right - left)) / range);
   });
-  const logEvidence = logSumExp(nodes.map((node, i) => node.logEvidence + logWeights[i]!));
-  const points = nodes.flatMap(({ clouds }, i) =>
-    clouds.flatMap((cloud) => cloud.points.map((point) => ({ ...point, logMass: point.logMass + logWeights[i]! }))),
-  );
-  return { points, logEvidence };
+  return {
+    logEvidence: logSumExp(nodes.map(({ cloud }, i) => cloud.logEvidence + logWeights[i]!)),
+    points: nodes.flatMap(({ cloud }, i) =>
+      cloud.points.map((point): GlitchPoint => ({ ...point, logMass: point.logMass + logWeights[i]! })),
+    ),
+  };
 }

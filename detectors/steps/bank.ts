@@ -42,7 +42,12 @@ const YOUNG_BEAM: Readonly<Record<Kind, number>> = {
   'clock step': 6,
   'dispersion step': 4,
 };
-const OLD_BEAM = 3;
+const OLD_BEAM: Readonly<Record<Kind, number>> = {
+  glitch: 3,
+  'spin-down-rate change': 2,
+  'clock step': 2,
+  'dispersion step': 2,
+};
 /** A gap is young for this many arrivals: its counts may still branch. */
 const YOUNG_ARRIVALS = 5;
 /** Null hypotheses within this of the heaviest become parents. */
@@ -53,7 +58,7 @@ const FAMILY_FLOOR_NATS = 18;
 const SNAPSHOTS = 64;
 
 export function newBank(noise: NoiseModel, beam: Hypothesis[]): Bank {
-  const scratch = { deviation: 0, variance: 0, gain: new Float64Array(beam[0]!.mean.length) };
+  const scratch = { deviation: 0, variance: 0, gain: new Float64Array(beam[0]!.mean.length), plain: true };
   return { noise, beam, families: [], logScale: 0, snapshots: [], scratch };
 }
 
@@ -66,7 +71,7 @@ export function addState(bank: Bank, variance: number): Bank {
     beam,
     families: bank.families.map((f) => ({ ...f, beam: f.beam.map(grow) })),
     snapshots: bank.snapshots.map((s) => ({ ...s, hypothesis: grow(s.hypothesis) })),
-    scratch: { deviation: 0, variance: 0, gain: new Float64Array(beam[0]!.mean.length) },
+    scratch: { deviation: 0, variance: 0, gain: new Float64Array(beam[0]!.mean.length), plain: true },
   };
 }
 
@@ -88,7 +93,7 @@ export function stepBank(bank: Bank, step: BankStep): void {
     const age = step.seen.index - family.gap;
     if (age < YOUNG_ARRIVALS) family.beam = observe(family.beam, step.seen, YOUNG_BEAM[family.kind], bank.scratch);
     else observeFirmly(family.beam, step.seen, bank.scratch);
-    if (age === YOUNG_ARRIVALS) family.beam = pruned(family.beam, OLD_BEAM);
+    if (age === YOUNG_ARRIVALS) family.beam = pruned(family.beam, OLD_BEAM[family.kind]);
   }
   forget(bank, step.oldestGap);
   normalise(bank);

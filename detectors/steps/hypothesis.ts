@@ -91,12 +91,15 @@ export interface Prediction {
   deviation: number;
   variance: number;
   readonly gain: Float64Array;
+  /** The deviation alone was seen. */
+  plain: boolean;
 }
 
 export function predict(h: Hypothesis, sight: Sight, into: Prediction): void {
   const { mean, cov } = h;
   const size = mean.length;
   const { gain } = into;
+  into.plain = sight.plain;
   if (sight.plain) {
     for (let i = 0; i < size; i++) gain[i] = cov[i]!;
     into.deviation = mean[0]!;
@@ -116,7 +119,10 @@ export function predict(h: Hypothesis, sight: Sight, into: Prediction): void {
   into.variance = variance;
 }
 
-/** Takes the innovation in: x ← x + P h e/S, P ← P − P h hᵀ P / S, symmetric by construction. */
+/**
+ * Takes the innovation in: x ← x + P h e/S, P ← P − P h hᵀ P / S, symmetric by construction. Where the deviation alone
+ * was seen, its own row is P₀ⱼ R/S: the difference of near-equal numbers would lose the digits of a wide prior.
+ */
 export function absorb(h: Hypothesis, prediction: Prediction, innovation: number, innovationVariance: number): void {
   const { mean, cov } = h;
   const size = mean.length;
@@ -130,6 +136,12 @@ export function absorb(h: Hypothesis, prediction: Prediction, innovation: number
       cov[i * size + j] = value;
       cov[j * size + i] = value;
     }
+  }
+  if (!prediction.plain) return;
+  const kept = (innovationVariance - prediction.variance) * inverse;
+  for (let j = 0; j < size; j++) {
+    cov[j] = gain[j]! * kept;
+    cov[j * size] = cov[j]!;
   }
 }
 

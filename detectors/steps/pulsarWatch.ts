@@ -44,7 +44,7 @@ export function startWatch(model: PulsarModel, settings: DetectorSettings): Puls
     line: newTimeline(model.spin.epochTdb),
     states: newStateMap(),
     bank: null,
-    noise: firstNoise(prior),
+    noise: asFixed(model, firstNoise(prior)),
     tracks: [],
     locked: false,
     oldestGap: 1,
@@ -62,4 +62,11 @@ function firstNoise(prior: NoisePrior): NoiseModel {
     uncertaintyScale: prior.uncertaintyScale.median,
     floorTurns: 0,
   };
+}
+
+/** What the operator fixed in the pulsar's file stands above what was learned. */
+export function asFixed(model: PulsarModel, learned: NoiseModel): NoiseModel {
+  const { uncertaintyScale = learned.uncertaintyScale, floorUs } = model.noise;
+  const floorTurns = floorUs === undefined ? learned.floorTurns : floorUs * 1e-6 * model.spin.frequencyHz.hi;
+  return { ...learned, uncertaintyScale, floorTurns };
 }

@@ -8,7 +8,7 @@ import { newBank } from './bank.ts';
 import { glitch } from './births.ts';
 import { absorb, gapOf, type Hypothesis, loosen, predict, propagate, type Story } from './hypothesis.ts';
 import { birthPlace } from './places.ts';
-import type { PulsarWatch } from './pulsarWatch.ts';
+import { asFixed, type PulsarWatch } from './pulsarWatch.ts';
 import { shareOfCount, startBeam } from './start.ts';
 import { stepAt } from './stepAt.ts';
 import { observationOf } from './timeline.ts';
@@ -37,7 +37,8 @@ export function relearn(watch: PulsarWatch, index: number): void {
   const best = bestOf(watch);
   const counted = countedArrivals(watch, best);
   const known = disturbances(watch);
-  watch.noise = withMargin(learnNoise(counted, known, watch.prior, watch.noise), counted, known, watch.prior);
+  const learned = learnNoise(counted, known, watch.prior, watch.noise);
+  watch.noise = asFixed(watch.model, withMargin(learned, counted, known, watch.prior));
   rebuild(watch, index, best);
 }
 

@@ -34,9 +34,11 @@ function planned(event: PulsarEvent): PlannedMessage {
 }
 
 function mailOf(event: PulsarEvent, changes: Partial<EventMail> = {}): EventMail {
-  const rest = { event, picture: samplePicture(), model: MODEL, toldRevision: null };
+  const rest = { event, picture: null, model: MODEL, toldRevision: null };
   return { ...rest, ...changes, planned: changes.planned ?? planned(event) };
 }
+
+const PLOTTED = { picture: samplePicture() };
 
 /** Names of all header fields of the message, in order. */
 function headerNames(mail: ParsedMail): string[] {
@@ -62,7 +64,7 @@ describe('the mail about an event, parsed from its bytes', () => {
   });
 
   it('says what the text must say, within 78 columns', async () => {
-    const { text = '' } = await simpleParser((await composeEventMail(mailOf(GLITCH), SETTING)).mime);
+    const { text = '' } = await simpleParser((await composeEventMail(mailOf(GLITCH, PLOTTED), SETTING)).mime);
     for (const line of text.split('\n')) expect(width(line)).toBeLessThanOrEqual(TEXT_COLUMNS);
     expect(text).toMatch(/must be vetted by a person/);
     expect(text).toContain('99.82 % glitch');
@@ -71,7 +73,9 @@ describe('the mail about an event, parsed from its bytes', () => {
   });
 
   it('shows the plot inside the HTML, and carries notice and event byte for byte', async () => {
-    const mail = await simpleParser((await composeEventMail(mailOf(GLITCH), SETTING)).mime, { skipImageLinks: true });
+    const mail = await simpleParser((await composeEventMail(mailOf(GLITCH, PLOTTED), SETTING)).mime, {
+      skipImageLinks: true,
+    });
     const [plot, notice, json] = mail.attachments;
     expect(mail.html).toContain(`cid:${plot?.cid}`);
     expect(plot?.contentDisposition).toBe('inline');
@@ -94,8 +98,8 @@ describe('the mail about an event, parsed from its bytes', () => {
   });
 
   it('is the same bytes whenever it is composed again', async () => {
-    const once = await composeEventMail(mailOf(GLITCH), SETTING);
-    const again = await composeEventMail(mailOf(GLITCH), SETTING);
+    const once = await composeEventMail(mailOf(GLITCH, PLOTTED), SETTING);
+    const again = await composeEventMail(mailOf(GLITCH, PLOTTED), SETTING);
     expect(again.mime.equals(once.mime)).toBe(true);
   });
 
@@ -139,9 +143,7 @@ describe('the mail about an event, parsed from its bytes', () => {
   });
 
   it('a site event names the site and its pulsars', async () => {
-    const mail = await simpleParser(
-      (await composeEventMail(mailOf(SITE_STEP, { picture: null, model: null }), SETTING)).mime,
-    );
+    const mail = await simpleParser((await composeEventMail(mailOf(SITE_STEP, { model: null }), SETTING)).mime);
     expect(mail.subject).toBe('Kestrel Ridge · Kestrel Ridge (3 pulsars): candidate clock step · Δt = 104.2 ± 2.1 µs');
     expect(mail.text).toContain('KR 0417+31, KR 1902-08, KR 2231+44');
     expect(mail.attachments).toHaveLength(2);
@@ -158,18 +160,16 @@ describe('the mail about an event, parsed from its bytes', () => {
 });
 
 describe('D14: names from outside stay names', () => {
-  const HOSTILE = [
-    'KR\r\nBcc: victim@b.example\r\n',
-    'KR\nSubject: other',
-    'KR\rX: y',
-    '=?utf-8?q?=0D=0ABcc:_victim@b.example?=',
-    '<img src=x onerror=alert(1)>&"\'</title>',
-    'KR\r\n.\r\nMAIL FROM:<x@y.example>',
-    'a\u2028b\u202ec\u0000d\ud800',
-    `${'long '.repeat(300)}`,
-  ];
-
-  it.each(HOSTILE)('%j', async (name) => {
+  it.each([
+    ['CR LF and a header', 'KR\r\nBcc: victim@b.example\r\n'],
+    ['a bare LF', 'KR\nSubject: other'],
+    ['a bare CR', 'KR\rX: y'],
+    ['an encoded word', '=?utf-8?q?=0D=0ABcc:_victim@b.example?='],
+    ['markup', '<img src=x onerror=alert(1)>&"\'</title>'],
+    ['the end of a message', 'KR\r\n.\r\nMAIL FROM:<x@y.example>'],
+    ['unseen characters', 'a\u2028b\u202ec\u0000d\ud800'],
+    ['a very long name', 'long '.repeat(300)],
+  ])('%s', async (_what, name) => {
     const event = {
       ...GLITCH,
       id: name,
@@ -180,7 +180,7 @@ describe('D14: names from outside stay names', () => {
     };
     const setting = { ...SETTING, observatory: { name, contact: SETTING.observatory.contact } };
     const harmless = await simpleParser((await composeEventMail(mailOf(GLITCH), SETTING)).mime);
-    const { mime } = await composeEventMail(mailOf(event, { picture: null }), setting);
+    const { mime } = await composeEventMail(mailOf(event), setting);
     const mail = await simpleParser(mime);
     expect(headerNames(mail)).toEqual(headerNames(harmless));
     expect([mail.to].flat().flatMap((t) => t?.value ?? [])).toHaveLength(2);

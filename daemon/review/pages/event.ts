@@ -1,4 +1,4 @@
-import { html, raw } from 'hono/html';
+import { html } from 'hono/html';
 import type { EventRecord } from '../../records.ts';
 import { beliefTable, explanationBars, sizeTable } from './beliefs.ts';
 import type { Html } from './layout.ts';
@@ -79,7 +79,7 @@ function verdictList({ verdicts }: EventRecord): Html {
   return html`<ol class="verdicts">${[...verdicts].reverse().map(
     (verdict) => html`<li>
       <p><strong>${VERDICT_PAST[verdict.verdict]}</strong> by <bdi>${visible(verdict.by)}</bdi>, <time datetime="${verdict.at}">${utc(verdict.at)} UTC</time> <small>revision ${verdict.revision}</small></p>
-      ${verdict.note === '' ? '' : html`<blockquote class="note">${raw(verdict.note)}</blockquote>`}
+      ${verdict.note === '' ? '' : html`<blockquote class="note">${visible(verdict.note)}</blockquote>`}
     </li>`,
   )}</ol>`;
 }

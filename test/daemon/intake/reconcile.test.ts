@@ -1,3 +1,4 @@
+import assert from 'node:assert/strict';
 import fc from 'fast-check';
 import { describe, expect, it } from 'vitest';
 import { arrivalKey, isSameTime, measurementOf } from '../../../daemon/intake/key.ts';
@@ -136,17 +137,17 @@ describe('any deliveries', () => {
         const log = createArrivalLog();
         for (const [path, rows] of sequence) {
           const { added, same } = log.deliver(path, rows);
-          expect(added.length + same.length).toBe(rows.length);
+          assert.equal(added.length + same.length, rows.length);
         }
         const stated = [...new Map(sequence).values()].flat();
-        for (const [, rows] of sequence) for (const each of rows) expect(log.status(each)).toBeDefined();
+        for (const [, rows] of sequence) for (const each of rows) assert.notEqual(log.status(each), undefined);
         const live = log.live();
         const liveKeys = new Set(live.map(({ key }) => key));
         const statedKeys = new Set(stated.map(arrivalKey));
-        for (const key of liveKeys) expect(statedKeys.has(key)).toBe(true);
+        for (const key of liveKeys) assert.ok(statedKeys.has(key));
         // A slow twin: chains of stated rows by hand; each must hold exactly one live value.
         for (const chain of chainsOf(stated)) {
-          expect(new Set(chain.map(arrivalKey).filter((key) => liveKeys.has(key))).size).toBe(1);
+          assert.equal(new Set(chain.map(arrivalKey).filter((key) => liveKeys.has(key))).size, 1);
         }
       }),
       { numRuns: 200 },

@@ -156,14 +156,16 @@ describe('a record that is not in order is refused and left as it is', () => {
     }
   });
 
-  test('with pages overwritten', () => {
+  test.each([
+    ['every tenth page', 10],
+    ['one page, that no start would read but for the check', 1_000_000],
+  ])('with %s overwritten', (_, every) => {
     const store = open(state);
     store.commitIntake(fileBatch(0, 500));
     store.close();
-    const pages = statSync(join(state, 'record.db')).size / 4096;
-    // Every tenth page: whichever of them a start reads, the check of the whole finds them.
+    const lastPage = statSync(join(state, 'record.db')).size / 4096 - 1;
     const file = openSync(join(state, 'record.db'), 'r+');
-    for (let page = 5; page < pages; page += 10) writeSync(file, Buffer.alloc(2048, 0xa5), 0, 2048, page * 4096);
+    for (let page = lastPage; page > 4; page -= every) writeSync(file, Buffer.alloc(2048, 0xa5), 0, 2048, page * 4096);
     closeSync(file);
     expect(failureOf('daemon')).toMatchObject({
       kind: 'damaged',

@@ -1,5 +1,12 @@
 import { describe, expect, it } from 'vitest';
-import { advance, combineSiteEvents, detectorSettings, type PulsarReport, report, startWatch } from '../../../detectors/index.ts';
+import {
+  advance,
+  combineSiteEvents,
+  detectorSettings,
+  type PulsarReport,
+  report,
+  startWatch,
+} from '../../../detectors/index.ts';
 import { dice, observingDays } from '../../support/simulatedPulsar.ts';
 import { modelOf, type Programme, simulateTimedArrivals, spinUp } from '../../support/simulatedWatch.ts';
 
@@ -7,7 +14,10 @@ const NU = 3.123456789;
 const MODEL = modelOf({ frequencyHz: String(NU), frequencyDerivativeHzPerS: -2e-14, epochMjd: 60_000 });
 const QUIET = { phaseWalk: 0, frequencyWalk: 1e-14, torqueWalk: 0 };
 
-function watched(seed: number, programme: Partial<Programme> & { readonly count?: number; readonly cadence?: number }): PulsarReport {
+function watched(
+  seed: number,
+  programme: Partial<Programme> & { readonly count?: number; readonly cadence?: number },
+): PulsarReport {
   const random = dice(seed);
   const days = programme.days ?? observingDays(programme.count ?? 90, programme.cadence ?? 3, 0.6, random);
   const arrivals = simulateTimedArrivals(MODEL, { walks: QUIET, uncertaintyUs: 60, ...programme, days }, random);
@@ -126,7 +136,11 @@ describe('site events', () => {
       { ...step!, id: 'c', pulsar: 'KR 0003+03', epochInterval95: [60_300, 60_303] as const },
       { ...step!, id: 'd', pulsar: 'KR 0004+04', site: 'elsewhere' },
     ];
-    expect(combineSiteEvents(events).map((e) => e.id).sort()).toEqual(['a', 'b', 'c', 'd']);
+    expect(
+      combineSiteEvents(events)
+        .map((e) => e.id)
+        .sort(),
+    ).toEqual(['a', 'b', 'c', 'd']);
   });
 
   it('does not depend on the order of the pulsars', () => {

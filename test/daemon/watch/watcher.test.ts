@@ -1,0 +1,195 @@
+import { EventEmitter } from 'node:events';
+import { mkdirSync, readdirSync, rmSync, statSync, writeFileSync } from 'node:fs';
+import { join } from 'node:path';
+import { afterEach, describe, expect, it, vi } from 'vitest';
+import { systemClock } from '../../../daemon/clock.ts';
+import type { Feed } from '../../../daemon/config/configuration.ts';
+import type { WatchProblem } from '../../../daemon/watch/feedLook.ts';
+import type { TakenFile } from '../../../daemon/watch/feedMemory.ts';
+import type { Watch } from '../../../daemon/watch/notices.ts';
+import { createWatcher, type Watcher, type WatcherOptions } from '../../../daemon/watch/watcher.ts';
+import { useTemporaryFolders } from '../../support/temporaryFolder.ts';
+
+const newFolder = useTemporaryFolders();
+const running: Watcher[] = [];
+afterEach(async () => {
+  await Promise.all(running.splice(0).map((watcher) => watcher.stop()));
+});
+
+function start(folder: string, options: Partial<WatcherOptions> = {}, feed: Partial<Feed> = {}) {
+  const handed: string[] = [];
+  const problems: WatchProblem[] = [];
+  const ended: WatchProblem[] = [];
+  const taken = new Map<string, TakenFile>();
+  const watcher = createWatcher({
+    feeds: [
+      {
+        name: 'feed',
+        folder,
+        layout: 'csv',
+        recursive: false,
+        pollSeconds: 3600,
+        polling: false,
+        expectEveryHours: null,
+        ...feed,
+      },
+    ],
+    recall: (_feed, { path }) => taken.get(path) ?? null,
+    onSettled: async (file, bytes) => {
+      handed.push(`${file.path}: ${bytes}`);
+      taken.set(file.path, file.stamp);
+      return 'taken';
+    },
+    onProblem: (problem) => problems.push(problem),
+    onProblemEnded: (problem) => ended.push(problem),
+    clock: systemClock,
+    settleMs: 100,
+    ...options,
+  });
+  running.push(watcher);
+  return { watcher, handed, problems, ended };
+}
+
+const until = (check: () => void) => vi.waitFor(check, { timeout: 20_000, interval: 20 });
+
+describe('the watcher', () => {
+  it('hands over what stands there at the start and what comes, woken by notices alone', async () => {
+    const folder = newFolder();
+    writeFileSync(join(folder, 'a.csv'), 'one');
+    const { handed } = start(folder);
+    await until(() => expect(handed).toEqual(['a.csv: one']));
+    writeFileSync(join(folder, 'b.csv'), 'two');
+    await until(() => expect(handed).toEqual(['a.csv: one', 'b.csv: two']));
+    writeFileSync(join(folder, 'a.csv'), 'three');
+    await until(() => expect(handed.at(-1)).toBe('a.csv: three'));
+  });
+
+  it('A32 hears of new files in a folder that was made anew', async () => {
+    const folder = newFolder();
+    const { watcher, handed, problems, ended } = start(folder, {}, { pollSeconds: 0.2 });
+    rmSync(folder, { recursive: true });
+    await until(() => expect(problems.map(({ kind }) => kind)).toContain('root gone'));
+    mkdirSync(folder);
+    await until(() => expect(ended.map(({ kind }) => kind)).toContain('root gone'));
+    writeFileSync(join(folder, 'a.csv'), 'one');
+    await until(() => expect(handed).toEqual(['a.csv: one']));
+    expect(watcher.status()).toMatchObject([{ feed: 'feed', files: 1 }]);
+  });
+
+  it('A34 finds every file of a burst that overflows the notices', async () => {
+    const folder = newFolder();
+    const { watcher, handed } = start(folder);
+    await until(() => expect(watcher.status()[0]?.files).toBe(0));
+    // The event loop is blocked meanwhile, as in the trial in which the system dropped notices.
+    for (let index = 0; index < 2000; index += 1) writeFileSync(join(folder, `${index}.csv`), `${index}`);
+    await until(() => expect(handed).toHaveLength(2000));
+    expect(new Set(handed).size).toBe(2000);
+  });
+
+  it.each(['thrown', 'emitted'])(
+    'A35 goes on by scans when the watch limit is used up (%s), and says so once',
+    async (way) => {
+      const folder = newFolder();
+      const failure = Object.assign(new Error('no space left on device'), { code: 'ENOSPC' });
+      const arm = (() => {
+        if (way === 'thrown') throw failure;
+        const emitter = Object.assign(new EventEmitter(), { close: async () => {} });
+        setTimeout(() => emitter.emit('error', failure), 10);
+        setTimeout(() => emitter.emit('error', failure), 20);
+        return emitter;
+      }) as unknown as Watch;
+      const { handed, problems } = start(folder, { arm }, { pollSeconds: 0.2 });
+      writeFileSync(join(folder, 'a.csv'), 'one');
+      await until(() => expect(handed).toEqual(['a.csv: one']));
+      await until(() => expect(problems).toHaveLength(1));
+      expect(problems[0]?.message).toBe(
+        'no notices of new files: the limit of file watches is used up (raise fs.inotify.max_user_watches); the folder is looked at every 0.2 s all the same',
+      );
+    },
+  );
+
+  it('hands over one file at a time over all feeds, and stops after the one in hand', async () => {
+    const [folder, other] = [newFolder(), newFolder()];
+    for (const name of ['a', 'b', 'c']) for (const where of [folder, other]) writeFileSync(join(where, name), name);
+    let atWork = 0;
+    let done = 0;
+    const feed = {
+      layout: 'csv',
+      recursive: false,
+      pollSeconds: 3600,
+      polling: false,
+      expectEveryHours: null,
+    } as const;
+    const { watcher } = start(folder, {
+      feeds: [
+        { name: 'one', folder, ...feed },
+        { name: 'two', folder: other, ...feed },
+      ],
+      onSettled: async () => {
+        atWork += 1;
+        expect(atWork).toBe(1);
+        await new Promise((resolve) => setTimeout(resolve, 30));
+        atWork -= 1;
+        done += 1;
+        return 'taken';
+      },
+    });
+    await until(() => expect(done).toBeGreaterThan(1));
+    await watcher.stop();
+    expect(atWork).toBe(0);
+    const atStop = done;
+    await new Promise((resolve) => setTimeout(resolve, 100));
+    expect(done).toBe(atStop);
+  });
+
+  it('reports a file that cannot be taken in once, and goes on with the others', async () => {
+    const folder = newFolder();
+    for (const name of ['a.csv', 'b.csv']) writeFileSync(join(folder, name), name);
+    const handed: string[] = [];
+    const { problems } = start(folder, {
+      onSettled: async ({ path }) => {
+        if (path === 'a.csv') throw new Error('the disk is full');
+        handed.push(path);
+        return 'taken';
+      },
+    });
+    await until(() => expect(handed).toEqual(['b.csv']));
+    await until(() =>
+      expect(problems).toMatchObject([
+        { kind: 'not taken in', path: 'a.csv', message: 'could not be taken in: the disk is full' },
+      ]),
+    );
+  });
+
+  it('goes on looking when the store cannot answer', async () => {
+    const folder = newFolder();
+    writeFileSync(join(folder, 'a.csv'), 'one');
+    let broken = true;
+    const { watcher, handed, problems, ended } = start(folder, {
+      recall: () => {
+        if (broken) throw new Error('database is locked');
+        return null;
+      },
+    });
+    await until(() => expect(problems).toMatchObject([{ kind: 'look failed', message: 'database is locked' }]));
+    broken = false;
+    watcher.lookNow();
+    await until(() => expect(handed).toEqual(['a.csv: one']));
+    expect(ended).toHaveLength(1);
+  });
+
+  it('leaves the feed as it was', async () => {
+    const folder = newFolder();
+    for (const name of ['a.csv', 'b.csv']) writeFileSync(join(folder, name), name);
+    const state = () =>
+      readdirSync(folder).map((name) => {
+        const { ino, size, mtimeMs, ctimeMs, mode } = statSync(join(folder, name));
+        return { name, ino, size, mtimeMs, ctimeMs, mode };
+      });
+    const before = state();
+    const { watcher, handed } = start(folder);
+    await until(() => expect(handed).toHaveLength(2));
+    await watcher.stop();
+    expect(state()).toEqual(before);
+  });
+});
