@@ -1,6 +1,11 @@
+const SHORTEST_BEGINNING = 3;
+
 /** The known name that a mistyped one most likely meant; null when none is near. */
 export function closestName(typed: string, known: readonly string[]): string | null {
   const wanted = typed.toLowerCase();
+  const begun =
+    wanted.length < SHORTEST_BEGINNING ? undefined : known.find((name) => name.toLowerCase().startsWith(wanted));
+  if (begun !== undefined) return begun;
   let best: string | null = null;
   let bestDistance = Math.max(2, Math.floor(wanted.length / 2)) + 1;
   for (const name of known) {

@@ -49,8 +49,8 @@ function loadClockTable(
     return null;
   }
   const parsed = parseClockTable(read.text, file);
-  if ('table' in parsed) return parsed.table;
-  for (const { line, message } of parsed.problems)
-    problems.push({ file, line, column: null, message, severity: 'error' });
-  return null;
+  const [rows, severity] =
+    'table' in parsed ? [parsed.warnings, 'warning' as const] : [parsed.problems, 'error' as const];
+  for (const { line, message } of rows) problems.push({ file, line, column: null, message, severity });
+  return 'table' in parsed ? parsed.table : null;
 }

@@ -7,9 +7,9 @@ import { MARK } from './looks/mark.ts';
 import { SCRIPT } from './looks/script.ts';
 import { STYLE } from './looks/style.ts';
 import { eventPage } from './pages/event.ts';
-import { type Frame, type PageContent, page, plainPage } from './pages/layout.ts';
-import { feedsPage, mailPage, pulsarsPage } from './pages/overviews.ts';
-import { tonightPage } from './pages/tonight.ts';
+import { type Frame, type Html, type PageContent, page, plainPage, type Section } from './pages/layout.ts';
+import { type FeedsContent, feedsPage, mailPage, pulsarsPage } from './pages/overviews.ts';
+import { type TonightContent, tonightPage } from './pages/tonight.ts';
 import type { RefusedVerdict } from './pages/verdict.ts';
 import { eventPath, subjectOf } from './pages/wording.ts';
 import { complaintAbout, LARGEST_FORM_BYTES, readSubmittedVerdict, type SubmittedVerdict } from './verdictForm.ts';
@@ -43,22 +43,23 @@ export function createReviewApp(app: ReviewApp): Hono {
     version: desk.version(),
     health: desk.health(),
   });
-  const show = (c: Context, content: PageContent, status: 200 | 403 | 409 | 422 = 200) =>
-    c.html(page(frame(), content), status);
+  const show: Show = (c, contentOf, status = 200) => {
+    // The version is read before the content: what changes in between is then noticed by the page's next look.
+    const around = frame();
+    const content = contentOf();
+    return content === null ? unknownEvent(c) : c.html(page(around, content), status);
+  };
 
   const routes = new Hono();
-  routes.get('/', (c) => {
-    const content = { morning: desk.morning(), decisions: desk.decisions(RECENT_DECISIONS), pulsars: desk.pulsars() };
-    return show(c, { title: 'Tonight', section: 'Tonight', main: tonightPage(content) });
-  });
-  routes.get('/pulsars', (c) => show(c, { title: 'Pulsars', section: 'Pulsars', main: pulsarsPage(desk.pulsars()) }));
-  routes.get('/feeds', (c) => {
-    const lists = { feeds: desk.feeds(), quarantine: desk.quarantine(LONGEST_LIST), files: desk.files(LONGEST_LIST) };
-    return show(c, { title: 'Feeds', section: 'Feeds', main: feedsPage({ ...lists, most: LONGEST_LIST }) });
-  });
-  routes.get('/mail', (c) =>
-    show(c, { title: 'Mail', section: 'Mail', main: mailPage(desk.outbox(LONGEST_LIST), LONGEST_LIST) }),
-  );
+  const sections: readonly (readonly [path: string, name: Section, main: () => Html])[] = [
+    ['/', 'Tonight', () => tonightPage(tonightOf(desk))],
+    ['/pulsars', 'Pulsars', () => pulsarsPage(desk.pulsars())],
+    ['/feeds', 'Feeds', () => feedsPage(feedsOf(desk))],
+    ['/mail', 'Mail', () => mailPage(desk.outbox(LONGEST_LIST), LONGEST_LIST)],
+  ];
+  for (const [path, name, main] of sections) {
+    routes.get(path, (c) => show(c, () => ({ title: name, section: name, main: main() })));
+  }
   addEventRoutes(routes, app, show);
   addMachineRoutes(routes, desk);
 
@@ -68,6 +69,8 @@ export function createReviewApp(app: ReviewApp): Hono {
 
   routes.notFound((c) => c.html(plainPage('Nothing here', ['This page has no such address.']), 404));
   routes.onError((error, c) => {
+    // A visitor who hung up is no fault of ours.
+    if (c.req.raw.signal.aborted) return c.body(null, 400);
     const id = randomUUID().slice(0, 8);
     app.onFault({ id, error });
     const lines = ['The page failed; the watch itself goes on.', `The log has the details under ${id}.`];
@@ -76,18 +79,39 @@ export function createReviewApp(app: ReviewApp): Hono {
   return routes;
 }
 
-type Show = (c: Context, content: PageContent, status?: 200 | 403 | 409 | 422) => Response | Promise<Response>;
+function tonightOf(desk: ReviewDesk): TonightContent {
+  return { morning: desk.morning(), decisions: desk.decisions(RECENT_DECISIONS), pulsars: desk.pulsars() };
+}
+
+function feedsOf(desk: ReviewDesk): FeedsContent {
+  const lists = { quarantine: desk.quarantine(LONGEST_LIST), files: desk.files(LONGEST_LIST) };
+  return { feeds: desk.feeds(), ...lists, most: LONGEST_LIST };
+}
+
+type Show = (
+  c: Context,
+  contentOf: () => PageContent | null,
+  status?: 200 | 403 | 409 | 422,
+) => Response | Promise<Response>;
+
+function unknownEvent(c: Context): Response | Promise<Response> {
+  return c.html(plainPage('No such event', ['No event on record has this id.']), 404);
+}
 
 function addEventRoutes(routes: Hono, app: ReviewApp, show: Show): void {
   const { desk } = app;
-  const unknown = (c: Context) => c.html(plainPage('No such event', ['No event on record has this id.']), 404);
-  const showEvent = (c: Context, id: string, refused: RefusedVerdict | null, status: 200 | 403 | 409 | 422) => {
-    const record = desk.event(id);
-    if (record === null) return unknown(c);
-    const token = app.tokens.issue(record.event.id, record.revision);
-    const main = eventPage(record, { token, reviewers: app.reviewers, refused });
-    return show(c, { title: subjectOf(record.event), section: null, main }, status);
-  };
+  const showEvent = (c: Context, id: string, refused: RefusedVerdict | null, status: 200 | 403 | 409 | 422) =>
+    show(
+      c,
+      () => {
+        const record = desk.event(id);
+        if (record === null) return null;
+        const token = app.tokens.issue(record.event.id, record.revision);
+        const main = eventPage(record, { token, reviewers: app.reviewers, refused });
+        return { title: subjectOf(record.event), section: null, main };
+      },
+      status,
+    );
 
   routes.get('/events/:id', (c) => {
     const id = c.req.param('id');
@@ -96,17 +120,17 @@ function addEventRoutes(routes: Hono, app: ReviewApp, show: Show): void {
   });
   routes.get('/events/:id/event.json', (c) => {
     const record = desk.event(c.req.param('id'));
-    return record === null ? unknown(c) : download(c, eventJson(record.event), 'application/json', 'event.json');
+    return record === null ? unknownEvent(c) : download(c, eventJson(record.event), 'application/json', 'event.json');
   });
   routes.get('/events/:id/event.csv', (c) => {
     const record = desk.event(c.req.param('id'));
     return record === null
-      ? unknown(c)
+      ? unknownEvent(c)
       : download(c, eventsCsv([record.event]), 'text/csv; charset=utf-8', 'event.csv');
   });
   routes.get('/events/:id/notice.xml', (c) => {
     const notice = desk.notice(c.req.param('id'), app.now());
-    return notice === null ? unknown(c) : download(c, notice, 'application/xml', 'notice.xml');
+    return notice === null ? unknownEvent(c) : download(c, notice, 'application/xml', 'notice.xml');
   });
 
   const limit = bodyLimit({

@@ -9,6 +9,7 @@ import type { Clock } from '../clock.ts';
 import { reasonOf } from '../errors.ts';
 import type { Log } from '../log.ts';
 import type { OutboxRecord } from '../records.ts';
+import { step } from '../store/crashStep.ts';
 import type { ClaimedMail, MailOutcome } from '../store/shapes.ts';
 import type { Store } from '../store/store.ts';
 import { storageTrouble } from '../store/trouble.ts';
@@ -104,7 +105,9 @@ async function attempt({ mailer, from, log }: DeliveryOptions, mail: ClaimedMail
   const composed = Buffer.from(mail.content, 'latin1');
   const mime = mail.possibleDuplicate ? markPossibleDuplicate(composed) : composed;
   try {
-    return await mailer.send({ from, recipient: mail.recipient, mime });
+    const outcome = await mailer.send({ from, recipient: mail.recipient, mime });
+    step('mail sent');
+    return outcome;
   } catch (error) {
     log.error({ err: error, messageId: mail.messageId }, 'sending failed in an unforeseen way');
     return { state: 'later', detail: reasonOf(error) };

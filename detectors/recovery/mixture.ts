@@ -28,11 +28,14 @@ export function mixtureEstimate(mixture: GaussianMixture): Estimate {
 
 /**
  * Joins neighbours of nearly equal width whose means lie within a fifth of it, keeping their moments: thousands of grid
- * points become tens of components, and no quantile moves by more than a hundredth of a standard deviation.
+ * points become few components, and no quantile moves by more than a hundredth of a standard deviation. Components
+ * lighter than 1e-12 of the heaviest are dropped.
  */
 export function condense({ weights, means, sds }: GaussianMixture): GaussianMixture {
   const widthClass = Array.from(sds, (sd) => Math.round(8 * Math.log(sd)));
-  const order = Array.from(means.keys()).sort((a, b) => widthClass[a]! - widthClass[b]! || means[a]! - means[b]!);
+  const least = 1e-12 * weights.reduce((most, weight) => Math.max(most, weight), 0);
+  const heavy = Array.from(means.keys()).filter((i) => weights[i]! > least);
+  const order = heavy.sort((a, b) => widthClass[a]! - widthClass[b]! || means[a]! - means[b]!);
   const joined: { weight: number; mean: number; variance: number }[] = [];
   for (let from = 0; from < order.length; ) {
     const first = order[from]!;

@@ -1,5 +1,5 @@
 /** Index of the first date later than `at` in a table whose dates never fall; its length when there is none. */
-export function firstAfter(rising: Float64Array, at: number): number {
+export function firstAfter(rising: ArrayLike<number>, at: number): number {
   let low = 0;
   let high = rising.length;
   while (low < high) {

@@ -21,12 +21,18 @@ const NUMBER = /^[+-]?[0-9]+(?:\.[0-9]+)?(?:[eE][+-]?[0-9]+)?$/;
 /** A clock further off than this is not a clock correction but a wrong column. */
 const LARGEST_CORRECTION_S = 3600;
 
-/** Reads a CSV text with the header `mjd,add_seconds`; empty lines and lines that start with # are passed over. */
+/**
+ * Reads a CSV text with the header `mjd,add_seconds`; empty lines and lines that start with # are passed over. Tables kept
+ * for years by hand hold rows out of order: these are put in their place and named in `warnings`.
+ */
 export function parseClockTable(
   csvText: string,
   name: string,
-): { readonly table: ClockTable } | { readonly problems: readonly ClockTableProblem[] } {
+):
+  | { readonly table: ClockTable; readonly warnings: readonly ClockTableProblem[] }
+  | { readonly problems: readonly ClockTableProblem[] } {
   const problems: ClockTableProblem[] = [];
+  const warnings: ClockTableProblem[] = [];
   const mjd: number[] = [];
   const addSeconds: number[] = [];
   let headerSeen = false;
@@ -46,12 +52,16 @@ export function parseClockTable(
       problems.push({ line, message: problem });
       continue;
     }
-    mjd.push(Number(cells[0]));
-    addSeconds.push(Number(cells[1]));
+    const date = Number(cells[0]);
+    const place = firstAfter(mjd, date);
+    if (place < mjd.length)
+      warnings.push({ line, message: `mjd ${date} comes after mjd ${mjd.at(-1)}: the row was put in its place` });
+    mjd.splice(place, 0, date);
+    addSeconds.splice(place, 0, Number(cells[1]));
   }
   if (problems.length > 0) return { problems };
   if (mjd.length === 0) return { problems: [{ line: lines.length, message: 'the table has no rows' }] };
-  return { table: { name, mjd: Float64Array.from(mjd), addSeconds: Float64Array.from(addSeconds) } };
+  return { table: { name, mjd: Float64Array.from(mjd), addSeconds: Float64Array.from(addSeconds) }, warnings };
 }
 
 function rowProblem(cells: readonly string[], earlier: readonly number[]): string | null {
@@ -62,10 +72,9 @@ function rowProblem(cells: readonly string[], earlier: readonly number[]): strin
     }
   }
   const date = Number(cells[0]);
-  const last = earlier.at(-1);
   if (Math.abs(Number(cells[1])) > LARGEST_CORRECTION_S) return `a correction of ${cells[1]} s is more than an hour`;
-  if (last !== undefined && date < last) return `mjd ${date} comes after mjd ${last}: the dates must rise`;
-  if (last !== undefined && date === last && earlier.at(-2) === date) return `mjd ${date} stands there three times`;
+  const place = firstAfter(earlier, date);
+  if (place >= 2 && earlier[place - 2] === date) return `mjd ${date} stands there three times`;
   return null;
 }
 

@@ -1,4 +1,4 @@
-import { mkdtempSync } from 'node:fs';
+import { mkdtempSync, rmSync } from 'node:fs';
 import { tmpdir } from 'node:os';
 import { join } from 'node:path';
 import type { Browser, BrowserContextOptions, Page } from 'playwright-core';
@@ -10,6 +10,7 @@ import { type MemoryDesk, memoryDesk, sampleEvent, sampleRecord } from '../suppo
 
 // The page in a real browser. Set REVIEW_PICTURES to a folder to keep the pictures it takes.
 
+const KEPT_PICTURES = process.env['REVIEW_PICTURES'];
 const ID = 'kr-0417-61370';
 const DESK = { width: 1280, height: 800 };
 const PHONE = { width: 390, height: 844 };
@@ -24,10 +25,12 @@ let requested: Set<string>;
 describe.skipIf(!hasBrowser())('the review page in a browser', () => {
   beforeAll(async () => {
     browser = await launchBrowser();
-    pictures = process.env['REVIEW_PICTURES'] ?? mkdtempSync(join(tmpdir(), 'spinvigil-pictures-'));
-    console.info(`pictures of the review page: ${pictures}`);
+    pictures = KEPT_PICTURES ?? mkdtempSync(join(tmpdir(), 'spinvigil-pictures-'));
   });
-  afterAll(() => browser.close());
+  afterAll(async () => {
+    await browser.close();
+    if (KEPT_PICTURES === undefined) rmSync(pictures, { recursive: true });
+  });
   beforeEach(() => {
     complaints = [];
     requested = new Set();

@@ -12,6 +12,7 @@ export interface TestObservatory {
   readonly mailFolder: string;
   /** Puts a file into the feed as a careful producer does: whole at once. */
   drop(name: string, content: string): Promise<void>;
+  addModel(pulsar: SyntheticPulsar): Promise<void>;
   remove(): Promise<void>;
 }
 
@@ -41,6 +42,7 @@ export async function createObservatory(options: ObservatoryOptions): Promise<Te
       await writeFile(join(at('staging'), name), content);
       await rename(join(at('staging'), name), join(at('arrivals'), name));
     },
+    addModel: (pulsar) => writeFile(at(`models/added-${pulsar.name.replace(/\W/g, '')}.toml`), modelFile(pulsar)),
     remove: () => rm(folder, { recursive: true, force: true }),
   };
 }

@@ -136,7 +136,7 @@ function mailState(row: OutboxRecord): Html | string {
     case 'delivered':
       return row.deliveredAt === null ? 'delivered' : html`delivered <small>${utc(row.deliveredAt)}</small>`;
     case 'queued':
-      return html`queued <small>next try ${utc(row.dueAt)}</small>`;
+      return html`queued <small>next try ${utc(row.dueAt)}${row.possibleDuplicate ? ', marked as possible duplicate' : ''}</small>`;
     case 'attempting':
       return 'being sent';
     case 'refused':

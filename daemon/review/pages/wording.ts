@@ -1,4 +1,4 @@
-import { dateOfMjd, isoDay, mjdText } from '../../../alerts/wording/dates.ts';
+import { dateOfMjd, mjdText } from '../../../alerts/wording/dates.ts';
 import { percent } from '../../../alerts/wording/numbers.ts';
 import type { EventState, PulsarEvent } from '../../../detectors/steps/pulsarEvent.ts';
 import type { VerdictRecord } from '../../records.ts';
@@ -37,7 +37,7 @@ export function ownProbability(event: PulsarEvent): string {
 /** `MJD 60123.41` and its calendar day. */
 export function mjdAndDay(mjd: number): readonly [mjd: string, day: string] {
   const date = dateOfMjd(mjd);
-  return Number.isNaN(date.getTime()) ? [String(mjd), ''] : [mjdText(mjd), isoDay(date, 'UTC')];
+  return Number.isNaN(date.getTime()) ? [String(mjd), ''] : [mjdText(mjd), date.toISOString().slice(0, 10)];
 }
 
 /** ISO 8601 as a person reads it: `2026-12-01 04:22`, UTC. Text that is not a date is shown as it is. */

@@ -76,14 +76,16 @@ describe('the watcher', () => {
     expect(watcher.status()).toMatchObject([{ feed: 'feed', files: 1 }]);
   });
 
-  it('A34 finds every file of a burst that overflows the notices', async () => {
+  it('A34 finds every file although the notices of all but one were lost', async () => {
     const folder = newFolder();
-    const { watcher, handed } = start(folder);
+    const emitter = Object.assign(new EventEmitter(), { close: async () => {} });
+    const { watcher, handed } = start(folder, { arm: (() => emitter) as unknown as Watch });
     await until(() => expect(watcher.status()[0]?.files).toBe(0));
-    // The event loop is blocked meanwhile, as in the trial in which the system dropped notices.
-    for (let index = 0; index < 2000; index += 1) writeFileSync(join(folder, `${index}.csv`), `${index}`);
-    await until(() => expect(handed).toHaveLength(2000));
-    expect(new Set(handed).size).toBe(2000);
+    // The event loop is blocked meanwhile, as in the trial in which the system dropped two notices of three.
+    for (let index = 0; index < 300; index += 1) writeFileSync(join(folder, `${index}.csv`), `${index}`);
+    emitter.emit('raw', 'rename', '0.csv', {});
+    await until(() => expect(handed).toHaveLength(300));
+    expect(new Set(handed).size).toBe(300);
   });
 
   it.each(['thrown', 'emitted'])(

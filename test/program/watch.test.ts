@@ -1,0 +1,182 @@
+import { setTimeout as pause } from 'node:timers/promises';
+import { afterEach, describe, expect, test } from 'vitest';
+import type { PulsarEvent } from '../../detectors/steps/pulsarEvent.ts';
+import { type RunningProgram, startSpinvigil, within } from '../support/daemon.ts';
+import { type MailServer, startMailServer } from '../support/mailServer.ts';
+import { createObservatory, type ObservatoryOptions, type TestObservatory } from '../support/observatory.ts';
+import { runSpinvigil, spinvigilJson } from '../support/spinvigil.ts';
+import { arrivalFile, syntheticArrivals, syntheticPulsar } from '../support/syntheticPulsar.ts';
+
+// The daemon as it is installed, with real files, a real record, a real mail server and real signals.
+
+const PATIENCE_S = 40;
+const TODAY_MJD = Math.floor(40_587 + Date.now() / 86_400_000);
+const GLITCH_MJD = TODAY_MJD - 12;
+const pulsar = syntheticPulsar({
+  name: 'KR 0417+31',
+  epochMjd: TODAY_MJD - 220,
+  glitches: [{ mjd: GLITCH_MJD, deltaNuOverNu: 2e-7 }],
+});
+const arrivals = syntheticArrivals(pulsar, { fromMjd: TODAY_MJD - 219, toMjd: TODAY_MJD - 2, everyDays: 3, seed: 7 });
+const before = arrivals.filter(({ mjdText }) => Number(mjdText) < GLITCH_MJD);
+const after = arrivals.filter(({ mjdText }) => Number(mjdText) >= GLITCH_MJD);
+
+const open: (() => Promise<unknown> | unknown)[] = [];
+afterEach(async () => {
+  for (const close of open.splice(0).reverse()) await close();
+});
+
+async function observatory(options: Partial<ObservatoryOptions> = {}): Promise<TestObservatory> {
+  const made = await createObservatory({ pulsars: [pulsar], ...options });
+  open.push(made.remove);
+  return made;
+}
+
+async function mailServer(): Promise<MailServer> {
+  const server = await startMailServer();
+  open.push(server.close);
+  return server;
+}
+
+async function watch(at: TestObservatory, environment: NodeJS.ProcessEnv = {}): Promise<RunningProgram> {
+  const program = startSpinvigil(['watch', '--config', at.configFile], environment);
+  open.push(async () => {
+    program.signal('SIGKILL');
+    await program.ended;
+  });
+  await within(PATIENCE_S, () => program.hasEnded() || program.stdout().includes('\n'));
+  return program;
+}
+
+const events = (at: TestObservatory) => spinvigilJson<PulsarEvent[]>(['events', '--config', at.configFile]);
+const takenIn = (program: RunningProgram, files: number) =>
+  within(PATIENCE_S, () => program.stderr().split('"file taken in').length - 1 >= files);
+
+describe('the watch', () => {
+  test('turns a dropped file into mail, and says how long that took', async () => {
+    const server = await mailServer();
+    const at = await observatory({
+      smtpPort: server.port,
+      to: ['duty@kestrel-ridge.example', 'timing@kestrel-ridge.example'],
+    });
+    await at.drop('before.csv', arrivalFile(before));
+    const program = await watch(at);
+    expect(program.stdout()).toMatch(/^Kestrel Ridge: watching nightly .* http:\/\/127\.0\.0\.1:\d+\/\n$/);
+    expect(await takenIn(program, 1)).toBe(true);
+    expect(server.accepted).toEqual([]);
+
+    const writtenMs = Date.now();
+    await at.drop('after.csv', arrivalFile(after));
+    expect(await within(PATIENCE_S, () => server.accepted.length >= 2)).toBe(true);
+    const [first] = server.accepted;
+    console.info(`last write to acceptance by the mail server: ${((first!.atMs - writtenMs) / 1000).toFixed(1)} s`);
+
+    expect(server.accepted.map(({ recipient }) => recipient).sort()).toEqual([
+      'duty@kestrel-ridge.example',
+      'timing@kestrel-ridge.example',
+    ]);
+    const { mail } = first!;
+    expect(mail.subject).toContain('KR 0417+31');
+    expect(mail.subject).toContain('candidate glitch');
+    expect(mail.headers.get('auto-submitted')).toBe('auto-generated');
+    const [event, ...rest] = await events(at);
+    expect(rest).toEqual([]);
+    expect(event).toMatchObject({ pulsar: 'KR 0417+31', state: 'confirmed', explanation: 'glitch' });
+    expect(Math.abs(event!.deltaNuOverNu! / 2e-7 - 1)).toBeLessThan(0.02);
+    // The page's address of the start line answers, and shows the event.
+    const [url] = /http:\S+/.exec(program.stdout())!;
+    expect(await (await fetch(url)).text()).toContain('KR 0417+31');
+  });
+
+  test('lets nobody else into its state folder, and frees it when it is killed', async () => {
+    const at = await observatory();
+    const first = await watch(at);
+    const second = await runSpinvigil(['watch', '--config', at.configFile]);
+    expect(second.code).toBe(3);
+    expect(second.stderr).toMatch(/another instance holds this state folder/);
+    expect((await runSpinvigil(['replay', at.configFile, '--feed', 'nightly', '--config', at.configFile])).code).toBe(
+      3,
+    );
+    expect(first.hasEnded()).toBe(false);
+    first.signal('SIGKILL');
+    await first.ended;
+    const third = await watch(at);
+    expect(third.stdout()).toContain('watching nightly');
+  });
+
+  test.each(['SIGTERM', 'SIGINT', 'SIGHUP'] as const)(
+    'ends well on %s, also in the middle of a file',
+    async (signal) => {
+      const at = await observatory();
+      await at.drop('all.csv', arrivalFile(arrivals));
+      const program = await watch(at);
+      if (signal === 'SIGTERM') await within(PATIENCE_S, () => program.stderr().includes('event changed'));
+      program.signal(signal);
+      expect(await Promise.race([program.ended, pause(10_000, 'still running after 10 s')])).toBe('0');
+
+      const again = await watch(at);
+      expect(await within(PATIENCE_S, async () => (await events(at)).length === 1)).toBe(true);
+      again.signal('SIGTERM');
+      expect(await again.ended).toBe('0');
+    },
+  );
+
+  test('ends at once on a second signal', async () => {
+    const server = await mailServer();
+    const at = await observatory({ smtpPort: server.port });
+    const program = await watch(at);
+    program.signal('SIGTERM');
+    program.signal('SIGTERM');
+    expect(['0', 'SIGKILL']).toContain(await program.ended);
+  });
+
+  test('tells the others when one address refuses, and goes on', async () => {
+    const server = await mailServer();
+    server.refuse('duty@kestrel-ridge.example', 550);
+    const at = await observatory({
+      smtpPort: server.port,
+      to: ['duty@kestrel-ridge.example', 'night@kestrel-ridge.example'],
+    });
+    await at.drop('all.csv', arrivalFile(arrivals));
+    await watch(at);
+    const subjects = () => server.accepted.map(({ recipient, mail }) => `${recipient} ${mail.subject}`);
+    const wanted = (recipient: string, words: string) =>
+      subjects().some((subject) => subject.startsWith(recipient) && subject.includes(words));
+    expect(
+      await within(
+        PATIENCE_S,
+        () =>
+          wanted('night@kestrel-ridge.example', 'candidate glitch') &&
+          wanted('night@kestrel-ridge.example', 'mail to duty@kestrel-ridge.example was refused'),
+      ),
+      subjects().join('\n'),
+    ).toBe(true);
+  });
+
+  test('lets rows wait for a model, and takes them in when there is one', async () => {
+    const stranger = syntheticPulsar({ name: 'KR 2222-22', epochMjd: TODAY_MJD - 220 });
+    const strange = syntheticArrivals(stranger, {
+      fromMjd: TODAY_MJD - 20,
+      toMjd: TODAY_MJD - 2,
+      everyDays: 3,
+      seed: 8,
+    });
+    const at = await observatory();
+    await at.drop('mixed.csv', arrivalFile([...before, ...strange]));
+    const first = await watch(at);
+    expect(await takenIn(first, 1)).toBe(true);
+    first.signal('SIGTERM');
+    await first.ended;
+    const morning = await spinvigilJson<{ quarantined: { reason: string }[] }>(['morning', '--config', at.configFile]);
+    expect(morning.quarantined).toHaveLength(strange.length);
+    expect(morning.quarantined[0]?.reason).toMatch(/pulsar "KR 2222-22" has no model: add one/);
+
+    await at.addModel(stranger);
+    const second = await watch(at);
+    expect(await takenIn(second, 1)).toBe(true);
+    second.signal('SIGTERM');
+    await second.ended;
+    const taken = await spinvigilJson<unknown[]>(['arrivals', 'KR 2222-22', '--config', at.configFile]);
+    expect(taken).toHaveLength(strange.length);
+  });
+});
