@@ -1,6 +1,5 @@
 import { type BigIntStats, constants } from 'node:fs';
-import { type FileHandle, lstat, open, readlink, realpath } from 'node:fs/promises';
-import { basename, dirname } from 'node:path';
+import { type FileHandle, open, readlink, realpath } from 'node:fs/promises';
 import { joinBytes } from './fileName.ts';
 import { isGone, reasonFor, refusalOf } from './scan.ts';
 import { stampOf } from './signature.ts';
@@ -48,17 +47,6 @@ export async function readStill(wanted: Wanted, { largestBytes = LARGEST_FILE_BY
     return { kind: 'later', reason: reasonFor(error), quiet: false };
   } finally {
     await handle.close();
-  }
-}
-
-/** A file that the operator names, as it is now; the way to it may hold links, the file itself may not be one. */
-export async function readNamedFile(file: string): Promise<Reading> {
-  try {
-    const found = await lstat(file, { bigint: true });
-    const root = await realpath(dirname(file), { encoding: 'buffer' });
-    return await readStill({ root, pathBytes: Buffer.from(basename(file)), signature: stampOf(found).signature });
-  } catch (error) {
-    return { kind: 'later', reason: reasonFor(error), quiet: false };
   }
 }
 

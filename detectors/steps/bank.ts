@@ -3,11 +3,19 @@
  * beam of its own, so that a small step is not pruned before its evidence has grown.
  */
 
-import { logAddExp } from '../math/logSumExp.ts';
 import type { NoiseModel } from '../report.ts';
 import { logWeightOf, type Observation, observe, observeFirmly, pruned } from './beam.ts';
 import { type BirthPlace, born, KINDS, type Kind } from './births.ts';
-import { copyOf, type Gap, gapOf, type Hypothesis, type Prediction, propagate, withState } from './hypothesis.ts';
+import {
+  copyOf,
+  type Gap,
+  gapOf,
+  type Hypothesis,
+  type Prediction,
+  propagate,
+  withState,
+  zeros,
+} from './hypothesis.ts';
 
 /** All hypotheses that say: this kind of thing happened in the gap before arrival `gap`. */
 export interface Family {
@@ -58,7 +66,7 @@ const FAMILY_FLOOR_NATS = 18;
 const SNAPSHOTS = 64;
 
 export function newBank(noise: NoiseModel, beam: Hypothesis[]): Bank {
-  const scratch = { deviation: 0, variance: 0, gain: new Float64Array(beam[0]!.mean.length), plain: true };
+  const scratch = { deviation: 0, variance: 0, gain: zeros(beam[0]!.mean.length), plain: true };
   return { noise, beam, families: [], logScale: 0, snapshots: [], scratch };
 }
 
@@ -71,7 +79,7 @@ export function addState(bank: Bank, variance: number): Bank {
     beam,
     families: bank.families.map((f) => ({ ...f, beam: f.beam.map(grow) })),
     snapshots: bank.snapshots.map((s) => ({ ...s, hypothesis: grow(s.hypothesis) })),
-    scratch: { deviation: 0, variance: 0, gain: new Float64Array(beam[0]!.mean.length), plain: true },
+    scratch: { deviation: 0, variance: 0, gain: zeros(beam[0]!.mean.length), plain: true },
   };
 }
 
@@ -95,8 +103,7 @@ export function stepBank(bank: Bank, step: BankStep): void {
     else observeFirmly(family.beam, step.seen, bank.scratch);
     if (age === YOUNG_ARRIVALS) family.beam = pruned(family.beam, OLD_BEAM[family.kind]);
   }
-  forget(bank, step.oldestGap);
-  normalise(bank);
+  settle(bank, step.oldestGap);
   bank.snapshots.push({ index: step.seen.index, tDays: step.tDays, hypothesis: absoluteCopy(bank, bank.beam[0]!) });
   if (bank.snapshots.length > SNAPSHOTS) bank.snapshots.shift();
 }
@@ -115,19 +122,18 @@ function giveBirth(bank: Bank, place: BirthPlace, index: number): void {
   }
 }
 
-function forget(bank: Bank, oldestGap: number): void {
-  const total = totalLogWeight(bank);
-  bank.families = bank.families.filter((f) => f.gap >= oldestGap && logWeightOf(f.beam) > total - FAMILY_FLOOR_NATS);
-}
-
-export function totalLogWeight(bank: Bank): number {
-  let total = logWeightOf(bank.beam);
-  for (const family of bank.families) total = logAddExp(total, logWeightOf(family.beam));
-  return total;
-}
-
-function normalise(bank: Bank): void {
-  const total = totalLogWeight(bank);
+/** Drops what is too old or too light to matter, and divides all weights by their sum. */
+function settle(bank: Bank, oldestGap: number): void {
+  const nothing = logWeightOf(bank.beam);
+  const weights = bank.families.map((f) => logWeightOf(f.beam));
+  const heaviest = Math.max(nothing, ...weights);
+  let sum = Math.exp(nothing - heaviest);
+  bank.families = bank.families.filter((f, i) => {
+    if (f.gap < oldestGap || weights[i]! < heaviest - FAMILY_FLOOR_NATS) return false;
+    sum += Math.exp(weights[i]! - heaviest);
+    return true;
+  });
+  const total = heaviest + Math.log(sum);
   bank.logScale += total;
   for (const h of bank.beam) h.logWeight -= total;
   for (const family of bank.families) for (const h of family.beam) h.logWeight -= total;
@@ -145,5 +151,5 @@ export function collapse(bank: Bank, winners: readonly Hypothesis[], dissenters:
   const others = dissenters.length > 0 ? pruned([...dissenters], 4) : [];
   bank.beam = [...kept, ...others].sort((a, b) => b.logWeight - a.logWeight);
   bank.families = [];
-  normalise(bank);
+  settle(bank, 0);
 }

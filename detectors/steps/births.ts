@@ -60,9 +60,9 @@ export interface BirthPlace {
   readonly frequencyDerivativeHzPerS: number;
   readonly gapDays: number;
   /** Directions in state space of a time offset of the arrival's site, and of its receiver alone where that differs. */
-  readonly offsetDirections: readonly Float64Array[];
+  readonly offsetDirections: readonly (readonly number[])[];
   /** Direction of one turn of dispersion at 1 GHz; null while only one band is known. */
-  readonly dispersionDirection: Float64Array | null;
+  readonly dispersionDirection: readonly number[] | null;
   /** Turns at 1 GHz per pc cm⁻³. */
   readonly turnsPerDispersion: number;
 }

@@ -21,15 +21,20 @@ export interface Story {
 }
 
 export interface Hypothesis {
-  readonly mean: Float64Array;
+  /** Plain arrays: thousands are copied for each arrival, and a short plain array copies several times faster. */
+  readonly mean: number[];
   /** Row-major, symmetric, size² entries. */
-  readonly cov: Float64Array;
+  readonly cov: number[];
   logWeight: number;
   story: Story | null;
   /** Numbers of the event tracks that this hypothesis holds for true. */
   readonly tracks: readonly number[];
   /** The last arrival was taken for an outlier. */
   lastSetAside: boolean;
+}
+
+export function zeros(count: number): number[] {
+  return new Array<number>(count).fill(0);
 }
 
 /** The gap between two arrivals, worked out once and applied to every hypothesis. */
@@ -81,7 +86,7 @@ export function propagate(h: Hypothesis, gap: Gap): void {
 /** How an arrival sees the state: the deviation plus the given multiples of the nuisances. */
 export interface Sight {
   /** Coefficients of all states; the first is 1. */
-  readonly row: Float64Array;
+  readonly row: readonly number[];
   /** True when only the deviation is seen: the common and faster case. */
   readonly plain: boolean;
 }
@@ -90,7 +95,7 @@ export interface Sight {
 export interface Prediction {
   deviation: number;
   variance: number;
-  readonly gain: Float64Array;
+  readonly gain: number[];
   /** The deviation alone was seen. */
   plain: boolean;
 }
@@ -148,9 +153,8 @@ export function absorb(h: Hypothesis, prediction: Prediction, innovation: number
 /** A copy with more states: the new one has mean 0 and the given variance. */
 export function withState(h: Hypothesis, variance: number): Hypothesis {
   const size = h.mean.length;
-  const mean = new Float64Array(size + 1);
-  mean.set(h.mean);
-  const cov = new Float64Array((size + 1) * (size + 1));
+  const mean = [...h.mean, 0];
+  const cov = zeros((size + 1) * (size + 1));
   for (let i = 0; i < size; i++) for (let j = 0; j < size; j++) cov[i * (size + 1) + j] = h.cov[i * size + j]!;
   cov[(size + 1) * (size + 1) - 1] = variance;
   return { ...h, mean, cov };

@@ -1,6 +1,7 @@
 /** Where an event may enter: the gap before an arrival, and the directions in state space that a step may take. */
 
 import type { BirthPlace } from './births.ts';
+import { zeros } from './hypothesis.ts';
 import type { PulsarWatch } from './pulsarWatch.ts';
 import { dispersionWeight } from './timeline.ts';
 
@@ -25,7 +26,7 @@ export function birthPlace(watch: PulsarWatch, index: number, gapDays: number): 
 }
 
 /** A time offset of the arrival's whole site and, where that is not the same, of its receiver alone. */
-function offsetDirections(watch: PulsarWatch, index: number): Float64Array[] {
+function offsetDirections(watch: PulsarWatch, index: number): number[][] {
   const { groups, seen } = watch.line;
   const own = seen[index]!.group;
   const site = `${seen[index]!.arrival.site}|`;
@@ -42,8 +43,8 @@ function offsetDirections(watch: PulsarWatch, index: number): Float64Array[] {
 }
 
 /** Offsets are kept against the reference group: its own step is one of the deviation, undone in all others. */
-function offsetDirection(watch: PulsarWatch, members: readonly boolean[]): Float64Array {
-  const direction = new Float64Array(watch.states.size);
+function offsetDirection(watch: PulsarWatch, members: readonly boolean[]): number[] {
+  const direction = zeros(watch.states.size);
   const base = members[0] === true ? 1 : 0;
   direction[0] = base;
   watch.states.offsets.forEach((at, group) => {
@@ -52,10 +53,10 @@ function offsetDirection(watch: PulsarWatch, members: readonly boolean[]): Float
   return direction;
 }
 
-function dispersionDirection(watch: PulsarWatch): Float64Array | null {
+function dispersionDirection(watch: PulsarWatch): number[] | null {
   const { dispersion, size } = watch.states;
   if (dispersion === null) return null;
-  const direction = new Float64Array(size);
+  const direction = zeros(size);
   direction[0] = dispersionWeight(watch.line.firstBandMhz!);
   direction[dispersion] = 1;
   return direction;

@@ -15,7 +15,7 @@ import { observationOf } from './timeline.ts';
 import type { Track } from './track.ts';
 
 /** The noise is learned when the arrivals have grown by this factor. */
-const LEARNING_GROWTH = 1.3;
+const LEARNING_GROWTH = 1.4;
 /** An open question may hold learning back for so long. */
 const PATIENCE = 1.4;
 const SURE_SHARE = 0.95;

@@ -2,7 +2,7 @@
 
 import { arrivalVariance } from '../filter/stateSpace.ts';
 import { addState, type Bank } from './bank.ts';
-import type { Hypothesis } from './hypothesis.ts';
+import { type Hypothesis, zeros } from './hypothesis.ts';
 import { turnsPerDispersion } from './places.ts';
 import type { PulsarWatch } from './pulsarWatch.ts';
 
@@ -30,9 +30,9 @@ export function startBeam(watch: PulsarWatch): Hypothesis[] {
   const size = watch.states.size;
   const variance = arrivalVariance(first.sigmaTurns, watch.noise);
   return START_ERRORS.map(([share, rate, derivative]) => {
-    const mean = new Float64Array(size);
+    const mean = zeros(size);
     mean[0] = first.deviation;
-    const cov = new Float64Array(size * size);
+    const cov = zeros(size * size);
     cov[0] = variance;
     cov[size + 1] = rate * rate;
     cov[2 * size + 2] = derivative * derivative;

@@ -5,6 +5,7 @@ import { arrivalVariance, SPIN_STATES } from '../filter/stateSpace.ts';
 import type { NoiseModel } from '../report.ts';
 import { daysBetween, type Mjd } from '../time/mjd.ts';
 import type { Observation } from './beam.ts';
+import { zeros } from './hypothesis.ts';
 
 /** One arrival on the time line. */
 export interface Seen {
@@ -92,7 +93,7 @@ export function dispersionWeight(frequencyMhz: number): number {
 
 export function observationOf(line: Timeline, index: number, map: StateMap, noise: NoiseModel): Observation {
   const seen = line.seen[index]!;
-  const row = new Float64Array(map.size);
+  const row = zeros(map.size);
   row[0] = 1;
   let plain = true;
   const offset = map.offsets[seen.group] ?? null;

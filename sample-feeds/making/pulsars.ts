@@ -65,7 +65,7 @@ export const PULSARS: readonly InventedPulsar[] = [
     frequencyDerivativeHzPerS: -4.113e-14,
     timingNoiseUs: 40,
     uncertaintyScale: 1.2,
-    programme: [observed(ridge1400, 3, 0, 60), observed(ridge700, 3, 0, 55), atAnnex(45)],
+    programme: [observed(ridge1400, 3, 0, 60), observed(ridge700, 6, 0, 55), atAnnex(45)],
   },
   {
     name: 'KR 0529+22',
@@ -78,7 +78,7 @@ export const PULSARS: readonly InventedPulsar[] = [
     frequencyDerivativeHzPerS: -2.407e-13,
     timingNoiseUs: 90,
     uncertaintyScale: 1.1,
-    programme: [observed(ridge1400, 1, 0, 170), observed(ridge700, 4, 2, 190)],
+    programme: [observed(ridge1400, 2, 0, 140), observed(ridge700, 4, 1, 150)],
   },
   {
     name: 'KR 0834-21',
@@ -91,7 +91,7 @@ export const PULSARS: readonly InventedPulsar[] = [
     frequencyDerivativeHzPerS: -1.5704e-11,
     timingNoiseUs: 900,
     uncertaintyScale: 1.3,
-    programme: [observed(ridge1400, 1, 0, 85), observed(ridge700, 4, 1, 110), observed(monitor600, 3, 0, 400)],
+    programme: [observed(ridge1400, 1, 0, 85), observed(ridge700, 6, 1, 110), observed(monitor600, 6, 3, 400)],
   },
   {
     name: 'KR 1018+07',
@@ -117,7 +117,7 @@ export const PULSARS: readonly InventedPulsar[] = [
     frequencyDerivativeHzPerS: -6.03e-15,
     timingNoiseUs: 15,
     uncertaintyScale: 1.25,
-    programme: [atAnnex(35), observed(ridge1400, 6, 4, 30)],
+    programme: [atAnnex(35), observed(ridge1400, 6, 3, 30)],
   },
   {
     name: 'KR 1309-12',
@@ -182,7 +182,7 @@ export const PULSARS: readonly InventedPulsar[] = [
     frequencyDerivativeHzPerS: -3.3106e-11,
     timingNoiseUs: 3000,
     uncertaintyScale: 1.3,
-    programme: [observed(ridge1400, 1, 0, 150)],
+    programme: [observed(ridge1400, 2, 1, 150)],
   },
   {
     name: 'KR 2246+09',
@@ -195,6 +195,6 @@ export const PULSARS: readonly InventedPulsar[] = [
     frequencyDerivativeHzPerS: -4.4e-15,
     timingNoiseUs: 20,
     uncertaintyScale: 1.2,
-    programme: [atAnnex(60), observed(ridge1400, 7, 6, 55)],
+    programme: [atAnnex(60), observed(ridge1400, 6, 5, 55)],
   },
 ];

@@ -1,5 +1,4 @@
-import { setTimeout as pause } from 'node:timers/promises';
-import { afterEach, describe, expect, test } from 'vitest';
+import { describe, test } from 'vitest';
 import type { PulsarEvent } from '../../detectors/steps/pulsarEvent.ts';
 import { type RunningProgram, startSpinvigil, within } from '../support/daemon.ts';
 import { type MailServer, startMailServer } from '../support/mailServer.ts';
@@ -21,26 +20,23 @@ const arrivals = syntheticArrivals(pulsar, { fromMjd: TODAY_MJD - 219, toMjd: TO
 const before = arrivals.filter(({ mjdText }) => Number(mjdText) < GLITCH_MJD);
 const after = arrivals.filter(({ mjdText }) => Number(mjdText) >= GLITCH_MJD);
 
-const open: (() => Promise<unknown> | unknown)[] = [];
-afterEach(async () => {
-  for (const close of open.splice(0).reverse()) await close();
-});
+type Closer = (close: () => Promise<unknown>) => void;
 
-async function observatory(options: Partial<ObservatoryOptions> = {}): Promise<TestObservatory> {
+async function observatory(finished: Closer, options: Partial<ObservatoryOptions> = {}): Promise<TestObservatory> {
   const made = await createObservatory({ pulsars: [pulsar], ...options });
-  open.push(made.remove);
+  finished(made.remove);
   return made;
 }
 
-async function mailServer(): Promise<MailServer> {
+async function mailServer(finished: Closer): Promise<MailServer> {
   const server = await startMailServer();
-  open.push(server.close);
+  finished(server.close);
   return server;
 }
 
-async function watch(at: TestObservatory, environment: NodeJS.ProcessEnv = {}): Promise<RunningProgram> {
-  const program = startSpinvigil(['watch', '--config', at.configFile], environment);
-  open.push(async () => {
+async function watch(finished: Closer, at: TestObservatory): Promise<RunningProgram> {
+  const program = startSpinvigil(['watch', '--config', at.configFile]);
+  finished(async () => {
     program.signal('SIGKILL');
     await program.ended;
   });
@@ -52,15 +48,16 @@ const events = (at: TestObservatory) => spinvigilJson<PulsarEvent[]>(['events', 
 const takenIn = (program: RunningProgram, files: number) =>
   within(PATIENCE_S, () => program.stderr().split('"file taken in').length - 1 >= files);
 
-describe('the watch', () => {
-  test('turns a dropped file into mail, and says how long that took', async () => {
-    const server = await mailServer();
+// Most of each test is waiting for files to stand still: they wait together.
+describe.concurrent('the watch', () => {
+  test('turns a dropped file into mail, and says how long that took', async ({ expect, onTestFinished: finished }) => {
+    const server = await mailServer(finished);
     const at = await observatory({
       smtpPort: server.port,
       to: ['duty@kestrel-ridge.example', 'timing@kestrel-ridge.example'],
     });
     await at.drop('before.csv', arrivalFile(before));
-    const program = await watch(at);
+    const program = await watch(finished, at);
     expect(program.stdout()).toMatch(/^Kestrel Ridge: watching nightly .* http:\/\/127\.0\.0\.1:\d+\/\n$/);
     expect(await takenIn(program, 1)).toBe(true);
     expect(server.accepted).toEqual([]);
@@ -88,9 +85,12 @@ describe('the watch', () => {
     expect(await (await fetch(url)).text()).toContain('KR 0417+31');
   });
 
-  test('lets nobody else into its state folder, and frees it when it is killed', async () => {
-    const at = await observatory();
-    const first = await watch(at);
+  test('lets nobody else into its state folder, and frees it when it is killed', async ({
+    expect,
+    onTestFinished: finished,
+  }) => {
+    const at = await observatory(finished);
+    const first = await watch(finished, at);
     const second = await runSpinvigil(['watch', '--config', at.configFile]);
     expect(second.code).toBe(3);
     expect(second.stderr).toMatch(/another instance holds this state folder/);
@@ -100,45 +100,45 @@ describe('the watch', () => {
     expect(first.hasEnded()).toBe(false);
     first.signal('SIGKILL');
     await first.ended;
-    const third = await watch(at);
+    const third = await watch(finished, at);
     expect(third.stdout()).toContain('watching nightly');
   });
 
   test.each(['SIGTERM', 'SIGINT', 'SIGHUP'] as const)(
     'ends well on %s, also in the middle of a file',
     async (signal) => {
-      const at = await observatory();
+      const at = await observatory(finished);
       await at.drop('all.csv', arrivalFile(arrivals));
-      const program = await watch(at);
+      const program = await watch(finished, at);
       if (signal === 'SIGTERM') await within(PATIENCE_S, () => program.stderr().includes('event changed'));
       program.signal(signal);
       expect(await Promise.race([program.ended, pause(10_000, 'still running after 10 s')])).toBe('0');
 
-      const again = await watch(at);
+      const again = await watch(finished, at);
       expect(await within(PATIENCE_S, async () => (await events(at)).length === 1)).toBe(true);
       again.signal('SIGTERM');
       expect(await again.ended).toBe('0');
     },
   );
 
-  test('ends at once on a second signal', async () => {
-    const server = await mailServer();
-    const at = await observatory({ smtpPort: server.port });
-    const program = await watch(at);
+  test('ends at once on a second signal', async ({ expect, onTestFinished: finished }) => {
+    const server = await mailServer(finished);
+    const at = await observatory(finished, { smtpPort: server.port });
+    const program = await watch(finished, at);
     program.signal('SIGTERM');
     program.signal('SIGTERM');
     expect(['0', 'SIGKILL']).toContain(await program.ended);
   });
 
-  test('tells the others when one address refuses, and goes on', async () => {
-    const server = await mailServer();
+  test('tells the others when one address refuses, and goes on', async ({ expect, onTestFinished: finished }) => {
+    const server = await mailServer(finished);
     server.refuse('duty@kestrel-ridge.example', 550);
     const at = await observatory({
       smtpPort: server.port,
       to: ['duty@kestrel-ridge.example', 'night@kestrel-ridge.example'],
     });
     await at.drop('all.csv', arrivalFile(arrivals));
-    await watch(at);
+    await watch(finished, at);
     const subjects = () => server.accepted.map(({ recipient, mail }) => `${recipient} ${mail.subject}`);
     const wanted = (recipient: string, words: string) =>
       subjects().some((subject) => subject.startsWith(recipient) && subject.includes(words));
@@ -153,7 +153,10 @@ describe('the watch', () => {
     ).toBe(true);
   });
 
-  test('lets rows wait for a model, and takes them in when there is one', async () => {
+  test('lets rows wait for a model, and takes them in when there is one', async ({
+    expect,
+    onTestFinished: finished,
+  }) => {
     const stranger = syntheticPulsar({ name: 'KR 2222-22', epochMjd: TODAY_MJD - 220 });
     const strange = syntheticArrivals(stranger, {
       fromMjd: TODAY_MJD - 20,
@@ -161,9 +164,9 @@ describe('the watch', () => {
       everyDays: 3,
       seed: 8,
     });
-    const at = await observatory();
+    const at = await observatory(finished);
     await at.drop('mixed.csv', arrivalFile([...before, ...strange]));
-    const first = await watch(at);
+    const first = await watch(finished, at);
     expect(await takenIn(first, 1)).toBe(true);
     first.signal('SIGTERM');
     await first.ended;
@@ -172,7 +175,7 @@ describe('the watch', () => {
     expect(morning.quarantined[0]?.reason).toMatch(/pulsar "KR 2222-22" has no model: add one/);
 
     await at.addModel(stranger);
-    const second = await watch(at);
+    const second = await watch(finished, at);
     expect(await takenIn(second, 1)).toBe(true);
     second.signal('SIGTERM');
     await second.ended;

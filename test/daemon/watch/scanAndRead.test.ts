@@ -16,7 +16,7 @@ import { lstat } from 'node:fs/promises';
 import { createServer } from 'node:net';
 import { join } from 'node:path';
 import { describe, expect, it } from 'vitest';
-import { type Reading, readNamedFile, readStill } from '../../../daemon/watch/open.ts';
+import { type Reading, readStill } from '../../../daemon/watch/open.ts';
 import { type FoundFile, type Scan, scanFolder } from '../../../daemon/watch/scan.ts';
 import { stampOf } from '../../../daemon/watch/signature.ts';
 import { useTemporaryFolders } from '../../support/temporaryFolder.ts';
@@ -89,7 +89,6 @@ describe('a scan', () => {
       kind: 'refused',
       reason: 'is a symbolic link; links are not followed',
     });
-    expect(await readNamedFile(join(folder, 'link.csv'))).toMatchObject({ kind: 'refused' });
   });
 
   it('A29 names pipes and sockets by their kind, and does not hang on them', async () => {
@@ -240,16 +239,6 @@ describe('reading', () => {
     expect(again.files[0]?.stamp.signature).not.toBe(scan.files[0]?.stamp.signature);
     expect(await readFound(again, again.files[0]!)).toMatchObject({ kind: 'read' });
   });
-
-  it('reads a file that the operator names, through a linked folder too', async () => {
-    const [folder, outside] = [newFolder(), newFolder()];
-    writeFileSync(join(outside, 'a.csv'), 'x');
-    symlinkSync(outside, join(folder, 'way'));
-    expect(await readNamedFile(join(folder, 'way', 'a.csv'))).toEqual({ kind: 'read', bytes: Buffer.from('x') });
-    expect(await readNamedFile(join(folder, 'nothing.csv'))).toEqual({
-      kind: 'later',
-      reason: 'does not exist',
-      quiet: false,
-    });
+});
   });
 });

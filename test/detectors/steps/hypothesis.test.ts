@@ -1,5 +1,5 @@
 import { describe, expect, it } from 'vitest';
-import { absorb, gapOf, type Hypothesis, predict, propagate } from '../../../detectors/steps/hypothesis.ts';
+import { absorb, gapOf, type Hypothesis, predict, propagate, zeros } from '../../../detectors/steps/hypothesis.ts';
 import { denseFit } from '../../support/denseLeastSquares.ts';
 import { dice, observingDays, simulateWalk } from '../../support/simulatedPulsar.ts';
 
@@ -44,8 +44,8 @@ describe('the filter of one hypothesis is generalised least squares', () => {
       );
 
       const h: Hypothesis = {
-        mean: new Float64Array(4),
-        cov: new Float64Array(16),
+        mean: zeros(4),
+        cov: zeros(16),
         logWeight: 0,
         story: null,
         tracks: [],
@@ -54,11 +54,11 @@ describe('the filter of one hypothesis is generalised least squares', () => {
       priorSd.forEach((sd, i) => {
         h.cov[5 * i] = sd * sd;
       });
-      const scratch = { deviation: 0, variance: 0, gain: new Float64Array(4), plain: true };
+      const scratch = { deviation: 0, variance: 0, gain: zeros(4), plain: true };
       let logLikelihood = 0;
       days.forEach((day, i) => {
         if (i > 0) propagate(h, gapOf(day - days[i - 1]!, noise));
-        predict(h, { row: Float64Array.of(1, 0, 0, second[i]!), plain: second[i] === 0 }, scratch);
+        predict(h, { row: [1, 0, 0, second[i]!], plain: second[i] === 0 }, scratch);
         const variance = scratch.variance + sigma * sigma;
         const innovation = y[i]! - scratch.deviation;
         // The dense twin leaves 2π out.
