@@ -1,4 +1,4 @@
-import { nelderMead } from '../math/nelderMead.ts';
+import { minimise } from '../math/quasiNewton.ts';
 import type { NoiseModel } from '../report.ts';
 import type { CountedArrival, Disturbance } from './countedArrival.ts';
 import { learningProblem, logLikelihood } from './noiseLikelihood.ts';
@@ -8,10 +8,20 @@ const LEAST_SCALE = 0.5;
 const LARGEST_SCALE = 10;
 
 /**
+ * In scatters of the prior (phase, frequency, torque): where to look first. The likelihood can have a peak for each kind
+ * of walk; where two are left, they lie within a nat or so of each other.
+ */
+const FIRST_LOOKS = [
+  ...[-1, 0, 1].flatMap((frequency) => [-1, 0, 1].map((torque) => [0, frequency, torque, 0, 0])),
+  [1, -1, -1, 0, 0],
+  [2, -1, -1, 0, 0],
+];
+
+/**
  * The most probable noise model: innovations likelihood times the population prior, over the logarithms of the three
  * walks, of the uncertainty scale and of the floor. With a dozen arrivals the prior rules; with hundreds the data do.
  * Deterministic. Events that are in the data must be named in `disturbances`, or they are learned as noise.
- * @param start where to begin, for instance what was learned before; it saves no evidence, only time.
+ * @param start where else to look first, for instance what was learned before.
  */
 export function learnNoise(
   arrivals: readonly CountedArrival[],
@@ -20,77 +30,53 @@ export function learnNoise(
   start?: NoiseModel,
 ): NoiseModel {
   const problem = learningProblem(arrivals, disturbances);
-  const centre = Float64Array.of(
-    Math.log(prior.phaseWalk.median),
-    Math.log(prior.frequencyWalk.median),
-    Math.log(prior.torqueWalk.median),
-    Math.log(prior.uncertaintyScale.median),
-    Math.log(prior.floorOverSigma.median * problem.medianSigmaTurns),
-  );
-  const scatter = [
-    prior.phaseWalk,
-    prior.frequencyWalk,
-    prior.torqueWalk,
-    prior.uncertaintyScale,
-    prior.floorOverSigma,
-  ].map((p: LogNormal) => p.lnScatter);
-  if (problem.count === 0) return noiseAt(centre);
+  const coordinates = priorCoordinates(prior, problem.medianSigmaTurns);
   const cost = (point: Float64Array): number =>
-    penalty(point, centre, scatter) - logLikelihood(problem, noiseAt(point));
-  const begin = bestStart(cost, startPoints(centre, scatter, start));
-  const { point } = nelderMead(cost, begin, {
-    steps: [1.5, 1.5, 1.5, 0.3, 0.7],
-    tolerance: 0.02,
-    maxEvaluations: 260,
+    0.5 * point.reduce((sum, z) => sum + z * z, 0) - logLikelihood(problem, coordinates.noiseAt(point));
+  const looks = FIRST_LOOKS.map((look) => Float64Array.from(look));
+  if (start) looks.push(coordinates.pointOf(start));
+  const { point } = minimise(cost, cheapest(cost, looks), {
+    differenceStep: 0.02,
+    longestStep: 1.5,
+    tolerance: 0.01,
+    maxSteps: 30,
   });
-  return noiseAt(point);
+  return coordinates.noiseAt(point);
 }
 
-function noiseAt(point: ArrayLike<number>): NoiseModel {
+/** The noise model in units of the prior: each coordinate has mean 0 and scatter 1. */
+interface PriorCoordinates {
+  noiseAt(point: Float64Array): NoiseModel;
+  pointOf(noise: NoiseModel): Float64Array;
+}
+
+function priorCoordinates(prior: NoisePrior, medianSigmaTurns: number): PriorCoordinates {
+  const floor = { ...prior.floorOverSigma, median: prior.floorOverSigma.median * medianSigmaTurns };
+  const at = ({ median, lnScatter }: LogNormal, z: number): number => median * Math.exp(lnScatter * z);
+  const within = (scale: number): number => Math.min(LARGEST_SCALE, Math.max(LEAST_SCALE, scale));
+  // A strength of nothing is taken as six scatters below the median.
+  const of = ({ median, lnScatter }: LogNormal, value: number): number =>
+    Math.max(-6, Math.log(value / median) / lnScatter);
   return {
-    phaseWalk: Math.exp(point[0]!),
-    frequencyWalk: Math.exp(point[1]!),
-    torqueWalk: Math.exp(point[2]!),
-    uncertaintyScale: Math.min(LARGEST_SCALE, Math.max(LEAST_SCALE, Math.exp(point[3]!))),
-    floorTurns: Math.exp(point[4]!),
+    noiseAt: (point) => ({
+      phaseWalk: at(prior.phaseWalk, point[0]!),
+      frequencyWalk: at(prior.frequencyWalk, point[1]!),
+      torqueWalk: at(prior.torqueWalk, point[2]!),
+      uncertaintyScale: within(at(prior.uncertaintyScale, point[3]!)),
+      floorTurns: at(floor, point[4]!),
+    }),
+    pointOf: (noise) =>
+      Float64Array.of(
+        of(prior.phaseWalk, noise.phaseWalk),
+        of(prior.frequencyWalk, noise.frequencyWalk),
+        of(prior.torqueWalk, noise.torqueWalk),
+        of(prior.uncertaintyScale, noise.uncertaintyScale),
+        of(floor, noise.floorTurns),
+      ),
   };
 }
 
-function penalty(point: Float64Array, centre: Float64Array, scatter: readonly number[]): number {
-  let sum = 0;
-  for (let i = 0; i < point.length; i++) {
-    const z = (point[i]! - centre[i]!) / scatter[i]!;
-    sum += 0.5 * z * z;
-  }
-  return sum;
-}
-
-/** In scatters of the prior (phase, frequency, torque): the likelihood can have a peak for each kind of walk. */
-const FIRST_LOOKS = [
-  ...[-1, 0, 1].flatMap((frequency) => [-1, 0, 1].map((torque) => [0, frequency, torque] as const)),
-  [1, -1, -1],
-  [2, -1, -1],
-] as const;
-
-function startPoints(centre: Float64Array, scatter: readonly number[], start: NoiseModel | undefined): Float64Array[] {
-  const points = FIRST_LOOKS.map((look) => centre.map((value, walk) => value + (look[walk] ?? 0) * scatter[walk]!));
-  if (start) {
-    const { phaseWalk, frequencyWalk, torqueWalk, uncertaintyScale, floorTurns } = start;
-    const values = [phaseWalk, frequencyWalk, torqueWalk, uncertaintyScale, floorTurns];
-    if (values.every((value) => value > 0)) points.push(Float64Array.from(values, Math.log));
-  }
-  return points;
-}
-
-function bestStart(cost: (point: Float64Array) => number, points: readonly Float64Array[]): Float64Array {
-  let best = points[0]!;
-  let least = Number.POSITIVE_INFINITY;
-  for (const point of points) {
-    const value = cost(point);
-    if (value < least) {
-      least = value;
-      best = point;
-    }
-  }
-  return best;
+function cheapest(cost: (point: Float64Array) => number, points: readonly Float64Array[]): Float64Array {
+  const costs = points.map(cost);
+  return points[costs.indexOf(Math.min(...costs))]!;
 }

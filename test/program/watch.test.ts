@@ -52,7 +52,7 @@ const takenIn = (program: RunningProgram, files: number) =>
 describe.concurrent('the watch', () => {
   test('turns a dropped file into mail, and says how long that took', async ({ expect, onTestFinished: finished }) => {
     const server = await mailServer(finished);
-    const at = await observatory({
+    const at = await observatory(finished, {
       smtpPort: server.port,
       to: ['duty@kestrel-ridge.example', 'timing@kestrel-ridge.example'],
     });
@@ -104,9 +104,9 @@ describe.concurrent('the watch', () => {
     expect(third.stdout()).toContain('watching nightly');
   });
 
-  test.each(['SIGTERM', 'SIGINT', 'SIGHUP'] as const)(
+  test.for(['SIGTERM', 'SIGINT', 'SIGHUP'] as const)(
     'ends well on %s, also in the middle of a file',
-    async (signal) => {
+    async (signal, { expect, onTestFinished: finished }) => {
       const at = await observatory(finished);
       await at.drop('all.csv', arrivalFile(arrivals));
       const program = await watch(finished, at);
@@ -133,7 +133,7 @@ describe.concurrent('the watch', () => {
   test('tells the others when one address refuses, and goes on', async ({ expect, onTestFinished: finished }) => {
     const server = await mailServer(finished);
     server.refuse('duty@kestrel-ridge.example', 550);
-    const at = await observatory({
+    const at = await observatory(finished, {
       smtpPort: server.port,
       to: ['duty@kestrel-ridge.example', 'night@kestrel-ridge.example'],
     });

@@ -240,5 +240,3 @@ describe('reading', () => {
     expect(await readFound(again, again.files[0]!)).toMatchObject({ kind: 'read' });
   });
 });
-  });
-});

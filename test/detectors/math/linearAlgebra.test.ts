@@ -2,8 +2,8 @@ import fc from 'fast-check';
 import { linearRegression } from 'simple-statistics';
 import { describe, expect, it } from 'vitest';
 import { choleskyFactor, logDeterminant, solveLower, solveLowerTransposed } from '../../../detectors/math/cholesky.ts';
-import { nelderMead } from '../../../detectors/math/nelderMead.ts';
 import { leastSquares } from '../../../detectors/math/orthogonalBasis.ts';
+import { minimise } from '../../../detectors/math/quasiNewton.ts';
 import { dice } from '../../support/simulatedPulsar.ts';
 
 function hilbert(n: number): Float64Array {
@@ -102,20 +102,28 @@ describe('least squares by reflections', () => {
   });
 });
 
-describe('simplex search', () => {
+describe('descent', () => {
+  const settings = { differenceStep: 1e-5, longestStep: 1, tolerance: 1e-14, maxSteps: 100 };
+
   it('finds the minimum of Rosenbrock’s valley (Rosenbrock 1960, Computer J. 3, 175) at (1, 1)', () => {
-    const { point, value } = nelderMead(([x, y]) => 100 * (y! - x! * x!) ** 2 + (1 - x!) ** 2, [-1.2, 1], {
-      steps: [0.5, 0.5],
-      tolerance: 1e-14,
-      maxEvaluations: 500,
-    });
-    expect(point[0]).toBeCloseTo(1, 5);
-    expect(point[1]).toBeCloseTo(1, 5);
-    expect(value).toBeLessThan(1e-10);
+    const valley = ([x, y]: Float64Array): number => 100 * (y! - x! * x!) ** 2 + (1 - x!) ** 2;
+    const { point, value } = minimise(valley, [-1.2, 1], settings);
+    expect(point[0]).toBeCloseTo(1, 4);
+    expect(point[1]).toBeCloseTo(1, 4);
+    expect(value).toBeLessThan(1e-8);
   });
 
-  it('stops at its limit', () => {
-    const { evaluations } = nelderMead(([x]) => Math.abs(x!), [10], { steps: [1], tolerance: 0, maxEvaluations: 30 });
-    expect(evaluations).toBeLessThanOrEqual(32);
+  it('needs few steps in a bowl, and stops at its limit', () => {
+    const bowl = (point: Float64Array): number => point.reduce((sum, x, i) => sum + (i + 1) * (x - i) ** 2, 0);
+    const { point } = minimise(bowl, [5, -3, 2, 0], { ...settings, maxSteps: 25 });
+    point.forEach((x, i) => {
+      expect(x).toBeCloseTo(i, 5);
+    });
+    expect(minimise(bowl, [5, -3, 2, 0], { ...settings, maxSteps: 1 }).evaluations).toBeLessThan(30);
+  });
+
+  it('never ends above where it began', () => {
+    const { value } = minimise(([x]) => Math.abs(x! - 0.3) + Math.sin(9 * x!), [4], settings);
+    expect(value).toBeLessThan(Math.abs(4 - 0.3) + Math.sin(36));
   });
 });
