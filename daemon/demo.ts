@@ -14,7 +14,7 @@ import { packageRoot } from './packageRoot.ts';
 // What `npm start` runs: the real commands on a copy of the sample feeds. `replay` takes the history in, `watch` is the daemon,
 // and this program plays the telescopes: it delivers the last nights one after another.
 
-const LIVE_NIGHTS = 24;
+const LIVE_NIGHTS = 22;
 const FIRST_PORT = 8417;
 const START_LIMIT_S = 30;
 const LOG_LINES_SHOWN = 15;

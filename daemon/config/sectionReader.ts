@@ -98,7 +98,7 @@ function report(issue: z.core.$ZodIssue, { path, value, schema, error }: Context
   error(at, issue.message);
 }
 
-export function unknownKeyMessage(key: string, known: readonly string[]): string {
+function unknownKeyMessage(key: string, known: readonly string[]): string {
   const near = closestName(key, known);
   return `unknown key; ${near === null ? `known here: ${known.join(', ')}` : `did you mean "${near}"?`}`;
 }

@@ -33,7 +33,7 @@ export function learnNoise(
   const coordinates = priorCoordinates(prior, problem.medianSigmaTurns);
   const cost = (point: Float64Array): number =>
     0.5 * point.reduce((sum, z) => sum + z * z, 0) - logLikelihood(problem, coordinates.noiseAt(point));
-  const looks = FIRST_LOOKS.map((look) => Float64Array.from(look));
+  const looks: Float64Array[] = FIRST_LOOKS.map((look) => Float64Array.from(look));
   if (start) looks.push(coordinates.pointOf(start));
   const { point } = minimise(cost, cheapest(cost, looks), {
     differenceStep: 0.02,

@@ -14,7 +14,6 @@ export interface NoisePrior {
   readonly floorOverSigma: LogNormal;
 }
 
-const SECONDS_PER_DAY = 86_400;
 const DAYS_PER_YEAR = 365.25;
 
 /** Span at which the population law is turned into walk strengths. */

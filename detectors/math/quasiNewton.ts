@@ -16,8 +16,8 @@ export interface Minimum {
 
 /**
  * Minimises a smooth `f` of a few variables, scaled so that its curvature is near 1 or above: quasi-Newton steps with
- * the inverse Hessian of Broyden, Fletcher, Goldfarb and Shanno (1970), central differences, step halving.
- * Deterministic. `f` must not keep its argument.
+ * the inverse Hessian of Broyden, Fletcher, Goldfarb and Shanno (1970), forward differences (the minimum is right to half their step), shorter steps where
+ * needed. Deterministic. `f` must not keep its argument.
  */
 export function minimise(
   f: (point: Float64Array) => number,
@@ -30,17 +30,18 @@ export function minimise(
     evaluations += 1;
     return f(point);
   };
-  const gradientAt = (point: Float64Array): Float64Array =>
-    point.map((centre, i) => {
-      const probe = Float64Array.from(point);
-      probe[i] = centre + settings.differenceStep;
-      const above = valueAt(probe);
-      probe[i] = centre - settings.differenceStep;
-      return (above - valueAt(probe)) / (2 * settings.differenceStep);
-    });
+  const gradientAt = (at: Float64Array, valueThere: number): Float64Array => {
+    const gradient = new Float64Array(n);
+    for (let i = 0; i < n; i++) {
+      const probe = Float64Array.from(at);
+      probe[i] = probe[i]! + settings.differenceStep;
+      gradient[i] = (valueAt(probe) - valueThere) / settings.differenceStep;
+    }
+    return gradient;
+  };
   let point = Float64Array.from(start);
   let value = valueAt(point);
-  let gradient = gradientAt(point);
+  let gradient = gradientAt(point, value);
   let inverse = identity(n);
   for (let k = 0; k < settings.maxSteps; k++) {
     let step = times(inverse, gradient).map((x) => -x);
@@ -61,7 +62,7 @@ export function minimise(
     }
     if (!(nextValue < value)) break;
     const gain = value - nextValue;
-    const nextGradient = gradientAt(next);
+    const nextGradient = gradientAt(next, nextValue);
     updateInverse(
       inverse,
       next.map((x, i) => x - point[i]!),

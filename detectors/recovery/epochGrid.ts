@@ -71,8 +71,7 @@ interface BackwardCurve {
 /** Least squares with the phase step free, held loosely by the size prior. */
 function backwardCurve(system: GapSystem, recovery: RecoveryColumn, widest: SizeScale): BackwardCurve {
   const { step, ramp, parabola } = system;
-  const { column, target, timescaleDays } = recovery;
-  const decays = column.some((entry) => entry !== 0);
+  const { column, target, timescaleDays, decays } = recovery;
   const sds = [1e3, widest.rate, widest.second, decays ? widest.rate : 0];
   const signs = [1, -1, -1, -1];
   const columns = [step, ramp, parabola, column].map((entries, j) => entries.map((x) => x * signs[j]! * sds[j]!));

@@ -25,6 +25,7 @@ export interface GapSystem {
 /** The exponential's part for one timescale; without one, zeros. */
 export interface RecoveryColumn {
   readonly timescaleDays: number;
+  readonly decays: boolean;
   readonly column: Float64Array;
   /** The data along all four rows. */
   readonly target: Float64Array;
@@ -38,7 +39,9 @@ export function gapSystem(frame: EventFrame, gap: CandidateGap): GapSystem {
     const column = eventColumn(frame.arrivals, gap.after, ({ tDays }) => power(tDays - gap.endDays));
     reduce(frame, column, gap.after);
     extendBasis(basis, column);
-    return column.slice(0, ROWS);
+    const rows = new Float64Array(ROWS);
+    rows.set(column.subarray(0, ROWS));
+    return rows;
   };
   const step = since(() => 1);
   const ramp = since((s) => s);
@@ -56,6 +59,7 @@ export function gapSystem(frame: EventFrame, gap: CandidateGap): GapSystem {
 export function withoutRecovery(system: GapSystem): RecoveryColumn {
   return {
     timescaleDays: 1,
+    decays: false,
     column: new Float64Array(ROWS),
     target: system.target,
     restSquare: system.restSquare,
@@ -86,7 +90,7 @@ export function recoveryColumn(frame: EventFrame, system: GapSystem, timescaleDa
     target[ROWS - 1] = dot(full, rest) / length;
     restSquare = Math.max(0, restSquare - target[ROWS - 1]! ** 2);
   }
-  return { timescaleDays, column, target, restSquare };
+  return { timescaleDays, decays: true, column, target, restSquare };
 }
 
 function dot(a: Float64Array, b: Float64Array): number {

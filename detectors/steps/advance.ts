@@ -18,19 +18,17 @@ export function advance(watch: PulsarWatch, arrival: TimedArrival): void {
   const news = append(line, arrival, watch.phaseAt(arrival.tdb));
   const index = line.seen.length - 1;
   if (watch.bank === null) {
-    watch.bank = newBank(watch.noise, startBeam(watch));
+    watch.bank = newBank(watch.noise, startBeam(watch), { index: 0, tDays: line.seen[0]!.tDays });
     return;
   }
   if (news.newGroup) addNuisance(watch, 'offset');
   if (news.newBand) addNuisance(watch, 'dispersion');
   stepAt(watch, index, watch.locked);
-  if (!watch.locked && canLock(watch, index)) {
+  searchLargeStep(watch, index);
+  if (watch.locked) decide(watch, index);
+  else if (canLock(watch, index)) {
     watch.locked = true;
     watch.oldestGap = index + 1;
-  }
-  if (watch.locked) {
-    searchLargeStep(watch, index);
-    decide(watch, index);
   }
   if (learningDue(watch, index)) relearn(watch, index);
 }

@@ -65,9 +65,15 @@ const PARENTS = 3;
 const FAMILY_FLOOR_NATS = 18;
 const SNAPSHOTS = 64;
 
-export function newBank(noise: NoiseModel, beam: Hypothesis[]): Bank {
+/** A bank whose hypotheses have seen the arrivals up to the one of `at`. */
+export function newBank(
+  noise: NoiseModel,
+  beam: Hypothesis[],
+  at: { readonly index: number; readonly tDays: number },
+): Bank {
   const scratch = { deviation: 0, variance: 0, gain: zeros(beam[0]!.mean.length), plain: true };
-  return { noise, beam, families: [], logScale: 0, snapshots: [], scratch };
+  const snapshots = [{ ...at, hypothesis: copyOf(beam[0]!) }];
+  return { noise, beam, families: [], logScale: 0, snapshots, scratch };
 }
 
 /** One more nuisance in every hypothesis: a receiver or a band seen for the first time. */

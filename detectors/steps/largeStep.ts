@@ -1,8 +1,11 @@
-/** A run of arrivals that fit nothing: seeks a large step by the circular search and hands what it finds to the bank. */
+/**
+ * A run of arrivals that fit nothing: seeks a large step by the circular search and hands what it finds to the bank. Before
+ * a pulsar is locked the same search corrects a start model that is too far off.
+ */
 
 import { SPIN_STATES } from '../filter/stateSpace.ts';
 import type { Snapshot } from './bank.ts';
-import { observe } from './beam.ts';
+import { observe, pruned } from './beam.ts';
 import { RATE_PER_YEAR } from './births.ts';
 import { type SearchPeak, searchStep } from './circularSearch.ts';
 import { copyOf, gapOf, type Hypothesis, propagate } from './hypothesis.ts';
@@ -19,6 +22,9 @@ const HIGHEST_STEP = 5e-5;
 /** Sizes are log-uniform over 1e-9…1e-4 of ν. */
 const LOG_RANGE = Math.log(1e5);
 const START_SPREAD_TURNS = 0.05;
+/** Start models whose frequency is off by more than their stated errors allow (common practice, no source). */
+const WRONG_START_SHARE = 0.05;
+const DAYS_PER_YEAR = 365.25;
 const KEEP = 10;
 
 /** Of a run, so many may have been taken for good by chance. */
@@ -60,8 +66,13 @@ export function searchLargeStep(watch: PulsarWatch, index: number): boolean {
   const peaks = searchStep(points, LOWEST_STEP * turnsPerDay, HIGHEST_STEP * turnsPerDay, spread);
   const found = peaks.flatMap((peak) => followed(watch, before, peak, start, index));
   if (found.length === 0) return false;
-  const family = bank.families.find((f) => f.gap === start && f.kind === 'glitch');
   for (const h of found) h.logWeight -= bank.logScale;
+  if (!watch.locked) {
+    // Before the lock it is the start model that is wrong, not the pulsar that has changed.
+    bank.beam = pruned([...bank.beam, ...found], bank.beam.length + found.length);
+    return true;
+  }
+  const family = bank.families.find((f) => f.gap === start && f.kind === 'glitch');
   if (family) family.beam.push(...found);
   else bank.families.push({ kind: 'glitch', gap: start, beam: found });
   return true;
@@ -105,7 +116,7 @@ function followed(watch: PulsarWatch, from: Snapshot, peak: SearchPeak, start: n
   const rootTwoPi = Math.sqrt(2 * Math.PI);
   const size1 = Math.max(Math.abs(peak.frequencyStep), peak.width);
   h.logWeight +=
-    Math.log((RATE_PER_YEAR.glitch * gapDays) / 365.25) +
+    Math.log(watch.locked ? (RATE_PER_YEAR.glitch * gapDays) / DAYS_PER_YEAR : WRONG_START_SHARE) +
     Math.log(Math.min(1, (rootTwoPi * 2 * peak.width) / (LOG_RANGE * size1))) +
     Math.log(rootTwoPi * START_SPREAD_TURNS);
   let beam: Hypothesis[] = [h];

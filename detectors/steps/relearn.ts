@@ -9,7 +9,7 @@ import { glitch } from './births.ts';
 import { absorb, gapOf, type Hypothesis, loosen, predict, propagate, type Story } from './hypothesis.ts';
 import { birthPlace } from './places.ts';
 import { asFixed, type PulsarWatch } from './pulsarWatch.ts';
-import { shareOfCount, startBeam } from './start.ts';
+import { foundStartRate, shareOfCount, startBeam } from './start.ts';
 import { stepAt } from './stepAt.ts';
 import { observationOf } from './timeline.ts';
 import type { Track } from './track.ts';
@@ -22,6 +22,8 @@ const SURE_SHARE = 0.95;
 /** σ of a believed glitch when the past is gone through again: wide, its size is known from the arrivals. */
 const BELIEVED_GLITCH_SIZE = 2e-5;
 const BELIEVED_RATE_CHANGE = 0.2;
+/** With fewer arrivals before the window the start errors have not yet been told apart: all are kept. */
+const LEAST_PAST = 10;
 
 export function learningDue(watch: PulsarWatch, index: number): boolean {
   const count = index + 1;
@@ -39,7 +41,7 @@ export function relearn(watch: PulsarWatch, index: number): void {
   const known = disturbances(watch);
   const learned = learnNoise(counted, known, watch.prior, watch.noise);
   watch.noise = asFixed(watch.model, withMargin(learned, counted, known, watch.prior));
-  rebuild(watch, index, best);
+  rebuild(watch, index, best, foundStartRate(counted));
 }
 
 /** The heaviest hypothesis of all, event or not. */
@@ -81,21 +83,20 @@ function freed(watch: PulsarWatch, track: Track): Pick<Disturbance, 'kind' | 'gr
  * Goes through all arrivals again: up to the window with the count that has won, then with the whole bank. Nothing is
  * decided on the way.
  */
-function rebuild(watch: PulsarWatch, index: number, best: Hypothesis): void {
+function rebuild(watch: PulsarWatch, index: number, best: Hypothesis, startRate: number): void {
   const decisions: Story[] = [];
   for (let s = best.story; s !== null; s = s.before) decisions[s.index] = s;
   const windowStart = Math.max(watch.oldestGap, index - watch.settings.windowArrivals + 1, 1);
-  let [h] = startBeam(watch);
-  const beam = startBeam(watch);
+  const beam = startBeam(watch, startRate);
   for (let i = 1; i < Math.min(windowStart, index + 1); i++) for (const b of beam) retrace(watch, b, decisions[i]!);
   // The start errors differ only at the very beginning; the heaviest has seen the same arrivals as all.
-  h = beam.reduce((a, b) => (b.logWeight > a.logWeight ? b : a));
+  const h = beam.reduce((a, b) => (b.logWeight > a.logWeight ? b : a));
   const total = beam.reduce((sum, b) => logAddExp(sum, b.logWeight), -Infinity);
   h.logWeight -= total;
-  watch.bank = newBank(watch.noise, windowStart > LEAST_PAST ? [h] : beam);
+  const at = { index: windowStart - 1, tDays: watch.line.seen[windowStart - 1]!.tDays };
+  watch.bank = newBank(watch.noise, windowStart > LEAST_PAST ? [h] : beam, at);
   for (let i = windowStart; i <= index; i++) stepAt(watch, i, watch.locked);
 }
-const LEAST_PAST = 10;
 
 /** One arrival with its known count; a believed event sets its states free in the gap before it. */
 function retrace(watch: PulsarWatch, h: Hypothesis, decision: Story): void {

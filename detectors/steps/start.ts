@@ -24,17 +24,21 @@ const LOCK_ARRIVALS = 12;
 const LOCK_SPREAD_TURNS = 0.1;
 const LOCK_SHARE = 0.98;
 
-/** Hypotheses after the first arrival: the deviation is what it was seen to be; the model's rates may be wrong. */
-export function startBeam(watch: PulsarWatch): Hypothesis[] {
+/**
+ * Hypotheses after the first arrival: the deviation is what it was seen to be; the model's rates may be wrong. `rate`
+ * (turns/day) is what the search for a start model far off has found, if it had to.
+ */
+export function startBeam(watch: PulsarWatch, rate = 0): Hypothesis[] {
   const first = watch.line.seen[0]!;
   const size = watch.states.size;
   const variance = arrivalVariance(first.sigmaTurns, watch.noise);
-  return START_ERRORS.map(([share, rate, derivative]) => {
+  return START_ERRORS.map(([share, rateError, derivative]) => {
     const mean = zeros(size);
     mean[0] = first.deviation;
+    mean[1] = rate;
     const cov = zeros(size * size);
     cov[0] = variance;
-    cov[size + 1] = rate * rate;
+    cov[size + 1] = rateError * rateError;
     cov[2 * size + 2] = derivative * derivative;
     watch.states.offsets.forEach((at) => {
       if (at !== null) cov[at * size + at] = RECEIVER_OFFSET_TURNS ** 2;
@@ -77,4 +81,17 @@ export function shareOfCount(bank: Bank, best: Hypothesis): number {
     if (Math.abs(h.mean[0]! - best.mean[0]!) < 0.5) agreeing += weight;
   }
   return agreeing / total;
+}
+
+/** Rate (turns/day) of the first arrivals when it is beyond what start models are off by; else 0. */
+export function foundStartRate(
+  counted: readonly { readonly tDays: number; readonly deviationTurns: number; readonly used: boolean }[],
+): number {
+  const used = counted.filter((a) => a.used).slice(0, LOCK_ARRIVALS);
+  const first = used[0];
+  const last = used.at(-1);
+  if (first === undefined || last === undefined || last.tDays === first.tDays) return 0;
+  const rate = (last.deviationTurns - first.deviationTurns) / (last.tDays - first.tDays);
+  const widest = Math.max(...START_ERRORS.map(([, error]) => error));
+  return Math.abs(rate) > 3 * widest ? rate : 0;
 }

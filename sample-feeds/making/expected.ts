@@ -78,7 +78,7 @@ export function expectedAnswers(): Expected {
         epochMjd: CLOCK_STEP.fromMjdUtc,
         epochWithinDays: 3,
         timeStepUs: CLOCK_STEP.stepUs,
-        sizeWithin: 0.4,
+        sizeWithin: 0.2,
         pulsars: PULSARS.filter(({ programme }) =>
           programme.some(({ receiver }) => receiver.site === CLOCK_STEP.site),
         ).map(({ name }) => name),

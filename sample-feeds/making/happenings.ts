@@ -35,7 +35,7 @@ export const GLITCHES: readonly Glitch[] = [LARGE_GLITCH, SMALL_GLITCH];
 export const NOISY_PULSAR = 'KR 2014+36';
 
 /** From this site date on the clock reads late, and no clock table says so. */
-export const CLOCK_STEP = { site: 'kestrel annex' as SiteName, fromMjdUtc: 60_987.5, stepUs: 60 };
+export const CLOCK_STEP = { site: 'kestrel annex' as SiteName, fromMjdUtc: 60_987.5, stepUs: 180 };
 
 /** pc cm⁻³ */
 export const DISPERSION_STEP = { pulsar: 'KR 1309-12', fromMjd: 60_984.2, step: 0.021 };
@@ -63,7 +63,7 @@ export const BROKEN_ROWS = {
       reason: 'kestrel rigde',
     },
     { line: 8, text: 'KR 0731-44,60993.3107741920583,120.00,1396.000,kestrel ridge,ridge-1400', reason: 'KR 0731-44' },
-    { line: 9, text: 'KR 2014+36,60993.8274', reason: 'column' },
+    { line: 9, text: 'KR 2014+36,60993.8274', reason: 'fields' },
   ],
 } as const;
 

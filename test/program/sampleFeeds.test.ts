@@ -73,8 +73,9 @@ describe('a replay of the sample feeds', () => {
 
   afterAll(() => rmSync(folder, { recursive: true, force: true }));
 
+  /** What is laid to the pulsar's own account: an event of the site names several. */
   const confirmed = (pulsar: string): PulsarEvent[] =>
-    events.filter((event) => event.pulsar === pulsar && event.state === 'confirmed' && event.site === null);
+    events.filter((event) => event.pulsar === pulsar && event.pulsars.length === 1 && event.state === 'confirmed');
 
   test.each(expected.glitches)('finds the glitch of $pulsar once, with its size', (glitch) => {
     const found = confirmed(glitch.pulsar);
@@ -94,7 +95,7 @@ describe('a replay of the sample feeds', () => {
   });
 
   test.each(expected.siteEvents)('blames the clock at $site, not the pulsars seen there', (step) => {
-    const found = events.filter((event) => event.site !== null && event.state === 'confirmed');
+    const found = events.filter(({ pulsars, state }) => pulsars.length > 1 && state === 'confirmed');
     expect(found.map(({ site, explanation }) => ({ site, explanation }))).toEqual([
       { site: step.site, explanation: 'clock step' },
     ]);
@@ -135,7 +136,7 @@ describe('a replay of the sample feeds', () => {
     const rows = files.map((file) => Math.max(0, readFileSync(file, 'utf8').trim().split('\n').length - 1));
     const brokenRows = expected.quarantined.filter(({ line }) => line !== null).length;
     const brokenFiles = expected.quarantined.length - brokenRows;
-    expect(morning.intake).toEqual({
+    expect(morning.intake).toMatchObject({
       files: files.length - brokenFiles,
       arrivals: rows.reduce((sum, count) => sum + count) - brokenRows,
     });

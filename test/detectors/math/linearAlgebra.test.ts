@@ -103,7 +103,7 @@ describe('least squares by reflections', () => {
 });
 
 describe('descent', () => {
-  const settings = { differenceStep: 1e-5, longestStep: 1, tolerance: 1e-14, maxSteps: 100 };
+  const settings = { differenceStep: 1e-8, longestStep: 1, tolerance: 1e-14, maxSteps: 100 };
 
   it('finds the minimum of Rosenbrock’s valley (Rosenbrock 1960, Computer J. 3, 175) at (1, 1)', () => {
     const valley = ([x, y]: Float64Array): number => 100 * (y! - x! * x!) ** 2 + (1 - x!) ** 2;

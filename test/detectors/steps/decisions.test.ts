@@ -108,6 +108,14 @@ describe('what the detector says of one pulsar', () => {
     expect(Math.min(...sizes.map((s) => Math.abs(s / (2e-5 * NU) - 1)))).toBeLessThan(0.01);
   });
 
+  it('corrects a start model that is far off before it decides anything', () => {
+    const wrong = (t: number) => -3e-6 * NU * 86_400 * t;
+    const result = watched(85, { happening: wrong });
+    expect(result.locked).toBe(true);
+    expect(confirmed(result)).toEqual([]);
+    expect(result.arrivals.slice(30).every((a) => a.fate === 'used')).toBe(true);
+  });
+
   it('is the same function of the log however it is called', () => {
     const once = watched(91, { happening: spinUp(NU, 180, 3e-8) });
     const again = watched(91, { happening: spinUp(NU, 180, 3e-8) });
