@@ -128,12 +128,14 @@ describe('kill -9', () => {
       await pointAt(configIn(folder), own.port);
       const watch = ['watch', '--config', configIn(folder)];
       const first = startSpinvigil(watch, { SPINVIGIL_TEST_KILL_AT: String(step) });
-      await within(60, async () => first.hasEnded() || (await isDelivered(folder)));
+      const started = () => first.stdout().includes('\n');
+      await within(60, async () => first.hasEnded() || (started() && (await isDelivered(folder))));
       const wasKilled = first.hasEnded();
       if (!wasKilled) first.signal('SIGTERM');
       expect(await first.ended, first.stderr()).toBe(wasKilled ? 'SIGKILL' : '0');
 
       const second = startSpinvigil(watch);
+      await within(60, () => second.hasEnded() || second.stdout().includes('\n'));
       expect(await within(60, () => isDelivered(folder)), second.stderr()).toBe(true);
       second.signal('SIGTERM');
       expect(await second.ended, second.stderr()).toBe('0');
