@@ -21,7 +21,7 @@ interface Node {
 
 /**
  * The posterior of a glitch in one gap with one exponential: nodes evenly spaced in ln τ, where the prior is flat, from
- * half a day, or half the spacing of the first arrivals after the event, to three times the span after it; then every
+ * half a day, half the spacing of the first arrivals after the event, or a third of the gap, to three times the span after it; then every
  * interval near the maximum over which the evidence changes by more than a little is halved.
  */
 export function scanTimescales(frame: EventFrame, system: GapSystem, scales: readonly SizeScale[]): PointCloud {
@@ -39,11 +39,14 @@ export function scanTimescales(frame: EventFrame, system: GapSystem, scales: rea
   return integrate(nodes, high - low);
 }
 
+/** A decay much quicker than the gap is over before it is seen: what it leaves is a step in phase, which noise imitates. */
+const SHORTEST_OF_GAP = 1 / 3;
+
 function timescaleRange({ arrivals }: EventFrame, { gap }: GapSystem): { low: number; high: number } {
   const first = arrivals[gap.after]!.tDays;
   const span = arrivals.at(-1)!.tDays - first;
   const spacing = (arrivals[gap.after + 1]?.tDays ?? first) - first;
-  const low = Math.max(SHORTEST_DAYS, 0.5 * spacing);
+  const low = Math.max(SHORTEST_DAYS, 0.5 * spacing, SHORTEST_OF_GAP * gap.lengthDays);
   return { low: Math.log(low), high: Math.log(Math.max(3 * span, 4 * low)) };
 }
 

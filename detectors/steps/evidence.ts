@@ -64,6 +64,8 @@ export function explanationsOf(
     const name = withoutEvent(h, gap, sessionOf);
     masses[name] = (masses[name] ?? 0) + Math.exp(h.logWeight);
   }
+  const total = Object.values(masses).reduce((sum, mass) => sum + mass, 0);
+  for (const name of Object.keys(masses)) masses[name] = masses[name]! / total;
   return masses;
 }
 

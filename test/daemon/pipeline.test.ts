@@ -1,0 +1,195 @@
+import { readFileSync } from 'node:fs';
+import { join } from 'node:path';
+import { asyncProperty, assert as checkProperty, constantFrom, shuffledSubarray } from 'fast-check';
+import { afterEach, describe, expect, test } from 'vitest';
+import { STAGES } from '../../daemon/pipeline.ts';
+import { ROOT } from '../support/sourceTree.ts';
+import { createTestStation, type TestStation } from '../support/station.ts';
+import { arrivalFile, syntheticArrivals, syntheticPulsar } from '../support/syntheticPulsar.ts';
+
+const START = 61_000;
+const glitching = syntheticPulsar({
+  name: 'KR 0417+31',
+  epochMjd: START,
+  glitches: [{ mjd: START + 100, deltaNuOverNu: 2e-7 }],
+});
+const quiet = syntheticPulsar({ name: 'KR 1021-05', epochMjd: START });
+const span = { fromMjd: START + 1, toMjd: START + 150, everyDays: 4 };
+const glitchingArrivals = syntheticArrivals(glitching, { ...span, seed: 3 });
+const quietArrivals = syntheticArrivals(quiet, { ...span, seed: 4 });
+/** Three files a pulsar shares with the other, and one that holds late rows of all times. */
+const FILES = new Map(
+  [0, 1, 2, 3].map((part) => {
+    const mine = (_: unknown, i: number) => (i % 9 === 4 ? part === 3 : part === Math.floor(i / 13));
+    return [`part-${part}.csv`, arrivalFile([...glitchingArrivals.filter(mine), ...quietArrivals.filter(mine)])];
+  }),
+);
+const ALL = arrivalFile([...glitchingArrivals, ...quietArrivals]);
+/** Just after the last arrival: MJD 61151. */
+const NOW = '2026-04-22T08:00:00.000Z';
+
+const open: TestStation[] = [];
+afterEach(async () => {
+  for (const station of open.splice(0)) await station.close();
+});
+async function station(): Promise<TestStation> {
+  const made = await createTestStation({ pulsars: [glitching, quiet], now: NOW });
+  open.push(made);
+  return made;
+}
+
+const eventsOf = ({ store }: TestStation) => store.events().map(({ event }) => event);
+const reportsOf = ({ store }: TestStation) => store.pulsarReports();
+
+describe('the pipeline', () => {
+  test('has the stages that DEVELOPERS.md draws', () => {
+    const drawing = readFileSync(join(ROOT, 'DEVELOPERS.md'), 'utf8');
+    expect(drawing).toContain(STAGES.join(' → '));
+  });
+
+  test('finds the glitch that is there, once', async () => {
+    const at = await station();
+    await at.deliver('all.csv', ALL);
+    const [event, ...others] = eventsOf(at);
+    expect(others).toEqual([]);
+    expect(event).toMatchObject({ pulsar: 'KR 0417+31', explanation: 'glitch', state: 'confirmed' });
+    expect(Math.abs(event!.epochMjd - (START + 100))).toBeLessThan(4);
+    expect(at.store.verify()).toEqual([]);
+  });
+
+  test('says the same whatever the order of the files, and however often it was restarted', async () => {
+    const reference = await station();
+    await reference.deliver('all.csv', ALL);
+    const names = [...FILES.keys()];
+    await checkProperty(
+      asyncProperty(
+        shuffledSubarray(names, { minLength: names.length }),
+        constantFrom('goes on', 'restarts', 'decides at the end'),
+        async (order, how) => {
+          let at = await createTestStation({ pulsars: [glitching, quiet], now: NOW });
+          try {
+            for (const name of order) {
+              await at.deliver(name, FILES.get(name)!, how === 'decides at the end' ? { decide: 'later' } : {});
+              if (how === 'restarts') at = at.restart();
+            }
+            if (how === 'decides at the end') await at.pipeline.decide(at.store.pulsars(), { mail: false });
+            expect(eventsOf(at)).toEqual(eventsOf(reference));
+            expect(reportsOf(at)).toEqual(reportsOf(reference));
+            expect(at.store.verify()).toEqual([]);
+          } finally {
+            await at.close();
+          }
+        },
+      ),
+      { seed: 11, numRuns: 5 },
+    );
+  });
+
+  test('takes a file that only was touched, or comes again, for what it is', async () => {
+    const at = await station();
+    await at.deliver('all.csv', ALL);
+    const before = eventsOf(at);
+    expect(await at.deliver('all.csv', ALL)).toMatchObject({ kind: 'known', newArrivals: 0 });
+    expect(await at.deliver('copy.csv', ALL)).toMatchObject({ kind: 'taken in', newArrivals: 0, pulsars: [] });
+    expect(eventsOf(at)).toEqual(before);
+  });
+
+  test('decides again when rows are corrected or taken back, and as if the corrected ones had been the first', async () => {
+    const at = await station();
+    const wrong = glitchingArrivals.map((a, i) => (i === 20 ? { ...a, uncertaintyUs: 5000 } : a));
+    await at.deliver('a.csv', arrivalFile(wrong));
+    await at.deliver('a.csv', arrivalFile(glitchingArrivals.slice(0, -2)));
+    const straight = await station();
+    await straight.deliver('a.csv', arrivalFile(glitchingArrivals.slice(0, -2)));
+    expect(eventsOf(at)).toEqual(eventsOf(straight));
+    const status = at.store.arrivals('KR 0417+31').map((arrival) => arrival.status);
+    expect(status.filter((s) => s === 'revised')).toHaveLength(1);
+    expect(status.filter((s) => s === 'withdrawn')).toHaveLength(2);
+    // What was never told vanishes with the rows it rested on.
+    await at.deliver('a.csv', arrivalFile(glitchingArrivals.slice(0, 20)));
+    expect(eventsOf(at)).toEqual([]);
+    expect(at.store.verify()).toEqual([]);
+  });
+
+  test('leaves a file whose last row may still grow, and takes it when told so', async () => {
+    const at = await station();
+    const cut = arrivalFile(quietArrivals.slice(0, 5)).trimEnd();
+    expect(await at.deliver('cut.csv', cut, { acceptUnterminated: false })).toMatchObject({ kind: 'cut short' });
+    expect(at.store.arrivals('KR 1021-05')).toEqual([]);
+    expect(await at.deliver('cut.csv', cut)).toMatchObject({ kind: 'taken in', newArrivals: 5 });
+  });
+
+  test('quarantines what it has no model or site for, and says what to add', async () => {
+    const at = await station();
+    const rows = [
+      'pulsar,mjd_utc,mjd_tdb,uncertainty_us,frequency_mhz,site',
+      'KR 0417+13,,61010.5,50,inf,barycentre',
+      'KR 1021-05,61010.5,,50,1400,ridge',
+      'KR 1021-05,,61011.5,50,inf,barycentre',
+    ];
+    expect(await at.deliver('odd.csv', `${rows.join('\n')}\n`)).toMatchObject({
+      rows: 3,
+      newArrivals: 1,
+      quarantined: 2,
+    });
+    const reasons = at.store.quarantinedSince('2000').map(({ line, reason }) => `${line}: ${reason}`);
+    expect(reasons[0]).toMatch(/^2: pulsar "KR 0417\+13" has no model \(did you mean "KR 0417\+31"\?\): add one/);
+    expect(reasons[1]).toMatch(/^3: site "ridge" is not known: add a \[\[site\]\]/);
+  });
+
+  test('reads a waiting file again once the configuration knows more, and only then', async () => {
+    const at = await station();
+    const { configuration } = at.station;
+    const poorer = { ...configuration, models: new Map([...configuration.models].slice(0, 1)) };
+    const before = at.restart(poorer);
+    expect(await before.deliver('all.csv', ALL)).toMatchObject({ quarantined: quietArrivals.length });
+    expect(await before.restart(poorer).deliver('all.csv', ALL)).toMatchObject({ kind: 'known' });
+    expect(await before.restart(configuration).deliver('all.csv', ALL)).toMatchObject({
+      kind: 'taken in',
+      newArrivals: quietArrivals.length,
+      quarantined: 0,
+    });
+  });
+
+  test('decides again when a model changes, with the arrivals timed anew', async () => {
+    const at = await station();
+    const withDispersion = ALL.replaceAll(',inf,', ',1400,');
+    await at.deliver('all.csv', withDispersion);
+    expect(at.pipeline.undecided()).toEqual([]);
+    const { configuration } = at.station;
+    const model = { ...configuration.models.get('KR 0417+31')!, dispersionMeasure: 50 };
+    const changed = at.restart({ ...configuration, models: new Map([...configuration.models, [model.name, model]]) });
+    expect(changed.pipeline.undecided()).toEqual(['KR 0417+31']);
+    const timeOf = () => at.store.arrivals('KR 0417+31')[0]!.delays!.dispersionS;
+    const before = timeOf();
+    await changed.pipeline.decide(['KR 0417+31'], { mail: false });
+    expect(timeOf() / before).toBeCloseTo(50 / 41.27, 10);
+    expect(changed.pipeline.undecided()).toEqual([]);
+    expect(eventsOf(changed)).toHaveLength(1);
+  });
+
+  test('remembers decisions that were left open', async () => {
+    const at = await station();
+    at.pipeline.leaveDecisionsOpen(true);
+    await at.deliver('all.csv', ALL, { decide: 'later' });
+    const next = at.restart();
+    expect(next.pipeline.undecided()).toEqual(['KR 0417+31', 'KR 1021-05']);
+    await next.pipeline.decide(next.pipeline.undecided(), { mail: false });
+    next.pipeline.leaveDecisionsOpen(false);
+    expect(next.pipeline.undecided()).toEqual([]);
+    expect(eventsOf(next)).toHaveLength(1);
+  });
+
+  test('sets a file aside whose reading takes the program down again and again', async () => {
+    const at = await station();
+    const path = { bytesHex: Buffer.from('poison.csv').toString('hex') };
+    const { createHash } = await import('node:crypto');
+    const sha256 = createHash('sha256').update(ALL).digest('hex');
+    for (let start = 0; start < 3; start++) at.store.noteReadingStarts('nightly', path, sha256);
+    expect(await at.deliver('poison.csv', ALL)).toMatchObject({ kind: 'quarantined whole' });
+    expect(at.store.quarantinedSince('2000')[0]?.reason).toMatch(/^set aside: its reading was begun 3 times/);
+    expect(await at.deliver('fine.csv', ALL)).toMatchObject({ kind: 'taken in' });
+    // Touched, it gets another chance.
+    expect(await at.deliver('poison.csv', ALL)).toMatchObject({ kind: 'taken in' });
+  });
+});
