@@ -2,21 +2,13 @@
 import { readFileSync } from 'node:fs';
 import { join } from 'node:path';
 import { Argument, Command, CommanderError, Option } from 'commander';
-import { arrivals } from './commands/arrivals.ts';
-import { check } from './commands/check.ts';
-import { backup, restore } from './commands/copies.ts';
-import { events, STATES } from './commands/events.ts';
-import { exportEvent, NOTICE_FORMS } from './commands/export.ts';
-import { morning } from './commands/morning.ts';
-import { replay } from './commands/replay.ts';
-import { review } from './commands/review.ts';
-import { show } from './commands/show.ts';
+import { NOTICE_FORMS, STATES } from './commands/choices.ts';
 import { processTerminal as terminal } from './commands/terminal.ts';
-import { watch } from './commands/watch.ts';
 import { EXIT, type ExitCode, OperatorError } from './errors.ts';
 import { packageRoot } from './packageRoot.ts';
 
-// The command line: which commands there are, what they take, and what the shell learns from them.
+// The command line: which commands there are, what they take, and what the shell learns from them. What a command needs is loaded when it
+// runs, so that help and complaints come at once.
 
 function createProgram(): Command {
   const { version } = JSON.parse(readFileSync(join(packageRoot(), 'package.json'), 'utf8')) as { version: string };
@@ -32,28 +24,28 @@ function createProgram(): Command {
   const event = () => new Argument('<event>', 'its id; one it had before will do');
 
   command('watch', 'the daemon: take in what the feeds deliver, decide, alert, serve the review page').action(
-    (options) => watch(terminal, options),
+    async (options) => (await import('./commands/watch.ts')).watch(terminal, options),
   );
   command('check', 'validate configuration, models, clock tables, folders and the mail login')
     .option('--send-test-mail', 'send a marked test mail to every recipient')
     .option('--json', 'print as JSON')
-    .action((options) => check(terminal, options));
+    .action(async (options) => (await import('./commands/check.ts')).check(terminal, options));
   command('replay', 'take in an archive offline, in time order, as the watch would have')
     .argument('<file...>', 'arrival files')
     .option('--feed <name>', "read them with this feed's layout; else by the folder they lie in")
     .option('--mail', 'mail what the watch would have mailed')
     .option('--json', 'print the summary as JSON')
-    .action((files, options) => replay(terminal, files, options));
+    .action(async (files, options) => (await import('./commands/replay.ts')).replay(terminal, files, options));
   command('events', 'the event log')
     .option('--since <date>', 'with an epoch at or after a date (2026-03-29, UTC) or an MJD')
     .option('--pulsar <name>', 'of this pulsar, site events that it showed among them')
     .addOption(new Option('--state <state>', 'in this state').choices(STATES))
     .option('--json', 'print as JSON')
-    .action((options) => events(terminal, options));
+    .action(async (options) => (await import('./commands/events.ts')).events(terminal, options));
   command('show', 'everything about one event')
     .addArgument(event())
     .option('--json', 'print as JSON')
-    .action((id, options) => show(terminal, id, options));
+    .action(async (id, options) => (await import('./commands/show.ts')).show(terminal, id, options));
   command('review', "a person's verdict on an event")
     .addArgument(event())
     .option('--accept', 'it is what the program says')
@@ -62,26 +54,26 @@ function createProgram(): Command {
     .requiredOption('--by <name>', 'who decides')
     .option('--note <text>', 'why', '')
     .option('--json', 'print the event as JSON')
-    .action((id, options) => review(terminal, id, options));
+    .action(async (id, options) => (await import('./commands/review.ts')).review(terminal, id, options));
   command('morning', 'the morning review')
     .option('--date <date>', 'of an earlier day, such as 2026-03-29')
     .option('--html <file>', 'write it as a page to this file')
     .option('--json', 'print as JSON')
-    .action((options) => morning(terminal, options));
+    .action(async (options) => (await import('./commands/morning.ts')).morning(terminal, options));
   command('arrivals', 'every arrival of a pulsar on record: times, delays, deviation, and what was done with it')
     .argument('<pulsar>', 'its name in the models folder')
     .option('--json', 'print as JSON')
-    .action((pulsar, options) => arrivals(terminal, pulsar, options));
+    .action(async (pulsar, options) => (await import('./commands/arrivals.ts')).arrivals(terminal, pulsar, options));
   command('export', 'an event as a notice for others')
     .addArgument(event())
     .addOption(new Option('--as <form>', 'the form').choices(NOTICE_FORMS).makeOptionMandatory())
-    .action((id, options) => exportEvent(terminal, id, options));
+    .action(async (id, options) => (await import('./commands/export.ts')).exportEvent(terminal, id, options));
   command('backup', 'a consistent copy of the record, also while the watch runs')
     .argument('<file>', 'where to; an older copy there is replaced')
-    .action((file, options) => backup(terminal, file, options));
+    .action(async (file, options) => (await import('./commands/copies.ts')).backup(terminal, file, options));
   command('restore', 'bring a copy back; the watch must not run')
     .argument('<file>', 'a copy made by backup')
-    .action((file, options) => restore(terminal, file, options));
+    .action(async (file, options) => (await import('./commands/copies.ts')).restore(terminal, file, options));
   return program;
 }
 
@@ -95,11 +87,19 @@ async function main(args: readonly string[]): Promise<ExitCode> {
   } catch (error) {
     // Commander has printed what it complains of.
     if (error instanceof CommanderError) return error.exitCode === 0 ? EXIT.done : EXIT.wrongUsage;
-    if (!(error instanceof OperatorError)) throw error;
+    if (!(error instanceof OperatorError)) throw explained(error);
     const advice = error.advice === null ? '' : `; ${error.advice}`;
     terminal.err.write(`spinvigil: ${error.message}${advice}\n`);
     return error.exitCode;
   }
+}
+
+/** A native module that was built for another Node is the installation's fault, not ours. */
+function explained(error: unknown): unknown {
+  const { code } = (error ?? {}) as NodeJS.ErrnoException;
+  return code === 'ERR_DLOPEN_FAILED'
+    ? new Error('The database module does not fit this version of Node: run npm ci again.', { cause: error })
+    : error;
 }
 
 // A reader that has gone away (`| head`) ends the output, not the work.

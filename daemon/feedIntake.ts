@@ -80,7 +80,8 @@ async function decideWhatIsOpen(
   if (pulsars.length === 0) return;
   log.info({ pulsars: pulsars.length }, 'deciding again: the model, the tables, the settings or the program changed');
   try {
-    for (const pulsar of pulsars) await guarded(() => pipeline.decide([pulsar], { mail: true }));
+    // All at once: a step of a whole site must not look like one of a few pulsars in between.
+    await guarded(() => pipeline.decide(pulsars, { mail: true }));
     pipeline.leaveDecisionsOpen(false);
   } catch (error) {
     log.error({ reason: reasonOf(error) }, 'not decided again; the next start tries it once more');

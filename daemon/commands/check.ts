@@ -6,6 +6,7 @@ import { EXIT, OperatorError, reasonOf } from '../errors.ts';
 import { mailerFor } from '../mailerFor.ts';
 import { tableWarnings } from '../morning.ts';
 import { problemLine } from '../opening.ts';
+import { openStore } from '../store/index.ts';
 import { loadTables } from '../tables/loadTables.ts';
 import { printJson, type Terminal } from './terminal.ts';
 
@@ -15,21 +16,31 @@ export interface CheckOptions {
   readonly json?: boolean;
 }
 
-/** `check`: everything that can be known to be wrong before the watch starts. Writes nothing but a test mail that was asked for. */
+/** `check`: everything that can be known to be wrong before the watch starts. Changes nothing; sends a test mail where asked for. */
 export async function check(terminal: Terminal, options: CheckOptions): Promise<void> {
   const { configuration, problems } = loadConfiguration(options.config);
   const mail = configuration === null ? [] : await tryMail(configuration, options.sendTestMail ?? false);
   const warnings = tableWarnings(loadTables(), systemClock.now());
-  if (options.json) printJson(terminal, { ok: configuration !== null && mail.every(isWell), problems, warnings, mail });
+  const record = configuration === null ? [] : recordProblems(configuration);
+  if (options.json)
+    printJson(terminal, {
+      ok: configuration !== null && mail.every(isWell) && record.length === 0,
+      problems,
+      warnings,
+      record,
+      mail,
+    });
   else {
     for (const problem of problems) terminal.out(`${problem.severity}: ${problemLine(problem)}`);
     for (const warning of warnings) terminal.out(`warning: ${warning}`);
     for (const { what, state, detail } of mail)
       terminal.out(`mail: ${what}: ${state === 'delivered' ? 'well' : state} (${detail})`);
+    for (const problem of record) terminal.out(`record: ${problem}`);
     if (configuration !== null) terminal.out(soundLine(configuration));
   }
   if (configuration === null)
     throw new OperatorError('the configuration cannot be used', { exitCode: EXIT.wrongUsage });
+  if (record.length > 0) throw new OperatorError('the record is not sound', { exitCode: EXIT.workFailed });
   if (!mail.every(isWell)) throw new OperatorError('mail cannot be sent', { exitCode: EXIT.workFailed });
 }
 
@@ -60,6 +71,17 @@ async function outcomeOf(attempt: () => Promise<DeliveryOutcome>): Promise<Omit<
     return { state, detail };
   } catch (error) {
     return { state: 'later', detail: reasonOf(error) };
+  }
+}
+
+/** Every invariant of what is on record; before the first start there is none. */
+function recordProblems({ stateFolder }: Configuration): readonly string[] {
+  const opened = openStore(stateFolder, { mode: 'reader' });
+  if (!opened.ok) return opened.failure.kind === 'nothing on record' ? [] : [opened.failure.message];
+  try {
+    return opened.store.verify();
+  } finally {
+    opened.store.close();
   }
 }
 

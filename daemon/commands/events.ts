@@ -7,8 +7,6 @@ import { withRecord } from './record.ts';
 import { table } from './table.ts';
 import { printJson, type Terminal } from './terminal.ts';
 
-export const STATES: readonly EventState[] = ['suspected', 'confirmed', 'withdrawn', 'accepted', 'rejected'];
-
 export interface EventsOptions {
   readonly config: string;
   readonly since?: string;

@@ -1,15 +1,14 @@
 import { eventJson, eventsCsv, voevent } from '../../alerts/index.ts';
 import { systemClock } from '../clock.ts';
+import type { NoticeForm } from './choices.ts';
 import { eventOf, withRecord } from './record.ts';
 import type { Terminal } from './terminal.ts';
-
-export const NOTICE_FORMS = ['voevent', 'json', 'csv'] as const;
 
 /** `export`: one event as a notice for others. */
 export async function exportEvent(
   terminal: Terminal,
   id: string,
-  options: { readonly config: string; readonly as: (typeof NOTICE_FORMS)[number] },
+  options: { readonly config: string; readonly as: NoticeForm },
 ): Promise<void> {
   await withRecord(options.config, (store, { observatory, models }) => {
     const { event, revision } = eventOf(store, id);

@@ -41,6 +41,8 @@ export interface MailSettings {
   /** IANA zone, for the digest and the dates in mails. */
   readonly timezone: string;
   readonly digestCron: string;
+  /** An event that an arrival older than this confirms is shown in the digest and mailed to nobody. */
+  readonly historicalAfterDays: number;
 }
 
 export interface SmtpTransport {

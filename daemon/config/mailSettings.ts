@@ -25,7 +25,8 @@ export function readMail(reader: SectionReader, around: Surroundings): MailSetti
   const transport =
     table.transport === 'smtp' ? smtpTransport(reader, table, around) : folderTransport(reader, table, around);
   if (transport === null || twice >= 0) return null;
-  return { transport, from: table.from, to: table.to, timezone: table.timezone, digestCron: table.digest_cron };
+  const { from, to, timezone, digest_cron: digestCron, historical_after_days: historicalAfterDays } = table;
+  return { transport, from, to, timezone, digestCron, historicalAfterDays };
 }
 
 function folderTransport(reader: SectionReader, table: MailTable, around: Surroundings): FolderTransport | null {

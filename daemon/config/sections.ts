@@ -1,4 +1,5 @@
 import { z } from 'zod';
+import { DEFAULT_HISTORICAL_DAYS } from '../../alerts/index.ts';
 import { cronProblem } from './cronText.ts';
 import { mailAddress, name, numberBetween, oneOf, path, words } from './fields.ts';
 
@@ -62,6 +63,7 @@ export const mailTable = z.strictObject({
   timezone: z.string().refine(isTimeZone, {
     error: ({ input }) => `"${String(input)}" is not a time zone; write an IANA name such as "Europe/Berlin" or "UTC"`,
   }),
+  historical_after_days: numberBetween(1, 1_000_000, 'd').default(DEFAULT_HISTORICAL_DAYS),
   digest_cron: z.string().superRefine((text, context) => {
     const problem = cronProblem(text);
     if (problem !== null) context.addIssue({ code: 'custom', message: problem });

@@ -110,18 +110,18 @@ function isAlive(pid: number): boolean {
 }
 
 /**
- * The sample feeds' own configuration, with what must differ: state and mail in the run folder, and a free port. A feed's silence
- * is told by the wall clock, which the demo outruns: the feed that falls silent is expected every 36 seconds.
+ * The sample feeds' own configuration, with what must differ: state and mail in the run folder, a free port, events of these long past
+ * nights mailed as if they were of today, and the feed that falls silent expected every 36 seconds, because silence is told
+ * by the wall clock and the demo outruns it.
  */
 function runConfiguration(text: string, port: number): string {
+  const monitor = 'folder = "monitor"\nlayout = "csv"\nexpect_every_hours = ';
   return [
     ['"../.demo/state"', '"state"'],
     ['"../.demo/mail"', '"mail"'],
     ['"127.0.0.1:8417"', `"127.0.0.1:${port}"`],
-    [
-      'folder = "monitor"\nlayout = "csv"\nexpect_every_hours = 72',
-      'folder = "monitor"\nlayout = "csv"\nexpect_every_hours = 0.01',
-    ],
+    ['digest_cron = ', 'historical_after_days = 100000\ndigest_cron = '],
+    [`${monitor}72`, `${monitor}0.01`],
   ].reduce((changed, [from, to]) => {
     if (!changed.includes(from!)) throw new Error(`sample-feeds/spinvigil.toml no longer holds ${from}`);
     return changed.replace(from!, to!);

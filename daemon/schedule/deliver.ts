@@ -5,7 +5,7 @@ import {
   markPossibleDuplicate,
   pauseMs,
 } from '../../alerts/index.ts';
-import type { Clock } from '../clock.ts';
+import { type Clock, clockStepWatch } from '../clock.ts';
 import { reasonOf } from '../errors.ts';
 import type { Log } from '../log.ts';
 import type { OutboxRecord } from '../records.ts';
@@ -72,10 +72,11 @@ export function startDelivery(options: DeliveryOptions): DeliveryLoop {
     return true;
   };
 
+  const mayExpire = trustInWallClock(clock);
   const loop = async () => {
     while (!stopping.signal.aborted) {
       try {
-        await expireOld(options);
+        if (mayExpire()) await expireOld(options);
         while (!stopping.signal.aborted && (await sendOne()));
       } catch (error) {
         if (!mayPass(error)) return options.onFatal(error);
@@ -152,6 +153,18 @@ async function note(
     await options.onGivenUp(mail, outcome.kind, outcome.error);
   } else log.warn({ ...facts, reason: outcome.error, again: outcome.dueAt }, 'mail not delivered yet');
 }
+
+/** A wall clock that was set a year ahead must not give up all mail at once: for some hours after a step nothing expires. */
+function trustInWallClock(clock: Clock): () => boolean {
+  const clockStep = clockStepWatch(clock);
+  let distrustUntilMs = 0;
+  return () => {
+    if (clockStep() !== null) distrustUntilMs = clock.monotonicMs() + DISTRUST_MS;
+    return clock.monotonicMs() >= distrustUntilMs;
+  };
+}
+
+const DISTRUST_MS = 6 * 3_600_000;
 
 async function expireOld(options: DeliveryOptions): Promise<void> {
   const before = new Date(options.clock.now().getTime() - EXPIRES_AFTER_MS).toISOString();

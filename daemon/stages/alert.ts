@@ -2,7 +2,6 @@ import {
   type ComposedMessage,
   composeEventMail,
   composeStormNotice,
-  DEFAULT_HISTORICAL_DAYS,
   type EventMail,
   mailOrSummary,
   messagesFor,
@@ -63,7 +62,7 @@ function policyFor(station: Station, event: PulsarEvent) {
     extraRecipients: event.pulsars.flatMap((pulsar) => configuration.models.get(pulsar)?.alerts.extraRecipients ?? []),
     contact: configuration.observatory.contact,
     nowMjd: mjdOf(clock.now()),
-    historicalDays: DEFAULT_HISTORICAL_DAYS,
+    historicalDays: configuration.mail.historicalAfterDays,
   };
 }
 

@@ -18,8 +18,8 @@ export interface StepFitInput extends EventData {
   readonly kind: StepKind;
   readonly frequencyHz: number;
   readonly frequencyDerivativeHzPerS: number;
-  /** A step of this group alone; absent: of all arrivals. */
-  readonly group?: number;
+  /** A step of these groups alone; absent: of all arrivals. */
+  readonly groups?: readonly number[];
 }
 
 export interface StepFit {
@@ -79,8 +79,8 @@ interface StepShape {
   readonly continuous: boolean;
 }
 
-function stepShape({ kind, group, frequencyHz }: StepFitInput): StepShape {
-  const concerns = (arrival: SeenArrival): number => (group === undefined || arrival.group === group ? 1 : 0);
+function stepShape({ kind, groups, frequencyHz }: StepFitInput): StepShape {
+  const concerns = (arrival: SeenArrival): number => (groups === undefined || groups.includes(arrival.group) ? 1 : 0);
   const microseconds = 1e6 / frequencyHz;
   switch (kind) {
     case 'time':

@@ -18,7 +18,7 @@ export function advance(watch: PulsarWatch, arrival: TimedArrival): void {
   const news = append(line, arrival, watch.phaseAt(arrival.tdb));
   const index = line.seen.length - 1;
   if (watch.bank === null) {
-    watch.bank = newBank(watch.noise, startBeam(watch), { index: 0, tDays: line.seen[0]!.tDays });
+    watch.bank = newBank(watch.noise, startBeam(watch), { index: 0, tDays: line.seen[0]!.tDays }, []);
     return;
   }
   if (news.newGroup) addNuisance(watch, 'offset');

@@ -8,6 +8,7 @@ import { logWeightOf, type Observation, observe, observeFirmly, pruned } from '.
 import { type BirthPlace, born, KINDS, type Kind } from './births.ts';
 import {
   copyOf,
+  type Decay,
   type Gap,
   gapOf,
   type Hypothesis,
@@ -39,6 +40,8 @@ export interface Bank {
   /** Natural log that all weights have been divided by so far. */
   logScale: number;
   snapshots: Snapshot[];
+  /** Recoveries from glitches that are believed. */
+  readonly decays: readonly Decay[];
   readonly scratch: Prediction;
 }
 
@@ -70,10 +73,11 @@ export function newBank(
   noise: NoiseModel,
   beam: Hypothesis[],
   at: { readonly index: number; readonly tDays: number },
+  decays: readonly Decay[],
 ): Bank {
   const scratch = { deviation: 0, variance: 0, gain: zeros(beam[0]!.mean.length), plain: true };
   const snapshots = [{ ...at, hypothesis: copyOf(beam[0]!) }];
-  return { noise, beam, families: [], logScale: 0, snapshots, scratch };
+  return { noise, beam, families: [], logScale: 0, snapshots, decays, scratch };
 }
 
 /** One more nuisance in every hypothesis: a receiver or a band seen for the first time. */
@@ -99,7 +103,7 @@ export interface BankStep {
 }
 
 export function stepBank(bank: Bank, step: BankStep): void {
-  const gap = gapOf(step.gapDays, bank.noise);
+  const gap = gapOf(step.gapDays, bank.noise, bank.decays);
   carry(bank, gap);
   if (step.place !== null) giveBirth(bank, step.place, step.seen.index);
   bank.beam = observe(bank.beam, step.seen, NULL_BEAM, bank.scratch);

@@ -6,6 +6,7 @@ import { collapse } from './bank.ts';
 import { explanationsOf, sessionsUsed, spreadOf, weigh } from './evidence.ts';
 import type { Hypothesis } from './hypothesis.ts';
 import type { PulsarWatch } from './pulsarWatch.ts';
+import { expectRecovery, looseRecovery } from './recoveryStates.ts';
 import { overlaps, type Track } from './track.ts';
 
 /** A confirmed event's explanation must hold at least this share against the other explanations. */
@@ -74,12 +75,18 @@ function suspect(watch: PulsarWatch, index: number): void {
 
 /** The hypotheses of the event become the null; the best of the others stay beside them, to take it back if need be. */
 function believe(watch: PulsarWatch, track: Track): void {
+  if (track.kind === 'glitch') expectRecovery(watch);
   const bank = watch.bank!;
   const winners: Hypothesis[] = [];
   const dissenters: Hypothesis[] = [...bank.beam];
   for (const family of bank.families) {
     if (family.kind !== track.kind) dissenters.push(...family.beam);
     else for (const h of family.beam) winners.push({ ...h, tracks: [...h.tracks, track.number] });
+  }
+  if (track.kind === 'glitch') {
+    const best = winners.reduce((a, b) => (b.logWeight > a.logWeight ? b : a));
+    track.rateStep = Math.abs(best.mean[1]! - bank.beam[0]!.mean[1]!);
+    for (const h of winners) looseRecovery(h, bank.decays, track.rateStep);
   }
   collapse(bank, winners, dissenters);
 }
@@ -106,6 +113,7 @@ function newTrack(watch: PulsarWatch, index: number): Track {
     lastGap: index,
     suspectedAt: index,
     confirmedAt: null,
+    rateStep: 0,
     logOdds: 0,
     explanations: {},
     settled: false,

@@ -1,7 +1,7 @@
 /**
  * One hypothesis: a Kalman filter with its own count of turns, its own story and its own weight.
  *
- * State, in turns and days: (deviation, its rate, its second derivative, then static nuisances). The deviation is
+ * State, in turns and days: (deviation, its rate, its second derivative, then receiver offsets, dispersion, recoveries). The deviation is
  * late-positive, so a spin-up of Δν appears as a rate step of −86400 Δν. Discretisation: method of Willsky & Jones 1976
  * for the jump, exact random-walk covariances for the gap between arrivals.
  */
@@ -42,12 +42,26 @@ export interface Gap {
   readonly days: number;
   /** Covariance that the random walks add, 3×3. */
   readonly walk: Float64Array;
+  readonly decays: readonly { readonly state: number; readonly turnsPerRate: number; readonly kept: number }[];
 }
 
-export function gapOf(days: number, noise: NoiseModel): Gap {
+/** A state that holds the decaying part of the rate (turns/day) after glitches: exponentials of one timescale add up. */
+export interface Decay {
+  readonly state: number;
+  readonly timescaleDays: number;
+}
+
+export function gapOf(days: number, noise: NoiseModel, decays: readonly Decay[]): Gap {
   const walk = new Float64Array(SPIN_STATES * SPIN_STATES);
   writeProcessNoise(days, noise, walk);
-  return { days, walk };
+  return {
+    days,
+    walk,
+    decays: decays.map(({ state, timescaleDays }) => {
+      const lost = -Math.expm1(-days / timescaleDays);
+      return { state, turnsPerRate: timescaleDays * lost, kept: 1 - lost };
+    }),
+  };
 }
 
 export function copyOf(h: Hypothesis, tracks: readonly number[] = h.tracks): Hypothesis {
@@ -78,6 +92,18 @@ export function propagate(h: Hypothesis, gap: Gap): void {
     const c2 = cov[row + 2]!;
     cov[row]! += t * cov[row + 1]! + half * c2;
     cov[row + 1]! += t * c2;
+  }
+  for (const { state, turnsPerRate, kept } of gap.decays) {
+    mean[0]! += turnsPerRate * mean[state]!;
+    mean[state]! *= kept;
+    for (let j = 0; j < size; j++) {
+      cov[j]! += turnsPerRate * cov[state * size + j]!;
+      cov[state * size + j]! *= kept;
+    }
+    for (let row = 0; row < size * size; row += size) {
+      cov[row]! += turnsPerRate * cov[row + state]!;
+      cov[row + state]! *= kept;
+    }
   }
   for (let i = 0; i < SPIN_STATES; i++)
     for (let j = 0; j < SPIN_STATES; j++) cov[i * size + j]! += gap.walk[i * SPIN_STATES + j]!;

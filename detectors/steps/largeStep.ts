@@ -87,7 +87,7 @@ function predictedDeviation(from: Snapshot, tDays: number): number {
 /** σ of the prediction at the end of the run, turns. */
 function predictionSpread(watch: PulsarWatch, from: Snapshot, tDays: number): number {
   const h = copyOf(from.hypothesis);
-  propagate(h, gapOf(tDays - from.tDays, watch.noise));
+  propagate(h, gapOf(tDays - from.tDays, watch.noise, watch.states.decays));
   return Math.sqrt(h.cov[0]!);
 }
 
@@ -100,7 +100,7 @@ function followed(watch: PulsarWatch, from: Snapshot, peak: SearchPeak, start: n
   const { seen } = watch.line;
   const gapDays = seen[start]!.tDays - from.tDays;
   const h = copyOf(from.hypothesis);
-  propagate(h, gapOf(gapDays, watch.noise));
+  propagate(h, gapOf(gapDays, watch.noise, watch.states.decays));
   const size = h.mean.length;
   h.mean[0]! += peak.phase;
   h.mean[1]! -= peak.frequencyStep;
@@ -122,7 +122,7 @@ function followed(watch: PulsarWatch, from: Snapshot, peak: SearchPeak, start: n
   let beam: Hypothesis[] = [h];
   for (let i = start; i <= index; i++) {
     if (i > start) {
-      const gap = gapOf(seen[i]!.tDays - seen[i - 1]!.tDays, watch.noise);
+      const gap = gapOf(seen[i]!.tDays - seen[i - 1]!.tDays, watch.noise, watch.states.decays);
       for (const b of beam) propagate(b, gap);
     }
     beam = observe(beam, observationOf(watch.line, i, watch.states, watch.noise), KEEP, watch.bank!.scratch);

@@ -6,9 +6,10 @@ import type { Estimate } from '../recovery/mixture.ts';
 import { fitStep, type StepFit } from '../recovery/stepFit.ts';
 import type { NoiseModel } from '../report.ts';
 import { type Alias, aliasesOf } from './aliases.ts';
+import { bestOf, countedArrivals, disturbances } from './counts.ts';
 import type { Hypothesis } from './hypothesis.ts';
 import type { PulsarWatch } from './pulsarWatch.ts';
-import { bestOf, countedArrivals, disturbances } from './relearn.ts';
+import { groupsOfSite } from './timeline.ts';
 import type { Track } from './track.ts';
 
 /** The fit of one event; `arrivals` are those it rests on, with `first` the index of the first of them. */
@@ -102,8 +103,13 @@ function fitted(
       frequencyCurve: fit.frequencyCurve,
     };
   }
-  const kinds = { 'clock step': 'time', 'dispersion step': 'dispersion', 'spin-down-rate change': 'spin-down rate' };
-  const step = fitStep({ ...input, kind: kinds[track.kind] as 'time' | 'dispersion' | 'spin-down rate' });
+  const kinds = {
+    'clock step': 'time',
+    'dispersion step': 'dispersion',
+    'spin-down-rate change': 'spin-down rate',
+  } as const;
+  const groups = track.kind === 'clock step' ? groupsOfSite(watch.line, track.bestGap) : null;
+  const step = fitStep({ ...input, kind: kinds[track.kind], ...(groups === null ? {} : { groups }) });
   const epoch = step.bestEpochDays;
   const rate = track.kind === 'spin-down-rate change' ? step.size.mean * 86_400 : 0;
   return {

@@ -1,14 +1,17 @@
 /** Learning the noise anew, and going through the past again with what was learned. */
 
-import type { CountedArrival, Disturbance } from '../filter/countedArrival.ts';
+import type { CountedArrival } from '../filter/countedArrival.ts';
 import { learnNoise } from '../filter/noiseLearning.ts';
 import { withMargin } from '../filter/noiseMargin.ts';
-import { logAddExp } from '../math/logSumExp.ts';
 import { newBank } from './bank.ts';
+import { logWeightOf, pruned } from './beam.ts';
 import { glitch } from './births.ts';
+import { bestOf, countedArrivals, disturbances } from './counts.ts';
 import { absorb, gapOf, type Hypothesis, loosen, predict, propagate, type Story } from './hypothesis.ts';
+import { measure } from './measure.ts';
 import { birthPlace } from './places.ts';
 import { asFixed, type PulsarWatch } from './pulsarWatch.ts';
+import { looseRecovery } from './recoveryStates.ts';
 import { foundStartRate, shareOfCount, startBeam } from './start.ts';
 import { stepAt } from './stepAt.ts';
 import { observationOf } from './timeline.ts';
@@ -22,8 +25,7 @@ const SURE_SHARE = 0.95;
 /** σ of a believed glitch when the past is gone through again: wide, its size is known from the arrivals. */
 const BELIEVED_GLITCH_SIZE = 2e-5;
 const BELIEVED_RATE_CHANGE = 0.2;
-/** With fewer arrivals before the window the start errors have not yet been told apart: all are kept. */
-const LEAST_PAST = 10;
+const SECONDS_PER_DAY = 86_400;
 
 export function learningDue(watch: PulsarWatch, index: number): boolean {
   const count = index + 1;
@@ -37,46 +39,29 @@ export function learningDue(watch: PulsarWatch, index: number): boolean {
 export function relearn(watch: PulsarWatch, index: number): void {
   watch.nextLearning = Math.ceil((index + 1) * LEARNING_GROWTH);
   const best = bestOf(watch);
-  const counted = countedArrivals(watch, best);
+  const counted = withoutRecoveries(watch, countedArrivals(watch, best));
   const known = disturbances(watch);
   const learned = learnNoise(counted, known, watch.prior, watch.noise);
   watch.noise = asFixed(watch.model, withMargin(learned, counted, known, watch.prior));
   rebuild(watch, index, best, foundStartRate(counted));
 }
 
-/** The heaviest hypothesis of all, event or not. */
-export function bestOf(watch: PulsarWatch): Hypothesis {
-  const bank = watch.bank!;
-  let best = bank.beam[0]!;
-  for (const family of bank.families) for (const h of family.beam) if (h.logWeight > best.logWeight) best = h;
-  return best;
-}
-
-/** The arrivals with the whole turns that the hypothesis gives them. */
-export function countedArrivals(watch: PulsarWatch, h: Hypothesis): CountedArrival[] {
-  const decisions: Story[] = new Array(watch.line.seen.length);
-  for (let s = h.story; s !== null; s = s.before) decisions[s.index] = s;
-  return watch.line.seen.map((seen, i) => ({
-    tDays: seen.tDays,
-    deviationTurns: seen.deviation + decisions[i]!.turns,
-    sigmaTurns: seen.sigmaTurns,
-    frequencyMhz: seen.arrival.frequencyMhz,
-    group: seen.group,
-    used: decisions[i]!.used,
-  }));
-}
-
-/** Events as free steps of their own, so that they are neither learned as noise nor found again. */
-export function disturbances(watch: PulsarWatch, except?: Track): Disturbance[] {
-  return watch.tracks
-    .filter((t) => t !== except && t.state !== 'withdrawn')
-    .map((t) => ({ beforeIndex: t.bestGap, ...freed(watch, t) }));
-}
-
-function freed(watch: PulsarWatch, track: Track): Pick<Disturbance, 'kind' | 'group'> {
-  if (track.kind === 'dispersion step' && watch.states.dispersion !== null) return { kind: 'dispersion' };
-  if (track.kind === 'clock step') return { kind: 'phase' };
-  return { kind: 'spin' };
+/** Takes established recoveries off: the free step of an event covers what stays, not what decays. */
+function withoutRecoveries(watch: PulsarWatch, counted: CountedArrival[]): CountedArrival[] {
+  let left = counted;
+  for (const track of watch.tracks) {
+    if (track.state !== 'confirmed' || track.kind !== 'glitch') continue;
+    const fit = measure(watch, track)?.glitch;
+    if (!fit?.recovery) continue;
+    const { bestEpochDays } = fit;
+    const timescale = fit.recovery.timescaleDays.median;
+    const turns = fit.recovery.frequencyStepHz.mean * SECONDS_PER_DAY * timescale;
+    left = left.map((a) => {
+      const since = a.tDays - bestEpochDays;
+      return since <= 0 ? a : { ...a, deviationTurns: a.deviationTurns - turns * Math.expm1(-since / timescale) };
+    });
+  }
+  return left;
 }
 
 /**
@@ -89,13 +74,17 @@ function rebuild(watch: PulsarWatch, index: number, best: Hypothesis, startRate:
   const windowStart = Math.max(watch.oldestGap, index - watch.settings.windowArrivals + 1, 1);
   const beam = startBeam(watch, startRate);
   for (let i = 1; i < Math.min(windowStart, index + 1); i++) for (const b of beam) retrace(watch, b, decisions[i]!);
-  // The start errors differ only at the very beginning; the heaviest has seen the same arrivals as all.
-  const h = beam.reduce((a, b) => (b.logWeight > a.logWeight ? b : a));
-  const total = beam.reduce((sum, b) => logAddExp(sum, b.logWeight), -Infinity);
-  h.logWeight -= total;
+  // All start errors go on: how far the model's ν̇ was off may not be settled for a hundred arrivals.
   const at = { index: windowStart - 1, tDays: watch.line.seen[windowStart - 1]!.tDays };
-  watch.bank = newBank(watch.noise, windowStart > LEAST_PAST ? [h] : beam, at);
+  watch.bank = newBank(watch.noise, normalised(beam), at, watch.states.decays);
   for (let i = windowStart; i <= index; i++) stepAt(watch, i, watch.locked);
+}
+
+function normalised(beam: Hypothesis[]): Hypothesis[] {
+  const kept = pruned(beam, beam.length);
+  const total = logWeightOf(kept);
+  for (const h of kept) h.logWeight -= total;
+  return kept;
 }
 
 /** One arrival with its known count; a believed event sets its states free in the gap before it. */
@@ -103,7 +92,7 @@ function retrace(watch: PulsarWatch, h: Hypothesis, decision: Story): void {
   const { line, states, noise } = watch;
   const i = decision.index;
   const gapDays = line.seen[i]!.tDays - line.seen[i - 1]!.tDays;
-  propagate(h, gapOf(gapDays, noise));
+  propagate(h, gapOf(gapDays, noise, states.decays));
   const mutable = h as { tracks: readonly number[] };
   for (const track of watch.tracks)
     if (track.bestGap === i && track.state === 'confirmed') {
@@ -126,12 +115,14 @@ function setFree(watch: PulsarWatch, h: Hypothesis, track: Track, gapDays: numbe
   const place = birthPlace(watch, track.bestGap, gapDays);
   const nu = place.frequencyHz;
   if (track.kind === 'glitch') {
-    glitch(h, BELIEVED_GLITCH_SIZE * nu * 86_400, place);
+    glitch(h, BELIEVED_GLITCH_SIZE * nu * SECONDS_PER_DAY, place);
+    looseRecovery(h, watch.states.decays, track.rateStep);
   } else if (track.kind === 'clock step') {
     for (const direction of place.offsetDirections) loosen(h, direction, 1);
   } else if (track.kind === 'dispersion step' && place.dispersionDirection !== null) {
     loosen(h, place.dispersionDirection, (0.3 * place.turnsPerDispersion) ** 2);
   }
   const size = h.mean.length;
-  h.cov[2 * size + 2]! += (BELIEVED_RATE_CHANGE * Math.abs(place.frequencyDerivativeHzPerS) * 86_400 ** 2) ** 2;
+  h.cov[2 * size + 2]! +=
+    (BELIEVED_RATE_CHANGE * Math.abs(place.frequencyDerivativeHzPerS) * SECONDS_PER_DAY ** 2) ** 2;
 }

@@ -8,6 +8,8 @@ import type { Interval, PulsarEvent } from './pulsarEvent.ts';
 const LEAST_PULSARS = 2;
 /** Events this many days apart may be the same step, seen by pulsars with different schedules. */
 const SLACK_DAYS = 0.5;
+/** A suspicion is explained by a site event when a clock step holds at least this share of it. */
+const LEAST_SHARE = 0.01;
 
 /** All pulsars' own events → what is published: site events stand in place of the events they explain. */
 export function combineSiteEvents(events: readonly PulsarEvent[]): readonly PulsarEvent[] {
@@ -27,8 +29,9 @@ export function combineSiteEvents(events: readonly PulsarEvent[]): readonly Puls
       window = common;
     }
     if (members.length < LEAST_PULSARS) continue;
-    for (const m of members) absorbed.add(m);
-    published.push(siteEvent(members, window));
+    const explained = events.filter((e) => !absorbed.has(e) && !members.includes(e) && isExplained(e, seed, window));
+    for (const e of [...members, ...explained]) absorbed.add(e);
+    published.push(siteEvent(members, window, explained));
   }
   for (const event of events) if (!absorbed.has(event)) published.push(event);
   return published.sort((a, b) => a.epochMjd - b.epochMjd || (a.id < b.id ? -1 : 1));
@@ -36,6 +39,17 @@ export function combineSiteEvents(events: readonly PulsarEvent[]): readonly Puls
 
 function isAlive(event: PulsarEvent): boolean {
   return event.state === 'suspected' || event.state === 'confirmed';
+}
+
+/** A mere suspicion of the same nights that a clock step could also be, in a pulsar of which nothing else is confirmed. */
+function isExplained(event: PulsarEvent, seed: PulsarEvent, window: Interval): boolean {
+  const share = event.explanations['clock step'] ?? 0;
+  return (
+    event.state === 'suspected' &&
+    share > LEAST_SHARE &&
+    (event.site === null || event.site === seed.site) &&
+    intersection(window, event.epochInterval95) !== null
+  );
 }
 
 function intersection(a: Interval, b: Interval): Interval | null {
@@ -50,7 +64,7 @@ function sameStep(a: PulsarEvent, b: PulsarEvent): boolean {
   return Math.abs(a.timeStepUs! - b.timeStepUs!) < 3 * Math.hypot(half(a), half(b));
 }
 
-function siteEvent(members: readonly PulsarEvent[], window: Interval): PulsarEvent {
+function siteEvent(members: readonly PulsarEvent[], window: Interval, explained: readonly PulsarEvent[]): PulsarEvent {
   const weights = members.map(
     (m) => 1 / Math.max(1e-12, (m.timeStepUsInterval68![1] - m.timeStepUsInterval68![0]) / 2) ** 2,
   );
@@ -79,6 +93,6 @@ function siteEvent(members: readonly PulsarEvent[], window: Interval): PulsarEve
     arrivalsUsed: members.reduce((sum, m) => sum + m.arrivalsUsed, 0),
     logBayesFactor: members.reduce((sum, m) => sum + m.logBayesFactor, 0),
     falseAlertsPerYearAtThisLevel: Math.min(...members.map((m) => m.falseAlertsPerYearAtThisLevel)),
-    pulsars: members.map((m) => m.pulsar).sort(),
+    pulsars: [...new Set([...members, ...explained].map((m) => m.pulsar))].sort(),
   };
 }

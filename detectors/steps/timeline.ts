@@ -5,7 +5,7 @@ import { arrivalVariance, SPIN_STATES } from '../filter/stateSpace.ts';
 import type { NoiseModel } from '../report.ts';
 import { daysBetween, type Mjd } from '../time/mjd.ts';
 import type { Observation } from './beam.ts';
-import { zeros } from './hypothesis.ts';
+import { type Decay, zeros } from './hypothesis.ts';
 
 /** One arrival on the time line. */
 export interface Seen {
@@ -67,6 +67,13 @@ export function append(
   return { newGroup: newGroup && group > 0, newBand };
 }
 
+/** The groups that share the site of an arrival; null when that is all of them. */
+export function groupsOfSite(line: Timeline, index: number): readonly number[] | null {
+  const site = `${line.seen[index]!.arrival.site}|`;
+  const members = line.groups.flatMap((name, group) => (name.startsWith(site) ? [group] : []));
+  return members.length === line.groups.length ? null : members;
+}
+
 function isNewBand(line: Timeline, mhz: number): boolean {
   if (line.firstBandMhz === null || !Number.isFinite(mhz)) return false;
   const ratio = mhz / line.firstBandMhz;
@@ -79,10 +86,12 @@ export interface StateMap {
   dispersion: number | null;
   /** By group; null for the reference group. */
   readonly offsets: (number | null)[];
+  /** Empty until a glitch is believed. */
+  decays: readonly Decay[];
 }
 
 export function newStateMap(): StateMap {
-  return { size: SPIN_STATES, dispersion: null, offsets: [null] };
+  return { size: SPIN_STATES, dispersion: null, offsets: [null], decays: [] };
 }
 
 /** (1 GHz / f)²: how strongly an arrival feels a turn of dispersion at 1 GHz. */

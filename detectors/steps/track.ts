@@ -14,6 +14,8 @@ export interface Track {
   lastGap: number;
   readonly suspectedAt: number;
   confirmedAt: number | null;
+  /** |Δν| in turns/day as the decision saw it: the scale of the recovery to be expected. */
+  rateStep: number;
   /** Natural-log posterior odds: this event against none. */
   logOdds: number;
   /** Probability by explanation, wandering and lost count among them. */

@@ -2,9 +2,9 @@
 
 import { arrivalVariance } from '../filter/stateSpace.ts';
 import type { ArrivalVerdict } from '../report.ts';
+import { bestOf } from './counts.ts';
 import type { Story } from './hypothesis.ts';
 import type { PulsarWatch } from './pulsarWatch.ts';
-import { bestOf } from './relearn.ts';
 
 export function verdictsOf(watch: PulsarWatch): ArrivalVerdict[] {
   if (watch.bank === null) return watch.line.seen.map((_, i) => verdict(watch, i, null));

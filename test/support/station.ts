@@ -16,7 +16,10 @@ export interface TestStation {
   readonly station: Station;
   readonly store: Store;
   readonly pipeline: Pipeline;
+  /** Time passes: both clocks go forward. */
   setNow(iso: string): void;
+  /** Somebody sets the wall clock. */
+  setWallClock(iso: string): void;
   /** Hands a file to the pipeline, as the watcher does. */
   deliver(name: string, content: string, options?: Partial<TakeInOptions>): Promise<TakenIn>;
   /** A new pipeline on the same record, with another configuration if one is given: what a restart does. */
@@ -46,8 +49,9 @@ function testStation(
   { now, close }: { now: string; close: () => Promise<void> },
 ): TestStation {
   let wall = new Date(now);
+  let passedMs = 0;
   let deliveries = 0;
-  const clock: Clock = { now: () => wall, monotonicMs: () => performance.now() };
+  const clock: Clock = { now: () => wall, monotonicMs: () => performance.now() + passedMs };
   tables ??= loadTables();
   const log = silentLog();
   const station = createStation({ configuration, store, tables: tables.tables, clock, log, reviewUrl: () => null });
@@ -56,7 +60,11 @@ function testStation(
     station,
     store,
     pipeline,
-    setNow: (iso) => {
+    setNow(iso) {
+      passedMs += Date.parse(iso) - wall.getTime();
+      wall = new Date(iso);
+    },
+    setWallClock(iso) {
       wall = new Date(iso);
     },
     deliver(name, content, options = {}) {

@@ -57,6 +57,7 @@ describe('a configuration', () => {
         transport: { kind: 'folder', folder: join(folder, 'mail') },
         to: ['duty@kestrel.example'],
         digestCron: '0 8 * * *',
+        historicalAfterDays: 30,
       },
       review: { host: '127.0.0.1', port: 0, reviewers: ['duty', 'timing'] },
     });

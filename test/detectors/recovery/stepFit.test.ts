@@ -50,7 +50,7 @@ function evidences(arrivals: readonly CountedArrival[], group?: number): Evidenc
   const kinds: StepKind[] = ['time', 'dispersion', 'spin-down rate'];
   const found: Evidences = { glitch: fitGlitch(inputFor(arrivals, 'time')).logEvidencePlain };
   for (const kind of kinds) {
-    found[kind] = fitStep({ ...inputFor(arrivals, kind), ...(group === undefined ? {} : { group }) }).logEvidenceStep;
+    found[kind] = fitStep({ ...inputFor(arrivals, kind), ...(group === undefined ? {} : { groups: [group] }) }).logEvidenceStep;
   }
   return found;
 }
@@ -74,7 +74,7 @@ describe('steps that are no glitch', () => {
 
   it('a clock step of one receiver group leaves the others alone', () => {
     const arrivals = stepped(pulsar(52), ({ group }) => (group === 1 ? -800e-6 * frequencyHz : 0));
-    const own = fitStep({ ...inputFor(arrivals, 'time'), group: 1 });
+    const own = fitStep({ ...inputFor(arrivals, 'time'), groups: [1] });
     const all = fitStep(inputFor(arrivals, 'time'));
     expect(own.size.interval95[0]).toBeLessThan(-800);
     expect(own.size.interval95[1]).toBeGreaterThan(-800);

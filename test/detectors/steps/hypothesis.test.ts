@@ -57,7 +57,7 @@ describe('the filter of one hypothesis is generalised least squares', () => {
       const scratch = { deviation: 0, variance: 0, gain: zeros(4), plain: true };
       let logLikelihood = 0;
       days.forEach((day, i) => {
-        if (i > 0) propagate(h, gapOf(day - days[i - 1]!, noise));
+        if (i > 0) propagate(h, gapOf(day - days[i - 1]!, noise, []));
         predict(h, { row: [1, 0, 0, second[i]!], plain: second[i] === 0 }, scratch);
         const variance = scratch.variance + sigma * sigma;
         const innovation = y[i]! - scratch.deviation;
