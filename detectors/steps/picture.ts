@@ -13,6 +13,7 @@ const CURVE_POINTS = 240;
 /** Arrivals in one local fit of ν, and how far its window moves on. */
 const LOCAL = 5;
 const STEP = 2;
+const KINK_DAYS = 1e-4;
 const SECONDS_PER_DAY = 86_400;
 
 interface Point {
@@ -42,7 +43,7 @@ export function pictureOf(
     2,
   );
   const [first, last] = [points[0]!.tDays, points.at(-1)!.tDays];
-  const grid = Array.from({ length: CURVE_POINTS }, (_, i) => first + ((last - first) * i) / (CURVE_POINTS - 1));
+  const grid = curveDays(points, first, last, measured.epochDays.median);
   const at = { frequencyMhz: watch.line.firstBandMhz ?? Number.POSITIVE_INFINITY, group: used.at(-1)!.index };
   const group = watch.line.seen[at.group]!.group;
   return {
@@ -63,6 +64,14 @@ export function pictureOf(
     epochInterval68: event.epochInterval68,
     frequencyHz: watch.model.spin.frequencyHz.hi,
   };
+}
+
+/** Evenly spaced, with every arrival and both sides of the epoch among them: a kink must not be cut by interpolation. */
+function curveDays(points: readonly Point[], first: number, last: number, epoch: number): number[] {
+  const even = Array.from({ length: CURVE_POINTS }, (_, i) => first + ((last - first) * i) / (CURVE_POINTS - 1));
+  const own = points.map((p) => p.tDays);
+  const kink = [epoch - KINK_DAYS, epoch + KINK_DAYS].filter((t) => t > first && t < last);
+  return [...new Set([...even, ...own, ...kink])].sort((a, b) => a - b);
 }
 
 function pointsAround(watch: PulsarWatch, gapIndex: number, measured: Measurement): Point[] {

@@ -64,7 +64,7 @@ export interface PulsarEvent {
   readonly falseAlertsPerYearAtThisLevel: number;
   /** For a site event: the pulsars that showed it. Else just this pulsar. */
   readonly pulsars: readonly string[];
-  /** The site, for a site event. */
+  /** The site, for a site event; before events are combined, of any clock step or bad session. */
   readonly site: string | null;
 }
 

@@ -33,7 +33,9 @@ export function combineSiteEvents(events: readonly PulsarEvent[]): readonly Puls
     for (const e of [...members, ...explained]) absorbed.add(e);
     published.push(siteEvent(members, window, explained));
   }
-  for (const event of events) if (!absorbed.has(event)) published.push(event);
+  // What is not joined stays the pulsar's own event.
+  for (const event of events)
+    if (!absorbed.has(event)) published.push(event.site === null ? event : { ...event, site: null });
   return published.sort((a, b) => a.epochMjd - b.epochMjd || (a.id < b.id ? -1 : 1));
 }
 

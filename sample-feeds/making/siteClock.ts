@@ -4,6 +4,8 @@ import { FIRST_NIGHT_MJD, LAST_NIGHT_MJD, SITES, type SiteName } from './observa
 
 const MARGIN_DAYS = 15;
 const ROW_EVERY_DAYS = 5;
+/** 2050: the nights were over long ago, and the demo is not about a table that has run out. */
+const CONTINUED_TO_MJD = 69_807;
 
 /** A maser's slow drift against UTC, measured every five days: complete and right but for the step that nobody noticed. */
 const DRIFT: Readonly<Record<SiteName, (days: number) => number>> = {
@@ -16,6 +18,8 @@ export function clockTableText(site: SiteName): string {
   for (let mjd = FIRST_NIGHT_MJD - MARGIN_DAYS; mjd <= LAST_NIGHT_MJD + MARGIN_DAYS; mjd += ROW_EVERY_DAYS) {
     rows.push(`${mjd}.0,${DRIFT[site](mjd - FIRST_NIGHT_MJD).toFixed(9)}`);
   }
+  const last = LAST_NIGHT_MJD + MARGIN_DAYS;
+  rows.push(`${CONTINUED_TO_MJD}.0,${DRIFT[site](last - FIRST_NIGHT_MJD).toFixed(9)}`);
   return `${rows.join('\n')}\n`;
 }
 
