@@ -53,6 +53,8 @@ export interface DecideOptions {
 const NOTHING: Omit<TakenIn, 'kind'> = { rows: 0, newArrivals: 0, quarantined: 0, pulsars: [], events: 0, mails: 0 };
 /** A file whose reading was begun so often and never ended takes the program down each time. */
 const MOST_READINGS = 3;
+/** The checksum of no file: what begins with it is counted anew for every other. */
+const NO_FILE = '';
 /** A verdict may come in while events are decided about: then they are decided about again. */
 const MOST_ROUNDS = 5;
 const DECISIONS_OPEN = 'decisions_open';
@@ -69,6 +71,8 @@ export class Pipeline {
   readonly #watches = new PulsarWatches();
   #last: Promise<unknown> = Promise.resolve();
   #stopping = false;
+  /** Paths whose reading storage trouble cut off, with its beginning noted. */
+  readonly #interrupted = new Set<string>();
 
   constructor(station: Station) {
     this.#station = station;
@@ -81,7 +85,7 @@ export class Pipeline {
   /** Times and decides again: pulsars whose arrivals were taken in with `later`, or whose model, tables or settings changed. */
   decide(pulsars: readonly string[], options: DecideOptions): Promise<void> {
     return this.#inTurn(async () => {
-      const recorded = pulsars.flatMap((pulsar) => this.#station.store.liveArrivals(pulsar));
+      const recorded = pulsars.flatMap((pulsar) => this.#station.store.arrivals(pulsar));
       this.#watches.forget(pulsars);
       await this.#decideAndRecord({ ...this.#batch(), retimed: retime(this.#station, recorded) }, pulsars, options);
     });
@@ -124,20 +128,23 @@ export class Pipeline {
     const intake = takeRows(this.#station, inHand);
     if (intake.unterminated && !options.acceptUnterminated) return { kind: 'cut short', ...NOTHING };
     const path = { bytesHex: inHand.pathBytes.toString('hex') };
-    const readings = store.noteReadingStarts(inHand.feed, path, intake.file.sha256);
+    const noted = this.#interrupted.delete(intake.file.path);
+    const readings = noted ? 1 : store.noteReadingStarts(inHand.feed, path, intake.file.sha256);
     if (readings > MOST_READINGS) return this.#setAside(intake, readings - 1);
     try {
       return await this.#takeInRead(intake, options);
     } catch (error) {
-      // Not the file's fault: what was noted against it is overwritten.
-      if (error instanceof Stopped || storageTrouble(error) !== null) store.noteReadingStarts(inHand.feed, path, '');
+      // Neither a stop nor a full disk is the file's fault: its beginning is not held against it.
+      if (error instanceof Stopped) store.noteReadingStarts(inHand.feed, path, NO_FILE);
+      else if (storageTrouble(error) !== null) this.#interrupted.add(intake.file.path);
       throw error;
     }
   }
 
   async #takeInRead(intake: Intake, options: TakeInOptions): Promise<TakenIn> {
     const batch = this.#timed(intake);
-    const pulsars = intake.reconciliation.pulsarsToDecide;
+    const { models } = this.#station.configuration;
+    const pulsars = intake.reconciliation.pulsarsToDecide.filter((pulsar) => models.has(pulsar));
     const decided = options.decide === 'now' ? pulsars : [];
     const { events, messages } = await this.#decideAndRecord(batch, decided, options);
     const result: TakenIn = {
@@ -200,6 +207,7 @@ export class Pipeline {
         reports.push(report);
         rows.push(reportRow(this.#station, report));
       } catch (error) {
+        if (storageTrouble(error) !== null) throw error;
         rows.push(...this.#leftOpen(pulsar, error));
       }
       onPulsar?.(i + 1);

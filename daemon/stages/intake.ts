@@ -1,6 +1,7 @@
 import { createHash } from 'node:crypto';
 import { closestName } from '../closestName.ts';
 import { BARYCENTRE } from '../intake/arrivalFields.ts';
+import { arrivalKey } from '../intake/key.ts';
 import { type Reconciliation, reconcile } from '../intake/reconcile.ts';
 import { type ArrivalFile, type ReceivedRow, readArrivalFile } from '../intake/rows.ts';
 import type { Station } from '../station.ts';
@@ -44,7 +45,8 @@ export function takeRows(station: Station, inHand: FileInHand): Intake {
   let waiting = false;
   for (const row of read.rows) {
     const missing = missingFor(station, row);
-    if (missing === null) known.push(row);
+    // What is on record stays there, also when its model was taken away since.
+    if (missing === null || station.store.arrival(arrivalKey(row)) !== null) known.push(row);
     else {
       quarantined.push({ line: row.line, reason: missing });
       waiting = true;

@@ -44,6 +44,16 @@ export function learnNoise(
   return coordinates.noiseAt(point);
 }
 
+/** ln of the prior's density at a noise model, relative to its peak. */
+export function logNoisePrior(noise: NoiseModel, prior: NoisePrior, medianSigmaTurns: number): number {
+  return (
+    -0.5 *
+    priorCoordinates(prior, medianSigmaTurns)
+      .pointOf(noise)
+      .reduce((sum, z) => sum + z * z, 0)
+  );
+}
+
 /** The noise model in units of the prior: each coordinate has mean 0 and scatter 1. */
 interface PriorCoordinates {
   noiseAt(point: Float64Array): NoiseModel;

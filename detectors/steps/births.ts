@@ -65,6 +65,8 @@ export interface BirthPlace {
   readonly dispersionDirection: readonly number[] | null;
   /** Turns at 1 GHz per pc cm⁻³. */
   readonly turnsPerDispersion: number;
+  /** The whole turns after the gap are decided: any size may be tried. */
+  readonly countKnown: boolean;
 }
 
 /** Children of one hypothesis (its state just before the arrival after the gap), weighted by the prior. */
@@ -81,7 +83,8 @@ export function born(kind: Kind, parent: Hypothesis, place: BirthPlace): Hypothe
     case 'glitch':
       for (const [share, size] of GLITCH_SIZES) {
         const rateTurns = size * place.frequencyHz * SECONDS_PER_DAY;
-        if (rateTurns * place.gapDays < SPREAD_LIMIT_TURNS) add(share, (h) => glitch(h, rateTurns, place));
+        if (place.countKnown || rateTurns * place.gapDays < SPREAD_LIMIT_TURNS)
+          add(share, (h) => glitch(h, rateTurns, place));
       }
       break;
     case 'spin-down-rate change':

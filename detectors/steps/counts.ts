@@ -28,14 +28,18 @@ export function countedArrivals(watch: PulsarWatch, h: Hypothesis): CountedArriv
   }));
 }
 
+/** Natural-log odds from which a suspicion is kept out of the noise. */
+const WORTH_NAMING = 3;
+
 /** Events as free steps of their own, so that they are neither learned as noise nor found again. */
 export function disturbances(watch: PulsarWatch, except?: Track): Disturbance[] {
   return watch.tracks
-    .filter((t) => t !== except && t.state !== 'withdrawn')
+    .filter((t) => t !== except && (t.state === 'confirmed' || (t.state === 'suspected' && t.logOdds > WORTH_NAMING)))
     .flatMap((t) => freed(watch, t).map((what) => ({ beforeIndex: t.bestGap, ...what })));
 }
 
-function freed(watch: PulsarWatch, track: Track): Omit<Disturbance, 'beforeIndex'>[] {
+/** The states that an event sets free. */
+export function freed(watch: PulsarWatch, track: Track): Omit<Disturbance, 'beforeIndex'>[] {
   if (track.kind === 'dispersion step' && watch.states.dispersion !== null) return [{ kind: 'dispersion' }];
   if (track.kind !== 'clock step') return [{ kind: 'spin' }];
   const groups = groupsOfSite(watch.line, track.bestGap);

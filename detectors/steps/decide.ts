@@ -5,6 +5,7 @@ import { mjdNumber } from '../time/mjd.ts';
 import { collapse } from './bank.ts';
 import { explanationsOf, sessionsUsed, spreadOf, weigh } from './evidence.ts';
 import type { Hypothesis } from './hypothesis.ts';
+import { jointOdds } from './jointOdds.ts';
 import type { PulsarWatch } from './pulsarWatch.ts';
 import { expectRecovery, looseRecovery } from './recoveryStates.ts';
 import { overlaps, type Track } from './track.ts';
@@ -66,7 +67,13 @@ function suspect(watch: PulsarWatch, index: number): void {
   if (weight - evidence.nothing < watch.settings.confirmLogOdds || weight < Math.log(EXPLANATION_SHARE)) return;
   const families = bank.families.filter((f) => f.kind === kind);
   const bestFamily = families.find((f) => f.gap === spread.bestGap)!;
-  if (sessionsUsed(bestFamily.beam[0]!, spread.bestGap, sessionOf) < LEAST_SESSIONS) return;
+  const holder = bestFamily.beam.reduce((a, b) => (b.logWeight > a.logWeight ? b : a));
+  if (sessionsUsed(holder, spread.bestGap, sessionOf) < LEAST_SESSIONS) return;
+  const joint = jointOdds(watch, track, holder);
+  if (joint.logOdds < watch.settings.confirmLogOdds) {
+    track.logOdds = Math.min(track.logOdds, joint.logOdds);
+    return;
+  }
   track.state = 'confirmed';
   track.confirmedAt ??= index;
   believe(watch, track);

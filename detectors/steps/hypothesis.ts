@@ -28,7 +28,7 @@ export interface Hypothesis {
   logWeight: number;
   story: Story | null;
   /** Numbers of the event tracks that this hypothesis holds for true. */
-  readonly tracks: readonly number[];
+  tracks: readonly number[];
   /** The last arrival was taken for an outlier. */
   lastSetAside: boolean;
 }

@@ -22,6 +22,7 @@ export function birthPlace(watch: PulsarWatch, index: number, gapDays: number): 
     offsetDirections: offsetDirections(watch, index),
     dispersionDirection: dispersionDirection(watch),
     turnsPerDispersion: turnsPerDispersion(watch),
+    countKnown: false,
   };
 }
 

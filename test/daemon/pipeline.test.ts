@@ -168,6 +168,24 @@ describe('the pipeline', () => {
     expect(eventsOf(changed)).toHaveLength(1);
   });
 
+  test('keeps what is on record of a pulsar whose model was taken away', async () => {
+    const at = await station();
+    await at.deliver('all.csv', ALL);
+    const before = eventsOf(at);
+    const { configuration } = at.station;
+    const poorer = at.restart({ ...configuration, models: new Map([...configuration.models].slice(1)) });
+    expect(poorer.station.configuration.models.has('KR 0417+31')).toBe(false);
+    const more = arrivalFile(syntheticArrivals(quiet, { ...span, fromMjd: START + 151, toMjd: START + 155, seed: 9 }));
+    const grown = ALL + more.split('\n').slice(1).join('\n');
+    expect(await poorer.deliver('all.csv', grown)).toMatchObject({
+      kind: 'taken in',
+      quarantined: 0,
+      pulsars: ['KR 1021-05'],
+    });
+    expect(eventsOf(at)).toEqual(before);
+    expect(at.store.liveArrivals('KR 0417+31')).toHaveLength(glitchingArrivals.length);
+  });
+
   test('remembers decisions that were left open', async () => {
     const at = await station();
     at.pipeline.leaveDecisionsOpen(true);

@@ -1,0 +1,70 @@
+/**
+ * Event or noise: both sides get the noise that suits them best. The bank weighs an event under noise learned before it; noise
+ * that was learned too quiet would make event after event, and each, once believed, would hide the noise. So before an
+ * event is confirmed the whole record is gone through twice: as noise alone, and as noise with the event.
+ */
+
+import { learnNoise, logNoisePrior } from '../filter/noiseLearning.ts';
+import type { NoiseModel } from '../report.ts';
+import { logWeightOf } from './beam.ts';
+import { born } from './births.ts';
+import { countedArrivals, disturbances, freed } from './counts.ts';
+import { withoutRecoveries } from './establishedRecoveries.ts';
+import { gapOf, type Hypothesis, propagate, type Story } from './hypothesis.ts';
+import { birthPlace } from './places.ts';
+import { asFixed, type PulsarWatch } from './pulsarWatch.ts';
+import { decisionsOf, retrace, takeIn } from './retrace.ts';
+import { foundStartRate, startBeam } from './start.ts';
+import type { Track } from './track.ts';
+
+export interface JointOdds {
+  /** Natural log of (this event and noise) against (noise alone), prior rates included. */
+  readonly logOdds: number;
+  /** The noise that explains the record best without the event. */
+  readonly noiseAlone: NoiseModel;
+}
+
+/** `h`: the heaviest hypothesis that holds the event for true; its counts are used on both sides. */
+export function jointOdds(watch: PulsarWatch, track: Track, h: Hypothesis): JointOdds {
+  const counted = withoutRecoveries(watch, countedArrivals(watch, h));
+  const others = disturbances(watch, track);
+  const own = freed(watch, track).map((what) => ({ beforeIndex: track.bestGap, ...what }));
+  const learn = (known: typeof others) => asFixed(watch.model, learnNoise(counted, known, watch.prior, watch.noise));
+  const sigmas = counted
+    .filter((a) => a.used)
+    .map((a) => a.sigmaTurns)
+    .sort((a, b) => a - b);
+  const medianSigma = sigmas[sigmas.length >> 1]!;
+  const decisions = decisionsOf(h);
+  const startRate = foundStartRate(counted);
+  const posterior = (noise: NoiseModel, event: Track | null) =>
+    logEvidence(watch, decisions, noise, { event, startRate, except: track }) +
+    logNoisePrior(noise, watch.prior, medianSigma);
+  const noiseAlone = learn(others);
+  return { logOdds: posterior(learn([...others, ...own]), track) - posterior(noiseAlone, null), noiseAlone };
+}
+
+/** ln P(arrivals | noise, events): with `event`, its sizes as a mixture at its most probable gap, by prior rate. */
+function logEvidence(
+  watch: PulsarWatch,
+  decisions: readonly Story[],
+  noise: NoiseModel,
+  given: { readonly event: Track | null; readonly except: Track; readonly startRate: number },
+): number {
+  const belief = { noise, tracks: watch.tracks.filter((t) => t.state === 'confirmed' && t !== given.except) };
+  let beam = startBeam(watch, given.startRate);
+  for (let i = 1; i < watch.line.seen.length; i++) {
+    const decision = decisions[i]!;
+    if (given.event?.bestGap !== i) {
+      for (const h of beam) retrace(watch, h, decision, belief);
+      continue;
+    }
+    const gapDays = watch.line.seen[i]!.tDays - watch.line.seen[i - 1]!.tDays;
+    const place = { ...birthPlace(watch, i, gapDays), countKnown: true };
+    for (const h of beam) propagate(h, gapOf(gapDays, noise, watch.states.decays));
+    const { kind } = given.event;
+    beam = beam.flatMap((h) => born(kind, h, place));
+    for (const h of beam) takeIn(watch, h, decision, noise);
+  }
+  return logWeightOf(beam);
+}
