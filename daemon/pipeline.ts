@@ -1,10 +1,12 @@
 import type { PulsarReport } from '../detectors/report.ts';
+import { mjdOf } from './clock.ts';
 import { reasonOf } from './errors.ts';
 import { bringToBarycentre, retime } from './stages/arrival.ts';
 import { type Consequences, consequencesOf, NO_CONSEQUENCES } from './stages/consequences.ts';
 import { reportRow } from './stages/decision.ts';
 import { followPulsar, type LogChanges } from './stages/deviation.ts';
 import { type FileInHand, type Intake, isOnRecord, SET_ASIDE, takeRows } from './stages/intake.ts';
+import { noteDecided, noteOpen, openDecisions } from './stages/openDecisions.ts';
 import { PulsarWatches } from './stages/pulsarWatches.ts';
 import type { Station } from './station.ts';
 import { step } from './store/crashStep.ts';
@@ -33,13 +35,15 @@ export interface TakenIn {
   readonly quarantined: number;
   /** Pulsars whose live arrivals changed. */
   readonly pulsars: readonly string[];
+  /** Those of them that wait for `decideOpen`. */
+  readonly open: readonly string[];
   readonly events: number;
   readonly mails: number;
 }
 
 export interface TakeInOptions {
-  /** `later`: `decide` will be called, once for many files. */
-  readonly decide: 'now' | 'later';
+  /** `later`: `decideOpen` will be called, once for many files. `now if fresh`: later only for what would wake nobody any more. */
+  readonly decide: 'now' | 'later' | 'now if fresh';
   readonly mail: boolean;
   /** Take the last row even without a line end. */
   readonly acceptUnterminated: boolean;
@@ -50,14 +54,13 @@ export interface DecideOptions {
   readonly onPulsar?: (done: number) => void;
 }
 
-const NOTHING: Omit<TakenIn, 'kind'> = { rows: 0, newArrivals: 0, quarantined: 0, pulsars: [], events: 0, mails: 0 };
+const NOTHING: Omit<TakenIn, 'kind'> = { rows: 0, newArrivals: 0, quarantined: 0, pulsars: [], open: [], events: 0, mails: 0 };
 /** A file whose reading was begun so often and never ended takes the program down each time. */
 const MOST_READINGS = 3;
 /** The checksum of no file: what begins with it is counted anew for every other. */
 const NO_FILE = '';
 /** A verdict may come in while events are decided about: then they are decided about again. */
 const MOST_ROUNDS = 5;
-const DECISIONS_OPEN = 'decisions_open';
 
 class Stopped extends Error {
   constructor() {
@@ -82,29 +85,34 @@ export class Pipeline {
     return this.#inTurn(() => this.#takeIn(file, options));
   }
 
-  /** Times and decides again: pulsars whose arrivals were taken in with `later`, or whose model, tables or settings changed. */
+  /** Times and decides again: pulsars whose model, tables or settings may have changed. */
   decide(pulsars: readonly string[], options: DecideOptions): Promise<void> {
     return this.#inTurn(async () => {
       const recorded = pulsars.flatMap((pulsar) => this.#station.store.arrivals(pulsar));
       this.#watches.forget(pulsars);
       await this.#decideAndRecord({ ...this.#batch(), retimed: retime(this.#station, recorded) }, pulsars, options);
+      noteDecided(this.#station.store, pulsars);
+    });
+  }
+
+  /** Decides about pulsars whose arrivals this pipeline took in with `later`. Answers how many mails that queued. */
+  decideOpen(pulsars: readonly string[]): Promise<number> {
+    return this.#inTurn(async () => {
+      const { messages } = await this.#decideAndRecord(this.#batch(), pulsars, { mail: true });
+      noteDecided(this.#station.store, pulsars);
+      return messages.length;
     });
   }
 
   /** Pulsars on record whose decisions rest on another model, other tables or settings than those of now, or were left open. */
   undecided(): readonly string[] {
     const { store, configuration } = this.#station;
-    const open = store.meta(DECISIONS_OPEN) === 'yes';
+    const open = new Set(openDecisions(store));
     const basis = new Map(store.pulsarReports().map((report) => [report.pulsar, report.basis]));
     return store.pulsars().filter((pulsar) => {
       const model = configuration.models.get(pulsar);
-      return model !== undefined && (open || basis.get(pulsar) !== this.#station.basisOf(model));
+      return model !== undefined && (open.has(pulsar) || basis.get(pulsar) !== this.#station.basisOf(model));
     });
-  }
-
-  /** Notes that arrivals go on record without a decision: should the work be cut off, the next start sees to them. */
-  leaveDecisionsOpen(open: boolean): void {
-    this.#station.store.setMeta(DECISIONS_OPEN, open ? 'yes' : 'no');
   }
 
   /** Leaves what is in hand at the next pulsar, with nothing of it on record, and refuses what comes. */
@@ -145,7 +153,9 @@ export class Pipeline {
     const batch = this.#timed(intake);
     const { models } = this.#station.configuration;
     const pulsars = intake.reconciliation.pulsarsToDecide.filter((pulsar) => models.has(pulsar));
-    const decided = options.decide === 'now' ? pulsars : [];
+    const now = options.decide === 'now' || (options.decide === 'now if fresh' && this.#isFresh(batch));
+    const [decided, open] = now ? [pulsars, []] : [[], pulsars];
+    noteOpen(this.#station.store, open);
     const { events, messages } = await this.#decideAndRecord(batch, decided, options);
     const result: TakenIn = {
       kind: intake.file.fault === null ? 'taken in' : 'quarantined whole',
@@ -153,11 +163,19 @@ export class Pipeline {
       newArrivals: batch.arrivals.length,
       quarantined: batch.quarantined.length,
       pulsars,
+      open,
       events: events.length,
       mails: messages.length,
     };
     this.#say(intake, result);
     return result;
+  }
+
+  /** A new arrival may still wake somebody, or old ones were corrected or taken back. */
+  #isFresh({ arrivals, statusChanges }: IntakeBatch): boolean {
+    const { configuration, clock } = this.#station;
+    const since = mjdOf(clock.now()) - configuration.mail.historicalAfterDays;
+    return statusChanges.length > 0 || arrivals.some(({ received: { time } }) => time.day + time.fraction >= since);
   }
 
   #timed({ file, reconciliation, quarantined }: Intake): IntakeBatch {
@@ -238,8 +256,8 @@ export class Pipeline {
     return emptyBatch(this.#station.clock.now().toISOString());
   }
 
-  #say({ file, quarantined }: Intake, { pulsars, ...result }: TakenIn): void {
-    const facts = { feed: file.feed, file: file.path, ...result, pulsars: pulsars.length };
+  #say({ file, quarantined }: Intake, { pulsars, open, ...result }: TakenIn): void {
+    const facts = { feed: file.feed, file: file.path, ...result, pulsars: pulsars.length, undecided: open.length };
     if (quarantined.length === 0) this.#station.log.info(facts, 'file taken in');
     else
       this.#station.log.warn(

@@ -40,8 +40,6 @@ export async function replay(station: Station, options: ReplayOptions): Promise<
   const { files, unreadable } = await inOrder(station.configuration, options);
   const pipeline = new Pipeline(station);
   const results: TakenIn[] = [];
-  const open = new Set(pipeline.undecided());
-  if (!options.mail) pipeline.leaveDecisionsOpen(true);
   for (const file of files) {
     const inHand = await readNow(file);
     if ('reason' in inHand) unreadable.push(inHand);
@@ -49,14 +47,13 @@ export async function replay(station: Station, options: ReplayOptions): Promise<
       const decide = options.mail ? 'now' : 'later';
       const result = await pipeline.takeIn(inHand, { decide, mail: options.mail, acceptUnterminated: true });
       results.push(result);
-      if (!options.mail) for (const pulsar of result.pulsars) open.add(pulsar);
     }
     options.onProgress(results.length + unreadable.length, files.length, 'files');
   }
   // In one go: events that an archive would show only in passing are never written.
-  const onPulsar = (done: number) => options.onProgress(done, open.size, 'pulsars');
-  if (open.size > 0) await pipeline.decide([...open].sort(), { mail: options.mail, onPulsar });
-  pipeline.leaveDecisionsOpen(false);
+  const open = pipeline.undecided();
+  const onPulsar = (done: number) => options.onProgress(done, open.length, 'pulsars');
+  if (open.length > 0) await pipeline.decide(open, { mail: options.mail, onPulsar });
   return { ...totals(results), unreadable };
 }
 

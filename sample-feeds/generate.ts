@@ -24,7 +24,7 @@ export function madeFiles(): MadeFile[] {
       content: startModel(pulsar, truthOf(pulsar)),
     })),
     ...sites.map((site) => ({ path: SITES[site].clockTable, content: clockTableText(site) })),
-    ...feedFiles(PULSARS.flatMap((pulsar) => observe(pulsar, tables, clocks))),
+    ...feedFiles(PULSARS.flatMap((pulsar) => observe(pulsar, truthOf(pulsar), tables, clocks))),
     { path: 'expected.json', content: `${JSON.stringify(expectedAnswers(), null, 2)}\n` },
   ];
 }

@@ -34,12 +34,24 @@ export function chebyshevValueAndRate(
   return evaluate(table, at, component);
 }
 
-/** Clenshaw's recurrence for the series and, beside it, for its derivative. */
 function evaluate(table: ChebyshevTable, at: Mjd, component: number): { value: number; ratePerS: number } {
   const { coefficients, terms, stepDays } = table;
   const step = Math.floor((at.day - table.startMjd) / stepDays);
   const x = (2 * (at.day - table.startMjd - step * stepDays + at.fraction)) / stepDays - 1;
-  const first = (step * table.components + component) * terms;
+  const { value, slope } = chebyshevSeries(coefficients, (step * table.components + component) * terms, terms, x);
+  return { value, ratePerS: (2 * slope) / (stepDays * SECONDS_PER_DAY) };
+}
+
+/**
+ * Σ cₖ Tₖ(x) and its derivative by x, the coefficients standing from index `first` on: Clenshaw's recurrence for the series and,
+ * beside it, for its derivative.
+ */
+export function chebyshevSeries(
+  coefficients: Float64Array,
+  first: number,
+  terms: number,
+  x: number,
+): { readonly value: number; readonly slope: number } {
   const twoX = 2 * x;
   let b1 = 0;
   let b2 = 0;
@@ -53,7 +65,5 @@ function evaluate(table: ChebyshevTable, at: Mjd, component: number): { value: n
     b2 = b1;
     b1 = b0;
   }
-  const value = coefficients[first]! + x * b1 - b2;
-  const ratePerX = b1 + x * d1 - d2;
-  return { value, ratePerS: (2 * ratePerX) / (stepDays * SECONDS_PER_DAY) };
+  return { value: coefficients[first]! + x * b1 - b2, slope: b1 + x * d1 - d2 };
 }

@@ -1,4 +1,7 @@
 import type { Mjd } from '../time/mjd.ts';
+import type { Orbit } from './orbitModel.ts';
+
+export type { KeplerianOrbit, Orbit, SmallEccentricityOrbit } from './orbitModel.ts';
 
 /** A decimal number held as the unevaluated sum of two doubles: 106 bits, for phases over decades. */
 export interface DoubleDouble {
@@ -16,9 +19,15 @@ export interface PulsarModel {
   /** [α cos δ, δ] */
   readonly properMotionMasPerYr: readonly [number, number];
   readonly parallaxMas: number;
-  /** pc cm⁻³ */
+  /** pc cm⁻³; where it has a slope, at that slope's epoch. */
   readonly dispersionMeasure: number;
+  /** pc cm⁻³ per year; absent: constant. */
+  readonly dispersionMeasureSlope?: { readonly perYr: number; readonly epochMjd: number };
+  /** Electrons per cm³ of the solar wind at 1 au; absent: none. */
+  readonly solarWindPerCm3?: number;
   readonly spin: SpinDown;
+  /** Absent: an isolated pulsar. */
+  readonly orbit?: Orbit;
   /** Known glitches, oldest first. */
   readonly glitches: readonly KnownGlitch[];
   readonly noise: NoiseSettings;
@@ -31,6 +40,10 @@ export interface SpinDown {
   readonly frequencyHz: DoubleDouble;
   readonly frequencyDerivativeHzPerS: number;
   readonly frequencySecondDerivativeHzPerS2: number;
+  /** d³ν/dt³ in Hz/s³, d⁴ν/dt⁴ in Hz/s⁴, …; absent: none. */
+  readonly higherFrequencyDerivatives?: readonly number[];
+  /** Phase at the epoch; absent: 0. The detector follows the deviation from any phase, so it only shifts what is shown. */
+  readonly phaseAtEpochTurns?: number;
 }
 
 /** A glitch that is part of the model: for Δt > 0 adds Δφ + Δν Δt + ½ Δν̇ Δt² + Σ Δνⱼ τⱼ (1 − e^(−Δt/τⱼ)). */

@@ -1,5 +1,6 @@
 /** From a track and its measurement to the event on record. */
 
+import { normalTail } from '../math/normal.ts';
 import type { Estimate } from '../recovery/mixture.ts';
 import { mjdNumber } from '../time/mjd.ts';
 import { RATE_PER_YEAR } from './births.ts';
@@ -56,12 +57,11 @@ export function describe(watch: PulsarWatch, track: Track, measured: Measurement
   };
 }
 
-/** Probability that a quantity is negative, from its median and 68 % interval (normal on each side). */
+/** Probability that a quantity is negative, as if it were normal. */
 function shareBelowZero(e: Estimate): number {
   if (e.interval95[0] > 0) return 0;
   if (e.interval95[1] < 0) return 1;
-  const sigma = Math.max(e.sd, Number.MIN_VALUE);
-  return 1 / (1 + Math.exp((1.702 * e.mean) / sigma));
+  return normalTail(e.mean / Math.max(e.sd, Number.MIN_VALUE));
 }
 
 /** Of the weight of a step in ν, the share that is a spin-down stands under its own name. */

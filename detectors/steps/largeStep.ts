@@ -43,20 +43,20 @@ function runStart(h: Hypothesis, index: number): number {
   return start;
 }
 
-/** True when hypotheses were added. */
-export function searchLargeStep(watch: PulsarWatch, index: number): boolean {
+/** Adds what it finds to the bank; does nothing while the latest arrivals fit. */
+export function searchLargeStep(watch: PulsarWatch, index: number): void {
   const bank = watch.bank!;
   const { seen } = watch.line;
   const start = runStart(bank.beam[0]!, index);
   const run = index + 1 - start;
   if (run < LEAST_RUN) {
     watch.nextSearch = LEAST_RUN;
-    return false;
+    return;
   }
-  if (run < watch.nextSearch || seen[index]!.tDays - seen[start]!.tDays < LEAST_RUN_DAYS) return false;
+  if (run < watch.nextSearch || seen[index]!.tDays - seen[start]!.tDays < LEAST_RUN_DAYS) return;
   watch.nextSearch = Math.ceil(run * RUN_GROWTH);
   const before = bank.snapshots.find((s) => s.index === start - 1);
-  if (before === undefined) return false;
+  if (before === undefined) return;
   const turnsPerDay = watch.model.spin.frequencyHz.hi * 86_400;
   const points = seen.slice(start, index + 1).map((s) => ({
     days: s.tDays - seen[start]!.tDays,
@@ -65,17 +65,16 @@ export function searchLargeStep(watch: PulsarWatch, index: number): boolean {
   const spread = predictionSpread(watch, before, seen[index]!.tDays);
   const peaks = searchStep(points, LOWEST_STEP * turnsPerDay, HIGHEST_STEP * turnsPerDay, spread);
   const found = peaks.flatMap((peak) => followed(watch, before, peak, start, index));
-  if (found.length === 0) return false;
+  if (found.length === 0) return;
   for (const h of found) h.logWeight -= bank.logScale;
   if (!watch.locked) {
     // Before the lock it is the start model that is wrong, not the pulsar that has changed.
     bank.beam = pruned([...bank.beam, ...found], bank.beam.length + found.length);
-    return true;
+    return;
   }
   const family = bank.families.find((f) => f.gap === start && f.kind === 'glitch');
   if (family) family.beam.push(...found);
   else bank.families.push({ kind: 'glitch', gap: start, beam: found });
-  return true;
 }
 
 function predictedDeviation(from: Snapshot, tDays: number): number {
@@ -114,10 +113,10 @@ function followed(watch: PulsarWatch, from: Snapshot, peak: SearchPeak, start: n
   const rateStep = 0.01 * Math.abs(watch.model.spin.frequencyDerivativeHzPerS) * 86_400 ** 2;
   h.cov[(SPIN_STATES - 1) * (size + 1)]! += rateStep * rateStep;
   const rootTwoPi = Math.sqrt(2 * Math.PI);
-  const size1 = Math.max(Math.abs(peak.frequencyStep), peak.width);
+  const stepOrWidth = Math.max(Math.abs(peak.frequencyStep), peak.width);
   h.logWeight +=
     Math.log(watch.locked ? (RATE_PER_YEAR.glitch * gapDays) / DAYS_PER_YEAR : WRONG_START_SHARE) +
-    Math.log(Math.min(1, (rootTwoPi * 2 * peak.width) / (LOG_RANGE * size1))) +
+    Math.log(Math.min(1, (rootTwoPi * 2 * peak.width) / (LOG_RANGE * stepOrWidth))) +
     Math.log(rootTwoPi * START_SPREAD_TURNS);
   let beam: Hypothesis[] = [h];
   for (let i = start; i <= index; i++) {

@@ -14,8 +14,10 @@ export type FeedName = (typeof FEEDS)[number];
 
 export interface Receiver {
   readonly name: string;
-  readonly feed: FeedName;
-  readonly site: SiteName;
+  readonly feed: string;
+  /** `barycentre`: whoever runs it delivers times that are there already, in TDB. */
+  readonly site: SiteName | 'barycentre';
+  /** Infinity where there is no dispersion. */
   readonly frequencyMhz: number;
   /** Delay of its cables and electronics: constant, and known to nobody at the observatory. */
   readonly delayUs: number;

@@ -7,7 +7,7 @@ import { type Chance, chance } from './chance.ts';
 import { BAD_SESSION, CLOCK_STEP, DISPERSION_STEP } from './happenings.ts';
 import { FIRST_NIGHT_MJD, LONGITUDE_DEG, NIGHTS, type Receiver, SITES, type SiteName } from './observatory.ts';
 import type { InventedPulsar, Observation } from './pulsars.ts';
-import { degrees, type Truth, truthOf } from './truth.ts';
+import { degrees, type Truth } from './truth.ts';
 
 /** One arrival as the recorder writes it. */
 export interface RecordedArrival {
@@ -26,10 +26,10 @@ const UNCERTAINTY_SCATTER = 0.25;
 /** All that the receivers recorded of one pulsar in the 400 nights. */
 export function observe(
   pulsar: InventedPulsar,
+  truth: Truth,
   tables: SkyTables,
   clocks: ReadonlyMap<SiteName, ClockTable>,
 ): RecordedArrival[] {
-  const truth = truthOf(pulsar);
   const sessions = chance(`sessions ${pulsar.name}`);
   const noise = chance(`measurement ${pulsar.name}`);
   const recorded: RecordedArrival[] = [];
@@ -67,22 +67,32 @@ interface Exposure {
 
 function record({ pulsar, truth, observation, at, night, tables, clocks, noise }: Exposure): RecordedArrival {
   const { receiver } = observation;
-  const site = { itrfM: SITES[receiver.site].itrfM, clock: clocks.get(receiver.site) ?? null };
-  const { reading, quality, reasons } = siteArrival(
-    pulseNear(at, truth),
-    modelAt(at, truth.model),
-    site,
-    receiver.frequencyMhz,
-    tables,
-  );
-  if (quality !== 'ok') throw new Error(`MJD ${mjdNumber(at)}: ${reasons.join('; ')}`);
+  const emitted = pulseNear(at, truth);
+  const passing = addSeconds(emitted, truth.orbitDelayS(emitted));
+  const reading =
+    receiver.site === 'barycentre'
+      ? passing
+      : readingOf(passing, modelAt(at, truth.model), { ...receiver, site: receiver.site }, { tables, clocks });
   const uncertaintyUs = observation.uncertaintyUs * Math.exp(UNCERTAINTY_SCATTER * noise.normal());
   const errorUs = uncertaintyUs * pulsar.uncertaintyScale * noise.normal();
   const lateUs = receiver.delayUs + errorUs + mishapUs(pulsar, receiver, reading, night);
   return { pulsar: pulsar.name, reading: addSeconds(reading, lateUs * 1e-6), uncertaintyUs, receiver };
 }
 
-/** The pulse that passes the barycentre nearest to a given time. */
+/** What the clock of the receiver's site reads when a pulse arrives that passes the barycentre at a given time. */
+function readingOf(
+  passing: Mjd,
+  model: PulsarModel,
+  { site, frequencyMhz }: { readonly site: SiteName; readonly frequencyMhz: number },
+  { tables, clocks }: Pick<Exposure, 'tables' | 'clocks'>,
+): Mjd {
+  const place = { itrfM: SITES[site].itrfM, clock: clocks.get(site) ?? null };
+  const { reading, quality, reasons } = siteArrival(passing, model, place, frequencyMhz, tables);
+  if (quality !== 'ok') throw new Error(`MJD ${mjdNumber(passing)}: ${reasons.join('; ')}`);
+  return reading;
+}
+
+/** The pulse that passes the barycentre nearest to a given time; of a binary's pulsar, its own barycentre. */
 function pulseNear(tdb: Mjd, { turnsPastPulse, frequencyHz }: Truth): Mjd {
   let pulse = tdb;
   for (let round = 0; round < 4; round++) pulse = addSeconds(pulse, -turnsPastPulse(pulse) / frequencyHz);

@@ -8,6 +8,8 @@ export interface InventedPulsar {
   readonly declination: string;
   readonly properMotionMasPerYr: readonly [number, number];
   readonly parallaxMas: number;
+  /** How far off the truth lies on each axis, where it is not a milliarcsecond. */
+  readonly positionErrorMas?: number;
   /** pc cm⁻³, as the observatory has it; the truth lies about 0.0005 away. */
   readonly dispersionMeasure: number;
   /** The truth, at the middle of the start model's span. */
@@ -17,7 +19,19 @@ export interface InventedPulsar {
   readonly timingNoiseUs: number;
   /** True scatter of the arrivals over their stated uncertainty. */
   readonly uncertaintyScale: number;
+  /** About a companion, known to the observatory as it is. */
+  readonly orbit?: InventedOrbit;
   readonly programme: readonly Observation[];
+}
+
+/** Keplerian: no precession, no decay. */
+export interface InventedOrbit {
+  readonly periodDays: number;
+  /** Projected semi-major axis over the speed of light. */
+  readonly semiMajorAxisLightS: number;
+  readonly eccentricity: number;
+  readonly periastronLongitudeDeg: number;
+  readonly periastronMjd: number;
 }
 
 export interface Observation {

@@ -6,6 +6,7 @@ import { type Mjd, mjdNumber, normalMjd } from '../../detectors/time/mjd.ts';
 import { type Chance, chance } from './chance.ts';
 import { GLITCHES, type Glitch } from './happenings.ts';
 import { FIRST_NIGHT_MJD, MODEL_SPAN_DAYS, NIGHTS } from './observatory.ts';
+import { orbitDelay } from './orbit.ts';
 import type { InventedPulsar } from './pulsars.ts';
 
 /** How a pulsar really turns and where it really stands. */
@@ -15,6 +16,8 @@ export interface Truth {
   readonly wander: (tdb: Mjd) => number;
   /** Whole turns apart from the nearest pulse, late positive, with everything that happened to it. */
   readonly turnsPastPulse: (tdb: Mjd) => number;
+  /** How much later than the binary's own barycentre the pulsar is seen, for a pulse emitted then; 0 when it is alone. */
+  readonly orbitDelayS: (emitted: Mjd) => number;
   readonly frequencyHz: number;
 }
 
@@ -25,8 +28,9 @@ export const POSITION_EPOCH_MJD = 60_000;
 const POSITION_ERROR_MAS = 1;
 const DISPERSION_ERROR = 0.0005;
 
-export function truthOf(pulsar: InventedPulsar): Truth {
-  const model = trueModel(pulsar);
+/** @param planted of all pulsars; those of this one are picked out */
+export function truthOf(pulsar: InventedPulsar, planted: readonly Glitch[] = GLITCHES): Truth {
+  const model = trueModel(pulsar, planted);
   const frequencyHz = toNumber(model.spin.frequencyHz);
   const wander = timingNoise(pulsar.timingNoiseUs * 1e-6 * frequencyHz, chance(`timing noise ${pulsar.name}`));
   const phase = phaseEvaluator(model);
@@ -37,14 +41,15 @@ export function truthOf(pulsar: InventedPulsar): Truth {
       const turns = phase(tdb).deviationTurns + wander(tdb);
       return turns - Math.round(turns);
     },
+    orbitDelayS: pulsar.orbit === undefined ? () => 0 : orbitDelay(pulsar.orbit),
     frequencyHz,
   };
 }
 
-function trueModel(pulsar: InventedPulsar): PulsarModel {
+function trueModel(pulsar: InventedPulsar, planted: readonly Glitch[]): PulsarModel {
   const { normal } = chance(`catalogue errors ${pulsar.name}`);
   const catalogueDeclination = degrees(pulsar.declination) * (Math.PI / 180);
-  const error = POSITION_ERROR_MAS * RADIANS_PER_MAS;
+  const error = (pulsar.positionErrorMas ?? POSITION_ERROR_MAS) * RADIANS_PER_MAS;
   const spin = {
     epochTdb: normalMjd(SPIN_EPOCH_MJD, 0),
     frequencyHz: parseDoubleDouble(pulsar.frequencyHz),
@@ -61,7 +66,7 @@ function trueModel(pulsar: InventedPulsar): PulsarModel {
     parallaxMas: pulsar.parallaxMas,
     dispersionMeasure: pulsar.dispersionMeasure + DISPERSION_ERROR * normal(),
     spin,
-    glitches: GLITCHES.filter((glitch) => glitch.pulsar === pulsar.name).map((glitch) =>
+    glitches: planted.filter((glitch) => glitch.pulsar === pulsar.name).map((glitch) =>
       glitchTerms(glitch, toNumber(spin.frequencyHz), spin.frequencyDerivativeHzPerS),
     ),
     noise: {},
