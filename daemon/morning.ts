@@ -1,6 +1,7 @@
 import { median } from 'simple-statistics';
 import type { MorningReview } from '../alerts/index.ts';
 import type { PulsarEvent } from '../detectors/steps/pulsarEvent.ts';
+import { changesInBrief } from './changesInBrief.ts';
 import { civilTime, instantOf, mjdOf } from './clock.ts';
 import type { Configuration } from './config/configuration.ts';
 import { type DigestRule, digestRule } from './schedule/digestDue.ts';
@@ -40,7 +41,7 @@ export function morningReview(sources: MorningSources, date?: string): MorningRe
       .filter(({ event }) => event.state === 'suspected')
       .map(({ event }) => event)
       .sort(mostCredibleFirst),
-    changed: store.eventChangesSince(period.since).filter((change) => change.at <= period.until),
+    changed: changesInBrief(store.eventChangesSince(period.since).filter((change) => change.at <= period.until)),
     quarantined: store.quarantinedSince(period.since).filter((row) => row.at <= period.until),
     silentFeeds: silentFeeds(configuration, store, now),
     silentPulsars: silentPulsars(store, now),

@@ -3,7 +3,7 @@ import type { EventState } from '../../detectors/steps/pulsarEvent.ts';
 import { mjdOf } from '../clock.ts';
 import { EXIT, OperatorError } from '../errors.ts';
 import type { ListedEvent } from '../records.ts';
-import { withRecord } from './record.ts';
+import { requirePulsar, withRecord } from './record.ts';
 import { table } from './table.ts';
 import { printJson, type Terminal } from './terminal.ts';
 
@@ -23,7 +23,10 @@ export async function events(terminal: Terminal, options: EventsOptions): Promis
     ...(pulsar === undefined ? {} : { pulsar }),
     ...(state === undefined ? {} : { state }),
   };
-  const listed = await withRecord(options.config, (store) => store.events(filter));
+  const listed = await withRecord(options.config, (store, { models }) => {
+    if (pulsar !== undefined) requirePulsar(pulsar, [...models.keys(), ...store.pulsars()]);
+    return store.events(filter);
+  });
   if (options.json)
     printJson(
       terminal,

@@ -1,3 +1,4 @@
+import { closestName } from '../closestName.ts';
 import type { Configuration } from '../config/configuration.ts';
 import { EXIT, OperatorError } from '../errors.ts';
 import { loadOrders, openRecord } from '../opening.ts';
@@ -16,6 +17,15 @@ export async function withRecord<Result>(
   } finally {
     store.close();
   }
+}
+
+/** A name mistyped must not look like silence. */
+export function requirePulsar(name: string, known: readonly string[]): void {
+  if (known.includes(name)) return;
+  const near = closestName(name, known);
+  throw new OperatorError(`there is no pulsar ${name}${near === null ? '' : ` (did you mean ${near}?)`}`, {
+    exitCode: EXIT.wrongUsage,
+  });
 }
 
 /** The event of an id, or of one it had before. */
