@@ -24,6 +24,8 @@ export interface Family {
   /** Index of the first arrival after the gap. */
   readonly gap: number;
   beam: Hypothesis[];
+  /** Natural log of the weight of all of them. */
+  logWeight: number;
 }
 
 /** The heaviest null hypothesis after an arrival, kept to search back from. */
@@ -107,10 +109,11 @@ export function stepBank(bank: Bank, step: BankStep): void {
   carry(bank, gap);
   if (step.place !== null) giveBirth(bank, step.place, step.seen.index);
   bank.beam = observe(bank.beam, step.seen, NULL_BEAM, bank.scratch);
+  const last = { page: null };
   for (const family of bank.families) {
     const age = step.seen.index - family.gap;
     if (age < YOUNG_ARRIVALS) family.beam = observe(family.beam, step.seen, YOUNG_BEAM[family.kind], bank.scratch);
-    else observeFirmly(family.beam, step.seen, bank.scratch);
+    else observeFirmly(family.beam, step.seen, bank.scratch, last);
     if (age === YOUNG_ARRIVALS) family.beam = pruned(family.beam, OLD_BEAM[family.kind]);
   }
   settle(bank, step.oldestGap);
@@ -128,25 +131,31 @@ function giveBirth(bank: Bank, place: BirthPlace, index: number): void {
   const parents = bank.beam.slice(0, PARENTS).filter((h) => h.logWeight > best - PARENT_NATS);
   for (const kind of KINDS) {
     const beam = parents.flatMap((parent) => born(kind, parent, place));
-    if (beam.length > 0) bank.families.push({ kind, gap: index, beam });
+    if (beam.length > 0) bank.families.push({ kind, gap: index, beam, logWeight: logWeightOf(beam) });
   }
 }
 
 /** Drops what is too old or too light to matter, and divides all weights by their sum. */
 function settle(bank: Bank, oldestGap: number): void {
   const nothing = logWeightOf(bank.beam);
-  const weights = bank.families.map((f) => logWeightOf(f.beam));
-  const heaviest = Math.max(nothing, ...weights);
+  let heaviest = nothing;
+  for (const family of bank.families) {
+    family.logWeight = logWeightOf(family.beam);
+    heaviest = Math.max(heaviest, family.logWeight);
+  }
   let sum = Math.exp(nothing - heaviest);
-  bank.families = bank.families.filter((f, i) => {
-    if (f.gap < oldestGap || weights[i]! < heaviest - FAMILY_FLOOR_NATS) return false;
-    sum += Math.exp(weights[i]! - heaviest);
+  bank.families = bank.families.filter((f) => {
+    if (f.gap < oldestGap || f.logWeight < heaviest - FAMILY_FLOOR_NATS) return false;
+    sum += Math.exp(f.logWeight - heaviest);
     return true;
   });
   const total = heaviest + Math.log(sum);
   bank.logScale += total;
   for (const h of bank.beam) h.logWeight -= total;
-  for (const family of bank.families) for (const h of family.beam) h.logWeight -= total;
+  for (const family of bank.families) {
+    family.logWeight -= total;
+    for (const h of family.beam) h.logWeight -= total;
+  }
 }
 
 function absoluteCopy(bank: Bank, h: Hypothesis): Hypothesis {

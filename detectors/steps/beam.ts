@@ -4,7 +4,7 @@
  */
 
 import { logAddExp } from '../math/logSumExp.ts';
-import { absorb, copyOf, type Hypothesis, type Prediction, predict, type Sight } from './hypothesis.ts';
+import { absorb, copyOf, type Hypothesis, type Prediction, predict, type Sight, type Story } from './hypothesis.ts';
 
 /** One arrival as every hypothesis sees it. */
 export interface Observation {
@@ -100,7 +100,12 @@ function follow(b: Branch, child: Hypothesis, seen: Observation, scratch: Predic
  * The same without branching, in place: each hypothesis takes its likeliest branch and the weight of all of them. For
  * beams whose counts are settled; the cost is one filter step each.
  */
-export function observeFirmly(beam: readonly Hypothesis[], seen: Observation, scratch: Prediction): void {
+export function observeFirmly(
+  beam: readonly Hypothesis[],
+  seen: Observation,
+  scratch: Prediction,
+  last: LastPage,
+): void {
   for (const h of beam) {
     predict(h, seen.sight, scratch);
     const spread2 = scratch.variance + seen.variance;
@@ -113,8 +118,21 @@ export function observeFirmly(beam: readonly Hypothesis[], seen: Observation, sc
     h.logWeight += Math.log(good + outlierShare);
     h.lastSetAside = good < outlierShare;
     if (!h.lastSetAside) absorb(h, scratch, innovation, spread2);
-    h.story = { index: seen.index, turns, used: !h.lastSetAside, slipped: false, before: h.story };
+    h.story = continued(h.story, seen.index, turns, !h.lastSetAside, last);
   }
+}
+
+/** The page of a story that was written last: hypotheses of one origin mostly decide alike, and share it. */
+export interface LastPage {
+  page: Story | null;
+}
+
+function continued(before: Story | null, index: number, turns: number, used: boolean, last: LastPage): Story {
+  const { page } = last;
+  if (page !== null && page.before === before && page.index === index && page.turns === turns && page.used === used)
+    return page;
+  last.page = { index, turns, used, slipped: false, before };
+  return last.page;
 }
 
 /** Heaviest first; near-equal states merged; what cannot matter dropped. */

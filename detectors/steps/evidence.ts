@@ -22,9 +22,8 @@ export function weigh(bank: Bank): Evidence {
   const byKind = new Map<Kind, number>();
   let something = -Infinity;
   for (const family of bank.families) {
-    const weight = logWeightOf(family.beam);
-    byKind.set(family.kind, logAddExp(byKind.get(family.kind) ?? -Infinity, weight));
-    something = logAddExp(something, weight);
+    byKind.set(family.kind, logAddExp(byKind.get(family.kind) ?? -Infinity, family.logWeight));
+    something = logAddExp(something, family.logWeight);
   }
   let strongest: Kind | null = null;
   for (const [kind, weight] of byKind) if (strongest === null || weight > byKind.get(strongest)!) strongest = kind;
@@ -35,7 +34,7 @@ export function weigh(bank: Bank): Evidence {
 export function spreadOf(bank: Bank, kind: Kind): GapSpread {
   const gaps = bank.families
     .filter((f) => f.kind === kind)
-    .map((f) => ({ gap: f.gap, weight: Math.exp(logWeightOf(f.beam)) }))
+    .map((f) => ({ gap: f.gap, weight: Math.exp(f.logWeight) }))
     .sort((a, b) => b.weight - a.weight);
   const total = gaps.reduce((sum, g) => sum + g.weight, 0);
   const bestGap = gaps[0]!.gap;

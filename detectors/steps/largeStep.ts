@@ -5,7 +5,7 @@
 
 import { SPIN_STATES } from '../filter/stateSpace.ts';
 import type { Snapshot } from './bank.ts';
-import { observe, pruned } from './beam.ts';
+import { logWeightOf, observe, pruned } from './beam.ts';
 import { RATE_PER_YEAR } from './births.ts';
 import { type SearchPeak, searchStep } from './circularSearch.ts';
 import { copyOf, gapOf, type Hypothesis, propagate } from './hypothesis.ts';
@@ -73,8 +73,10 @@ export function searchLargeStep(watch: PulsarWatch, index: number): void {
     return;
   }
   const family = bank.families.find((f) => f.gap === start && f.kind === 'glitch');
-  if (family) family.beam.push(...found);
-  else bank.families.push({ kind: 'glitch', gap: start, beam: found });
+  if (family) {
+    family.beam.push(...found);
+    family.logWeight = logWeightOf(family.beam);
+  } else bank.families.push({ kind: 'glitch', gap: start, beam: found, logWeight: logWeightOf(found) });
 }
 
 function predictedDeviation(from: Snapshot, tDays: number): number {

@@ -15,6 +15,8 @@ const START_ERRORS: readonly (readonly [share: number, rate: number, derivative:
   [0.3, 1e-3, 3e-6],
   [0.2, 1e-2, 3e-5],
 ];
+/** Where torque noise is strong, a model is off by what the noise does to a fit over about so long. */
+const FITTED_DAYS = 100;
 /** σ of an offset between receivers, turns: anything. */
 const RECEIVER_OFFSET_TURNS = 0.3;
 /** σ of the error of the start model's dispersion measure, pc cm⁻³. */
@@ -32,7 +34,7 @@ export function startBeam(watch: PulsarWatch, rate = 0): Hypothesis[] {
   const first = watch.line.seen[0]!;
   const size = watch.states.size;
   const variance = arrivalVariance(first.sigmaTurns, watch.noise);
-  return START_ERRORS.map(([share, rateError, derivative]) => {
+  return startErrors(watch).map(([share, rateError, derivative]) => {
     const mean = zeros(size);
     mean[0] = first.deviation;
     mean[1] = rate;
@@ -48,6 +50,16 @@ export function startBeam(watch: PulsarWatch, rate = 0): Hypothesis[] {
     const story = { index: 0, turns: 0, used: true, slipped: false, before: null };
     return { mean, cov, logWeight: Math.log(share), story, tracks: [], lastSetAside: false };
   });
+}
+
+/** The widest of the mixture is at least as wide as the pulsar's expected walk in frequency makes it. */
+function startErrors({ prior }: PulsarWatch): typeof START_ERRORS {
+  const walk = prior.frequencyWalk.median;
+  return START_ERRORS.map(([share, rate, derivative], i) =>
+    i < START_ERRORS.length - 1
+      ? [share, rate, derivative]
+      : [share, Math.max(rate, Math.sqrt(walk * FITTED_DAYS)), Math.max(derivative, Math.sqrt(walk / FITTED_DAYS))],
+  );
 }
 
 /** A receiver or a band seen for the first time: one more state in every hypothesis. */
