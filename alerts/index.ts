@@ -12,14 +12,16 @@ export {
   type MailTransport,
   markPossibleDuplicate,
   safeFileName,
+  withoutPicture,
 } from './mailer/index.ts';
 export { composeEventMail, type EventMail } from './message.ts';
 export type { MorningReview, QuarantinedRow } from './morningReview.ts';
 export { eventsCsv } from './notice/csv.ts';
+export { type CsvColumns, csvTable } from './notice/csvTable.ts';
 export { eventJson } from './notice/json.ts';
 export { type NoticeContext, voevent } from './notice/voevent.ts';
 export { composeOperatorNotice, composeStormNotice, composeTestMail, type OperatorNotice } from './operatorNotice.ts';
-export { renderPng } from './picture.ts';
+export { prepareRenderer, renderPng } from './picture.ts';
 export { DARK_PALETTE, eventSvg, LIGHT_PALETTE, type PlotPalette, type PlotWords } from './plot/index.ts';
 export {
   type AlertDecision,
@@ -33,7 +35,7 @@ export {
   type PlannedMessage,
   type ToldBefore,
 } from './policy.ts';
-export { dateOfMjd, isoDay, mjdText, momentText } from './wording/dates.ts';
+export { dateOfMjd, isoDay, mjdText, momentText, timeInWords } from './wording/dates.ts';
 export { percent, quantity } from './wording/numbers.ts';
 export { eventName, subjectOf } from './wording/phrases.ts';
 export { type EventSheet, eventSheet, sizeText } from './wording/sheet.ts';

@@ -8,6 +8,13 @@ const FONT_FILES = ['dejavu-fonts-ttf/ttf/DejaVuSans.ttf', 'dejavu-fonts-ttf/ttf
 
 let prepared: Promise<Uint8Array[]> | null = null;
 
+/** Gets ready what takes a second or two the first time, so that the first alert need not wait for it. */
+export async function prepareRenderer(): Promise<void> {
+  await renderPng(FIRST_PICTURE);
+}
+
+const FIRST_PICTURE = '<svg xmlns="http://www.w3.org/2000/svg" width="8" height="8"><text y="8">ν</text></svg>';
+
 /** @returns the PNG, as wide as the SVG says */
 export async function renderPng(svg: string): Promise<Buffer> {
   prepared ??= prepare().catch((error: unknown) => {

@@ -6,10 +6,17 @@ import type { Clock } from './clock.ts';
  */
 export interface Backlog {
   readonly isEmpty: boolean;
-  /** Pulsars whose decisions a file left open, and how many files wait behind it. */
-  add(pulsars: readonly string[], filesWaiting: number): void;
+  /** Pulsars whose decisions a file left open. */
+  add(pulsars: readonly string[], file: FileTakenIn): void;
   /** Takes no decision any more, and waits for the one in hand. What is open stays open on record. */
   stop(): Promise<void>;
+}
+
+export interface FileTakenIn {
+  /** It may hold what somebody must hear of soon. */
+  readonly isFresh: boolean;
+  /** Files that have settled and come after it. */
+  readonly filesWaiting: number;
 }
 
 export interface BacklogOptions {
@@ -21,28 +28,32 @@ export interface BacklogOptions {
 
 /** The next file of a swarm comes within this time. */
 const QUIET_MS = 300;
-/** While files go on waiting: so long after the first decision was left open, and never more than a fifth of the time. */
-const LONGEST_OPEN_MS = 5000;
-const FILES_PER_DECISION_TIME = 4;
+/** While files go on waiting, the first decision that was left open is taken after this time; yet deciding takes a fifth of the time. */
+const LONGEST_OPEN_MS = { fresh: 5000, old: 60_000 } as const;
+const PAUSE_PER_DECISION_TIME = 4;
 const RETRY_MS = 60_000;
 
 export function createBacklog({ decide, onFailure, clock }: BacklogOptions): Backlog {
   const open = new Set<string>();
-  let openSinceMs = 0;
+  let dueMs = 0;
+  let lastAddedMs = 0;
+  let filesWaiting = 0;
   let notBeforeMs = 0;
-  let lastTookMs = 0;
+  let filesFirstUntilMs = 0;
   let timer: NodeJS.Timeout | undefined;
   let inHand: Promise<void> | null = null;
   let stopped = false;
 
-  const arm = (dueMs: number) => {
+  const arm = () => {
     clearTimeout(timer);
-    if (!stopped && inHand === null) timer = setTimeout(start, Math.max(0, dueMs - clock.monotonicMs()));
+    if (stopped || inHand !== null || open.size === 0) return;
+    const wantedMs = filesWaiting === 0 ? Math.min(dueMs, lastAddedMs + QUIET_MS) : Math.max(dueMs, filesFirstUntilMs);
+    timer = setTimeout(start, Math.max(wantedMs, notBeforeMs) - clock.monotonicMs());
   };
   const start = () => {
     inHand = decideAll().finally(() => {
       inHand = null;
-      if (open.size > 0) arm(Math.max(notBeforeMs, openSinceMs + LONGEST_OPEN_MS));
+      arm();
     });
   };
   const decideAll = async () => {
@@ -51,27 +62,28 @@ export function createBacklog({ decide, onFailure, clock }: BacklogOptions): Bac
     const startMs = clock.monotonicMs();
     try {
       await decide(pulsars);
-      notBeforeMs = 0;
+      const endMs = clock.monotonicMs();
+      filesFirstUntilMs = endMs + PAUSE_PER_DECISION_TIME * (endMs - startMs);
     } catch (error) {
       for (const pulsar of pulsars) open.add(pulsar);
       notBeforeMs = clock.monotonicMs() + RETRY_MS;
-      onFailure(error);
+      if (!stopped) onFailure(error);
     }
-    lastTookMs = clock.monotonicMs() - startMs;
-    openSinceMs = clock.monotonicMs();
   };
 
   return {
     get isEmpty() {
       return open.size === 0 && inHand === null;
     },
-    add(pulsars, filesWaiting) {
-      const nowMs = clock.monotonicMs();
-      if (open.size === 0) openSinceMs = Math.max(openSinceMs, nowMs);
-      for (const pulsar of pulsars) open.add(pulsar);
-      if (open.size === 0) return;
-      const patienceMs = Math.max(LONGEST_OPEN_MS, FILES_PER_DECISION_TIME * lastTookMs);
-      arm(Math.max(notBeforeMs, filesWaiting === 0 ? nowMs + QUIET_MS : openSinceMs + patienceMs));
+    add(pulsars, file) {
+      filesWaiting = file.filesWaiting;
+      if (pulsars.length > 0) {
+        lastAddedMs = clock.monotonicMs();
+        const thenMs = lastAddedMs + LONGEST_OPEN_MS[file.isFresh ? 'fresh' : 'old'];
+        dueMs = open.size === 0 ? thenMs : Math.min(dueMs, thenMs);
+        for (const pulsar of pulsars) open.add(pulsar);
+      }
+      arm();
     },
     async stop() {
       stopped = true;

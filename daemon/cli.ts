@@ -28,6 +28,8 @@ function createProgram(): Command {
   );
   command('check', 'validate configuration, models, clock tables, folders and the mail login')
     .option('--send-test-mail', 'send a marked test mail to every recipient')
+    .option('--file <file>', 'show instead how a feed reads this file: its first rows, and every complaint')
+    .option('--feed <name>', "read that file with this feed's layout; else by the folder it lies in")
     .option('--json', 'print as JSON')
     .action(async (options) => (await import('./commands/check.ts')).check(terminal, options));
   command('replay', 'take in an archive offline, in time order, as the watch would have')
@@ -62,6 +64,7 @@ function createProgram(): Command {
     .action(async (options) => (await import('./commands/morning.ts')).morning(terminal, options));
   command('arrivals', 'every arrival of a pulsar on record: times, delays, deviation, and what was done with it')
     .argument('<pulsar>', 'its name in the models folder')
+    .addOption(new Option('--csv', 'print as CSV, safe for spreadsheets').conflicts('json'))
     .option('--json', 'print as JSON')
     .action(async (pulsar, options) => (await import('./commands/arrivals.ts')).arrivals(terminal, pulsar, options));
   command('export', 'an event as a notice for others')

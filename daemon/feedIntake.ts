@@ -1,10 +1,12 @@
+import { type Backlog, createBacklog } from './backlog.ts';
 import { systemClock } from './clock.ts';
 import { reasonOf } from './errors.ts';
 import { Pipeline } from './pipeline.ts';
 import { type FileInHand, recall } from './stages/intake.ts';
+import { quarantineUnread } from './stages/unreadFile.ts';
 import type { Station } from './station.ts';
 import { storageTrouble } from './store/index.ts';
-import type { ReadyFile } from './watch/feedLook.ts';
+import type { ReadyFile, WatchProblem } from './watch/feedLook.ts';
 import { createWatcher, type FeedStatus } from './watch/watcher.ts';
 
 /** From the watched folders into the pipeline, for as long as the daemon runs. */
@@ -28,29 +30,51 @@ export function startIntake(station: Station, { onMail, onFatal }: IntakeOptions
   const pipeline = new Pipeline(station);
   let trouble: string | null = null;
 
+  const noteTrouble = (error: unknown) => {
+    const family = storageTrouble(error);
+    if (family === 'fault' || family === 'damaged') onFatal(error);
+    else if (family !== null) trouble = reasonOf(error);
+  };
   const guarded = async <Result>(work: () => Promise<Result>): Promise<Result> => {
     try {
       const result = await work();
       trouble = null;
       return result;
     } catch (error) {
-      const family = storageTrouble(error);
-      if (family === 'fault' || family === 'damaged') onFatal(error);
-      else if (family !== null) trouble = reasonOf(error);
+      noteTrouble(error);
       throw error;
     }
   };
 
   const catchUp = decideWhatIsOpen(station, pipeline, guarded);
+  const backlog: Backlog = createBacklog({
+    async decide(pulsars) {
+      const mails = await guarded(() => pipeline.decideOpen(pulsars));
+      log.info({ pulsars: pulsars.length, mails }, 'decided about what was taken in');
+      if (mails > 0) onMail();
+    },
+    onFailure: (error) => log.error({ reason: reasonOf(error) }, 'not decided yet; trying again in a minute'),
+    clock: systemClock,
+  });
   const watcher = createWatcher({
     feeds: configuration.feeds,
     recall: (feed, file) => recall(station, feed, file.pathBytes),
     clock: systemClock,
-    onProblem: ({ message, ...problem }) => log.warn(problem, message),
-    onProblemEnded: (problem) => log.info(problem, 'problem ended'),
-    async onSettled(file, bytes) {
-      const options = { decide: 'now', mail: true, acceptUnterminated: file.stoodLong } as const;
+    onProblem(problem) {
+      try {
+        quarantineUnread(station, problem);
+      } catch (error) {
+        noteTrouble(error);
+        throw error;
+      }
+      log.warn(factsOf(problem), problem.message);
+    },
+    onProblemEnded: (problem) => log.info({ ...factsOf(problem), was: problem.message }, 'problem ended'),
+    async onSettled(file, bytes, filesWaiting) {
+      const decide = filesWaiting === 0 && backlog.isEmpty ? 'now if fresh' : 'later';
+      const options = { decide, mail: true, acceptUnterminated: file.stoodLong } as const;
       const result = await guarded(() => pipeline.takeIn(inHand(file, bytes), options));
+      backlog.add(result.open, { isFresh: result.isFresh, filesWaiting });
       if (result.mails > 0) onMail();
       return result.kind === 'cut short' ? 'not yet whole' : 'taken';
     },
@@ -60,7 +84,9 @@ export function startIntake(station: Station, { onMail, onFatal }: IntakeOptions
     storageTrouble: () => trouble,
     stop: async () => {
       pipeline.stop();
+      const decided = backlog.stop();
       await watcher.stop();
+      await decided;
       await catchUp;
     },
   };
@@ -68,6 +94,10 @@ export function startIntake(station: Station, { onMail, onFatal }: IntakeOptions
 
 function inHand({ feed, path, pathBytes, stamp }: ReadyFile, bytes: Buffer): FileInHand {
   return { feed, path, pathBytes, bytes, signature: stamp.signature };
+}
+
+function factsOf({ feed, kind, path }: WatchProblem): Omit<WatchProblem, 'message'> {
+  return { feed, kind, path };
 }
 
 /** After a changed model, clock table or program, or a replay that was cut off. Files wait their turn behind it. */
@@ -82,7 +112,6 @@ async function decideWhatIsOpen(
   try {
     // All at once: a step of a whole site must not look like one of a few pulsars in between.
     await guarded(() => pipeline.decide(pulsars, { mail: true }));
-    pipeline.leaveDecisionsOpen(false);
   } catch (error) {
     log.error({ reason: reasonOf(error) }, 'not decided again; the next start tries it once more');
   }

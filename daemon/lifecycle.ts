@@ -1,4 +1,4 @@
-import type { MorningReview } from '../alerts/index.ts';
+import { type MorningReview, prepareRenderer } from '../alerts/index.ts';
 import { systemClock } from './clock.ts';
 import { EXIT, OperatorError, reasonOf } from './errors.ts';
 import { type FeedIntake, startIntake } from './feedIntake.ts';
@@ -66,12 +66,13 @@ export async function runWatch({ configFile, log, stop, say }: WatchOptions): Pr
     endings.push(() => mail.stop(MAIL_GRACE_MS));
     const digest = startDigest(station, morning, actions.onMail);
     endings.push(digest.stop);
-    const upkeep = startUpkeep(station, { ...actions, onClockStep: digest.catchUp });
+    const upkeep = startUpkeep(station, { ...actions, onClockStep: digest.catchUp, tableWarnings: warnings });
     endings.push(upkeep.stop);
     intake = startIntake(station, actions);
     endings.push(intake.stop);
 
     say(startLine(station));
+    void prepareRenderer().catch((error) => log.warn({ reason: reasonOf(error) }, 'no pictures can be drawn for mail'));
     await Promise.race([aborted(stop), failure.raised]);
     log.info('stopping');
   } finally {

@@ -3,13 +3,14 @@ import type { MorningReview } from '../alerts/index.ts';
 import type { PulsarEvent } from '../detectors/steps/pulsarEvent.ts';
 import { changesInBrief } from './changesInBrief.ts';
 import { civilTime, instantOf, mjdOf } from './clock.ts';
-import type { Configuration } from './config/configuration.ts';
+import { recordWarnings } from './schedule/dailyChecks.ts';
 import { type DigestRule, digestRule } from './schedule/digestDue.ts';
 import { silentFeeds } from './schedule/silentFeeds.ts';
 import { clockStepWarnings } from './schedule/upkeep.ts';
 import type { Station } from './station.ts';
 import type { Store } from './store/index.ts';
 import { type LoadedTables, leapSecondWarning } from './tables/loadTables.ts';
+import { endedTableWarnings } from './tables/tableEnds.ts';
 
 /** What the morning review is made from. It reads what is on record and decides nothing. */
 export interface MorningSources extends Pick<Station, 'configuration' | 'store' | 'clock'> {
@@ -53,7 +54,12 @@ export function morningReview(sources: MorningSources, date?: string): MorningRe
       refused: counts.refused,
       oldestWaitingHours: oldest === null ? null : (now.getTime() - Date.parse(oldest)) / HOUR_MS,
     },
-    warnings: [...sources.warnings, ...clockTableWarnings(configuration, now), ...clockStepWarnings(sources)],
+    warnings: [
+      ...recordWarnings(sources),
+      ...sources.warnings,
+      ...endedTableWarnings(configuration, mjdOf(now)),
+      ...clockStepWarnings(sources),
+    ],
   };
 }
 
@@ -112,15 +118,4 @@ function usualGapDays(store: Store, pulsar: string): number {
 export function tableWarnings({ tables, warnings }: LoadedTables, now: Date): string[] {
   const leapSeconds = leapSecondWarning(tables.leapSeconds, mjdOf(now));
   return leapSeconds === null ? [...warnings] : [...warnings, leapSeconds];
-}
-
-function clockTableWarnings(configuration: Configuration, now: Date): string[] {
-  return configuration.sites.flatMap(({ name, clockTable }) => {
-    const end = clockTable?.mjd.at(-1);
-    const daysAgo = end === undefined ? 0 : mjdOf(now) - end;
-    if (end === undefined || daysAgo < 1) return [];
-    return [
-      `the clock table of ${name} ends at MJD ${end}, ${Math.floor(daysAgo)} days ago: later arrivals are uncorrected and marked; deliver a newer table`,
-    ];
-  });
 }

@@ -37,6 +37,8 @@ export interface TakenIn {
   readonly pulsars: readonly string[];
   /** Those of them that wait for `decideOpen`. */
   readonly open: readonly string[];
+  /** It may hold what somebody must hear of soon. */
+  readonly isFresh: boolean;
   readonly events: number;
   readonly mails: number;
 }
@@ -54,7 +56,16 @@ export interface DecideOptions {
   readonly onPulsar?: (done: number) => void;
 }
 
-const NOTHING: Omit<TakenIn, 'kind'> = { rows: 0, newArrivals: 0, quarantined: 0, pulsars: [], open: [], events: 0, mails: 0 };
+const NOTHING: Omit<TakenIn, 'kind'> = {
+  rows: 0,
+  newArrivals: 0,
+  quarantined: 0,
+  pulsars: [],
+  open: [],
+  isFresh: false,
+  events: 0,
+  mails: 0,
+};
 /** A file whose reading was begun so often and never ended takes the program down each time. */
 const MOST_READINGS = 3;
 /** The checksum of no file: what begins with it is counted anew for every other. */
@@ -153,7 +164,8 @@ export class Pipeline {
     const batch = this.#timed(intake);
     const { models } = this.#station.configuration;
     const pulsars = intake.reconciliation.pulsarsToDecide.filter((pulsar) => models.has(pulsar));
-    const now = options.decide === 'now' || (options.decide === 'now if fresh' && this.#isFresh(batch));
+    const isFresh = this.#isFresh(batch);
+    const now = options.decide === 'now' || (options.decide === 'now if fresh' && isFresh);
     const [decided, open] = now ? [pulsars, []] : [[], pulsars];
     noteOpen(this.#station.store, open);
     const { events, messages } = await this.#decideAndRecord(batch, decided, options);
@@ -164,6 +176,7 @@ export class Pipeline {
       quarantined: batch.quarantined.length,
       pulsars,
       open,
+      isFresh,
       events: events.length,
       mails: messages.length,
     };
@@ -256,7 +269,7 @@ export class Pipeline {
     return emptyBatch(this.#station.clock.now().toISOString());
   }
 
-  #say({ file, quarantined }: Intake, { pulsars, open, ...result }: TakenIn): void {
+  #say({ file, quarantined }: Intake, { pulsars, open, isFresh: _, ...result }: TakenIn): void {
     const facts = { feed: file.feed, file: file.path, ...result, pulsars: pulsars.length, undecided: open.length };
     if (quarantined.length === 0) this.#station.log.info(facts, 'file taken in');
     else

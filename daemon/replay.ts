@@ -1,11 +1,10 @@
 import { lstat, realpath } from 'node:fs/promises';
-import { basename, dirname, relative, sep } from 'node:path';
+import { basename, dirname } from 'node:path';
 import { compareMjd, type Mjd } from '../detectors/time/mjd.ts';
-import type { Configuration } from './config/configuration.ts';
-import { EXIT, OperatorError, reasonOf } from './errors.ts';
-import { readArrivalFile } from './intake/rows.ts';
+import { OperatorError, reasonOf } from './errors.ts';
+import { feedFolders, placeIn } from './feedFolders.ts';
 import { Pipeline, type TakenIn } from './pipeline.ts';
-import type { FileInHand } from './stages/intake.ts';
+import { type FileInHand, readInHand } from './stages/intake.ts';
 import type { Station } from './station.ts';
 import { displayName } from './watch/fileName.ts';
 import { readStill } from './watch/open.ts';
@@ -37,7 +36,7 @@ interface Unreadable {
 }
 
 export async function replay(station: Station, options: ReplayOptions): Promise<Replayed> {
-  const { files, unreadable } = await inOrder(station.configuration, options);
+  const { files, unreadable } = await inOrder(station, options);
   const pipeline = new Pipeline(station);
   const results: TakenIn[] = [];
   for (const file of files) {
@@ -78,27 +77,20 @@ interface ArchiveFile {
 
 /** Every file once, by its earliest arrival. They are read twice, so that an archive need not fit into memory. */
 async function inOrder(
-  configuration: Configuration,
+  station: Station,
   options: ReplayOptions,
 ): Promise<{ files: ArchiveFile[]; unreadable: Unreadable[] }> {
-  const folders = await Promise.all(
-    configuration.feeds.map(async ({ name, folder }) => ({ name, folder: await realpath(folder).catch(() => folder) })),
-  );
-  if (options.feed !== null && !folders.some(({ name }) => name === options.feed)) {
-    throw new OperatorError(`there is no feed “${options.feed}” in ${configuration.file}`, {
-      exitCode: EXIT.wrongUsage,
-      advice: `feeds: ${folders.map(({ name }) => name).join(', ')}`,
-    });
-  }
+  const { configuration } = station;
+  const folders = await feedFolders(configuration, options.feed);
   const files = new Map<string, ArchiveFile>();
   const unreadable: Unreadable[] = [];
   for (const given of options.files) {
     try {
       const file = await realpath(given);
-      const inHand = { ...placeIn(folders, file, options), file, earliest: null };
+      const inHand = { ...placeIn(folders, file, options.feed), file, earliest: null };
       const read = await readNow(inHand);
       if ('reason' in read) unreadable.push(read);
-      else files.set(file, { ...inHand, earliest: earliestOf(read.bytes) });
+      else files.set(file, { ...inHand, earliest: earliestOf(station, read) });
     } catch (error) {
       if (error instanceof OperatorError) throw error;
       unreadable.push({ file: given, reason: reasonOf(error) });
@@ -107,24 +99,8 @@ async function inOrder(
   return { files: [...files.values()].sort(byEarliest), unreadable };
 }
 
-function placeIn(
-  folders: readonly { readonly name: string; readonly folder: string }[],
-  file: string,
-  { feed }: ReplayOptions,
-): Pick<ArchiveFile, 'feed' | 'pathInFeed'> {
-  const holder =
-    folders.find(({ name }) => name === feed) ?? folders.find(({ folder }) => file.startsWith(folder + sep));
-  if (holder === undefined) {
-    throw new OperatorError(`${file} lies in no feed's folder`, {
-      exitCode: EXIT.wrongUsage,
-      advice: `say how to read it with --feed NAME (feeds: ${folders.map(({ name }) => name).join(', ')})`,
-    });
-  }
-  return { feed: holder.name, pathInFeed: relative(holder.folder, file) };
-}
-
-function earliestOf(bytes: Buffer): Mjd | null {
-  const times = readArrivalFile(bytes).rows.map((row) => row.time);
+function earliestOf(station: Station, inHand: FileInHand): Mjd | null {
+  const times = readInHand(station, inHand).rows.map((row) => row.time);
   return times.reduce<Mjd | null>(
     (first, time) => (first === null || compareMjd(time, first) < 0 ? time : first),
     null,

@@ -1,4 +1,4 @@
-import type { Mjd } from './time/mjd.ts';
+import { addSeconds, type Mjd } from './time/mjd.ts';
 
 /** One pulse arrival as the intake accepted it: the recorder's own numbers, nothing applied yet. */
 export interface ReceivedArrival {
@@ -21,7 +21,7 @@ export interface ReceivedArrival {
 
 /** The bill from the site clock to the barycentre, in seconds (signs as in the sum: see `barycentre`). */
 export interface Delays {
-  /** Added: site clock to UTC. */
+  /** Added: site clock to UTC, and TT(TAI) to TT(BIPM) where a table is given. */
   readonly clockS: number;
   /** Added. */
   readonly tdbMinusTtS: number;
@@ -47,10 +47,16 @@ export interface BarycentredArrival {
   readonly qualityReasons: readonly string[];
 }
 
+/** The time at which the pulsar's phase is read: emission, as the centre of mass of a binary sees it; the same time for an isolated pulsar. */
+export function emissionTdb({ tdb, delays }: Pick<BarycentredArrival, 'tdb' | 'delays'>): Mjd {
+  return delays.orbitS === 0 ? tdb : addSeconds(tdb, -delays.orbitS);
+}
+
 /** What the detector takes in, in time order. */
 export interface TimedArrival {
   /** Identity of the arrival in the log. */
   readonly key: string;
+  /** After a binary's orbit is removed (`emissionTdb`). */
   readonly tdb: Mjd;
   readonly uncertaintyUs: number;
   readonly frequencyMhz: number;

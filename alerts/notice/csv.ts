@@ -1,18 +1,15 @@
 import type { Interval, PulsarEvent } from '../../detectors/steps/pulsarEvent.ts';
-import { oneLine } from '../markup.ts';
+import { type Cell, type CsvColumns, csvTable } from './csvTable.ts';
 
-/** Events as a table (RFC 4180: CRLF, header row, quotes doubled), one event a row. An unknown number is an empty cell. */
+/** Events as a table, one event a row. */
 export function eventsCsv(events: readonly PulsarEvent[]): string {
-  const rows = events.map((event) => COLUMNS.map(([, cell]) => cellText(cell(event))).join(','));
-  return [COLUMNS.map(([name]) => name).join(','), ...rows].map((row) => `${row}\r\n`).join('');
+  return csvTable(events, COLUMNS);
 }
-
-type Cell = string | number | null;
 
 const low = (interval: Interval | null): Cell => interval?.[0] ?? null;
 const high = (interval: Interval | null): Cell => interval?.[1] ?? null;
 
-const COLUMNS: readonly (readonly [name: string, cell: (event: PulsarEvent) => Cell])[] = [
+const COLUMNS: CsvColumns<PulsarEvent> = [
   ['id', (e) => e.id],
   ['pulsar', (e) => e.pulsar],
   ['state', (e) => e.state],
@@ -47,18 +44,3 @@ const COLUMNS: readonly (readonly [name: string, cell: (event: PulsarEvent) => C
   ['pulsars', (e) => e.pulsars.join(' | ')],
   ['site', (e) => e.site],
 ];
-
-function cellText(cell: Cell): string {
-  if (cell === null) return '';
-  if (typeof cell === 'number') return Number.isFinite(cell) ? String(cell) : '';
-  const safe = inert(oneLine(cell));
-  return /[",\r\n]/.test(safe) ? `"${safe.replace(/"/g, '""')}"` : safe;
-}
-
-/**
- * Text that a spreadsheet would run as a formula gets an apostrophe in front (common practice, OWASP "CSV Injection", from memory);
- * numbers are written by us and keep their minus sign.
- */
-function inert(text: string): string {
-  return /^\s*[=+\-@＝＋－＠]/.test(text) ? `'${text}` : text;
-}

@@ -83,3 +83,12 @@ function decimalsOfDays(uncertainty: number): number {
   if (!(uncertainty > 0)) return 2;
   return Math.max(1, Math.min(5, 1 - Math.floor(Math.log10(uncertainty))));
 }
+
+/** Whole minutes below an hour, hours below two days, then days; rounded down, so that no silence is made longer than it is. */
+export function timeInWords(hours: number): string {
+  // A nudge against 0.9999…: 20 minutes are a third of an hour.
+  const whole = (value: number) => Math.floor(value + 1e-6);
+  if (hours < 1) return whole(hours * 60) === 1 ? '1 minute' : `${whole(hours * 60)} minutes`;
+  if (hours < 48) return hours < 10 && !Number.isInteger(hours) ? `${whole(hours * 10) / 10} h` : `${whole(hours)} h`;
+  return `${whole(hours / 24)} days`;
+}

@@ -1,7 +1,7 @@
 import type { PulsarEvent } from '../../detectors/steps/pulsarEvent.ts';
 import { oneLine } from '../markup.ts';
 import type { MorningReview } from '../morningReview.ts';
-import { epochText, mjdText, momentText } from './dates.ts';
+import { epochText, mjdText, momentText, timeInWords } from './dates.ts';
 import { percent, plain, power } from './numbers.ts';
 import { isSiteEvent } from './phrases.ts';
 import { eventSheet } from './sheet.ts';
@@ -47,7 +47,7 @@ export function morningWords(review: MorningReview, timezone: string): MorningWo
       'Silent feeds',
       review.silentFeeds.map(
         (f) =>
-          `${oneLine(f.feed)}: nothing for ${plain(f.hoursSilent, 2)} h, expected every ${plain(f.expectedHours, 2)} h`,
+          `${oneLine(f.feed)}: nothing for ${timeInWords(f.hoursSilent)}, expected every ${timeInWords(f.expectedHours)}`,
       ),
     ),
     section(

@@ -1,3 +1,4 @@
+import type { QuarantinedRow } from '../../alerts/index.ts';
 import type { ArrivalVerdict } from '../../detectors/report.ts';
 import { formatMjd } from '../../detectors/time/mjd.ts';
 import { systemClock } from '../clock.ts';
@@ -9,17 +10,20 @@ import { followPulsar } from '../stages/deviation.ts';
 import { PulsarWatches } from '../stages/pulsarWatches.ts';
 import { createStation } from '../station.ts';
 import { loadTables } from '../tables/loadTables.ts';
+import { arrivalsCsv, arrivalTable } from './arrivalForms.ts';
 import { withRecord } from './record.ts';
-import { table } from './table.ts';
 import { printJson, type Terminal } from './terminal.ts';
 
-/** An arrival as `arrivals --json` prints it. An infinite frequency (dispersion removed before) is null: JSON has no infinity. */
-interface ArrivalLine {
-  readonly mjd: string;
-  readonly site: string;
-  readonly receiver: string;
+/**
+ * An arrival as `arrivals --json` prints it. An infinite frequency (dispersion removed before) is null: JSON has no infinity.
+ * Of a row that could not be read nothing is known but where it stands and what is wrong with it.
+ */
+export interface ArrivalLine {
+  readonly mjd: string | null;
+  readonly site: string | null;
+  readonly receiver: string | null;
   readonly frequencyMhz: number | null;
-  readonly uncertaintyUs: number;
+  readonly uncertaintyUs: number | null;
   readonly barycentreTdbMjd: string | null;
   readonly delays: ArrivalRecord['delays'];
   readonly pulseNumber: number | null;
@@ -31,11 +35,11 @@ interface ArrivalLine {
 
 const NO_CHANGES = { arrivals: [], statusChanges: [], retimed: [] };
 
-/** `arrivals`: every arrival of a pulsar on record, and what was done with it. */
+/** `arrivals`: every arrival of a pulsar on record, the rows that were refused last, and what was done with each. */
 export async function arrivals(
   terminal: Terminal,
   pulsar: string,
-  options: { readonly config: string; readonly json?: boolean },
+  options: { readonly config: string; readonly json?: boolean; readonly csv?: boolean },
 ): Promise<void> {
   const { tables } = loadTables();
   await withRecord(options.config, (store, configuration) => {
@@ -49,8 +53,12 @@ export async function arrivals(
     const parts = { configuration, store, tables, clock: systemClock, log: silentLog(), reviewUrl: () => null };
     const report = followPulsar(createStation(parts), new PulsarWatches(), pulsar, NO_CHANGES);
     const verdicts = new Map(report.arrivals.map((verdict) => [verdict.key, verdict]));
-    const lines = store.arrivals(pulsar).map((record) => arrivalLine(record, verdicts.get(record.key)));
+    const lines = [
+      ...store.arrivals(pulsar).map((record) => arrivalLine(record, verdicts.get(record.key))),
+      ...store.quarantineOf(pulsar).reverse().map(refusedLine),
+    ];
     if (options.json) printJson(terminal, lines);
+    else if (options.csv) terminal.out(arrivalsCsv(lines));
     else terminal.out(arrivalTable(lines));
   });
 }
@@ -72,31 +80,27 @@ function arrivalLine(record: ArrivalRecord, verdict: ArrivalVerdict | undefined)
   };
 }
 
+function refusedLine({ feed, file, line, reason }: QuarantinedRow): ArrivalLine {
+  return {
+    mjd: null,
+    site: null,
+    receiver: null,
+    frequencyMhz: null,
+    uncertaintyUs: null,
+    barycentreTdbMjd: null,
+    delays: null,
+    pulseNumber: null,
+    deviationTurns: null,
+    uncertaintyTurns: null,
+    fate: 'quarantined',
+    reason: `${feed}/${file}, line ${line}: ${reason}`,
+  };
+}
+
 function fateOf(record: ArrivalRecord, verdict: ArrivalVerdict | undefined): Pick<ArrivalLine, 'fate' | 'reason'> {
   if (record.status === 'withdrawn') return { fate: 'revised', reason: `withdrawn: ${record.reason}` };
   if (record.status === 'revised') return { fate: 'revised', reason: record.reason };
   if (verdict === undefined) return { fate: 'quarantined', reason: record.qualityReasons.join('; ') };
   const doubts = record.quality === 'ok' ? [] : record.qualityReasons;
   return { fate: verdict.fate, reason: [verdict.reason, ...doubts].filter((words) => words !== '').join('; ') };
-}
-
-function arrivalTable(lines: readonly ArrivalLine[]): string {
-  const turns = (value: number | null) => (value === null ? '' : value.toFixed(5));
-  return table(
-    lines,
-    [
-      { title: 'MJD as received', text: (line) => line.mjd },
-      { title: 'site', text: (line) => line.site },
-      { title: 'receiver', text: (line) => line.receiver },
-      { title: 'MHz', text: (line) => line.frequencyMhz?.toFixed(1) ?? 'inf', align: 'right' },
-      { title: '± µs', text: (line) => line.uncertaintyUs.toPrecision(3), align: 'right' },
-      { title: 'barycentre MJD (TDB)', text: (line) => line.barycentreTdbMjd?.slice(0, -3) ?? '' },
-      { title: 'pulse', text: (line) => line.pulseNumber?.toString() ?? '', align: 'right' },
-      { title: 'deviation, turns', text: (line) => turns(line.deviationTurns), align: 'right' },
-      { title: '±', text: (line) => turns(line.uncertaintyTurns), align: 'right' },
-      { title: 'fate', text: (line) => line.fate },
-      { title: 'reason', text: (line) => line.reason },
-    ],
-    'No arrivals.',
-  );
 }

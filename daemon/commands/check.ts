@@ -1,5 +1,5 @@
 import { composeTestMail, type DeliveryOutcome } from '../../alerts/index.ts';
-import { systemClock } from '../clock.ts';
+import { mjdOf, systemClock } from '../clock.ts';
 import type { Configuration } from '../config/configuration.ts';
 import { loadConfiguration } from '../config/loadConfiguration.ts';
 import { EXIT, OperatorError, reasonOf } from '../errors.ts';
@@ -8,19 +8,29 @@ import { tableWarnings } from '../morning.ts';
 import { problemLine } from '../opening.ts';
 import { openStore } from '../store/index.ts';
 import { loadTables } from '../tables/loadTables.ts';
+import { endedTableWarnings } from '../tables/tableEnds.ts';
+import { checkFile } from './checkFile.ts';
 import { printJson, type Terminal } from './terminal.ts';
 
 export interface CheckOptions {
   readonly config: string;
   readonly sendTestMail?: boolean;
+  /** Show how a feed reads this file, and nothing else. */
+  readonly file?: string;
+  readonly feed?: string;
   readonly json?: boolean;
 }
 
 /** `check`: everything that can be known to be wrong before the watch starts. Changes nothing; sends a test mail where asked for. */
 export async function check(terminal: Terminal, options: CheckOptions): Promise<void> {
+  const { file, feed } = options;
+  if (file !== undefined) return checkFile(terminal, { ...options, file });
+  if (feed !== undefined) throw new OperatorError('--feed goes with --file FILE', { exitCode: EXIT.wrongUsage });
   const { configuration, problems } = loadConfiguration(options.config);
   const mail = configuration === null ? [] : await tryMail(configuration, options.sendTestMail ?? false);
-  const warnings = tableWarnings(loadTables(), systemClock.now());
+  const now = systemClock.now();
+  const ended = configuration === null ? [] : endedTableWarnings(configuration, mjdOf(now));
+  const warnings = [...tableWarnings(loadTables(), now), ...ended];
   const record = configuration === null ? [] : recordProblems(configuration);
   if (options.json)
     printJson(terminal, {

@@ -11,6 +11,12 @@ export function parseRightAscension(text: string): number | null {
   return degrees === null || degrees < 0 || degrees >= 360 || Object.is(degrees, -0) ? null : degrees * RAD_PER_DEG;
 }
 
+/** Radians in [0, 2π); null for what is not `ddd:mm:ss.s` below 360° or degrees in [0, 360). */
+export function parseLongitude(text: string): number | null {
+  const degrees = sexagesimal(text) ?? plainDegrees(text);
+  return degrees === null || degrees < 0 || degrees >= 360 || Object.is(degrees, -0) ? null : degrees * RAD_PER_DEG;
+}
+
 /** Radians in [−π/2, π/2]; null for what is not `±dd:mm:ss.s` or degrees in [−90, 90]. */
 export function parseDeclination(text: string): number | null {
   const degrees = sexagesimal(text) ?? plainDegrees(text);

@@ -1,12 +1,17 @@
+import type { EarthOrientationTable } from '../../detectors/sky/earthOrientation.ts';
+import type { SpkKernel } from '../../detectors/sky/spkKernel.ts';
 import type { PulsarModel } from '../../detectors/spin/pulsarModel.ts';
 import type { ClockTable } from '../../detectors/time/siteClock.ts';
+import type { TtBipmTable } from '../../detectors/time/ttBipm.ts';
+import type { Layout } from '../intake/layouts/read.ts';
+import type { TextColumns } from '../intake/layouts/textColumns.ts';
 
 /** The whole of what the operator set: `spinvigil.toml`, the models folder and the clock tables, checked and frozen. Paths are absolute. */
 export interface Configuration {
   readonly file: string;
   readonly observatory: { readonly name: string; readonly contact: string };
   readonly stateFolder: string;
-  readonly earth: { readonly orientationFile: string | null; readonly kernelFile: string | null };
+  readonly earth: EarthSettings;
   readonly sites: readonly Site[];
   readonly feeds: readonly Feed[];
   readonly modelsFolder: string;
@@ -14,6 +19,16 @@ export interface Configuration {
   readonly budget: { readonly falseAlertsPerYear: number };
   readonly mail: MailSettings;
   readonly review: { readonly host: string; readonly port: number; readonly reviewers: readonly string[] };
+}
+
+/** Tables that the operator keeps beside the built-in ones. */
+export interface EarthSettings {
+  readonly orientation: EarthOrientationTable | null;
+  readonly ttBipm: TtBipmTable | null;
+  /** Earth and Sun for the pulsars whose models name no ephemeris; null: the built-in table. */
+  readonly kernel: SpkKernel | null;
+  /** Every kernel that was read, by the path under which it was named. */
+  readonly kernels: ReadonlyMap<string, SpkKernel>;
 }
 
 export interface Site {
@@ -25,7 +40,9 @@ export interface Site {
 export interface Feed {
   readonly name: string;
   readonly folder: string;
-  readonly layout: 'csv';
+  readonly layout: Layout['layout'];
+  /** How a text table is to be read, in layout `columns`; null in the others. */
+  readonly columns: TextColumns | null;
   readonly recursive: boolean;
   /** Seconds between scans; also polls for notices (network file systems) when set by the operator. */
   readonly pollSeconds: number;

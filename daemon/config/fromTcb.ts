@@ -1,5 +1,5 @@
 import { add, fromNumber, multiply, parseDoubleDouble } from '../../detectors/spin/doubleDouble.ts';
-import type { KnownGlitch, PulsarModel } from '../../detectors/spin/pulsarModel.ts';
+import type { KnownGlitch, Orbit, PulsarModel } from '../../detectors/spin/pulsarModel.ts';
 import { addSeconds, daysBetween, type Mjd, SECONDS_PER_DAY } from '../../detectors/time/mjd.ts';
 
 /**
@@ -23,16 +23,51 @@ export function tcbToTdb(tcb: Mjd): Mjd {
 
 /** Every derivative with respect to time takes one factor of dTCB/dTDB; a timescale takes its inverse. */
 export function modelFromTcb(model: PulsarModel): PulsarModel {
-  const { spin } = model;
+  const { spin, orbit } = model;
   return {
     ...model,
     spin: {
+      ...spin,
       epochTdb: tcbToTdb(spin.epochTdb),
       frequencyHz: multiply(spin.frequencyHz, RATE),
       frequencyDerivativeHzPerS: spin.frequencyDerivativeHzPerS * RATE_NUMBER ** 2,
       frequencySecondDerivativeHzPerS2: spin.frequencySecondDerivativeHzPerS2 * RATE_NUMBER ** 3,
+      ...(spin.higherFrequencyDerivatives === undefined
+        ? {}
+        : {
+            higherFrequencyDerivatives: spin.higherFrequencyDerivatives.map(
+              (value, i) => value * RATE_NUMBER ** (i + 4),
+            ),
+          }),
     },
+    ...(orbit === undefined ? {} : { orbit: orbitFromTcb(orbit) }),
     glitches: model.glitches.map(glitchFromTcb),
+  };
+}
+
+/** Lengths are light times, and shrink as times do; what is s/s stays. */
+function orbitFromTcb(orbit: Orbit): Orbit {
+  const size = {
+    periodDays: orbit.periodDays / RATE_NUMBER,
+    projectedSemiMajorAxisS: orbit.projectedSemiMajorAxisS / RATE_NUMBER,
+    shapiroRangeS: orbit.shapiroRangeS / RATE_NUMBER,
+  };
+  if (orbit.form === 'keplerian') {
+    return {
+      ...orbit,
+      ...size,
+      periastronEpochTdb: tcbToTdb(orbit.periastronEpochTdb),
+      eccentricityDerivativePerS: orbit.eccentricityDerivativePerS * RATE_NUMBER,
+      periastronAdvanceRadPerS: orbit.periastronAdvanceRadPerS * RATE_NUMBER,
+      einsteinDelayS: orbit.einsteinDelayS / RATE_NUMBER,
+    };
+  }
+  return {
+    ...orbit,
+    ...size,
+    ascendingNodeEpochTdb: tcbToTdb(orbit.ascendingNodeEpochTdb),
+    eccentricitySineDerivativePerS: orbit.eccentricitySineDerivativePerS * RATE_NUMBER,
+    eccentricityCosineDerivativePerS: orbit.eccentricityCosineDerivativePerS * RATE_NUMBER,
   };
 }
 

@@ -1,20 +1,14 @@
 import { dirname, resolve } from 'node:path';
+import { createKernelShelf } from '../tables/kernelFile.ts';
 import type { ConfigProblem, Configuration, Feed, MailSettings, Site } from './configuration.ts';
+import { readEarth } from './earth.ts';
 import { readFeeds } from './feeds.ts';
 import { checkOverlaps, checkStateFolder, type NamedFolder } from './folders.ts';
 import { parseListen } from './listenAddress.ts';
 import { readMail, type Surroundings } from './mailSettings.ts';
 import { loadModels } from './models.ts';
 import { createSectionReader, type SectionReader } from './sectionReader.ts';
-import {
-  budgetTable,
-  earthTable,
-  modelsTable,
-  observatoryTable,
-  reviewTable,
-  rootTable,
-  stateTable,
-} from './sections.ts';
+import { budgetTable, modelsTable, observatoryTable, reviewTable, rootTable, stateTable } from './sections.ts';
 import { readSites } from './sites.ts';
 import { readTextFile } from './textFile.ts';
 import { isFault, parseToml } from './tomlDocument.ts';
@@ -64,9 +58,14 @@ function readParts(reader: SectionReader, around: Surroundings, problems: Config
   reader.read([], rootTable);
   const observatory = reader.read(['observatory'], observatoryTable);
   const state = reader.read(['state'], stateTable);
-  refuseEarthFiles(reader);
+  const shelf = createKernelShelf();
+  const earth = readEarth(reader, around, shelf, problems);
   const sites = readSites(reader, around, problems);
-  const feeds = readFeeds(reader, around);
+  const feeds = readFeeds(
+    reader,
+    around,
+    sites.flatMap((site) => site?.name ?? []),
+  );
   const modelsSection = reader.read(['models'], modelsTable);
   const budget = reader.read(['budget'], budgetTable);
   const mail = readMail(reader, around);
@@ -77,8 +76,8 @@ function readParts(reader: SectionReader, around: Surroundings, problems: Config
     checkStateFolder(reader, { title: 'the state folder', path: ['state', 'folder'], folder: stateFolder });
   const modelsFolder = modelsSection && around.absolute(modelsSection.folder);
   checkOverlaps(reader, feedFolders(feeds), otherFolders({ stateFolder, modelsFolder, mail, file: reader.file }));
-  const models = modelsFolder === null ? null : loadModels(modelsFolder, problems);
-  return { observatory, stateFolder, sites, feeds, modelsFolder, models, budget, mail, review };
+  const models = modelsFolder === null ? null : loadModels(modelsFolder, shelf, problems);
+  return { observatory, stateFolder, earth, sites, feeds, modelsFolder, models, budget, mail, review };
 }
 
 function assemble(file: string, parts: Parts): Configuration {
@@ -86,7 +85,7 @@ function assemble(file: string, parts: Parts): Configuration {
     file,
     observatory: sound(parts.observatory),
     stateFolder: sound(parts.stateFolder),
-    earth: { orientationFile: null, kernelFile: null },
+    earth: parts.earth,
     sites: parts.sites.map(sound<Site>),
     feeds: parts.feeds.map(sound<Feed>),
     modelsFolder: sound(parts.modelsFolder),
@@ -101,15 +100,6 @@ function assemble(file: string, parts: Parts): Configuration {
 function sound<Part>(part: Part | null): Part {
   if (part === null) throw new Error('a part of the configuration is missing although no error was reported');
   return part;
-}
-
-function refuseEarthFiles(reader: SectionReader): void {
-  if (!reader.has(['earth'])) return;
-  const table = reader.read(['earth'], earthTable);
-  for (const key of ['orientation_file', 'kernel_file'] as const) {
-    if (table?.[key] !== undefined)
-      reader.error(['earth', key], 'is not supported yet; leave it out to use the built-in tables');
-  }
 }
 
 function readReview(reader: SectionReader): Configuration['review'] | null {

@@ -1,14 +1,18 @@
 import { readdirSync } from 'node:fs';
 import { join } from 'node:path';
-import type { PulsarModel } from '../../detectors/spin/pulsarModel.ts';
+import { BUILT_IN_EPHEMERIS, type PulsarModel } from '../../detectors/spin/pulsarModel.ts';
+import type { KernelShelf } from '../tables/kernelFile.ts';
 import type { ConfigProblem } from './configuration.ts';
 import { readPulsarFile } from './pulsarFile.ts';
 import { createSectionReader } from './sectionReader.ts';
 import { readTextFile } from './textFile.ts';
 import { isFault, parseToml } from './tomlDocument.ts';
 
-/** Every pulsar's file of the models folder, in the order of the file names. Hidden files and other endings are passed over. */
-export function loadModels(folder: string, problems: ConfigProblem[]): Map<string, PulsarModel> {
+/**
+ * Every pulsar's file of the models folder, in the order of the file names, with the kernels they name. Hidden files and other endings
+ * are passed over.
+ */
+export function loadModels(folder: string, shelf: KernelShelf, problems: ConfigProblem[]): Map<string, PulsarModel> {
   const models = new Map<string, PulsarModel>();
   const fileOf = new Map<string, string>();
   const complain = (file: string, message: string, place?: { line: number; column: number }) =>
@@ -32,10 +36,19 @@ export function loadModels(folder: string, problems: ConfigProblem[]): Map<strin
       complain(file, `name: "${model.name}" has a model already, in ${earlier}`, document.placeOf(['name']));
       continue;
     }
+    const kernel = kernelProblem(model, shelf);
+    if (kernel !== null) complain(file, kernel, document.placeOf(['spin', 'ephemeris']));
     fileOf.set(model.name, file);
     models.set(model.name, model);
   }
   return models;
+}
+
+function kernelProblem({ ephemeris }: PulsarModel, shelf: KernelShelf): string | null {
+  if (ephemeris === undefined || ephemeris === BUILT_IN_EPHEMERIS) return null;
+  const taken = shelf.take(ephemeris);
+  if ('kernel' in taken) return null;
+  return `spin, ephemeris: ${ephemeris} ${taken.problem}; write "${BUILT_IN_EPHEMERIS}" or the path of an SPK kernel`;
 }
 
 function modelFiles(folder: string, complain: (file: string, message: string) => void): string[] {

@@ -1,54 +1,63 @@
-import { parseDoubleDouble } from '../../detectors/spin/doubleDouble.ts';
-import type {
-  AlertSettings,
-  DoubleDouble,
-  KnownGlitch,
-  NoiseSettings,
-  PulsarModel,
-  SpinDown,
+import { dirname, resolve } from 'node:path';
+import type { z } from 'zod';
+import {
+  type AlertSettings,
+  BUILT_IN_EPHEMERIS,
+  type KnownGlitch,
+  type NoiseSettings,
+  type PulsarModel,
+  type SpinDown,
 } from '../../detectors/spin/pulsarModel.ts';
-import { compareMjd, type Mjd, parseMjd } from '../../detectors/time/mjd.ts';
-import { parseDecimal } from '../intake/numbers.ts';
-import { parseDeclination, parseRightAscension } from './angles.ts';
+import { compareMjd } from '../../detectors/time/mjd.ts';
 import { modelFromTcb } from './fromTcb.ts';
+import { date, decimal, frequency } from './modelNumbers.ts';
+import { readOrbit } from './orbit.ts';
+import { readPosition } from './position.ts';
 import { alertsTable, glitchTable, noiseTable, pulsarTable, recoveryTable, spinTable } from './pulsarSchema.ts';
+import { readReceivers } from './receivers.ts';
 import type { SectionReader } from './sectionReader.ts';
 import type { TomlPath } from './tomlDocument.ts';
 
-/** One pulsar's file as a model in TDB; null after complaints, or when the pulsar has to be left out. */
+/** One pulsar's file as a model in TDB; null after complaints. */
 export function readPulsarFile(reader: SectionReader): PulsarModel | null {
   const head = reader.read([], pulsarTable);
-  const rightAscensionRad = angle(
-    reader,
-    'right_ascension',
-    parseRightAscension,
-    '"hh:mm:ss.s" or degrees from 0 to 360',
-  );
-  const declinationRad = angle(reader, 'declination', parseDeclination, '"±dd:mm:ss.s" or degrees from -90 to 90');
+  const position = readPosition(reader, head ?? {});
   const spin = readSpin(reader);
   const glitches = readGlitches(reader);
+  const receivers = readReceivers(reader);
   const noise = readNoise(reader);
   const alerts = readAlerts(reader);
-  const bound = reader.has(['orbit']);
-  if (bound) reader.warning(['orbit'], 'orbits are not supported yet: arrivals of this pulsar will not be used');
+  const orbit = reader.has(['orbit']) ? readOrbit(reader) : undefined;
+  const dispersion = head === null ? null : readDispersion(reader, head);
 
-  if (head === null || rightAscensionRad === null || declinationRad === null) return null;
-  const moving = head.proper_motion_mas_per_yr.some((component) => component !== 0);
+  if (head === null || position === null) return null;
+  const moving = position.properMotionMasPerYr.some((component) => component !== 0);
   if (moving && head.position_epoch_mjd === undefined) {
     reader.error(['position_epoch_mjd'], 'is missing, and the position moves: say at which date it holds');
     return null;
   }
-  if (spin === null || glitches === null || noise === null || alerts === null || bound) return null;
+  if (
+    dispersion === null ||
+    spin === null ||
+    glitches === null ||
+    receivers === null ||
+    noise === null ||
+    alerts === null ||
+    orbit === null
+  ) {
+    return null;
+  }
   const model: PulsarModel = {
     name: head.name,
-    rightAscensionRad,
-    declinationRad,
+    ...position,
     positionEpochMjd: head.position_epoch_mjd ?? spin.model.epochTdb.day,
-    properMotionMasPerYr: head.proper_motion_mas_per_yr,
     parallaxMas: head.parallax_mas,
-    dispersionMeasure: head.dispersion_measure,
+    ...dispersion,
+    ...(spin.ephemeris === null ? {} : { ephemeris: spin.ephemeris }),
     spin: spin.model,
+    ...(orbit === undefined ? {} : { orbit }),
     glitches,
+    ...(receivers.length === 0 ? {} : { receivers }),
     noise,
     alerts,
   };
@@ -57,44 +66,66 @@ export function readPulsarFile(reader: SectionReader): PulsarModel | null {
   return modelFromTcb(model);
 }
 
-function readSpin(reader: SectionReader): { readonly model: SpinDown; readonly timeScale: 'TDB' | 'TCB' } | null {
-  const table = reader.read(['spin'], spinTable);
-  const otherEphemeris = table !== null && table.ephemeris !== 'built-in';
-  if (otherEphemeris) {
-    reader.error(
-      ['spin', 'ephemeris'],
-      'only "built-in" is supported for now; other ephemerides are not supported yet',
-    );
+type Dispersion = Pick<PulsarModel, 'dispersionMeasure' | 'dispersionMeasureSlope' | 'solarWindPerCm3'>;
+
+function readDispersion(reader: SectionReader, head: z.output<typeof pulsarTable>): Dispersion | null {
+  const perYr = head.dispersion_measure_derivative_per_yr ?? 0;
+  const epochMjd = head.dispersion_measure_epoch_mjd;
+  if (perYr !== 0 && epochMjd === undefined) {
+    const message = 'is missing, and the dispersion measure changes: say at which date it holds';
+    reader.error(['dispersion_measure_epoch_mjd'], message);
+    return null;
   }
+  return {
+    dispersionMeasure: head.dispersion_measure,
+    ...(perYr === 0 || epochMjd === undefined ? {} : { dispersionMeasureSlope: { perYr, epochMjd } }),
+    ...(head.solar_wind_density_per_cm3 === undefined ? {} : { solarWindPerCm3: head.solar_wind_density_per_cm3 }),
+  };
+}
+
+interface ReadSpin {
+  readonly model: SpinDown;
+  readonly timeScale: 'TDB' | 'TCB';
+  readonly ephemeris: string | null;
+}
+
+function readSpin(reader: SectionReader): ReadSpin | null {
+  const table = reader.read(['spin'], spinTable);
   const epochTdb = date(reader, ['spin', 'epoch_mjd']);
   const frequencyHz = frequency(reader, ['spin', 'frequency_hz']);
   const first = decimal(reader, ['spin', 'frequency_derivative'], { size: 1e-7, unit: 'Hz/s' });
   const second = decimal(reader, ['spin', 'frequency_second_derivative'], { size: 1e-15, unit: 'Hz/s²', absent: 0 });
+  const higher = (table?.frequency_higher_derivatives ?? []).map((_, i) =>
+    decimal(reader, ['spin', 'frequency_higher_derivatives', i], { size: 1e-20, unit: `Hz/s^${i + 3}` }),
+  );
+  const phase = decimal(reader, ['spin', 'phase_at_epoch_turns'], { size: 1000, unit: 'turns', absent: 0 });
   if (first !== null && first > 0) {
     reader.warning(
       ['spin', 'frequency_derivative'],
-      'is positive: the pulsar would spin up. Is this the derivative of the period?',
+      'is positive: the pulsar would spin up, as accreting ones do. Or is this the derivative of the period?',
     );
   }
-  if (
-    table === null ||
-    otherEphemeris ||
-    epochTdb === null ||
-    frequencyHz === null ||
-    first === null ||
-    second === null
-  ) {
+  if (table === null || epochTdb === null || frequencyHz === null || first === null || second === null) {
     return null;
   }
+  if (higher.some((derivative) => derivative === null) || phase === null) return null;
   return {
     timeScale: table.time_scale,
+    ephemeris: table.ephemeris === undefined ? null : ephemerisOf(reader, table.ephemeris),
     model: {
       epochTdb,
       frequencyHz,
       frequencyDerivativeHzPerS: first,
       frequencySecondDerivativeHzPerS2: second,
+      ...(higher.length === 0 ? {} : { higherFrequencyDerivatives: higher as number[] }),
+      ...(phase === 0 ? {} : { phaseAtEpochTurns: phase }),
     },
   };
+}
+
+/** Kernels stand beside the model that was fitted with them: their paths start from its folder. */
+function ephemerisOf(reader: SectionReader, text: string): string {
+  return text === BUILT_IN_EPHEMERIS ? text : resolve(dirname(reader.file), text);
 }
 
 function readGlitches(reader: SectionReader): KnownGlitch[] | null {
@@ -102,6 +133,8 @@ function readGlitches(reader: SectionReader): KnownGlitch[] | null {
   if (glitches.includes(null)) return null;
   return (glitches as KnownGlitch[]).sort((a, b) => compareMjd(a.epochTdb, b.epochTdb));
 }
+
+const MOST_RECOVERIES = 3;
 
 function readGlitch(reader: SectionReader, path: TomlPath): KnownGlitch | null {
   const table = reader.read(path, glitchTable);
@@ -112,6 +145,13 @@ function readGlitch(reader: SectionReader, path: TomlPath): KnownGlitch | null {
   const recoveries = reader.tablesOf([...path, 'recovery']).map((at) => readRecovery(reader, at));
   if (table === null || epochTdb === null || phaseTurns === null || step === null || derivative === null) return null;
   if (recoveries.includes(null)) return null;
+  if (recoveries.length > MOST_RECOVERIES) {
+    reader.error(
+      [...path, 'recovery', MOST_RECOVERIES],
+      `is one too many: at most ${MOST_RECOVERIES} exponentials are taken`,
+    );
+    return null;
+  }
   return {
     epochTdb,
     phaseTurns,
@@ -151,49 +191,4 @@ function readAlerts(reader: SectionReader): AlertSettings | null {
     extraRecipients: table.extra_recipients,
     ...(table.confirm_log_odds === undefined ? {} : { confirmLogOdds: table.confirm_log_odds }),
   };
-}
-
-function angle(
-  reader: SectionReader,
-  key: string,
-  parse: (text: string) => number | null,
-  wanted: string,
-): number | null {
-  const text = reader.document.textOf([key]);
-  if (text === null) return null; // The schema has complained.
-  const radians = parse(text);
-  if (radians === null) reader.error([key], `must be ${wanted}, found "${text}"`);
-  return radians;
-}
-
-function date(reader: SectionReader, path: TomlPath): Mjd | null {
-  const text = reader.document.textOf(path);
-  if (text === null) return null;
-  const mjd = parseMjd(text);
-  if (mjd !== null && mjd.day >= 30_000 && mjd.day <= 100_000) return mjd;
-  reader.error(path, `must be a Modified Julian Date between 30000 and 100000, found "${text}"`);
-  return null;
-}
-
-/** Slowest known pulsars turn in minutes, the fastest 716 times a second (common practice, no source). */
-function frequency(reader: SectionReader, path: TomlPath): DoubleDouble | null {
-  const text = reader.document.textOf(path);
-  if (text === null) return null;
-  const rough = parseDecimal(text);
-  if (rough !== null && rough >= 1e-4 && rough <= 2000) return parseDoubleDouble(text);
-  reader.error(path, `must be between 0.0001 and 2000 Hz (the frequency, not the period), found "${text}"`);
-  return null;
-}
-
-function decimal(
-  reader: SectionReader,
-  path: TomlPath,
-  bounds: { readonly size: number; readonly unit: string; readonly absent?: number },
-): number | null {
-  const text = reader.document.textOf(path);
-  if (text === null) return bounds.absent ?? null;
-  const value = parseDecimal(text);
-  if (value !== null && Math.abs(value) <= bounds.size) return value;
-  reader.error(path, `must be a number between -${bounds.size} and ${bounds.size} ${bounds.unit}, found "${text}"`);
-  return null;
 }

@@ -1,5 +1,6 @@
 import { z } from 'zod';
 import { DEFAULT_HISTORICAL_DAYS } from '../../alerts/index.ts';
+import { LAYOUTS } from '../intake/layouts/read.ts';
 import { cronProblem } from './cronText.ts';
 import { mailAddress, name, numberBetween, oneOf, path, words } from './fields.ts';
 
@@ -23,7 +24,11 @@ export const observatoryTable = z.strictObject({ name: words, contact: words });
 
 export const stateTable = z.strictObject({ folder: path });
 
-export const earthTable = z.strictObject({ orientation_file: path.optional(), kernel_file: path.optional() });
+export const earthTable = z.strictObject({
+  orientation_file: path.optional(),
+  kernel_file: path.optional(),
+  tt_bipm_file: path.optional(),
+});
 
 export const siteTable = z.strictObject({
   name,
@@ -34,7 +39,8 @@ export const siteTable = z.strictObject({
 export const feedTable = z.strictObject({
   name,
   folder: path,
-  layout: z.string(),
+  layout: oneOf(LAYOUTS),
+  columns: nested,
   recursive: z.boolean().default(false),
   poll_seconds: numberBetween(0.1, 86_400, 's').optional(),
   expect_every_hours: numberBetween(0.01, 100_000, 'h').optional(),

@@ -24,6 +24,8 @@ const LARGEST_SIGNAL_TO_NOISE = 1e9;
 export interface RowProblem {
   readonly column: Column | null;
   readonly reason: string;
+  /** Whose arrival it would have been, where the row says so. */
+  readonly pulsar?: string;
 }
 
 /** Text of a column in this row; empty where the table has no such column. */
@@ -53,8 +55,9 @@ export function arrivalOf(cell: Cell): ReceivedArrival | RowProblem {
       note: noteOf(cell),
     };
   } catch (error) {
-    if (error instanceof Unusable) return error.problem;
-    throw error;
+    if (!(error instanceof Unusable)) throw error;
+    const pulsar = cell('pulsar');
+    return pulsar === '' || pulsar.length > LONGEST_NAME ? error.problem : { ...error.problem, pulsar };
   }
 }
 

@@ -4,6 +4,7 @@ import {
   type Mailer,
   markPossibleDuplicate,
   pauseMs,
+  withoutPicture,
 } from '../../alerts/index.ts';
 import { type Clock, clockStepWatch } from '../clock.ts';
 import { reasonOf } from '../errors.ts';
@@ -65,10 +66,10 @@ export function startDelivery(options: DeliveryOptions): DeliveryLoop {
     if (clock.monotonicMs() < loginPausedUntilMs) return false;
     const mail = store.claimDue(clock.now().toISOString());
     if (mail === null) return false;
-    const outcome = await attempt(options, mail);
+    const { outcome, remark } = await attempt(options, mail);
     lastTrouble = outcome.state === 'delivered' ? null : outcome.detail;
     if (outcome.loginRefused) loginPausedUntilMs = clock.monotonicMs() + pauseMs(pauseKey(mail), 'login refused');
-    await note(options, mail, settled(mail, outcome, clock), stopping.signal);
+    await note(options, mail, settled(mail, outcome, { remark, clock }), stopping.signal);
     return true;
   };
 
@@ -102,26 +103,44 @@ export function startDelivery(options: DeliveryOptions): DeliveryLoop {
   };
 }
 
-async function attempt({ mailer, from, log }: DeliveryOptions, mail: ClaimedMail): Promise<DeliveryOutcome> {
+interface Attempt {
+  readonly outcome: DeliveryOutcome;
+  /** What the person should know who finds the message other than it was queued; null: nothing. */
+  readonly remark: string | null;
+}
+
+async function attempt({ mailer, from, log }: DeliveryOptions, mail: ClaimedMail): Promise<Attempt> {
   const composed = Buffer.from(mail.content, 'latin1');
   const mime = mail.possibleDuplicate ? markPossibleDuplicate(composed) : composed;
+  const send = (bytes: Buffer) => mailer.send({ from, recipient: mail.recipient, mime: bytes });
   try {
-    const outcome = await mailer.send({ from, recipient: mail.recipient, mime });
+    const outcome = await send(mime);
+    const lighter = outcome.tooLarge ? withoutPicture(mime) : null;
     step('mail sent');
-    return outcome;
+    // The server has not taken the whole message, so that a lighter one is no second copy.
+    return lighter === null
+      ? { outcome, remark: null }
+      : { outcome: await send(lighter), remark: `too large with its picture (${outcome.detail}); sent without` };
   } catch (error) {
     log.error({ err: error, messageId: mail.messageId }, 'sending failed in an unforeseen way');
-    return { state: 'later', detail: reasonOf(error) };
+    return { outcome: { state: 'later', detail: reasonOf(error) }, remark: null };
   }
 }
 
-function settled(mail: ClaimedMail, outcome: DeliveryOutcome, clock: Clock): MailOutcome {
+function settled(
+  mail: ClaimedMail,
+  outcome: DeliveryOutcome,
+  { remark, clock }: { readonly remark: string | null; readonly clock: Clock },
+): MailOutcome {
   const now = clock.now();
-  if (outcome.state === 'delivered') return { kind: 'delivered', at: now.toISOString() };
-  if (outcome.state === 'refused') return { kind: 'refused', error: outcome.detail };
+  if (outcome.state === 'delivered') {
+    return { kind: 'delivered', at: now.toISOString(), ...(remark === null ? {} : { remark }) };
+  }
+  const error = remark === null ? outcome.detail : `${remark}: ${outcome.detail}`;
+  if (outcome.state === 'refused') return { kind: 'refused', error };
   const cause = outcome.loginRefused ? 'login refused' : outcome.state;
   const dueAt = new Date(now.getTime() + pauseMs(pauseKey(mail), cause)).toISOString();
-  return { kind: outcome.state, dueAt, error: outcome.detail };
+  return { kind: outcome.state, dueAt, error };
 }
 
 function pauseKey(mail: ClaimedMail): { id: string; attempts: number } {

@@ -1,4 +1,4 @@
-import { composeOperatorNotice, type MorningReview } from '../../alerts/index.ts';
+import { composeOperatorNotice, type MorningReview, timeInWords } from '../../alerts/index.ts';
 import type { Configuration } from '../config/configuration.ts';
 import { newMessage } from '../stages/alert.ts';
 import { mailSetting, type Station } from '../station.ts';
@@ -33,11 +33,12 @@ export async function reportSilences(station: Station): Promise<number> {
     if (store.meta(key) === silence) continue;
     const setting = mailSetting(station);
     const name = `silence.${feed}.${silence.replace(/[^0-9a-z]/g, '')}`;
+    const forSoLong = timeInWords(hoursSilent);
     const notice = {
       name,
-      subject: `feed ${feed} has been silent for ${Math.floor(hoursSilent)} h`,
+      subject: `feed ${feed} has been silent for ${forSoLong}`,
       paragraphs: [
-        `The feed “${feed}” is expected to deliver every ${expectedHours} h. Nothing has come for ${Math.floor(hoursSilent)} h${silence === 'never' ? ', and nothing ever before' : ` (last file: ${silence})`}.`,
+        `The feed “${feed}” is expected to deliver every ${timeInWords(expectedHours)}. Nothing has come for ${forSoLong}${silence === 'never' ? ', and nothing ever before' : ` (last file: ${silence})`}.`,
         'Silence about glitches means nothing for pulsars of this feed until it delivers again. Check the transfer, the mount and the recorder.',
       ],
     };

@@ -1,20 +1,24 @@
 import { clockStepWatch } from '../clock.ts';
 import type { Station } from '../station.ts';
+import { storageTrouble } from '../store/index.ts';
+import { createDailyChecks } from './dailyChecks.ts';
 import { type Loop, startLoop } from './loop.ts';
 import { FIRST_START, reportSilences } from './silentFeeds.ts';
 
-/** Once a minute: feeds that fell silent, a wall clock that was set, a record that was moved away under the running program. */
+/** Once a minute: feeds that fell silent, a wall clock that was set, a record that was moved away under the running program. Once a day: `dailyChecks`. */
 export function startUpkeep(
   station: Station,
   actions: {
     readonly onMail: () => void;
     readonly onClockStep: () => Promise<void>;
+    readonly tableWarnings: () => readonly string[];
     readonly onFatal: (error: unknown) => void;
   },
 ): Loop {
   const { store, clock, log } = station;
   if (store.meta(FIRST_START) === null) store.setMeta(FIRST_START, clock.now().toISOString());
   const clockStep = clockStepWatch(clock);
+  const daily = createDailyChecks(station, actions.tableWarnings);
   return startLoop({
     name: 'upkeep',
     pauseMs: UPKEEP_MS,
@@ -31,6 +35,13 @@ export function startUpkeep(
         await actions.onClockStep();
       }
       if ((await reportSilences(station)) > 0) actions.onMail();
+      try {
+        if ((await daily.run()) > 0) actions.onMail();
+      } catch (error) {
+        const trouble = storageTrouble(error);
+        if (trouble === 'fault' || trouble === 'damaged') actions.onFatal(error);
+        throw error;
+      }
     },
   });
 }

@@ -14,7 +14,7 @@ export function bringToBarycentre(station: Station, received: ReceivedArrival): 
     received,
     model,
     station.sites.get(received.site) ?? null,
-    station.tables,
+    station.tablesOf(model),
   );
   const { quality, qualityReasons } = arrival;
   return { barycentred: quality === 'unusable' ? null : arrival, quality, qualityReasons };

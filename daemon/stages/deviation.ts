@@ -1,4 +1,4 @@
-import type { TimedArrival } from '../../detectors/arrival.ts';
+import { type BarycentredArrival, emissionTdb, type TimedArrival } from '../../detectors/arrival.ts';
 import type { PulsarReport } from '../../detectors/report.ts';
 import type { ArrivalRecord } from '../records.ts';
 import type { Station } from '../station.ts';
@@ -22,23 +22,23 @@ export function liveLog(station: Station, pulsar: string, changes: LogChanges): 
   const added = changes.arrivals
     .filter(({ key, received }) => received.pulsar === pulsar && (status.get(key) ?? 'live') === 'live')
     .flatMap(({ key, received, barycentred }) =>
-      barycentred === null ? [] : [timedArrival(key, received, barycentred.tdb)],
+      barycentred === null ? [] : [timedArrival(key, received, barycentred)],
     );
   return inTimeOrder([...recorded, ...added]);
 }
 
 function timed(record: ArrivalRecord, retimed: RetimedArrival | undefined): TimedArrival[] {
-  const tdb = retimed === undefined ? record.tdb : (retimed.barycentred?.tdb ?? null);
-  return tdb === null ? [] : [timedArrival(record.key, record, tdb)];
+  const { tdb, delays } = retimed === undefined ? record : (retimed.barycentred ?? { tdb: null, delays: null });
+  return tdb === null || delays === null ? [] : [timedArrival(record.key, record, { tdb, delays })];
 }
 
 function timedArrival(
   key: string,
   received: Omit<TimedArrival, 'key' | 'tdb'>,
-  tdb: TimedArrival['tdb'],
+  barycentred: Pick<BarycentredArrival, 'tdb' | 'delays'>,
 ): TimedArrival {
   const { uncertaintyUs, frequencyMhz, site, receiver, pulseNumber } = received;
-  return { key, tdb, uncertaintyUs, frequencyMhz, site, receiver, pulseNumber };
+  return { key, tdb: emissionTdb(barycentred), uncertaintyUs, frequencyMhz, site, receiver, pulseNumber };
 }
 
 /** Follows one pulsar's phase through its log: what the detector says about it alone. */

@@ -2,12 +2,15 @@ import { createHash } from 'node:crypto';
 import { closestName } from '../closestName.ts';
 import { BARYCENTRE } from '../intake/arrivalFields.ts';
 import { arrivalKey } from '../intake/key.ts';
+import { readArrivalFile } from '../intake/layouts/read.ts';
 import { type Reconciliation, reconcile } from '../intake/reconcile.ts';
-import { type ArrivalFile, type ReceivedRow, readArrivalFile } from '../intake/rows.ts';
+import type { ArrivalFile, ReceivedRow } from '../intake/rows.ts';
 import type { Station } from '../station.ts';
 import type { NewFile, QuarantinedLine } from '../store/index.ts';
 import { quoted } from '../visibleText.ts';
 import type { TakenFile } from '../watch/feedMemory.ts';
+import { layoutMark, withoutLayoutMark } from './layoutMark.ts';
+import { earlier, heldReason, marksOf, readMarks, type Waiting } from './waitingRows.ts';
 
 /** A file that stood still, as the watcher or `replay` hands it over. */
 export interface FileInHand {
@@ -30,26 +33,32 @@ export interface Intake {
 }
 
 export function takeRows(station: Station, inHand: FileInHand): Intake {
-  const read = readArrivalFile(inHand.bytes);
+  const read = readInHand(station, inHand);
   if (read.ignoredColumns.length > 0) {
     station.log.warn(
       { feed: inHand.feed, file: inHand.path, columns: read.ignoredColumns },
       'columns that are not ours',
     );
   }
+  for (const warning of read.warnings) {
+    station.log.warn({ feed: inHand.feed, file: inHand.path, warning }, 'read with a doubt');
+  }
   const known: ReceivedRow[] = [];
-  const quarantined: QuarantinedLine[] = read.rejects.map(({ line, column, reason }) => ({
+  const quarantined: QuarantinedLine[] = read.rejects.map(({ line, column, reason, pulsar = null }) => ({
     line,
+    pulsar,
     reason: column === null ? reason : `${column} ${reason}`,
   }));
-  let waiting = false;
+  let waiting: Waiting = { forNames: false, forMjd: null };
   for (const row of read.rows) {
     const missing = missingFor(station, row);
+    const reason = missing ?? heldReason(station, row);
     // What is on record stays there, also when its model was taken away since.
-    if (missing === null || station.store.arrival(arrivalKey(row)) !== null) known.push(row);
+    if (reason === null || station.store.arrival(arrivalKey(row)) !== null) known.push(row);
     else {
-      quarantined.push({ line: row.line, reason: missing });
-      waiting = true;
+      quarantined.push({ line: row.line, pulsar: row.pulsar, reason });
+      waiting =
+        missing === null ? { ...waiting, forMjd: earlier(waiting.forMjd, row) } : { ...waiting, forNames: true };
     }
   }
   if (read.fault !== null) quarantined.push({ line: null, reason: read.fault });
@@ -61,8 +70,20 @@ export function takeRows(station: Station, inHand: FileInHand): Intake {
   };
 }
 
+/** The file as its feed's layout reads it. */
+export function readInHand({ configuration, tables }: ReadingStation, { feed, path, bytes }: FileToRead): ArrivalFile {
+  const layout = configuration.feeds.find(({ name }) => name === feed) ?? { layout: 'csv', columns: null };
+  return readArrivalFile(bytes, layout, { path, leapSeconds: tables.leapSeconds });
+}
+
+type ReadingStation = Pick<Station, 'configuration' | 'tables'>;
+type FileToRead = Pick<FileInHand, 'feed' | 'path' | 'bytes'>;
+
 /** What the configuration lacks for a row; null: nothing. */
-function missingFor({ configuration, sites }: Station, row: ReceivedRow): string | null {
+export function missingFor(
+  { configuration, sites }: Pick<Station, 'configuration' | 'sites'>,
+  row: ReceivedRow,
+): string | null {
   if (!configuration.models.has(row.pulsar)) {
     const near = closestName(row.pulsar, [...configuration.models.keys()]);
     const guess = near === null ? '' : ` (did you mean ${quoted(near)}?)`;
@@ -77,7 +98,7 @@ function missingFor({ configuration, sites }: Station, row: ReceivedRow): string
 function describeFile(
   station: Station,
   inHand: FileInHand,
-  { read, waiting }: { readonly read: ArrivalFile; readonly waiting: boolean },
+  { read, waiting }: { readonly read: ArrivalFile; readonly waiting: Waiting },
 ): NewFile {
   return {
     feed: inHand.feed,
@@ -85,38 +106,23 @@ function describeFile(
     pathBytesHex: inHand.pathBytes.toString('hex'),
     sha256: sha256Of(inHand.bytes),
     bytes: inHand.bytes.length,
-    signature: waiting ? inHand.signature + waitingMark(station) : inHand.signature,
+    signature: inHand.signature + layoutMark(station, inHand.feed) + marksOf(station, waiting),
     rows: read.rows.length + read.rejects.length,
     fault: read.fault,
   };
 }
 
-/**
- * Rows that wait for a model or a site leave a mark in the signature of their file: the names that were known. So the file is read again, by
- * itself, once the configuration knows others.
- */
-function waitingMark({ configuration, sites }: Station): string {
-  const names = JSON.stringify([[...configuration.models.keys()].sort(), [...sites.keys()].sort()]);
-  return ` waiting:${createHash('sha256').update(names).digest('hex').slice(0, 16)}`;
-}
-
 /** The fault of a file that was set aside unread begins with this. */
 export const SET_ASIDE = 'set aside';
 
-/** What the watcher needs to know of a path: the content that was taken in last, unless its rows wait for names known now. */
+/** What the watcher needs to know of a path: the content that was taken in last, unless what its rows waited for is there now. */
 export function recall(station: Station, feed: string, pathBytes: Buffer): TakenFile | null {
   const known = station.store.knownFile(feed, { bytesHex: pathBytes.toString('hex') });
   if (known === null) return null;
-  const mark = markOf(known.signature);
-  const isCurrent = mark === '' || mark === waitingMark(station);
-  return {
-    signature: isCurrent ? known.signature.slice(0, known.signature.length - mark.length) : '',
-    bytes: known.bytes,
-  };
-}
-
-function markOf(signature: string): string {
-  return / waiting:[0-9a-f]{16}$/.exec(signature)?.[0] ?? '';
+  const { plain: marked, isOver, isHeld } = readMarks(station, known.signature);
+  const { plain, mark } = withoutLayoutMark(marked);
+  const isCurrent = !isOver && mark === layoutMark(station, feed);
+  return { signature: isCurrent ? plain : '', bytes: known.bytes, isHeld };
 }
 
 /** Whether a file stands on record as it is now; one that was only touched is noted as such. */
@@ -127,7 +133,8 @@ export function isOnRecord(station: Station, inHand: FileInHand): boolean {
   if (before.signature === inHand.signature) return true;
   const known = store.knownFile(inHand.feed, { bytesHex: inHand.pathBytes.toString('hex') });
   if (known?.sha256 !== sha256Of(inHand.bytes) || known.fault?.startsWith(SET_ASIDE)) return false;
-  store.noteUnchanged(known.id, inHand.signature + markOf(known.signature));
+  const { marks } = readMarks(station, known.signature);
+  store.noteUnchanged(known.id, inHand.signature + layoutMark(station, inHand.feed) + marks);
   return true;
 }
 

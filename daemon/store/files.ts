@@ -128,7 +128,6 @@ export function insertFile(db: Db, file: NewFile, counts: RowCounts, at: string)
 }
 
 export function insertQuarantined(db: Db, fileId: number, lines: readonly QuarantinedLine[], at: string): void {
-  for (const { line, reason } of lines) {
-    run(db, 'INSERT INTO quarantine (file_id, line, reason, at) VALUES (?, ?, ?, ?)', fileId, line, reason, at);
-  }
+  const insert = 'INSERT INTO quarantine (file_id, line, pulsar, reason, at) VALUES (?, ?, ?, ?, ?)';
+  for (const { line, pulsar = null, reason } of lines) run(db, insert, fileId, line, pulsar, reason, at);
 }

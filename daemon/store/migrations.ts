@@ -10,7 +10,14 @@ export interface Migration {
   readonly sql: string;
 }
 
-export const MIGRATIONS: readonly Migration[] = [{ name: 'first schema', sql: FIRST_SCHEMA }];
+export const MIGRATIONS: readonly Migration[] = [
+  { name: 'first schema', sql: FIRST_SCHEMA },
+  {
+    name: 'whose a quarantined row would have been',
+    sql: `ALTER TABLE quarantine ADD COLUMN pulsar TEXT;
+CREATE INDEX quarantine_by_pulsar ON quarantine (pulsar) WHERE pulsar IS NOT NULL;`,
+  },
+];
 
 export const SCHEMA_VERSION = MIGRATIONS.length;
 

@@ -34,10 +34,11 @@ export function eventChangesSince(db: Db, since: string): EventChangeLine[] {
   ).map(({ body, state, what, at }) => ({ event: { ...fromJson<PulsarEvent>(body), state }, what, at }));
 }
 
+/** A file that could not be read (without a signature) is no sign of life. */
 export function lastFileByFeed(db: Db): Map<string, string> {
   const found = rows<{ feed: string; at: string }>(
     db,
-    'SELECT feed, max(taken_in_at) AS at FROM files GROUP BY feed ORDER BY feed',
+    "SELECT feed, max(taken_in_at) AS at FROM files WHERE signature <> '' GROUP BY feed ORDER BY feed",
   );
   return new Map(found.map(({ feed, at }) => [feed, at]));
 }

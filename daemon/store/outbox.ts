@@ -155,8 +155,9 @@ export function settle(db: Db, id: number, outcome: MailOutcome): void {
     if (outcome.kind === 'delivered') {
       run(
         db,
-        "UPDATE outbox SET state = 'delivered', delivered_at = ?, last_error = NULL WHERE id = ?",
+        "UPDATE outbox SET state = 'delivered', delivered_at = ?, last_error = ? WHERE id = ?",
         outcome.at,
+        outcome.remark ?? null,
         id,
       );
     } else if (outcome.kind === 'later') {

@@ -102,6 +102,8 @@ export interface RetimedArrival {
 export interface QuarantinedLine {
   /** Null: the whole file. */
   readonly line: number | null;
+  /** As the row names it; absent or null where it names none. */
+  readonly pulsar?: string | null;
   readonly reason: string;
 }
 
@@ -177,7 +179,8 @@ export interface ClaimedMail extends OutboxRecord {
 
 /** What became of an attempt. */
 export type MailOutcome =
-  | { readonly kind: 'delivered'; readonly at: string }
+  /** With a remark where the message could not leave as it was. */
+  | { readonly kind: 'delivered'; readonly at: string; readonly remark?: string }
   /** It certainly did not arrive; try again then. */
   | { readonly kind: 'later'; readonly dueAt: string; readonly error: string }
   /** It may have arrived. Sent once more, marked; a second such end expires it. */

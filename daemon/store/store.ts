@@ -194,6 +194,11 @@ export class Store {
     return recent.recentQuarantine(this.#db, most);
   }
 
+  /** Rows that name a pulsar and could not be used, newest first, without that of files delivered again since. */
+  quarantineOf(pulsar: string): QuarantinedRow[] {
+    return recent.quarantineOf(this.#db, pulsar);
+  }
+
   intakeSince(since: string): { files: number; arrivals: number; pulsars: number } {
     return morning.intakeSince(this.#db, since);
   }

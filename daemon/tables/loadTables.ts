@@ -1,14 +1,19 @@
 import { createHash } from 'node:crypto';
 import { readFileSync } from 'node:fs';
 import { join } from 'node:path';
-import { readEarthSunTable } from '../../detectors/sky/earthSunTable.ts';
+import { type EarthSunTable, readEarthSunTable } from '../../detectors/sky/earthSunTable.ts';
 import type { SkyTables } from '../../detectors/sky/observer.ts';
 import type { LeapSecondTable } from '../../detectors/time/leapSeconds.ts';
 import { packageRoot } from '../packageRoot.ts';
 import { readLeapSecondFile } from './leapSecondFile.ts';
 
+/** What is built in; `createStation` adds what the operator set. */
+export interface ShippedTables extends SkyTables {
+  readonly earthSun: EarthSunTable;
+}
+
 export interface LoadedTables {
-  readonly tables: SkyTables;
+  readonly tables: ShippedTables;
   /** For the log and the health page. */
   readonly warnings: readonly string[];
 }
@@ -34,7 +39,7 @@ export function loadTables(options: LoadOptions = {}): LoadedTables {
   const warnings: string[] = [];
   const hostFiles = options.hostLeapSecondFiles ?? HOST_LEAP_SECOND_FILES;
   const leapSeconds = newestLeapSeconds(join(folder, 'leap-seconds.list'), hostFiles, warnings);
-  return { tables: { earthSun, tdbMinusTt, leapSeconds, orientation: null }, warnings };
+  return { tables: { earthSun, tdbMinusTt, leapSeconds, ttBipm: null, orientation: null }, warnings };
 }
 
 /** To be asked once a day: null while the list is good for another month. */
@@ -45,7 +50,7 @@ export function leapSecondWarning(table: LeapSecondTable, todayMjd: number): str
   return `the leap-second list ${state} (MJD ${table.expiresMjd}): update the system package tzdata and restart`;
 }
 
-function loadEarthSun(file: string): Pick<SkyTables, 'earthSun' | 'tdbMinusTt'> {
+function loadEarthSun(file: string): Pick<ShippedTables, 'earthSun' | 'tdbMinusTt'> {
   const bytes = readFileSync(file);
   const content = bytes.subarray(0, -CHECKSUM_BYTES);
   const checksum = createHash('sha256').update(content).digest();

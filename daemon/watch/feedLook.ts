@@ -17,7 +17,7 @@ import { isSettled } from './settle.ts';
 export interface FeedLook {
   look(nowMs: number): Promise<Look>;
   /** The store has it. */
-  taken(file: FoundFile): void;
+  taken(file: FoundFile, nowMs: number): void;
   /** It cannot be taken in this form: not offered again until it changes. */
   refused(file: FoundFile, reason: string): void;
   /** Offered again after standing still for long. */
@@ -59,6 +59,8 @@ export interface WatchProblem {
     | Trouble['kind'];
   /** Null: the feed as a whole. */
   readonly path: string | null;
+  /** The bytes of `path`, where it names one thing in the folder. */
+  readonly pathBytes?: Buffer;
   readonly message: string;
 }
 
@@ -74,6 +76,8 @@ export interface LookSettings {
 /** What the store has of a path; null: nothing. */
 export type Recall = (feed: string, file: FoundFile) => TakenFile | null;
 
+const ASK_AGAIN_MS = 300_000;
+
 type WatchedFeed = Pick<Feed, 'name' | 'folder' | 'recursive'>;
 
 export function createFeedLook(feed: WatchedFeed, recall: Recall, settings: LookSettings): FeedLook {
@@ -85,8 +89,8 @@ export function createFeedLook(feed: WatchedFeed, recall: Recall, settings: Look
         ? sort(scan, { feed, memory, recall, settings, nowMs })
         : gone(feed, memory, scan.reason);
     },
-    taken: (file) => settle(memory, file, null),
-    refused: (file, reason) => settle(memory, file, reason),
+    taken: (file, nowMs) => settleAs(memory, file, { taken: recall(feed.name, file), nowMs }),
+    refused: (file, reason) => settle(memory, file, { refusal: reason, askAgainMs: null }),
     notYetWhole({ path }) {
       const entry = memory.waiting.get(path);
       if (entry !== undefined) entry.needsLong = true;
@@ -105,6 +109,8 @@ function gone(feed: WatchedFeed, memory: FeedMemory, reason: string): Look {
   return { ready: [], moving: memory.waiting.size, nextReadyInMs: null, root: null, problems: [problem] };
 }
 
+type Named = Pick<FoundFile, 'path' | 'pathBytes'>;
+
 interface Looking {
   readonly feed: WatchedFeed;
   readonly memory: FeedMemory;
@@ -120,19 +126,22 @@ function sort(scan: Extract<Scan, { kind: 'listed' }>, looking: Looking): Look {
   forgetAllBut(memory, scan.files);
   const ready: ReadyFile[] = [];
   const problems: WatchProblem[] = [];
-  const report = (kind: WatchProblem['kind'], path: string | null, message: string) =>
-    problems.push({ feed: feed.name, kind, path, message });
-  if (memory.emptiedFrom !== null) report('root emptied', null, emptiedMessage(feed, memory.emptiedFrom));
-  for (const { path, reason } of scan.refused) report('refused', path, reason);
+  const report = (kind: WatchProblem['kind'], of: Named, message: string) =>
+    problems.push({ feed: feed.name, kind, path: of.path, pathBytes: of.pathBytes, message });
+  if (memory.emptiedFrom !== null) {
+    const message = emptiedMessage(feed, memory.emptiedFrom);
+    problems.push({ feed: feed.name, kind: 'root emptied', path: null, message });
+  }
+  for (const refused of scan.refused) report('refused', refused, refused.reason);
 
   let nextReadyInMs = Number.POSITIVE_INFINITY;
   for (const file of scan.files) {
     const entry = entryOf(file, looking);
     if ('refusal' in entry) {
-      if (entry.refusal !== null) report('refused', file.path, entry.refusal);
+      if (entry.refusal !== null) report('refused', file, entry.refusal);
       continue;
     }
-    for (const { kind, message } of troublesOf(entry, looking)) report(kind, file.path, message);
+    for (const { kind, message } of troublesOf(entry, looking)) report(kind, file, message);
     const neededMs = entry.needsLong ? settings.longSettleMs : settings.settleMs;
     if (nowMs >= entry.notBeforeMs && isSettled(entry.still, nowMs, neededMs)) {
       const stoodLong = isSettled(entry.still, nowMs, settings.longSettleMs);
@@ -158,13 +167,21 @@ function entryOf(
 ): WaitingFile | { readonly refusal: string | null } {
   const { signature } = file.stamp;
   const settled = memory.settled.get(file.path);
-  if (settled?.signature === signature) return settled;
+  if (settled?.signature === signature && nowMs < (settled.askAgainMs ?? Number.POSITIVE_INFINITY)) return settled;
   const waiting = memory.waiting.get(file.path);
   if (waiting?.still.signature === signature) return waiting;
   const before = recall(feed.name, file);
   if (before?.signature !== signature) return waitingEntry(memory, file, { before, nowMs });
-  settle(memory, file, null);
+  settleAs(memory, file, { taken: before, nowMs });
   return { refusal: null };
+}
+
+function settleAs(
+  memory: FeedMemory,
+  file: FoundFile,
+  { taken, nowMs }: { readonly taken: TakenFile | null; readonly nowMs: number },
+): void {
+  settle(memory, file, { refusal: null, askAgainMs: taken?.isHeld ? nowMs + ASK_AGAIN_MS : null });
 }
 
 function troublesOf(

@@ -9,10 +9,17 @@ export interface FeedMemory {
   /** By path. */
   readonly waiting: Map<string, WaitingFile>;
   /** By path: taken in, or refused for the reason given. */
-  readonly settled: Map<string, { readonly signature: string; readonly refusal: string | null }>;
+  readonly settled: Map<string, SettledFile>;
   root: { readonly identity: string; readonly files: number } | null;
   /** Set while an empty folder stands where another held this many files. */
   emptiedFrom: number | null;
+}
+
+export interface SettledFile {
+  readonly signature: string;
+  readonly refusal: string | null;
+  /** From this monotonic time on the store is asked again, because rows of it wait for their time; null: it need not be. */
+  readonly askAgainMs: number | null;
 }
 
 /** A file that is new or changed and not taken in yet. */
@@ -37,6 +44,8 @@ export interface Trouble {
 export interface TakenFile {
   readonly signature: string;
   readonly bytes: number;
+  /** Rows of it wait for their time: the store may want it again though it has not changed. */
+  readonly isHeld?: boolean;
 }
 
 export function createFeedMemory(): FeedMemory {
@@ -60,9 +69,13 @@ export function noteRoot(
   memory.root = { identity, files: files.length };
 }
 
-export function settle(memory: FeedMemory, { path, stamp }: FoundFile, refusal: string | null): void {
+export function settle(
+  memory: FeedMemory,
+  { path, stamp }: FoundFile,
+  how: Omit<SettledFile, 'signature'> = { refusal: null, askAgainMs: null },
+): void {
   memory.waiting.delete(path);
-  memory.settled.set(path, { signature: stamp.signature, refusal });
+  memory.settled.set(path, { signature: stamp.signature, ...how });
 }
 
 /** The file's entry among those that wait, made or begun anew when it changed since the last look. */

@@ -23,9 +23,13 @@ export type Scan =
       readonly rootIdentity: string;
       readonly files: readonly FoundFile[];
       /** Entries that cannot be a delivered file, and folders that could not be listed: path and reason. */
-      readonly refused: readonly { readonly path: string; readonly reason: string }[];
+      readonly refused: readonly Refused[];
     }
   | { readonly kind: 'root gone'; readonly reason: string };
+
+export interface Refused extends Pick<FoundFile, 'path' | 'pathBytes'> {
+  readonly reason: string;
+}
 
 export interface ScanOptions {
   readonly recursive: boolean;
@@ -49,7 +53,9 @@ export async function scanFolder(folder: string, options: ScanOptions): Promise<
   if (!rootStat.isDirectory()) return { kind: 'root gone', reason: 'is not a folder any more' };
 
   const files: FoundFile[] = [];
-  const refused: { path: string; reason: string }[] = [];
+  const refused: Refused[] = [];
+  const refuse = (pathBytes: Buffer, reason: string) =>
+    refused.push({ path: displayName(pathBytes), pathBytes, reason });
   const most = options.mostFiles ?? MOST_FILES;
   const waiting: { readonly path: Buffer; readonly depth: number }[] = [{ path: Buffer.alloc(0), depth: 0 }];
   for (let place = waiting.shift(); place !== undefined; place = waiting.shift()) {
@@ -61,7 +67,7 @@ export async function scanFolder(folder: string, options: ScanOptions): Promise<
         if (entry.isDirectory()) {
           if (!options.recursive) continue;
           if (depth < (options.deepestFolder ?? DEEPEST_FOLDER)) waiting.push({ path: inner, depth: depth + 1 });
-          else refused.push({ path: displayName(inner), reason: 'folders are nested too deeply' });
+          else refuse(inner, 'folders are nested too deeply');
           continue;
         }
         const found = await look(root, inner);
@@ -69,13 +75,13 @@ export async function scanFolder(folder: string, options: ScanOptions): Promise<
         if ('reason' in found) refused.push(found);
         else if (files.length < most) files.push(found);
         else {
-          refused.push({ path: displayName(path), reason: `more than ${most} files; the rest is not looked at` });
+          refuse(path, `more than ${most} files; the rest is not looked at`);
           return listed();
         }
       }
     } catch (error) {
       if (path.length === 0) return { kind: 'root gone', reason: reasonFor(error) };
-      if (!isGone(error)) refused.push({ path: displayName(path), reason: `folder ${reasonFor(error)}` });
+      if (!isGone(error)) refuse(path, `folder ${reasonFor(error)}`);
     }
   }
   return listed();
@@ -95,14 +101,16 @@ async function* entriesOf(folder: Buffer): AsyncGenerator<{ readonly name: Buffe
 }
 
 /** Null when it is gone by now. */
-async function look(root: Buffer, path: Buffer): Promise<FoundFile | { path: string; reason: string } | null> {
+async function look(root: Buffer, path: Buffer): Promise<FoundFile | Refused | null> {
   const name = displayName(path);
   try {
     const found = await lstat(joinBytes(root, path), { bigint: true });
     const reason = refusalOf(found);
-    return reason === null ? { path: name, pathBytes: path, stamp: stampOf(found) } : { path: name, reason };
+    return reason === null
+      ? { path: name, pathBytes: path, stamp: stampOf(found) }
+      : { path: name, pathBytes: path, reason };
   } catch (error) {
-    return isGone(error) ? null : { path: name, reason: reasonFor(error) };
+    return isGone(error) ? null : { path: name, pathBytes: path, reason: reasonFor(error) };
   }
 }
 

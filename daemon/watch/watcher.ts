@@ -27,9 +27,10 @@ export interface WatcherOptions {
   /**
    * Takes a file in. `not yet whole`: offer it again once it has stood still for long (`stoodLong` then is true). What it throws
    * is reported, and the file is offered again, later each time.
+   * @param filesWaiting settled files of all feeds that come after it
    */
-  onSettled(file: ReadyFile, bytes: Buffer): Promise<'taken' | 'not yet whole'>;
-  /** Once when a problem begins. */
+  onSettled(file: ReadyFile, bytes: Buffer, filesWaiting: number): Promise<'taken' | 'not yet whole'>;
+  /** Once when a problem begins; again at the next look where it throws. */
   onProblem(problem: WatchProblem): void;
   onProblemEnded?(problem: WatchProblem): void;
   readonly clock: Clock;
@@ -70,8 +71,8 @@ const FIRST_RETRY_MS = 5000;
 const LONGEST_RETRY_MS = 600_000;
 
 export function createWatcher(options: WatcherOptions): Watcher {
-  const turns = createTurns();
-  const loops = options.feeds.map((feed) => startFeed(feed, options, turns));
+  const shared: Shared = { turns: createTurns(), readyFiles: new Map() };
+  const loops = options.feeds.map((feed) => startFeed(feed, options, shared));
   return {
     lookNow: () => {
       for (const loop of loops) loop.wake();
@@ -81,6 +82,13 @@ export function createWatcher(options: WatcherOptions): Watcher {
       await Promise.all(loops.map((loop) => loop.stop()));
     },
   };
+}
+
+/** What the loops of the feeds have in common. */
+interface Shared {
+  readonly turns: Turns;
+  /** Feed → files that have settled and are not done with, the one in hand included. */
+  readonly readyFiles: Map<string, number>;
 }
 
 type Turns = <Result>(work: () => Promise<Result>) => Promise<Result>;
@@ -101,17 +109,16 @@ interface FeedLoop {
   stop(): Promise<void>;
 }
 
-interface Loop {
+interface Loop extends Shared {
   readonly feed: Feed;
   readonly options: WatcherOptions;
   readonly watched: FeedLook;
-  readonly turns: Turns;
   readonly beat: Beat;
   /** Path → how often taking it in failed. */
   readonly failures: Map<string, number>;
 }
 
-function startFeed(feed: Feed, options: WatcherOptions, turns: Turns): FeedLoop {
+function startFeed(feed: Feed, options: WatcherOptions, shared: Shared): FeedLoop {
   const settleMs = options.settleMs ?? DEFAULT_SETTLE_MS;
   const settings = { settleMs, longSettleMs: settleMs * LONG_SETTLE_FACTOR, restlessMs: RESTLESS_MS };
   const beat = createBeat();
@@ -119,7 +126,7 @@ function startFeed(feed: Feed, options: WatcherOptions, turns: Turns): FeedLoop 
     feed,
     options,
     watched: createFeedLook(feed, options.recall, settings),
-    turns,
+    ...shared,
     beat,
     failures: new Map(),
   };
@@ -175,14 +182,16 @@ function restAfter(look: Look, { lookMs, pollMs }: { readonly lookMs: number; re
 
 /** Breaks off for the next look after a while, so that what the backlog hides is seen. */
 async function handOver(look: Look, loop: Loop, startMs: number): Promise<void> {
-  const { beat, feed, options } = loop;
-  for (const file of look.ready) {
+  const { beat, feed, options, readyFiles } = loop;
+  readyFiles.set(feed.name, look.ready.length);
+  for (const [done, file] of look.ready.entries()) {
     if (beat.stopped || options.clock.monotonicMs() - startMs > feed.pollSeconds * 1000) return;
     await handOverOne(file, loop);
+    readyFiles.set(feed.name, look.ready.length - done - 1);
   }
 }
 
-async function handOverOne(file: ReadyFile, { options, watched, turns, failures }: Loop): Promise<void> {
+async function handOverOne(file: ReadyFile, { options, watched, turns, readyFiles, failures }: Loop): Promise<void> {
   const tryLater = (waitMs: number, trouble: Trouble | null) =>
     watched.tryLater(file, { notBeforeMs: options.clock.monotonicMs() + waitMs, trouble });
   const wanted = { root: file.root, pathBytes: file.pathBytes, signature: file.stamp.signature };
@@ -197,9 +206,10 @@ async function handOverOne(file: ReadyFile, { options, watched, turns, failures 
     return;
   }
   try {
-    const outcome = await turns(() => options.onSettled(file, reading.bytes));
+    const waiting = () => [...readyFiles.values()].reduce((sum, files) => sum + files, -1);
+    const outcome = await turns(() => options.onSettled(file, reading.bytes, waiting()));
     failures.delete(file.path);
-    if (outcome === 'taken') watched.taken(file);
+    if (outcome === 'taken') watched.taken(file, options.clock.monotonicMs());
     else watched.notYetWhole(file);
   } catch (error) {
     const times = failures.get(file.path) ?? 0;

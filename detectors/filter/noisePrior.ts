@@ -16,6 +16,14 @@ export interface NoisePrior {
 
 const DAYS_PER_YEAR = 365.25;
 
+const SECONDS_PER_DAY = 86_400;
+
+/**
+ * A pulsar that spins up is spun up by what falls onto it, and that torque comes and goes by about as much as itself from
+ * day to day: white torque noise, a random walk in frequency (Bildsten et al. 1997, ApJS 113, 367; the time from memory).
+ */
+const ACCRETION_DAYS = 1;
+
 /** Span at which the population law is turned into walk strengths. */
 const REFERENCE_SPAN_YEARS = 3;
 
@@ -30,7 +38,8 @@ const END_OVER_RESIDUAL = { phase: 4.8, frequency: 29.2, torque: 53.0 } as const
  * (Shannon & Cordes 2010, ApJ 725, 1607, σ after a quadratic fit). The residual variance is shared equally between the
  * walks in frequency and torque, whose spans' growth T^1.5 and T^2.5 bracket the law's T²; one per cent goes to phase.
  * The scatter is widened by 1.25 for that split and for the scatter of ×30 at given ν̇ (Namkham et al. 2019).
- * @param frequencyDerivativeHzPerS only its size counts; below 1e-18 it is taken as 1e-18 (a model without spin-down).
+ * A pulsar that spins up walks in frequency at least as its accretion makes it.
+ * @param frequencyDerivativeHzPerS a size below 1e-18 is taken as 1e-18 (a model without spin-down).
  */
 export function noisePrior(frequencyHz: number, frequencyDerivativeHzPerS: number): NoisePrior {
   const spinDown = Math.max(Math.abs(frequencyDerivativeHzPerS), 1e-18) / 1e-15;
@@ -39,9 +48,11 @@ export function noisePrior(frequencyHz: number, frequencyDerivativeHzPerS: numbe
   const variance = residualTurns * residualTurns;
   const spanDays = REFERENCE_SPAN_YEARS * DAYS_PER_YEAR;
   const lnScatter = 1.25 * 2 * 1.6;
+  const frequencyWalk = (0.5 * 3 * END_OVER_RESIDUAL.frequency ** 2 * variance) / spanDays ** 3;
+  const spinUpPerDay = Math.max(0, frequencyDerivativeHzPerS) * SECONDS_PER_DAY ** 2;
   return {
     phaseWalk: { median: (0.01 * END_OVER_RESIDUAL.phase ** 2 * variance) / spanDays, lnScatter },
-    frequencyWalk: { median: (0.5 * 3 * END_OVER_RESIDUAL.frequency ** 2 * variance) / spanDays ** 3, lnScatter },
+    frequencyWalk: { median: Math.max(frequencyWalk, spinUpPerDay ** 2 * ACCRETION_DAYS), lnScatter },
     torqueWalk: { median: (0.5 * 20 * END_OVER_RESIDUAL.torque ** 2 * variance) / spanDays ** 5, lnScatter },
     uncertaintyScale: { median: 1.1, lnScatter: 0.5 },
     floorOverSigma: { median: 0.3, lnScatter: 1.5 },

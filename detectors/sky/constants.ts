@@ -4,6 +4,8 @@ export const LIGHT_KM_PER_S = 299_792.458;
 /** Astronomical unit, km: IAU 2012 resolution B2, exact. */
 export const AU_KM = 149_597_870.7;
 
+export const PARSEC_KM = (AU_KM * 648_000) / Math.PI;
+
 /** GM☉/c³, s: GM☉ = 1.32712440041e20 m³/s² (IAU 2009 system of constants, TDB-compatible). */
 export const SUN_MASS_S = 1.32712440041e20 / 299_792_458 ** 3;
 

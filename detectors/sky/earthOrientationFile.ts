@@ -7,24 +7,23 @@ import type { EarthOrientationTable } from './earthOrientation.ts';
  *   days at the end whose values are still blank close the table;
  * - *EOP C04* (columns by blanks): year, month, day, [hour,] MJD, x, y, UT1−UTC, …; lines of words or `#` are comments.
  *
- * Angles in arcseconds, UT1 − UTC in seconds. A problem is a sentence with the line number.
+ * Angles in arcseconds, UT1 − UTC in seconds. A problem is a sentence and its line, counted from 1; null: of the whole file.
  */
 export function parseEarthOrientation(
   text: string,
   name: string,
-): { readonly table: EarthOrientationTable } | { readonly problem: string } {
+): { readonly table: EarthOrientationTable } | { readonly problem: string; readonly line: number | null } {
   const rows: Row[] = [];
   for (const [index, line] of text.split(/\r?\n/).entries()) {
     const row = FIXED_COLUMNS.test(line) ? fixedColumns(line) : blankSeparated(line);
     if (row === 'none') continue;
     if (row === 'blank day') break;
-    if (row === 'bad') return { problem: `line ${index + 1}: not a row of finals2000A or EOP C04` };
+    if (row === 'bad') return { problem: 'not a row of finals2000A or EOP C04', line: index + 1 };
     const last = rows.at(-1);
-    if (last !== undefined && row.mjd <= last.mjd)
-      return { problem: `line ${index + 1}: MJD ${row.mjd} does not rise` };
+    if (last !== undefined && row.mjd <= last.mjd) return { problem: `MJD ${row.mjd} does not rise`, line: index + 1 };
     rows.push(row);
   }
-  if (rows.length === 0) return { problem: 'no row of finals2000A or EOP C04 in it' };
+  if (rows.length === 0) return { problem: 'no row of finals2000A or EOP C04 in it', line: null };
   return {
     table: {
       name,

@@ -8,9 +8,7 @@ export type Ephemeris = EarthSunTable | SpkKernel;
 /** Earth and Sun at a date (TDB), or in words why there is no answer. */
 export function earthAndSun(ephemeris: Ephemeris, tdb: Mjd): EarthAndSun | { readonly reason: string } {
   if ('segments' in ephemeris) return earthAndSunFromKernel(ephemeris, tdb);
-  return earthAndSunAt(ephemeris, tdb) ?? { reason: outsideTable(ephemeris, tdb) };
-}
-
-export function outsideTable({ ephemeris, startMjd, endMjd }: EarthSunTable, tdb: Mjd): string {
-  return `MJD ${tdb.day} is outside the ${ephemeris} table (MJD ${startMjd} to ${endMjd})`;
+  const { ephemeris: name, startMjd, endMjd } = ephemeris;
+  const found = earthAndSunAt(ephemeris, tdb);
+  return found ?? { reason: `MJD ${tdb.day} is outside the ${name} table (MJD ${startMjd} to ${endMjd})` };
 }

@@ -17,7 +17,5 @@ export function eccentricAnomaly(meanAnomaly: number, eccentricity: number): num
 
 /** The true anomaly that belongs to an eccentric anomaly, both in [−π, π]. */
 export function trueAnomaly(u: number, eccentricity: number): number {
-  return (
-    2 * Math.atan2(Math.sqrt(1 + eccentricity) * Math.sin(u / 2), Math.sqrt(1 - eccentricity) * Math.cos(u / 2))
-  );
+  return 2 * Math.atan2(Math.sqrt(1 + eccentricity) * Math.sin(u / 2), Math.sqrt(1 - eccentricity) * Math.cos(u / 2));
 }

@@ -1,10 +1,10 @@
 import type { KeplerianOrbit } from '../spin/orbitModel.ts';
-import type { Mjd } from '../time/mjd.ts';
+import { type Mjd, SECONDS_PER_DAY } from '../time/mjd.ts';
 import { eccentricAnomaly, trueAnomaly } from './kepler.ts';
 import { orbitPhase } from './orbitPhase.ts';
 
-/** The eccentricity's drift is held within what Kepler's equation is solved for. */
-const LARGEST_ECCENTRICITY = 0.99;
+/** The largest that a model may have; a drifting one is held there. */
+export const LARGEST_ECCENTRICITY = 0.99;
 
 /** Straight behind the companion's centre the law has no meaning; held there it stays finite. */
 export const SMALLEST_SHAPIRO_ARGUMENT = 1e-10;
@@ -26,7 +26,7 @@ export function keplerianDelayS(orbit: KeplerianOrbit, emission: Mjd): number {
   const e = Math.min(Math.max(drifted, 0), LARGEST_ECCENTRICITY);
   const u = eccentricAnomaly(phase.angleRad, e);
   const anomaly = trueAnomaly(u, e) + 2 * Math.PI * phase.whole;
-  const advancePerRad = (orbit.periastronAdvanceRadPerS * orbit.periodDays * 86_400) / (2 * Math.PI);
+  const advancePerRad = (orbit.periastronAdvanceRadPerS * orbit.periodDays * SECONDS_PER_DAY) / (2 * Math.PI);
   const omega = orbit.periastronLongitudeRad + advancePerRad * anomaly;
   const sinU = Math.sin(u);
   const cosU = Math.cos(u);

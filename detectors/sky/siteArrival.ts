@@ -19,7 +19,7 @@ const CLOSE_ENOUGH_S = 2e-11;
 
 /**
  * The inverse of `barycentre`: when a pulse that would pass the barycentre at `tdb` (infinite frequency) is received at a site, to < 0.1 ns.
- * By fixed-point iteration. For rehearsals and invented data.
+ * By fixed-point iteration. For rehearsals and invented data; `barycentreOfEmission` (orbit.ts) brings a pulse out of a binary before.
  */
 export function siteArrival(
   tdb: Mjd,

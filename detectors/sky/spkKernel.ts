@@ -49,12 +49,12 @@ const LONGEST_CHAIN = 5;
 
 /** The body's motion, added up from centre to centre until the barycentre is reached. */
 function fromBarycentre({ segments }: SpkKernel, body: number, tdb: Mjd): Motion | null {
-  let at: Motion = { km: [0, 0, 0], kmPerS: [0, 0, 0] };
+  let at: Motion | null = null;
   for (let target = body, links = 0; target !== BODY.barycentre; links++) {
     const segment = links < LONGEST_CHAIN ? segmentOf(segments, target, tdb) : null;
     if (segment === null) return null;
     const link = motionIn(segment, tdb);
-    at = { km: sum(at.km, link.km), kmPerS: sum(at.kmPerS, link.kmPerS) };
+    at = at === null ? link : { km: sum(at.km, link.km), kmPerS: sum(at.kmPerS, link.kmPerS) };
     target = segment.centre;
   }
   return at;
@@ -79,14 +79,20 @@ function motionIn(segment: SpkSegment, tdb: Mjd): Motion {
   const since = secondsSince(segment.firstIntervalS, tdb);
   const interval = Math.min(segment.intervals - 1, Math.max(0, Math.floor(since / intervalS)));
   const x = (2 * (since - interval * intervalS)) / intervalS - 1;
-  const components = type === 2 ? 3 : 6;
-  const series = (component: number) =>
-    chebyshevSeries(coefficients, (interval * components + component) * terms, terms, x);
-  const [px, py, pz] = [series(0), series(1), series(2)];
-  const km: Vector = [px.value, py.value, pz.value];
-  if (type === 3) return { km, kmPerS: [series(3).value, series(4).value, series(5).value] };
+  const first = interval * (type === 2 ? 3 : 6) * terms;
+  const px = chebyshevSeries(coefficients, first, terms, x);
+  const py = chebyshevSeries(coefficients, first + terms, terms, x);
+  const pz = chebyshevSeries(coefficients, first + 2 * terms, terms, x);
   const perS = 2 / intervalS;
-  return { km, kmPerS: [px.slope * perS, py.slope * perS, pz.slope * perS] };
+  const kmPerS: Vector =
+    type === 2
+      ? [px.slope * perS, py.slope * perS, pz.slope * perS]
+      : [
+          chebyshevSeries(coefficients, first + 3 * terms, terms, x).value,
+          chebyshevSeries(coefficients, first + 4 * terms, terms, x).value,
+          chebyshevSeries(coefficients, first + 5 * terms, terms, x).value,
+        ];
+  return { km: [px.value, py.value, pz.value], kmPerS };
 }
 
 function outside({ name, segments }: SpkKernel, body: number, tdb: Mjd): string {

@@ -9,6 +9,9 @@ export interface DoubleDouble {
   readonly lo: number;
 }
 
+/** The table that ships with the program, as models name it. */
+export const BUILT_IN_EPHEMERIS = 'built-in';
+
 /** A pulsar as the operator describes it: where it stands, how it spins down, what it has done before. */
 export interface PulsarModel {
   readonly name: string;
@@ -25,11 +28,18 @@ export interface PulsarModel {
   readonly dispersionMeasureSlope?: { readonly perYr: number; readonly epochMjd: number };
   /** Electrons per cm³ of the solar wind at 1 au; absent: none. */
   readonly solarWindPerCm3?: number;
+  /**
+   * The Earth and Sun that position and spin were fitted with: `BUILT_IN_EPHEMERIS`, or the file of an SPK kernel; absent: what the
+   * observatory uses for all.
+   */
+  readonly ephemeris?: string;
   readonly spin: SpinDown;
   /** Absent: an isolated pulsar. */
   readonly orbit?: Orbit;
   /** Known glitches, oldest first. */
   readonly glitches: readonly KnownGlitch[];
+  /** What is known of how late receivers are; absent: all is learned. */
+  readonly receivers?: readonly DeclaredOffset[];
   readonly noise: NoiseSettings;
   readonly alerts: AlertSettings;
 }
@@ -53,6 +63,18 @@ export interface KnownGlitch {
   readonly frequencyStepHz: number;
   readonly frequencyDerivativeStepHzPerS: number;
   readonly recoveries: readonly { readonly frequencyStepHz: number; readonly timescaleDays: number }[];
+}
+
+/**
+ * How late the times of one receiver or backend are against those of a receiver of which nothing is declared. The offsets of
+ * the others are learned.
+ */
+export interface DeclaredOffset {
+  readonly receiver: string;
+  /** Absent: at every site. */
+  readonly site?: string;
+  readonly offsetUs: number;
+  readonly uncertaintyUs: number;
 }
 
 /** Values the operator fixes; what is absent is learned. */

@@ -1,5 +1,5 @@
 import type { Mjd } from '../time/mjd.ts';
-import { add, fromNumber, multiply, splitWhole, toNumber, twoSum } from './doubleDouble.ts';
+import { add, fromNumber, multiply, splitWhole, toNumber, twoSum, ZERO } from './doubleDouble.ts';
 import type { DoubleDouble, KnownGlitch, PulsarModel, SpinDown } from './pulsarModel.ts';
 
 const SECONDS_PER_DAY = 86_400;
@@ -14,18 +14,16 @@ export interface PhaseAtArrival {
 }
 
 /**
- * φ(t) = ν Δt + ½ ν̇ Δt² + ⅙ ν̈ Δt³ + Σ known glitches, good to 1e-7 turn over 40 years at 700 Hz: the polynomial is
+ * φ(t) = φ₀ + ν Δt + ½ ν̇ Δt² + ⅙ ν̈ Δt³ + … + Σ known glitches, good to 1e-7 turn over 40 years at 700 Hz: the polynomial is
  * evaluated in double-double from an exactly formed Δt; the glitch terms, 1e-5 of it, in double.
  */
 export function phaseEvaluator(model: PulsarModel): (tdb: Mjd) => PhaseAtArrival {
   const { spin, glitches } = model;
+  const terms = termsFromHighest(spin);
   return (tdb) => {
     const seconds = secondsBetween(tdb, spin.epochTdb);
-    let phase = spinPhase(spin, seconds);
-    const t = toNumber(seconds);
-    let frequencyHz =
-      spin.frequencyHz.hi +
-      (spin.frequencyHz.lo + t * (spin.frequencyDerivativeHzPerS + 0.5 * t * spin.frequencySecondDerivativeHzPerS2));
+    let phase = spinPhase(spin, terms, seconds);
+    let frequencyHz = spinFrequency(spin, terms, toNumber(seconds));
     for (const glitch of glitches) {
       const since = toNumber(secondsBetween(tdb, glitch.epochTdb));
       if (since <= 0) continue;
@@ -43,11 +41,36 @@ export function secondsBetween(a: Mjd, b: Mjd): DoubleDouble {
   return multiply(days, fromNumber(SECONDS_PER_DAY));
 }
 
-function spinPhase(spin: SpinDown, t: DoubleDouble): DoubleDouble {
-  const third = fromNumber(spin.frequencySecondDerivativeHzPerS2 / 6);
-  const second = add(multiply(third, t), fromNumber(spin.frequencyDerivativeHzPerS / 2));
-  const first = add(multiply(second, t), spin.frequencyHz);
-  return multiply(first, t);
+/** What one derivative of ν adds: to the phase `turns` · tⁿ⁺¹, to the frequency `hz` · tⁿ. */
+interface DerivativeTerm {
+  readonly turns: number;
+  readonly hz: number;
+}
+
+/** ν̇, ν̈ and what the model has beyond, the highest first: for Horner's rule. */
+function termsFromHighest(spin: SpinDown): readonly DerivativeTerm[] {
+  const { frequencyDerivativeHzPerS, frequencySecondDerivativeHzPerS2, higherFrequencyDerivatives = [] } = spin;
+  let factorial = 1;
+  return [frequencyDerivativeHzPerS, frequencySecondDerivativeHzPerS2, ...higherFrequencyDerivatives]
+    .map((derivative, i) => {
+      const hz = derivative / factorial;
+      factorial *= i + 2;
+      return { hz, turns: derivative / factorial };
+    })
+    .reverse();
+}
+
+function spinPhase(spin: SpinDown, terms: readonly DerivativeTerm[], t: DoubleDouble): DoubleDouble {
+  let sum = ZERO;
+  for (const { turns } of terms) sum = multiply(add(sum, fromNumber(turns)), t);
+  const sinceEpoch = multiply(add(sum, spin.frequencyHz), t);
+  return spin.phaseAtEpochTurns === undefined ? sinceEpoch : add(sinceEpoch, fromNumber(spin.phaseAtEpochTurns));
+}
+
+function spinFrequency(spin: SpinDown, terms: readonly DerivativeTerm[], t: number): number {
+  let sum = 0;
+  for (const { hz } of terms) sum = t * (sum + hz);
+  return spin.frequencyHz.hi + (spin.frequencyHz.lo + sum);
 }
 
 /** Turns that a glitch adds, `since` seconds after it. */

@@ -5,6 +5,7 @@
 import type { TimedArrival } from '../arrival.ts';
 import { newBank } from './bank.ts';
 import { decide } from './decide.ts';
+import { withoutOffset } from './declaredOffsets.ts';
 import { searchLargeStep } from './largeStep.ts';
 import type { PulsarWatch } from './pulsarWatch.ts';
 import { learningDue, relearn } from './relearn.ts';
@@ -15,7 +16,7 @@ import { append } from './timeline.ts';
 /** Takes one arrival in. Arrivals must come in time order: an earlier one means a rebuild from the log. */
 export function advance(watch: PulsarWatch, arrival: TimedArrival): void {
   const { line } = watch;
-  const news = append(line, arrival, watch.phaseAt(arrival.tdb));
+  const news = append(line, arrival, watch.phaseAt(withoutOffset(watch.model, arrival)));
   const index = line.seen.length - 1;
   if (watch.bank === null) {
     watch.bank = newBank(watch.noise, startBeam(watch), { index: 0, tDays: line.seen[0]!.tDays }, []);

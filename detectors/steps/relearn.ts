@@ -7,16 +7,20 @@ import { logWeightOf, pruned } from './beam.ts';
 import { bestOf, countedArrivals, disturbances } from './counts.ts';
 import { withoutRecoveries } from './establishedRecoveries.ts';
 import type { Hypothesis } from './hypothesis.ts';
+import { jointOdds } from './jointOdds.ts';
 import { asFixed, type PulsarWatch } from './pulsarWatch.ts';
 import { decisionsOf, retrace } from './retrace.ts';
 import { foundStartRate, shareOfCount, startBeam } from './start.ts';
 import { stepAt } from './stepAt.ts';
+import type { Track } from './track.ts';
 
 /** The noise is learned when the arrivals have grown by this factor. */
 const LEARNING_GROWTH = 1.4;
 /** An open question may hold learning back for so long. */
 const PATIENCE = 1.4;
 const SURE_SHARE = 0.95;
+/** So many of the latest events are asked again whether they are events. */
+const LAST_EVENTS = 4;
 
 export function learningDue(watch: PulsarWatch, index: number): boolean {
   const count = index + 1;
@@ -30,11 +34,21 @@ export function learningDue(watch: PulsarWatch, index: number): boolean {
 export function relearn(watch: PulsarWatch, index: number): void {
   watch.nextLearning = Math.ceil((index + 1) * LEARNING_GROWTH);
   const best = bestOf(watch);
+  takeBack(watch, best);
   const counted = withoutRecoveries(watch, countedArrivals(watch, best));
   const known = disturbances(watch);
   const learned = learnNoise(counted, known, watch.prior, watch.noise);
   watch.noise = asFixed(watch.model, withMargin(learned, counted, known, watch.prior));
   rebuild(watch, index, best, foundStartRate(counted));
+}
+
+/** A confirmed event that more arrivals have shown to be noise is withdrawn, and what it hid is learned. */
+function takeBack(watch: PulsarWatch, best: Hypothesis): void {
+  const confirmed = watch.tracks.filter((t) => t.state === 'confirmed').slice(-LAST_EVENTS);
+  for (const track of confirmed) {
+    const { logOdds } = jointOdds(watch, track, best);
+    if (logOdds < 0) Object.assign(track, { state: 'withdrawn', logOdds, settled: true } satisfies Partial<Track>);
+  }
 }
 
 /**

@@ -2,6 +2,7 @@
 
 import { arrivalVariance } from '../filter/stateSpace.ts';
 import { addState, type Bank } from './bank.ts';
+import { offsetUncertaintyS } from './declaredOffsets.ts';
 import { type Hypothesis, zeros } from './hypothesis.ts';
 import { turnsPerDispersion } from './places.ts';
 import type { PulsarWatch } from './pulsarWatch.ts';
@@ -17,7 +18,7 @@ const START_ERRORS: readonly (readonly [share: number, rate: number, derivative:
 ];
 /** Where torque noise is strong, a model is off by what the noise does to a fit over about so long. */
 const FITTED_DAYS = 100;
-/** σ of an offset between receivers, turns: anything. */
+/** σ of an offset between receivers of which nothing is declared, turns: anything. */
 const RECEIVER_OFFSET_TURNS = 0.3;
 /** σ of the error of the start model's dispersion measure, pc cm⁻³. */
 const DISPERSION_ERROR = 0.03;
@@ -42,8 +43,8 @@ export function startBeam(watch: PulsarWatch, rate = 0): Hypothesis[] {
     cov[0] = variance;
     cov[size + 1] = rateError * rateError;
     cov[2 * size + 2] = derivative * derivative;
-    watch.states.offsets.forEach((at) => {
-      if (at !== null) cov[at * size + at] = RECEIVER_OFFSET_TURNS ** 2;
+    watch.states.offsets.forEach((at, group) => {
+      if (at !== null) cov[at * size + at] = offsetError(watch, group) ** 2;
     });
     const { dispersion } = watch.states;
     if (dispersion !== null) cov[dispersion * size + dispersion] = dispersionError(watch) ** 2;
@@ -67,8 +68,15 @@ export function addNuisance(watch: PulsarWatch, what: 'offset' | 'dispersion'): 
   const at = watch.states.size++;
   if (what === 'offset') watch.states.offsets.push(at);
   else watch.states.dispersion = at;
-  const sigma = what === 'offset' ? RECEIVER_OFFSET_TURNS : dispersionError(watch);
+  const sigma = what === 'offset' ? offsetError(watch, watch.states.offsets.length - 1) : dispersionError(watch);
   watch.bank = addState(watch.bank!, sigma * sigma);
+}
+
+/** σ of what is not known of the offset of a group against the first one, turns. */
+function offsetError({ model, line }: PulsarWatch, group: number): number {
+  const place = (g: number) => line.seen.find((seen) => seen.group === g)!.arrival;
+  const seconds = offsetUncertaintyS(model, place(group), place(0));
+  return seconds === null ? RECEIVER_OFFSET_TURNS : seconds * model.spin.frequencyHz.hi;
 }
 
 function dispersionError(watch: PulsarWatch): number {

@@ -54,14 +54,23 @@ function table(recorded: readonly RecordedArrival[]): string {
   return `${[`pulsar,${time},uncertainty_us,frequency_mhz,site,receiver`, ...rows].join('\n')}\n`;
 }
 
-function orbitTable(_orbit: InventedOrbit): string {
-  return '';
+function orbitTable(orbit: InventedOrbit): string {
+  return `
+[orbit]
+form = "keplerian"
+period_days = "${orbit.periodDays}"
+projected_semi_major_axis_s = "${orbit.semiMajorAxisLightS}"
+eccentricity = "${orbit.eccentricity}"
+periastron_longitude_deg = "${orbit.periastronLongitudeDeg}"
+periastron_epoch_mjd = "${orbit.periastronMjd}"
+`;
 }
 
 const FOLDER = dirname(fileURLToPath(import.meta.url));
 
 function writeAll(): void {
-  for (const made of ['models', 'clock', 'radio', 'x-ray']) rmSync(join(FOLDER, made), { recursive: true, force: true });
+  for (const made of ['models', 'clock', 'radio', 'x-ray'])
+    rmSync(join(FOLDER, made), { recursive: true, force: true });
   for (const { path, content } of filesOfKinds()) {
     mkdirSync(dirname(join(FOLDER, path)), { recursive: true });
     writeFileSync(join(FOLDER, path), content);

@@ -66,9 +66,9 @@ function trueModel(pulsar: InventedPulsar, planted: readonly Glitch[]): PulsarMo
     parallaxMas: pulsar.parallaxMas,
     dispersionMeasure: pulsar.dispersionMeasure + DISPERSION_ERROR * normal(),
     spin,
-    glitches: planted.filter((glitch) => glitch.pulsar === pulsar.name).map((glitch) =>
-      glitchTerms(glitch, toNumber(spin.frequencyHz), spin.frequencyDerivativeHzPerS),
-    ),
+    glitches: planted
+      .filter((glitch) => glitch.pulsar === pulsar.name)
+      .map((glitch) => glitchTerms(glitch, toNumber(spin.frequencyHz), spin.frequencyDerivativeHzPerS)),
     noise: {},
     alerts: { extraRecipients: [] },
   };

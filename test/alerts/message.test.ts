@@ -12,6 +12,7 @@ import {
   type PlannedMessage,
   renderPng,
   voevent,
+  withoutPicture,
 } from '../../alerts/index.ts';
 import { TEXT_COLUMNS, width } from '../../alerts/text.ts';
 import { eventSheet } from '../../alerts/wording/sheet.ts';
@@ -209,6 +210,25 @@ describe('other mail', () => {
     expect(copy.messageId).toBe(first.messageId);
     expect(copy.text).toBe(first.text);
     expect(markPossibleDuplicate(markPossibleDuplicate(mime)).equals(markPossibleDuplicate(mime))).toBe(true);
+  });
+
+  it('D11: for a server that takes no large mail, the same message without its picture', async () => {
+    const { mime } = await composeEventMail(mailOf(GLITCH, PLOTTED), SETTING);
+    const lighter = withoutPicture(mime)!;
+    const [first, second] = [await simpleParser(mime), await simpleParser(lighter)];
+    const names = (mail: typeof first) => mail.attachments.map(({ filename }) => filename);
+    expect(lighter.length).toBeLessThan(mime.length / 2);
+    expect(second.messageId).toBe(first.messageId);
+    expect(second.subject).toBe(first.subject);
+    expect(second.text).toBe(first.text);
+    const [picture] = first.attachments.filter(({ contentType }) => contentType === 'image/png');
+    expect(names(second)).toEqual(
+      names(first).map((name) => (name === picture!.filename ? 'picture-left-out.txt' : name)),
+    );
+    const others = (mail: typeof first) =>
+      mail.attachments.filter(({ contentType }) => !/^(image|text)/.test(contentType)).map(({ content }) => content);
+    expect(others(second)).toEqual(others(first));
+    expect(withoutPicture(lighter)).toBeNull();
   });
 
   it('D12: one summary an hour', async () => {

@@ -1,5 +1,6 @@
 import { simpleParser } from 'mailparser';
 import { afterEach, describe, expect, test } from 'vitest';
+import { timeInWords } from '../../alerts/index.ts';
 import { FIRST_START, reportSilences } from '../../daemon/schedule/silentFeeds.ts';
 import { planAlerts } from '../../daemon/stages/alert.ts';
 import type { KeptEvent } from '../../daemon/stages/eventChanges.ts';
@@ -153,6 +154,28 @@ describe('a feed that falls silent', () => {
     expect(outbox(at).map(({ subject }) => subject)).toEqual([
       'Kestrel Ridge · feed nightly has been silent for 24 h',
       'Kestrel Ridge · feed nightly has been silent for 24 h',
+    ]);
+  });
+
+  test('is said in minutes, hours or days', async () => {
+    const at = await station(NOW, 0.25);
+    at.store.setMeta(FIRST_START, NOW);
+    at.setNow('2026-04-22T08:20:00.000Z');
+    expect(await reportSilences(at.station)).toBe(1);
+    const [notice] = await deliverAll(at);
+    expect(notice!.parsed.subject).toBe('Kestrel Ridge · feed nightly has been silent for 20 minutes');
+    expect(notice!.parsed.text).toMatch(
+      /expected to deliver every 15\s+minutes\. Nothing\s+has\s+come\s+for\s+20\s+minutes/,
+    );
+    expect([1 / 60, 0.999, 1, 1.5, 36, 47.9, 48, 300].map(timeInWords)).toEqual([
+      '1 minute',
+      '59 minutes',
+      '1 h',
+      '1.5 h',
+      '36 h',
+      '47 h',
+      '2 days',
+      '12 days',
     ]);
   });
 

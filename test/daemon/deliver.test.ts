@@ -18,7 +18,7 @@ interface Rig {
   readonly sent: Delivery[];
   readonly givenUp: string[];
   readonly fatal: unknown[];
-  queue(name: string, recipients: readonly string[]): void;
+  queue(name: string, recipients: readonly string[], body?: string): void;
   states(): string[];
 }
 
@@ -49,8 +49,8 @@ async function rig(
     sent,
     givenUp,
     fatal,
-    queue(name, recipients) {
-      const content = `Message-ID: <${name}>\r\nSubject: ${name}\r\n\r\nx\r\n`;
+    queue(name, recipients, body = 'x\r\n') {
+      const content = `Message-ID: <${name}>\r\nSubject: ${name}\r\n\r\n${body}`;
       const message = {
         messageId: `<${name}>`,
         kind: 'notice',
@@ -105,6 +105,30 @@ describe('the delivery loop', () => {
     loop.wake();
     expect(await within(10, () => sent.length === 2)).toBe(true);
     expect(sent.map(({ mime }) => mime.toString().includes('[possible duplicate]'))).toEqual([false, true]);
+  });
+
+  test('D11 a message that is too large goes without its picture, and the record says so', async () => {
+    const { queue, at, sent, givenUp } = await rig(({ mime }) =>
+      mime.includes('image/png') ? { state: 'refused', detail: '552 too large', tooLarge: true } : delivered,
+    );
+    const picture = '--b\r\nContent-Type: image/png\r\n\r\nQUJD\r\n--b--\r\n';
+    queue('first', ['a@x.example'], `\r\n--b\r\nContent-Type: text/html\r\n\r\nhello\r\n${picture}`);
+    expect(await within(10, () => at.store.outbox()[0]?.state === 'delivered')).toBe(true);
+    expect(at.store.outbox()[0]).toMatchObject({
+      attempts: 1,
+      lastError: 'too large with its picture (552 too large); sent without',
+    });
+    expect(sent.map(({ mime }) => mime.includes('QUJD'))).toEqual([true, false]);
+    expect(sent[1]!.mime.toString()).toContain('hello');
+    expect(givenUp).toEqual([]);
+  });
+
+  test('D11 a message that is too large without a picture too is refused', async () => {
+    const { queue, sent, givenUp } = await rig(() => ({ state: 'refused', detail: '552 too large', tooLarge: true }));
+    queue('first', ['a@x.example']);
+    expect(await within(10, () => givenUp.length === 1)).toBe(true);
+    expect(sent).toHaveLength(1);
+    expect(givenUp).toEqual(['a@x.example refused: 552 too large']);
   });
 
   test('a refused login stops the attempts of everybody, so that the account is not locked', async () => {

@@ -3,6 +3,7 @@ import { join } from 'node:path';
 import { asyncProperty, assert as checkProperty, constantFrom, shuffledSubarray } from 'fast-check';
 import { afterEach, describe, expect, test } from 'vitest';
 import { STAGES } from '../../daemon/pipeline.ts';
+import { recall } from '../../daemon/stages/intake.ts';
 import { ROOT } from '../support/sourceTree.ts';
 import { createTestStation, type TestStation } from '../support/station.ts';
 import { arrivalFile, syntheticArrivals, syntheticPulsar } from '../support/syntheticPulsar.ts';
@@ -27,6 +28,8 @@ const FILES = new Map(
 const ALL = arrivalFile([...glitchingArrivals, ...quietArrivals]);
 /** Just after the last arrival: MJD 61151. */
 const NOW = '2026-04-22T08:00:00.000Z';
+/** Two weeks after the glitch. */
+const AT_THE_GLITCH = '2026-03-16T08:00:00.000Z';
 
 const open: TestStation[] = [];
 afterEach(async () => {
@@ -64,12 +67,14 @@ describe('the pipeline', () => {
     await checkProperty(
       asyncProperty(
         shuffledSubarray(names, { minLength: names.length }),
-        constantFrom('goes on', 'restarts', 'decides at the end'),
+        constantFrom('goes on', 'restarts', 'decides at the end', 'decides now and then'),
         async (order, how) => {
           let at = await createTestStation({ pulsars: [glitching, quiet], now: NOW });
           try {
             for (const name of order) {
-              await at.deliver(name, FILES.get(name)!, how === 'decides at the end' ? { decide: 'later' } : {});
+              const decide = how.startsWith('decides') ? 'later' : 'now';
+              const { open } = await at.deliver(name, FILES.get(name)!, { decide });
+              if (how === 'decides now and then') await at.pipeline.decideOpen(open);
               if (how === 'restarts') at = at.restart();
             }
             if (how === 'decides at the end') await at.pipeline.decide(at.store.pulsars(), { mail: false });
@@ -175,6 +180,7 @@ describe('the pipeline', () => {
     const { configuration } = at.station;
     const poorer = at.restart({ ...configuration, models: new Map([...configuration.models].slice(1)) });
     expect(poorer.station.configuration.models.has('KR 0417+31')).toBe(false);
+    poorer.setNow('2026-04-26T08:00:00.000Z');
     const more = arrivalFile(syntheticArrivals(quiet, { ...span, fromMjd: START + 151, toMjd: START + 155, seed: 9 }));
     const grown = ALL + more.split('\n').slice(1).join('\n');
     expect(await poorer.deliver('all.csv', grown)).toMatchObject({
@@ -188,14 +194,66 @@ describe('the pipeline', () => {
 
   test('remembers decisions that were left open', async () => {
     const at = await station();
-    at.pipeline.leaveDecisionsOpen(true);
     await at.deliver('all.csv', ALL, { decide: 'later' });
     const next = at.restart();
     expect(next.pipeline.undecided()).toEqual(['KR 0417+31', 'KR 1021-05']);
     await next.pipeline.decide(next.pipeline.undecided(), { mail: false });
-    next.pipeline.leaveDecisionsOpen(false);
     expect(next.pipeline.undecided()).toEqual([]);
     expect(eventsOf(next)).toHaveLength(1);
+  });
+
+  test('decides old arrivals later and fresh ones in the same transaction; both are mailed by the same rule', async () => {
+    const old = await station();
+    old.setNow('2027-06-01T08:00:00.000Z');
+    const later = await old.deliver('all.csv', ALL, { decide: 'now if fresh', mail: true });
+    expect(later).toMatchObject({ isFresh: false, open: ['KR 0417+31', 'KR 1021-05'], events: 0 });
+    expect(await old.pipeline.decideOpen(later.open)).toBe(0);
+    expect(eventsOf(old)).toHaveLength(1);
+    expect(old.pipeline.undecided()).toEqual([]);
+
+    const fresh = await station();
+    fresh.setWallClock(AT_THE_GLITCH);
+    const now = await fresh.deliver('all.csv', ALL, { decide: 'now if fresh', mail: true });
+    expect(now).toMatchObject({ isFresh: true, open: [], events: 1, mails: 1 });
+
+    const inABurst = await station();
+    inABurst.setWallClock(AT_THE_GLITCH);
+    const { open: undecided } = await inABurst.deliver('all.csv', ALL, { decide: 'later', mail: true });
+    expect(await inABurst.pipeline.decideOpen(undecided)).toBe(1);
+    const subjects = (at: TestStation) => at.store.outbox().map(({ subject }) => subject);
+    expect(subjects(inABurst)).toEqual(subjects(fresh));
+  });
+
+  test('A22 holds arrivals from the future, and takes them in when their time has come', async () => {
+    const at = await station();
+    at.setWallClock('2026-02-01T00:00:00.000Z');
+    const past = glitchingArrivals.filter(({ mjdText }) => Number(mjdText) <= 61_073).length;
+    expect(past).toBeGreaterThan(5);
+    const file = arrivalFile(glitchingArrivals);
+    expect(await at.deliver('a.csv', file)).toMatchObject({
+      newArrivals: past,
+      quarantined: glitchingArrivals.length - past,
+      events: 0,
+    });
+    const [first] = at.store.quarantinedSince('2000');
+    expect(first?.reason).toMatch(
+      /^is dated [0-9.]+ days after the clock of this machine: held until that time has come/,
+    );
+    const remembered = () => recall(at.station, 'nightly', Buffer.from('a.csv'));
+    expect(remembered()).toMatchObject({ isHeld: true });
+    expect(await at.deliver('a.csv', file)).toMatchObject({ kind: 'known' });
+    // A clock that is set back takes nothing away.
+    at.setWallClock('2020-01-01T00:00:00.000Z');
+    expect(await at.deliver('a.csv', `${file}\n`)).toMatchObject({ newArrivals: 0, pulsars: [] });
+    expect(at.store.liveArrivals('KR 0417+31')).toHaveLength(past);
+    at.setWallClock(NOW);
+    expect(remembered()).toMatchObject({ signature: '' });
+    expect(await at.deliver('a.csv', `${file}\n`)).toMatchObject({
+      newArrivals: glitchingArrivals.length - past,
+      quarantined: 0,
+    });
+    expect(remembered()).toMatchObject({ isHeld: false });
+    expect(at.store.verify()).toEqual([]);
   });
 
   test('sets a file aside whose reading takes the program down again and again', async () => {

@@ -1,5 +1,6 @@
 import { mkdir, readFile, writeFile } from 'node:fs/promises';
 import { join } from 'node:path';
+import { parse as parseCsv } from 'csv-parse/sync';
 import { afterAll, beforeAll, describe, expect, test } from 'vitest';
 import type { PulsarEvent } from '../../detectors/steps/pulsarEvent.ts';
 import { createObservatory, type TestObservatory } from '../support/observatory.ts';
@@ -168,7 +169,23 @@ describe('the commands', () => {
     const { mjd, barycentreTdbMjd } = lines[0] as { mjd: string; barycentreTdbMjd: string };
     expect(barycentreTdbMjd).toMatch(/^\d{5}\.\d{16,}$/);
     expect(barycentreTdbMjd.slice(0, 21)).toBe(mjd);
-    expect((await run('arrivals', 'KR 0417+31')).stdout.split('\n')[0]).toContain('deviation, turns');
+    const header = (await run('arrivals', 'KR 0417+31')).stdout.split('\n')[0];
+    for (const title of ['Roemer s', 'dispersion s', 'orbit s', 'deviation, turns', 'fate', 'reason']) {
+      expect(header).toContain(title);
+    }
+  });
+
+  test('arrivals --csv is what --json says, read by a reader of its own', async () => {
+    const lines = await spinvigilJson<Record<string, unknown>[]>(['arrivals', 'KR 0417+31', ...config]);
+    const { stdout } = await run('arrivals', 'KR 0417+31', '--csv');
+    const rows = parseCsv(stdout, { columns: true }) as Record<string, string>[];
+    expect(rows).toHaveLength(lines.length);
+    rows.forEach((row, i) => {
+      const { mjd, barycentreTdbMjd, delays, deviationTurns, fate, reason } = lines[i]!;
+      expect(row).toMatchObject({ mjd_as_received: mjd, barycentre_mjd_tdb: barycentreTdbMjd, frequency_mhz: 'inf' });
+      expect(row).toMatchObject({ fate, reason, roemer_s: String((delays as { roemerS: number }).roemerS) });
+      expect(Number(row['deviation_turns'])).toBe(deviationTurns);
+    });
   });
 
   test('show tells all about one', async () => {

@@ -12,11 +12,18 @@ export interface SyntheticPulsar {
   readonly epochMjd: number;
   readonly uncertaintyUs: number;
   readonly glitches: readonly { readonly mjd: number; readonly deltaNuOverNu: number }[];
+  readonly orbit?: CircularOrbit;
+}
+
+/** Told here in its own words, x sin(2π t/P) from the ascending node at the pulsar's epoch, so that it can be held against the program's. */
+export interface CircularOrbit {
+  readonly periodDays: number;
+  readonly semiMajorAxisLightS: number;
 }
 
 export interface SyntheticArrival {
   readonly pulsar: string;
-  /** Seconds TDB after the pulsar's epoch. */
+  /** Seconds TDB after the pulsar's epoch, when it left the pulsar. */
   readonly seconds: number;
   readonly mjdText: string;
   readonly uncertaintyUs: number;
@@ -51,11 +58,16 @@ export function syntheticArrivals(
     arrivals.push({
       pulsar: pulsar.name,
       seconds,
-      mjdText: mjdText(pulsar.epochMjd, seconds),
+      mjdText: mjdText(pulsar.epochMjd, seconds + orbitDelayS(pulsar, seconds)),
       uncertaintyUs: pulsar.uncertaintyUs,
     });
   }
   return arrivals;
+}
+
+export function orbitDelayS({ orbit }: SyntheticPulsar, seconds: number): number {
+  if (orbit === undefined) return 0;
+  return orbit.semiMajorAxisLightS * Math.sin((2 * Math.PI * seconds) / (orbit.periodDays * SECONDS_PER_DAY));
 }
 
 /** The rotation phase in turns, with every glitch a pure step in frequency. */
@@ -99,5 +111,17 @@ epoch_mjd = "${pulsar.epochMjd}"
 frequency_hz = "${pulsar.frequencyHz}"
 frequency_derivative = "${pulsar.frequencyDerivativeHzPerS}"
 frequency_second_derivative = "0"
+${orbitTable(pulsar)}`;
+}
+
+function orbitTable({ orbit, epochMjd }: SyntheticPulsar): string {
+  if (orbit === undefined) return '';
+  return `[orbit]
+form = "small eccentricity"
+period_days = ${orbit.periodDays}
+projected_semi_major_axis_s = ${orbit.semiMajorAxisLightS}
+ascending_node_epoch_mjd = "${epochMjd}"
+eccentricity_sine = 0
+eccentricity_cosine = 0
 `;
 }

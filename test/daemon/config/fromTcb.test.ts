@@ -1,8 +1,10 @@
 import { describe, expect, it } from 'vitest';
 import { modelFromTcb, tcbToTdb } from '../../../daemon/config/fromTcb.ts';
+import { orbitDelayS } from '../../../detectors/sky/orbit.ts';
 import { parseDoubleDouble } from '../../../detectors/spin/doubleDouble.ts';
 import type { DoubleDouble, PulsarModel } from '../../../detectors/spin/pulsarModel.ts';
 import { daysBetween, type Mjd } from '../../../detectors/time/mjd.ts';
+import { inLaplaceParameters, keplerianOrbit } from '../../support/orbits.ts';
 
 /** 1 − L_B of IAU 2006 resolution B3 as a fraction of whole numbers. */
 const ONE = 10n ** 18n;
@@ -73,6 +75,42 @@ describe('TCB to TDB (IAU 2006 resolution B3)', () => {
     const tdb = turnsBetween(modelFromTcb(MODEL), tcbToTdb(start), tcbToTdb(later));
     // 2.7e9 turns: one double and the 1e-16 d of the dates leave some 1e-6.
     expect(Math.abs(tdb - tcb)).toBeLessThan(5e-6);
+  });
+
+  const drifting = { periodDerivative: -2e-12, projectedSemiMajorAxisDerivative: 1e-14, shapiroRangeS: 6e-6 };
+  const keplerian = keplerianOrbit({
+    ...drifting,
+    shapiroShape: 0.9,
+    eccentricityDerivativePerS: 1e-15,
+    periastronAdvanceRadPerS: 2.3e-9,
+    einsteinDelayS: 0.004,
+  });
+  const laplace = {
+    ...inLaplaceParameters({ ...keplerian, eccentricity: 0.001 }),
+    eccentricitySineDerivativePerS: 1e-14,
+    eccentricityCosineDerivativePerS: 2e-14,
+  };
+  it.each([keplerian, laplace])(
+    'keeps the light path across an orbit ($form), told in seconds of either kind',
+    (orbit) => {
+      const turned = modelFromTcb({ ...MODEL, orbit }).orbit!;
+      const slowed = Number(SLOWED) / Number(ONE);
+      for (const day of [56_000, 58_001, 60_500]) {
+        for (const fraction of [0.1, 0.45, 0.8]) {
+          const tcb = { day, fraction };
+          expect(Math.abs(orbitDelayS(turned, tcbToTdb(tcb)) - orbitDelayS(orbit, tcb) * slowed)).toBeLessThan(2e-10);
+        }
+      }
+    },
+  );
+
+  it('turns the derivatives beyond the second', () => {
+    const spin = { ...MODEL.spin, higherFrequencyDerivatives: [2e-30, 3e-40], phaseAtEpochTurns: 0.25 };
+    const turned = modelFromTcb({ ...MODEL, spin }).spin;
+    expect(turned.phaseAtEpochTurns).toBe(0.25);
+    const [third, fourth] = turned.higherFrequencyDerivatives!;
+    expect(third! / 2e-30 - 1).toBeCloseTo(4 * 1.550519768e-8, 13);
+    expect(fourth! / 3e-40 - 1).toBeCloseTo(5 * 1.550519768e-8, 13);
   });
 });
 

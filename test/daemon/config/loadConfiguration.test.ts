@@ -39,13 +39,14 @@ describe('a configuration', () => {
     expect(configuration).toMatchObject({
       observatory: { name: 'Kestrel Ridge' },
       stateFolder: join(folder, 'state'),
-      earth: { orientationFile: null, kernelFile: null },
+      earth: { orientation: null, ttBipm: null, kernel: null, kernels: new Map() },
       sites: [{ name: 'ridge', itrfM: [-2390490, 5564764, 1994727] }],
       feeds: [
         {
           name: 'nightly',
           folder: join(folder, 'arrivals'),
           layout: 'csv',
+          columns: null,
           recursive: false,
           pollSeconds: 30,
           polling: false,
@@ -186,13 +187,17 @@ describe('a configuration', () => {
       'site 1, name: "barycentre" is what arrivals already at the barycentre say; it has no place on Earth',
     ],
     ['"clock/ridge.csv"', '"clock/none.csv"', 'site 1, clock_table: clock/none.csv does not exist'],
+    ['layout = "csv"', 'layout = "columns"', 'feed 1, columns: is missing'],
     [
-      '[models]',
-      '[earth]\nkernel_file = "x"\n[models]',
-      'earth, kernel_file: is not supported yet; leave it out to use the built-in tables',
+      'layout = "csv"',
+      'layout = "CSV"',
+      'feed 1, layout: must be one of "csv", "fits", "votable", "columns", found "CSV"',
     ],
-    ['layout = "csv"', 'layout = "fits"', 'feed 1, layout: "fits" is not supported yet; only "csv" is'],
-    ['layout = "csv"', 'layout = "CSV"', 'feed 1, layout: must be "csv", found "CSV"'],
+    [
+      'layout = "csv"',
+      'layout = "fits"\n[feed.columns]\nseparator = "tab"',
+      'feed 1, columns: belongs to layout = "columns"; this feed\'s layout is "fits"',
+    ],
     [
       'layout = "csv"',
       'layout = "csv"\nexpect_every_hours = 0',

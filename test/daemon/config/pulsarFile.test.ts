@@ -1,3 +1,4 @@
+import { resolve } from 'node:path';
 import { describe, expect, it } from 'vitest';
 import type { ConfigProblem } from '../../../daemon/config/configuration.ts';
 import { readPulsarFile } from '../../../daemon/config/pulsarFile.ts';
@@ -32,6 +33,7 @@ describe("a pulsar's file", () => {
       properMotionMasPerYr: [3.1, -7.4],
       parallaxMas: 0.8,
       dispersionMeasure: 41.27,
+      ephemeris: 'built-in',
       spin: {
         epochTdb: { day: 59000, fraction: 0 },
         frequencyHz: parseDoubleDouble('6.3417701123349'),
@@ -54,6 +56,11 @@ describe("a pulsar's file", () => {
       day: 59000,
       fraction: Number('0.12345678901234567'),
     });
+  });
+
+  it('names its ephemeris: the built-in one, a kernel beside it, or none', () => {
+    expect(changed('"built-in"', '"kernels/planets.bsp"').model?.ephemeris).toBe(resolve('kernels/planets.bsp'));
+    expect(changed('ephemeris = "built-in"\n', '').model).not.toHaveProperty('ephemeris');
   });
 
   it.each([
@@ -95,11 +102,7 @@ describe("a pulsar's file", () => {
       '"-4.113"',
       'spin, frequency_derivative: must be a number between -1e-7 and 1e-7 Hz/s, found "-4.113"',
     ],
-    [
-      '"built-in"',
-      '"planets.bsp"',
-      'spin, ephemeris: only "built-in" is supported for now; other ephemerides are not supported yet',
-    ],
+    ['"built-in"', '""', 'spin, ephemeris: must not be empty'],
     ['time_scale = "TDB"', 'time_scale = "TT"', 'spin, time_scale: must be one of "TDB", "TCB", found "TT"'],
     [
       'position_epoch_mjd = 59000\n',
@@ -114,6 +117,27 @@ describe("a pulsar's file", () => {
       '[spin]',
       '[[glitch]]\nepoch_mjd = 59100\n[[glitch.recovery]]\nfrequency_step_hz = 1e-8\ntimescale_days = 0\n[spin]',
       'glitch 1, recovery 1, timescale_days: must be larger than 0 d',
+    ],
+    [
+      '[spin]',
+      `[[glitch]]\nepoch_mjd = 59100\n${'[[glitch.recovery]]\nfrequency_step_hz = 1e-8\ntimescale_days = 9\n'.repeat(4)}[spin]`,
+      'glitch 1, recovery 4: is one too many: at most 3 exponentials are taken',
+    ],
+    [
+      '[spin]',
+      'dispersion_measure_derivative_per_yr = 0.1\n[spin]',
+      'dispersion_measure_epoch_mjd: is missing, and the dispersion measure changes: say at which date it holds',
+    ],
+    [
+      '[spin]',
+      '[spin]\nfrequency_higher_derivatives = [1e-30, 1]',
+      'spin, frequency_higher_derivatives 2: must be a number between -1e-20 and 1e-20 Hz/s^4, found "1"',
+    ],
+    ['right_ascension =', '# right_ascension =', 'right_ascension: is missing'],
+    [
+      '[spin]',
+      'ecliptic_longitude = 10\n[spin]',
+      'ecliptic_longitude: stands beside right_ascension: give the position in one kind of coordinates',
     ],
   ])('refuses %s → %s', (from, to, message) => {
     const { model, problems } = changed(from, to);
@@ -162,18 +186,27 @@ confirm_log_odds = 12
     expect(model?.alerts).toEqual({ extraRecipients: ['timing@kestrel.example'], confirmLogOdds: 12 });
   });
 
-  it('leaves a pulsar in an orbit out, and says so', () => {
-    expect(read(`${PULSAR}[orbit]\nperiod_days = 3\n`)).toEqual({
-      model: null,
-      problems: ['15 warning orbit: orbits are not supported yet: arrivals of this pulsar will not be used'],
-    });
+  it('takes derivatives beyond the second, a phase at the epoch, a changing dispersion measure and the solar wind', () => {
+    const { model, problems } = changed(
+      '[spin]',
+      `dispersion_measure_derivative_per_yr = -0.003
+dispersion_measure_epoch_mjd = 58000
+solar_wind_density_per_cm3 = 7.9
+[spin]
+frequency_higher_derivatives = ["-5.1e-31", 3e-40]
+phase_at_epoch_turns = "0.25"`,
+    );
+    expect(problems).toEqual([]);
+    expect(model?.dispersionMeasureSlope).toEqual({ perYr: -0.003, epochMjd: 58_000 });
+    expect(model?.solarWindPerCm3).toBe(7.9);
+    expect(model?.spin).toMatchObject({ higherFrequencyDerivatives: [-5.1e-31, 3e-40], phaseAtEpochTurns: 0.25 });
   });
 
   it('warns of a pulsar that spins up', () => {
     const { model, problems } = changed('"-4.113e-13"', '"4.113e-13"');
     expect(model).not.toBeNull();
     expect(problems).toEqual([
-      '13 warning spin, frequency_derivative: is positive: the pulsar would spin up. Is this the derivative of the period?',
+      '13 warning spin, frequency_derivative: is positive: the pulsar would spin up, as accreting ones do. Or is this the derivative of the period?',
     ]);
   });
 

@@ -69,3 +69,23 @@ test('a record of an older schema is not opened by a reader', async () => {
   db.close();
   expect(openStore(folder.path, { mode: 'reader' })).toMatchObject({ ok: false, failure: { kind: 'older schema' } });
 });
+
+test('quarantined rows of the first schema stay, and those to come can name their pulsar', () => {
+  const db = connect(file(), { mustExist: false });
+  migrate(db, MIGRATIONS.slice(0, 1));
+  db.exec(`INSERT INTO files VALUES (1, 'nightly', 'a.csv', '61', 1, 1, 'x', 1, 'x', '2026-03-01T06:00:00.000Z', 1, 0, 0, 0, 1, NULL);
+    INSERT INTO quarantine (file_id, line, reason, at) VALUES (1, 2, 'site: unknown', '2026-03-01T06:00:00.000Z');`);
+  migrate(db);
+  expect(schemaVersion(db)).toBe(MIGRATIONS.length);
+  expect(verify(db)).toEqual([]);
+  db.close();
+
+  const store = open(folder.path);
+  store.commitIntake({
+    ...fileBatch(0, 1, { rows: 2 }),
+    quarantined: [{ line: 9, pulsar: 'KR 1', reason: 'no time' }],
+  });
+  expect(store.recentQuarantine(9).map(({ line }) => line)).toEqual([9, 2]);
+  expect(store.quarantineOf('KR 1').map(({ line }) => line)).toEqual([9]);
+  store.close();
+});

@@ -43,14 +43,19 @@ test('what came in and what was quarantined since a time', () => {
 });
 
 test('the latest files and their quarantined rows, without what was delivered again since', () => {
-  store.commitIntake({ ...fileBatch(0, 1, { rows: 2 }), quarantined: [{ line: 9, reason: 'site: unknown' }] });
+  store.commitIntake({
+    ...fileBatch(0, 1, { rows: 2 }),
+    quarantined: [{ line: 9, pulsar: 'KR 1', reason: 'site: unknown' }],
+  });
   store.commitIntake({ ...fileBatch(1, 1, { rows: 2, path: 'b.csv' }), quarantined: [{ line: 4, reason: 'no time' }] });
   expect(store.recentQuarantine(10).map(({ file, line }) => [file, line])).toEqual([
     ['b.csv', 4],
     ['night-1.csv', 9],
   ]);
+  expect(store.quarantineOf('KR 1').map(({ file, line }) => [file, line])).toEqual([['night-1.csv', 9]]);
   store.commitIntake({ ...emptyBatch(LATER), file: sampleFile(1), sightings: [{ key: 'key-000000', line: 2 }] });
   expect(store.recentQuarantine(10).map(({ file }) => file)).toEqual(['b.csv']);
+  expect(store.quarantineOf('KR 1')).toEqual([]);
   expect(store.recentFiles(2).map(({ path, same, takenInAt }) => [path, same, takenInAt])).toEqual([
     ['night-1.csv', 1, LATER],
     ['b.csv', 0, AT],

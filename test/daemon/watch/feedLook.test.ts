@@ -36,7 +36,7 @@ function watchedFolder() {
       const { ready } = await watched.look(nowMs);
       return ready.map((file) => {
         taken.set(file.path, file.stamp);
-        watched.taken(file);
+        watched.taken(file, nowMs);
         return `${file.path}: ${readFileSync(join(folder, file.path), 'utf8')}`;
       });
     },
@@ -50,6 +50,33 @@ function watchedFolder() {
 }
 
 const kinds = ({ problems }: Look) => problems.map(({ kind }) => kind);
+
+describe('a file with rows that wait for their time', () => {
+  it('is asked about again after a while, and offered once the store wants it', async () => {
+    const { at, folder } = watchedFolder();
+    let wanted = false;
+    let asked = 0;
+    let taken: TakenFile | null = null;
+    const recall = () => {
+      asked += 1;
+      return taken === null || !wanted ? taken : { ...taken, signature: '' };
+    };
+    const watched = createFeedLook({ name: 'feed', folder, recursive: false }, recall, SETTINGS);
+    writeFileSync(at('a.csv'), 'one');
+    await watched.look(0);
+    const [file] = (await watched.look(SETTLE_MS)).ready;
+    taken = { ...file!.stamp, isHeld: true };
+    watched.taken(file!, SETTLE_MS);
+    const before = asked;
+    expect((await watched.look(100_000)).moving).toBe(0);
+    expect(asked).toBe(before);
+    expect((await watched.look(400_000)).moving).toBe(0);
+    expect(asked).toBe(before + 1);
+    wanted = true;
+    expect((await watched.look(800_000)).moving).toBe(1);
+    expect((await watched.look(800_000 + SETTLE_MS)).ready).toHaveLength(1);
+  });
+});
 
 describe('settling', () => {
   it('needs two looks at the same signature, so far apart on a clock that only grows', () => {

@@ -76,7 +76,7 @@ function createWorld() {
       assert.ok(nowMs - written!.changedMs >= SETTLE_MS, `${file.path} was handed over before it settled`);
       assert.notEqual(taken.get(file.path)?.signature, file.stamp.signature, 'handed over twice');
       taken.set(file.path, { ...file.stamp, content });
-      watched.taken(file);
+      watched.taken(file, nowMs);
     }
   };
 

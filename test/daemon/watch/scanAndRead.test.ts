@@ -125,7 +125,7 @@ describe('a scan', () => {
     chmodSync(join(folder, 'a.csv'), 0);
     await withoutRights(async () => {
       const scan = await listed(folder);
-      expect(scan.refused).toEqual([
+      expect(scan.refused).toMatchObject([
         { path: 'closed', reason: 'folder cannot be read by this user (permission denied)' },
       ]);
       const reading = await readFound(scan, scan.files[0]!);

@@ -1,5 +1,5 @@
 import { EventEmitter } from 'node:events';
-import { mkdirSync, readdirSync, rmSync, statSync, writeFileSync } from 'node:fs';
+import { mkdirSync, readdirSync, rmSync, statSync, symlinkSync, writeFileSync } from 'node:fs';
 import { join } from 'node:path';
 import { afterEach, describe, expect, it, vi } from 'vitest';
 import { systemClock } from '../../../daemon/clock.ts';
@@ -27,6 +27,7 @@ function start(folder: string, options: Partial<WatcherOptions> = {}, feed: Part
         name: 'feed',
         folder,
         layout: 'csv',
+        columns: null,
         recursive: false,
         pollSeconds: 3600,
         polling: false,
@@ -117,6 +118,7 @@ describe('the watcher', () => {
     let done = 0;
     const feed = {
       layout: 'csv',
+      columns: null,
       recursive: false,
       pollSeconds: 3600,
       polling: false,
@@ -178,6 +180,40 @@ describe('the watcher', () => {
     watcher.lookNow();
     await until(() => expect(handed).toEqual(['a.csv: one']));
     expect(ended).toHaveLength(1);
+  });
+
+  it('goes on when the listener throws, and tells it again', async () => {
+    const folder = newFolder();
+    symlinkSync('nowhere', join(folder, 'link.csv'));
+    let calls = 0;
+    const { handed } = start(
+      folder,
+      {
+        onProblem: () => {
+          calls += 1;
+          if (calls < 3) throw new Error('the disk is full');
+        },
+      },
+      { pollSeconds: 0.2 },
+    );
+    await until(() => expect(calls).toBe(3));
+    writeFileSync(join(folder, 'a.csv'), 'one');
+    await until(() => expect(handed).toEqual(['a.csv: one']));
+    expect(calls).toBe(3);
+  });
+
+  it('says how many settled files of all feeds wait behind the one in hand', async () => {
+    const folder = newFolder();
+    for (const name of ['a', 'b', 'c', 'd']) writeFileSync(join(folder, name), name);
+    const waiting: number[] = [];
+    start(folder, {
+      onSettled: async (_file, _bytes, filesWaiting) => {
+        waiting.push(filesWaiting);
+        return 'taken';
+      },
+    });
+    await until(() => expect(waiting).toHaveLength(4));
+    expect(waiting).toEqual([3, 2, 1, 0]);
   });
 
   it('leaves the feed as it was', async () => {

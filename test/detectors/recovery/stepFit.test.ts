@@ -50,7 +50,10 @@ function evidences(arrivals: readonly CountedArrival[], group?: number): Evidenc
   const kinds: StepKind[] = ['time', 'dispersion', 'spin-down rate'];
   const found: Evidences = { glitch: fitGlitch(inputFor(arrivals, 'time')).logEvidencePlain };
   for (const kind of kinds) {
-    found[kind] = fitStep({ ...inputFor(arrivals, kind), ...(group === undefined ? {} : { groups: [group] }) }).logEvidenceStep;
+    found[kind] = fitStep({
+      ...inputFor(arrivals, kind),
+      ...(group === undefined ? {} : { groups: [group] }),
+    }).logEvidenceStep;
   }
   return found;
 }

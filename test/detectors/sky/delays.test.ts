@@ -1,5 +1,13 @@
 import { describe, expect, it } from 'vitest';
-import { directionAt, dispersionS, pulsarDirection, roemerS, sunShapiroS } from '../../../detectors/sky/delays.ts';
+import {
+  directionAt,
+  dispersionMeasureAt,
+  dispersionS,
+  pulsarDirection,
+  roemerS,
+  solarWindMeasure,
+  sunShapiroS,
+} from '../../../detectors/sky/delays.ts';
 import { dot, type Vector } from '../../../detectors/sky/vector.ts';
 import { pulsarAt } from '../../support/sky.ts';
 
@@ -69,5 +77,53 @@ describe('dispersion delay', () => {
     const speed = 30;
     expect(dispersionS(100, 1400, speed) / dispersionS(100, 1400, 0) - 1).toBeCloseTo(2e-4, 6);
     expect(dispersionS(100, Number.POSITIVE_INFINITY, speed)).toBe(0);
+  });
+
+  it('follows a measure that changes by so much a year from its epoch', () => {
+    const pulsar = pulsarDirection(
+      pulsarAt({ dispersionMeasure: 40, dispersionMeasureSlope: { perYr: 0.02, epochMjd: 59_000 } }),
+    );
+    expect(dispersionMeasureAt(pulsar, { day: 59_000, fraction: 0 })).toBe(40);
+    expect(dispersionMeasureAt(pulsar, { day: 59_730, fraction: 0.5 })).toBeCloseTo(40.04, 12);
+    expect(dispersionMeasureAt(pulsarDirection(pulsarAt({})), { day: 70_000, fraction: 0 })).toBe(41.27);
+  });
+});
+
+describe('solar wind', () => {
+  const n: Vector = [1, 0, 0];
+  const atElongation = (degrees: number): Vector => {
+    const angle = Math.PI - (degrees * Math.PI) / 180;
+    return [AU_KM * Math.cos(angle), AU_KM * Math.sin(angle), 0];
+  };
+
+  // n₀ (au/pc) ρ/sin ρ with n₀ = 7.9 cm⁻³, by hand: 6.02e-5 pc cm⁻³ at 90° from the Sun; delays at 1.4 GHz.
+  it.each([
+    [90, 0.127, 3],
+    [10, 1.385, 3],
+    [5, 2.84, 2],
+  ])('at %d° from the Sun delays by %d µs at 1.4 GHz', (degrees, microseconds, digits) => {
+    const measure = solarWindMeasure(7.9, n, atElongation(degrees));
+    expect(dispersionS(measure, 1400, 0) / US).toBeCloseTo(microseconds, digits);
+  });
+
+  it('is the density added up along the line of sight', () => {
+    for (const degrees of [20, 90, 140, 180]) {
+      const observer: Vector = atElongation(degrees).map((km) => 1.01 * km) as unknown as Vector;
+      // Steps growing outwards, s = e^w − 1 in au, midpoint rule.
+      let sum = 0;
+      const steps = 20_000;
+      const last = Math.log1p(1e5);
+      for (let i = 0; i < steps; i++) {
+        const w = ((i + 0.5) * last) / steps;
+        const at: Vector = [observer[0] / AU_KM + Math.expm1(w), observer[1] / AU_KM, 0];
+        sum += (7.9 / dot(at, at)) * Math.exp(w) * (last / steps);
+      }
+      expect(solarWindMeasure(7.9, n, observer) / ((sum * AU_KM) / PARSEC_KM)).toBeCloseTo(1, 4);
+    }
+  });
+
+  it('stays finite behind the Sun, and is nothing without electrons', () => {
+    expect(solarWindMeasure(7.9, n, [-AU_KM, 0, 0])).toBeLessThan(0.03);
+    expect(solarWindMeasure(0, n, [-AU_KM, 0, 0])).toBe(0);
   });
 });

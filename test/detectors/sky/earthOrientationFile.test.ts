@@ -42,12 +42,12 @@ describe('parseEarthOrientation', () => {
   });
 
   it.each([
-    ['', /no row/],
-    ['<html>not found</html>', /no row/],
-    [[FINALS[1], FINALS[0]].join('\n'), /line 2: MJD 57359 does not rise/],
-    [FINALS[0]!.replace('0.0262864', '0.02x2864'), /line 1: not a row/],
-    ['1962   1   1  37665  -0.012700', /line 1: not a row/],
-  ])('says what is wrong', (text, problem) => {
-    expect(parseEarthOrientation(text, 'x')).toEqual({ problem: expect.stringMatching(problem) });
+    ['', /no row/, null],
+    ['<html>not found</html>', /no row/, null],
+    [[FINALS[1], FINALS[0]].join('\n'), /MJD 57359 does not rise/, 2],
+    [FINALS[0]!.replace('0.0262864', '0.02x2864'), /not a row/, 1],
+    ['1962   1   1  37665  -0.012700', /not a row/, 1],
+  ])('says what is wrong', (text, problem, line) => {
+    expect(parseEarthOrientation(text, 'x')).toEqual({ problem: expect.stringMatching(problem), line });
   });
 });

@@ -2,8 +2,9 @@ import assert from 'node:assert/strict';
 import { isUtf8 } from 'node:buffer';
 import fc from 'fast-check';
 import { describe, expect, it } from 'vitest';
-import { type ArrivalFile, type ReceivedRow, readArrivalFile } from '../../../daemon/intake/rows.ts';
-import { slowDecimal, slowRecordAt } from '../../support/slowCsv.ts';
+import { readCsv } from '../../../../daemon/intake/layouts/csv.ts';
+import type { ArrivalFile, ReceivedRow } from '../../../../daemon/intake/rows.ts';
+import { slowDecimal, slowRecordAt } from '../../../support/slowCsv.ts';
 
 const HEADER = 'pulsar,mjd_utc,uncertainty_us,frequency_mhz,site,receiver,pulse_number,note';
 const COLUMNS = HEADER.split(',');
@@ -52,7 +53,7 @@ describe('files damaged at random', () => {
   it('never crash the reader, whatever the bytes', () => {
     fc.assert(
       fc.property(fc.uint8Array({ maxLength: 2000 }), fc.boolean(), (junk, withHeader) => {
-        const file = readArrivalFile(Buffer.concat([Buffer.from(withHeader ? `${HEADER}\n` : ''), junk]));
+        const file = readCsv(Buffer.concat([Buffer.from(withHeader ? `${HEADER}\n` : ''), junk]));
         for (const row of file.rows) expectSane(row);
       }),
       { numRuns: 1000 },
@@ -68,7 +69,7 @@ describe('files damaged at random', () => {
         fc.array(mutation, { maxLength: 4 }),
         (rows, mutations) => {
           const bytes = mutate(`${[HEADER, ...rows].join('\n')}\n`, mutations);
-          const file = readArrivalFile(bytes);
+          const file = readCsv(bytes);
           expect(file.fault).toBeNull();
           const covered = checkAgainstSlowReader(file, bytes);
           checkNothingIsLost(file, bytes, covered);

@@ -1,5 +1,5 @@
 import { describe, expect, it } from 'vitest';
-import { csvRecords, LONGEST_LINE_BYTES } from '../../../daemon/intake/csv.ts';
+import { csvRecords, LONGEST_LINE_BYTES } from '../../../../daemon/intake/layouts/csvRecords.ts';
 
 const read = (text: string | Buffer) => [...csvRecords(Buffer.from(text))];
 

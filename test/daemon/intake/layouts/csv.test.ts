@@ -1,9 +1,9 @@
 import { describe, expect, it } from 'vitest';
-import { readArrivalFile } from '../../../daemon/intake/rows.ts';
+import { readCsv } from '../../../../daemon/intake/layouts/csv.ts';
 
 const HEADER = 'pulsar,mjd_utc,uncertainty_us,frequency_mhz,site,receiver,pulse_number,signal_to_noise,note';
 const GOOD = 'KR 0417+31,60123.4567890123456789,12.5,1400.25,ridge,L,-17,23.5,first light';
-const read = (text: string | Buffer) => readArrivalFile(Buffer.from(text));
+const read = (text: string | Buffer) => readCsv(Buffer.from(text));
 const rowWith = (changes: Record<string, string>) => {
   const columns = HEADER.split(',');
   const values = GOOD.split(',').map((value, index) => changes[columns[index]!] ?? value);
@@ -48,7 +48,12 @@ describe('an arrival file', () => {
     expect(rows.map(({ line }) => line)).toEqual([2, 6]);
     expect(rejects).toEqual([
       { line: 3, column: null, reason: 'has 2 fields, the header 9' },
-      { line: 5, column: 'uncertainty_us', reason: '"0" must be larger than 0 and at most 10000000 µs' },
+      {
+        line: 5,
+        column: 'uncertainty_us',
+        reason: '"0" must be larger than 0 and at most 10000000 µs',
+        pulsar: 'KR 0417+31',
+      },
     ]);
   });
 
