@@ -13,6 +13,8 @@ import { overlaps, type Track } from './track.ts';
 /** A confirmed event's explanation must hold at least this share against the other explanations. */
 const EXPLANATION_SHARE = 0.99;
 const LEAST_SESSIONS = 2;
+/** The second weighing goes through the whole record: a long one is not asked again at each arrival. */
+const ARRIVALS_PER_QUESTION = 400;
 
 export function decide(watch: PulsarWatch, index: number): void {
   for (const track of watch.tracks) if (track.confirmedAt !== null && !track.settled) reconsider(watch, track);
@@ -69,9 +71,11 @@ function suspect(watch: PulsarWatch, index: number): void {
   const bestFamily = families.find((f) => f.gap === spread.bestGap)!;
   const holder = bestFamily.beam.reduce((a, b) => (b.logWeight > a.logWeight ? b : a));
   if (sessionsUsed(holder, spread.bestGap, sessionOf) < LEAST_SESSIONS) return;
+  if (index < track.askAgainAt) return;
   const joint = jointOdds(watch, track, holder);
-  if (joint.logOdds < watch.settings.confirmLogOdds) {
-    track.logOdds = Math.min(track.logOdds, joint.logOdds);
+  if (joint < watch.settings.confirmLogOdds) {
+    track.logOdds = Math.min(track.logOdds, joint);
+    track.askAgainAt = index + 1 + Math.floor(index / ARRIVALS_PER_QUESTION);
     return;
   }
   track.state = 'confirmed';
@@ -121,6 +125,7 @@ function newTrack(watch: PulsarWatch, index: number): Track {
     suspectedAt: index,
     confirmedAt: null,
     rateStep: 0,
+    askAgainAt: 0,
     logOdds: 0,
     explanations: {},
     settled: false,

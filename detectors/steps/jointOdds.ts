@@ -17,15 +17,11 @@ import { decisionsOf, retrace, takeIn } from './retrace.ts';
 import { foundStartRate, startBeam } from './start.ts';
 import type { Track } from './track.ts';
 
-export interface JointOdds {
-  /** Natural log of (this event and noise) against (noise alone), prior rates included. */
-  readonly logOdds: number;
-  /** The noise that explains the record best without the event. */
-  readonly noiseAlone: NoiseModel;
-}
-
-/** `h`: the heaviest hypothesis that holds the event for true; its counts are used on both sides. */
-export function jointOdds(watch: PulsarWatch, track: Track, h: Hypothesis): JointOdds {
+/**
+ * Natural log of (this event and noise) against (noise alone), prior rates included. `h`: the heaviest hypothesis that holds
+ * the event for true; its counts are used on both sides.
+ */
+export function jointOdds(watch: PulsarWatch, track: Track, h: Hypothesis): number {
   const counted = withoutRecoveries(watch, countedArrivals(watch, h));
   const others = disturbances(watch, track);
   const own = freed(watch, track).map((what) => ({ beforeIndex: track.bestGap, ...what }));
@@ -40,8 +36,7 @@ export function jointOdds(watch: PulsarWatch, track: Track, h: Hypothesis): Join
   const posterior = (noise: NoiseModel, event: Track | null) =>
     logEvidence(watch, decisions, noise, { event, startRate, except: track }) +
     logNoisePrior(noise, watch.prior, medianSigma);
-  const noiseAlone = learn(others);
-  return { logOdds: posterior(learn([...others, ...own]), track) - posterior(noiseAlone, null), noiseAlone };
+  return posterior(learn([...others, ...own]), track) - posterior(learn(others), null);
 }
 
 /** ln P(arrivals | noise, events): with `event`, its sizes as a mixture at its most probable gap, by prior rate. */

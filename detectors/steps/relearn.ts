@@ -46,7 +46,7 @@ export function relearn(watch: PulsarWatch, index: number): void {
 function takeBack(watch: PulsarWatch, best: Hypothesis): void {
   const confirmed = watch.tracks.filter((t) => t.state === 'confirmed').slice(-LAST_EVENTS);
   for (const track of confirmed) {
-    const { logOdds } = jointOdds(watch, track, best);
+    const logOdds = jointOdds(watch, track, best);
     if (logOdds < 0) Object.assign(track, { state: 'withdrawn', logOdds, settled: true } satisfies Partial<Track>);
   }
 }

@@ -16,6 +16,8 @@ export interface Track {
   confirmedAt: number | null;
   /** |Δν| in turns/day as the decision saw it: the scale of the recovery to be expected. */
   rateStep: number;
+  /** Arrival (index) from which event and noise are weighed against each other again. */
+  askAgainAt: number;
   /** Natural-log posterior odds: this event against none. */
   logOdds: number;
   /** Probability by explanation, wandering and lost count among them. */

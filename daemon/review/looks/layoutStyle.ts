@@ -62,6 +62,7 @@ th { color: var(--quiet); font-weight: 600; font-size: 0.85rem; vertical-align: 
 td.number { white-space: nowrap; }
 td small, td.whole { white-space: nowrap; }
 .path, .note, td bdi { overflow-wrap: anywhere; }
+.path { display: inline-block; min-width: 7.5rem; }
 .note { white-space: pre-wrap; }
 td .note { display: -webkit-box; -webkit-box-orient: vertical; -webkit-line-clamp: 3; overflow: hidden; min-width: 9rem; }
 .empty { color: var(--quiet); padding: 0.45rem 0; }

@@ -8,10 +8,12 @@ import { ABSENT, eventPath, mjdAndDay, quantity, span, utc, visible } from './wo
 /** The pages that only report: pulsars, feeds, mail. */
 
 export function pulsarsPage(pulsars: readonly PulsarOverview[]): Html {
+  const limited = pulsars.some(({ deltaNuOverNu90 }) => deltaNuOverNu90 !== null);
+  const columns = limited ? [...PULSARS, ...LIMITS] : PULSARS;
   return html`
     <h1>Pulsars</h1>
-    <p class="lead">What silence is worth: the smallest glitch that would have been confirmed with 90 % probability, and how long that would have taken.</p>
-    ${table({ caption: 'Pulsars', columns: PULSARS, rows: pulsars, empty: 'No pulsar is configured.' })}`;
+    ${limited ? html`<p class="lead">What silence is worth: the smallest glitch that would have been confirmed with 90 % probability, and how long that would have taken.</p>` : ''}
+    ${table({ caption: 'Pulsars', columns, rows: pulsars, empty: 'No pulsar is configured.' })}`;
 }
 
 export interface FeedsContent {
@@ -52,15 +54,19 @@ function cutAt(rows: readonly unknown[], most: number): string {
 const PULSARS: readonly Column<PulsarOverview>[] = [
   { head: 'Pulsar', cell: (row) => html`<bdi>${visible(row.pulsar)}</bdi>` },
   { head: 'Last arrival', cell: lastArrival },
+  {
+    head: 'Pulse count',
+    cell: (row) => (row.locked ? 'settled' : html`<strong class="attention">open: alerts are held</strong>`),
+  },
+];
+
+/** Shown once limits are known. */
+const LIMITS: readonly Column<PulsarOverview>[] = [
   { head: 'Smallest Δν/ν', cell: (row) => smallest(row.deltaNuOverNu90), numeric: true },
   {
     head: 'Confirmed after',
     cell: (row) => (row.delayDays90 === null ? ABSENT : span(row.delayDays90 * 24)),
     numeric: true,
-  },
-  {
-    head: 'Pulse count',
-    cell: (row) => (row.locked ? 'settled' : html`<strong class="attention">open: alerts are held</strong>`),
   },
 ];
 
