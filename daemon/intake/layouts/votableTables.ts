@@ -30,6 +30,8 @@ export class VotableTables {
   #arrivalTables = 0;
   #rows = 0;
   #fields: VotableField[] = [];
+  /** The head of the table is over. */
+  #hasData = false;
   /** Of the table whose data are passing; null: one without arrivals. */
   #arrivals: ArrivalTable | null = null;
   #cells: string[] = [];
@@ -41,8 +43,9 @@ export class VotableTables {
     const parent = this.#path.at(-1);
     if (this.#text !== null) throw new VotableFault(`line ${line}: an element stands inside a cell`);
     this.#path.push(name);
+    if (name === 'DATA') this.#hasData = true;
     if (name === 'TABLE') this.#beginTable(attributes);
-    else if (name === 'FIELD' && parent === 'TABLE') this.#addField(attributes);
+    else if (name === 'FIELD') this.#addField(attributes, parent, line);
     else if (name === 'VALUES' && parent === 'FIELD') this.#noteNull(attributes.null);
     else if (parent === 'DATA' && FORMS.includes(name)) this.#beginData(name, line);
     else if (name === 'TR' && parent === 'TABLEDATA') {
@@ -86,13 +89,17 @@ export class VotableTables {
     if (this.#path.slice(0, -1).includes('TABLE')) throw new VotableFault('a TABLE stands inside another');
     this.#tables += 1;
     this.#fields = [];
+    this.#hasData = false;
     this.#arrivals = null;
     if (attributes.ref !== undefined) {
       throw new VotableFault(`table ${this.#tables} takes its fields from another (ref); they must stand in it`);
     }
   }
 
-  #addField(attributes: Attributes): void {
+  #addField(attributes: Attributes, parent: string | undefined, line: number): void {
+    if (parent !== 'TABLE' || this.#hasData) {
+      throw new VotableFault(`line ${line}: a FIELD stands outside the head of a TABLE`);
+    }
     if (this.#fields.length === MOST_COLUMNS) {
       throw new VotableFault(`table ${this.#tables} has more than ${MOST_COLUMNS} fields`);
     }

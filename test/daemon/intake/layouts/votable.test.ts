@@ -34,6 +34,16 @@ describe('a VOTable', () => {
     expect(read(prefixed).rows).toHaveLength(1);
   });
 
+  it('refuses a FIELD outside the head of its table: which cell it would name is a guess', () => {
+    const stray = '<FIELD name="mjd_utc" datatype="char" arraysize="*"/>';
+    const within = read(file(`<TABLE>\n${FIELDS}\n<DATA>${stray}<TABLEDATA>${GOOD}</TABLEDATA></DATA></TABLE>`));
+    const behind = read(file(`<TABLE>\n${FIELDS}\n<DATA><TABLEDATA>${GOOD}</TABLEDATA></DATA>${stray}</TABLE>`));
+    for (const { rows, fault } of [within, behind]) {
+      expect(rows).toEqual([]);
+      expect(fault).toMatch(/FIELD stands outside the head/);
+    }
+  });
+
   it('keeps good rows beside bad ones, and says row, XML line and column', () => {
     const { rows, rejects } = rowsOf([GOOD, GOOD.replace('38200', 'NaN'), '<TR><TD>x</TD></TR>', GOOD].join('\n'));
     expect(rows.map(({ line }) => line)).toEqual([1, 4]);
