@@ -16,20 +16,22 @@ export function combineSiteEvents(events: readonly PulsarEvent[]): readonly Puls
   const steps = events.filter((e) => e.explanation === 'clock step' && isAlive(e) && e.timeStepUs !== null);
   const absorbed = new Set<PulsarEvent>();
   const published: PulsarEvent[] = [];
-  for (const seed of [...steps].sort((a, b) => b.logBayesFactor - a.logBayesFactor || (a.id < b.id ? -1 : 1))) {
-    if (absorbed.has(seed)) continue;
-    const members = [seed];
-    let window = seed.epochInterval95;
+  for (const strongest of [...steps].sort((a, b) => b.logBayesFactor - a.logBayesFactor || (a.id < b.id ? -1 : 1))) {
+    if (absorbed.has(strongest)) continue;
+    const members = [strongest];
+    let window = strongest.epochInterval95;
     for (const other of steps) {
-      if (other === seed || absorbed.has(other) || other.site !== seed.site) continue;
+      if (other === strongest || absorbed.has(other) || other.site !== strongest.site) continue;
       if (members.some((m) => m.pulsar === other.pulsar)) continue;
       const common = intersection(window, other.epochInterval95);
-      if (common === null || !sameStep(seed, other)) continue;
+      if (common === null || !sameStep(strongest, other)) continue;
       members.push(other);
       window = common;
     }
     if (members.length < LEAST_PULSARS) continue;
-    const explained = events.filter((e) => !absorbed.has(e) && !members.includes(e) && isExplained(e, seed, window));
+    const explained = events.filter(
+      (e) => !absorbed.has(e) && !members.includes(e) && isExplained(e, strongest, window),
+    );
     for (const e of [...members, ...explained]) absorbed.add(e);
     published.push(siteEvent(members, window, explained));
   }
@@ -44,12 +46,12 @@ function isAlive(event: PulsarEvent): boolean {
 }
 
 /** A mere suspicion of the same nights that a clock step could also be, in a pulsar of which nothing else is confirmed. */
-function isExplained(event: PulsarEvent, seed: PulsarEvent, window: Interval): boolean {
+function isExplained(event: PulsarEvent, strongest: PulsarEvent, window: Interval): boolean {
   const share = event.explanations['clock step'] ?? 0;
   return (
     event.state === 'suspected' &&
     share > LEAST_SHARE &&
-    (event.site === null || event.site === seed.site) &&
+    (event.site === null || event.site === strongest.site) &&
     intersection(window, event.epochInterval95) !== null
   );
 }

@@ -2,39 +2,27 @@ import { describe, expect, test } from 'vitest';
 import type { ListedEvent } from '../../daemon/records.ts';
 import { changeInWords, eventChanges } from '../../daemon/stages/eventChanges.ts';
 import type { PulsarEvent } from '../../detectors/steps/pulsarEvent.ts';
+import { sampleEvent } from './store/sample.ts';
 
-const glitch = (changes: Partial<PulsarEvent> = {}): PulsarEvent => ({
-  id: 'kr-1-a',
-  pulsar: 'KR 1',
-  state: 'confirmed',
-  explanation: 'glitch',
-  explanations: { glitch: 0.999 },
-  epochMjd: 60000,
-  epochInterval68: [59999.5, 60000.5],
-  epochInterval95: [59999, 60001],
-  deltaNuHz: 1e-7,
-  deltaNuHzInterval68: [0.9e-7, 1.1e-7],
-  deltaNuHzInterval95: [0.8e-7, 1.2e-7],
-  deltaNuOverNu: 1e-8,
-  deltaNuOverNuInterval68: [0.9e-8, 1.1e-8],
-  deltaNuDot: null,
-  deltaNuDotInterval68: null,
-  deltaNuDotOverNuDot: null,
-  deltaNuDotOverNuDotInterval68: null,
-  timeStepUs: null,
-  timeStepUsInterval68: null,
-  recovery: { terms: [], q: null },
-  aliases: [],
-  firstArrivalMjd: 60001,
-  suspectedAtMjd: 60002,
-  confirmedAtMjd: 60003,
-  arrivalsUsed: 20,
-  logBayesFactor: 15,
-  falseAlertsPerYearAtThisLevel: 1e-5,
-  pulsars: ['KR 1'],
-  site: null,
-  ...changes,
-});
+const glitch = (changes: Partial<PulsarEvent> = {}): PulsarEvent =>
+  sampleEvent({
+    id: 'kr-1-a',
+    pulsar: 'KR 1',
+    explanations: { glitch: 0.999 },
+    epochMjd: 60000,
+    epochInterval68: [59999.5, 60000.5],
+    epochInterval95: [59999, 60001],
+    deltaNuHz: 1e-7,
+    deltaNuHzInterval68: [0.9e-7, 1.1e-7],
+    deltaNuOverNu: 1e-8,
+    deltaNuOverNuInterval68: [0.9e-8, 1.1e-8],
+    firstArrivalMjd: 60001,
+    suspectedAtMjd: 60002,
+    confirmedAtMjd: 60003,
+    arrivalsUsed: 20,
+    pulsars: ['KR 1'],
+    ...changes,
+  });
 
 const record = (event: PulsarEvent, changes: Partial<ListedEvent> = {}): ListedEvent => ({
   event,
