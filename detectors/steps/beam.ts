@@ -14,6 +14,8 @@ export interface Observation {
   /** Measurement variance after scale and floor, turns². */
   readonly variance: number;
   readonly sight: Sight;
+  /** The model's pulse number minus the one the arrival came with; null when it came with none. */
+  readonly turnsToNumber: number | null;
   /** In the same session (same site, minutes apart) as the arrival before. */
   readonly sameSession: boolean;
 }
@@ -26,6 +28,8 @@ const OUTLIER_SHARE_AFTER_OUTLIER = 0.8;
 const BRANCH_NATS = 9;
 /** Above this spread (turns) of the prediction more than the nearest turn is looked at. */
 const AMBIGUOUS_SPREAD = 0.1;
+/** A pulse number in a file is wrong, or begins a new numbering, this often (common practice, no source). */
+const LOG_WRONG_NUMBER = Math.log(1e-4);
 const LOG_TWO_PI = Math.log(2 * Math.PI);
 
 /** A branch not yet followed: weights are compared before any state is copied. */
@@ -70,17 +74,31 @@ function branch(h: Hypothesis, seen: Observation, scratch: Prediction, into: Bra
   const outlierShare = seen.sameSession && h.lastSetAside ? OUTLIER_SHARE_AFTER_OUTLIER : OUTLIER_SHARE;
   const level = Math.log(1 - outlierShare) - 0.5 * (LOG_TWO_PI + Math.log(spread2));
   const logOutlier = Math.log(outlierShare);
+  const numbered = numberedTurns(h, seen);
   const reach = spread2 < AMBIGUOUS_SPREAD * AMBIGUOUS_SPREAD ? 0 : Math.min(8, Math.ceil(4 * Math.sqrt(spread2)));
-  const best = Math.max(level - (0.5 * (offset + nearest) ** 2) / spread2, logOutlier);
+  const densityOf = (turns: number): number =>
+    level - (0.5 * (offset + turns) ** 2) / spread2 + (numbered === null || turns === numbered ? 0 : LOG_WRONG_NUMBER);
+  const best = Math.max(densityOf(nearest), numbered === null ? -Infinity : densityOf(numbered), logOutlier);
   const { logWeight } = h;
   if (logOutlier > best - BRANCH_NATS)
     into.push({ parent: h, logWeight: logWeight + logOutlier, used: false, turns: nearest, slipped: false });
-  for (let turns = nearest - reach; turns <= nearest + reach; turns++) {
-    const innovation = offset + turns;
-    const logDensity = level - (0.5 * innovation * innovation) / spread2;
+  const follow = (turns: number): void => {
+    const logDensity = densityOf(turns);
     if (logDensity > best - BRANCH_NATS)
       into.push({ parent: h, logWeight: logWeight + logDensity, used: true, turns, slipped: turns !== nearest });
-  }
+  };
+  for (let turns = nearest - reach; turns <= nearest + reach; turns++) follow(turns);
+  if (numbered !== null && Math.abs(numbered - nearest) > reach) follow(numbered);
+}
+
+/** The whole turns that the arrival's own pulse number asks for; null when it has none, or is the first that has one. */
+function numberedTurns(h: Hypothesis, seen: Observation): number | null {
+  return seen.turnsToNumber === null || h.numbering === null ? null : seen.turnsToNumber + h.numbering;
+}
+
+/** Arrivals that are used tie the count to the numbers of the files. */
+function tie(h: Hypothesis, seen: Observation, turns: number): void {
+  if (seen.turnsToNumber !== null) h.numbering = turns - seen.turnsToNumber;
 }
 
 /** Turns `child`, a copy of the branch's parent or the parent itself where it has no other branch, into the branch. */
@@ -89,6 +107,7 @@ function follow(b: Branch, child: Hypothesis, seen: Observation, scratch: Predic
   if (used) {
     predict(child, seen.sight, scratch);
     absorb(child, scratch, seen.deviation + turns - scratch.deviation, scratch.variance + seen.variance);
+    tie(child, seen, turns);
   }
   child.logWeight = b.logWeight;
   child.story = { index: seen.index, turns, used, slipped, before: b.parent.story };
@@ -110,16 +129,28 @@ export function observeFirmly(
     predict(h, seen.sight, scratch);
     const spread2 = scratch.variance + seen.variance;
     const offset = seen.deviation - scratch.deviation;
-    const turns = -Math.round(offset);
+    const turns = firmTurns(h, seen, offset, spread2);
     const innovation = offset + turns;
     const outlierShare = seen.sameSession && h.lastSetAside ? OUTLIER_SHARE_AFTER_OUTLIER : OUTLIER_SHARE;
     const good =
       ((1 - outlierShare) * Math.exp((-0.5 * innovation * innovation) / spread2)) / Math.sqrt(2 * Math.PI * spread2);
     h.logWeight += Math.log(good + outlierShare);
     h.lastSetAside = good < outlierShare;
-    if (!h.lastSetAside) absorb(h, scratch, innovation, spread2);
+    if (!h.lastSetAside) {
+      absorb(h, scratch, innovation, spread2);
+      tie(h, seen, turns);
+    }
     h.story = continued(h.story, seen.index, turns, !h.lastSetAside, last);
   }
+}
+
+/** The nearest turn, or the numbered one where that is the likelier. */
+function firmTurns(h: Hypothesis, seen: Observation, offset: number, spread2: number): number {
+  const nearest = -Math.round(offset);
+  const numbered = numberedTurns(h, seen);
+  if (numbered === null) return nearest;
+  const gain = ((offset + numbered) ** 2 - (offset + nearest) ** 2) / (2 * spread2);
+  return gain < -LOG_WRONG_NUMBER ? numbered : nearest;
 }
 
 /** The page of a story that was written last: hypotheses of one origin mostly decide alike, and share it. */

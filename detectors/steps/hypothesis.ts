@@ -31,6 +31,8 @@ export interface Hypothesis {
   tracks: readonly number[];
   /** The last arrival was taken for an outlier. */
   lastSetAside: boolean;
+  /** Whole turns between this count and the pulse numbers that arrivals came with; null before the first such arrival. */
+  numbering: number | null;
 }
 
 export function zeros(count: number): number[] {
@@ -72,6 +74,7 @@ export function copyOf(h: Hypothesis, tracks: readonly number[] = h.tracks): Hyp
     story: h.story,
     tracks,
     lastSetAside: h.lastSetAside,
+    numbering: h.numbering,
   };
 }
 

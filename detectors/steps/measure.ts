@@ -1,7 +1,7 @@
 /** How big: the exact fit of one event to the counted arrivals around it, whichever kind it is. */
 
 import type { CountedArrival } from '../filter/countedArrival.ts';
-import type { GlitchFit } from '../recovery/glitchFit.ts';
+import { fitGlitch, type GlitchFit } from '../recovery/glitchFit.ts';
 import type { Estimate } from '../recovery/mixture.ts';
 import { fitStep, type StepFit } from '../recovery/stepFit.ts';
 import type { NoiseModel } from '../report.ts';
@@ -91,7 +91,11 @@ function fitted(
   if (!arrivals.slice(0, input.firstGapBeforeIndex).some(used)) return null;
   if (!arrivals.slice(input.lastGapBeforeIndex).some(used)) return null;
   if (track.kind === 'glitch') {
-    const { fit, counted, aliases } = aliasesOf(input, track.bestGap - from);
+    // Numbered pulses leave no other counts to try.
+    const numbered = watch.line.seen[track.bestGap]!.arrival.pulseNumber !== null;
+    const { fit, counted, aliases } = numbered
+      ? { fit: fitGlitch(input), counted: arrivals, aliases: [] }
+      : aliasesOf(input, track.bestGap - from);
     return {
       glitch: fit,
       step: null,

@@ -22,7 +22,7 @@ export function birthPlace(watch: PulsarWatch, index: number, gapDays: number): 
     offsetDirections: offsetDirections(watch, index),
     dispersionDirection: dispersionDirection(watch),
     turnsPerDispersion: turnsPerDispersion(watch),
-    countKnown: false,
+    countKnown: watch.line.seen[index]!.arrival.pulseNumber !== null,
   };
 }
 

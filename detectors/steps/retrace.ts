@@ -54,6 +54,7 @@ export function takeIn(watch: PulsarWatch, h: Hypothesis, decision: Story, noise
   const variance = scratch.variance + seen.variance;
   const innovation = seen.deviation + decision.turns - scratch.deviation;
   absorb(h, scratch, innovation, variance);
+  if (seen.turnsToNumber !== null) h.numbering = decision.turns - seen.turnsToNumber;
   h.logWeight -= 0.5 * ((innovation * innovation) / variance + Math.log(2 * Math.PI * variance));
 }
 

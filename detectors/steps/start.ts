@@ -49,7 +49,9 @@ export function startBeam(watch: PulsarWatch, rate = 0): Hypothesis[] {
     const { dispersion } = watch.states;
     if (dispersion !== null) cov[dispersion * size + dispersion] = dispersionError(watch) ** 2;
     const story = { index: 0, turns: 0, used: true, slipped: false, before: null };
-    return { mean, cov, logWeight: Math.log(share), story, tracks: [], lastSetAside: false };
+    const number = first.arrival.pulseNumber;
+    const numbering = number === null ? null : number - first.modelPulse;
+    return { mean, cov, logWeight: Math.log(share), story, tracks: [], lastSetAside: false, numbering };
   });
 }
 

@@ -120,6 +120,7 @@ export function observationOf(line: Timeline, index: number, map: StateMap, nois
     deviation: seen.deviation,
     variance: arrivalVariance(seen.sigmaTurns, noise),
     sight: { row, plain },
+    turnsToNumber: seen.arrival.pulseNumber === null ? null : seen.modelPulse - seen.arrival.pulseNumber,
     sameSession: before !== undefined && before.session === seen.session,
   };
 }

@@ -123,6 +123,37 @@ describe('what the detector says of one pulsar', () => {
   });
 });
 
+describe('pulse numbers that come with the arrivals', () => {
+  /** Every 40 days: no count survives a step of 2e-6 without the numbers. */
+  const sparse = (seed: number, size: number, renumbered: (index: number) => number): PulsarReport => {
+    const random = dice(seed);
+    const days = observingDays(40, 40, 0.3, random);
+    const happening = spinUp(NU, 1000, size);
+    const arrivals = simulateTimedArrivals(MODEL, { days, walks: QUIET, uncertaintyUs: 60, happening }, random);
+    const watch = startWatch(MODEL, detectorSettings(1, 10));
+    arrivals.forEach((arrival, index) => {
+      const seen = watch.phaseAt(arrival.tdb);
+      const moved = happening(days[index]!, { frequencyMhz: 1400, index });
+      const pulseNumber = Math.round(seen.pulseNumber + seen.deviationTurns - moved) + renumbered(index);
+      advance(watch, { ...arrival, pulseNumber });
+    });
+    return report(watch);
+  };
+
+  it('keep the count over a large step between sparse sessions', () => {
+    const events = confirmed(sparse(101, 2e-6, () => 500));
+    expect(events.map((e) => e.explanation)).toEqual(['glitch']);
+    expect(events[0]!.deltaNuOverNu! / 2e-6).toBeCloseTo(1, 3);
+    expect(events[0]!.aliases).toEqual([]);
+  });
+
+  it('may begin anew without an event', () => {
+    const result = sparse(102, 0, (index) => (index < 25 ? 0 : -12_345));
+    expect(confirmed(result)).toEqual([]);
+    expect(result.arrivals.every((a) => a.fate === 'used')).toBe(true);
+  });
+});
+
 describe('site events', () => {
   const [step] = watched(31, { happening: (t) => (t > 180 ? 600e-6 * NU : 0) }).events;
 

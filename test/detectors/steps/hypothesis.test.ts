@@ -50,6 +50,7 @@ describe('the filter of one hypothesis is generalised least squares', () => {
         story: null,
         tracks: [],
         lastSetAside: false,
+        numbering: null,
       };
       priorSd.forEach((sd, i) => {
         h.cov[5 * i] = sd * sd;
