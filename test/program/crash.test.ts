@@ -11,7 +11,7 @@ import { openStore } from '../../daemon/store/index.ts';
 import { loadTables } from '../../daemon/tables/loadTables.ts';
 import { startSpinvigil, within } from '../support/daemon.ts';
 import { type AcceptedMail, type MailServer, startMailServer } from '../support/mailServer.ts';
-import { createObservatory, type TestObservatory } from '../support/observatory.ts';
+import { createObservatory, digestFarAway, type TestObservatory } from '../support/observatory.ts';
 import { runSpinvigil } from '../support/spinvigil.ts';
 import { arrivalFile, syntheticArrivals, syntheticPulsar } from '../support/syntheticPulsar.ts';
 
@@ -37,7 +37,8 @@ let copies: string;
 
 beforeAll(async () => {
   server = await startMailServer();
-  observatory = await createObservatory({ pulsars: [pulsar], smtpPort: server.port, to: RECIPIENTS });
+  const mail = { smtpPort: server.port, to: RECIPIENTS, digestCron: digestFarAway() };
+  observatory = await createObservatory({ pulsars: [pulsar], ...mail });
   await observatory.drop('before.csv', arrivalFile(arrivals.slice(0, -5)));
   await observatory.drop('after.csv', arrivalFile(arrivals.slice(-5)));
   const before = join(observatory.feedFolder, 'before.csv');

@@ -3,7 +3,12 @@ import { describe, test } from 'vitest';
 import type { PulsarEvent } from '../../detectors/steps/pulsarEvent.ts';
 import { type RunningProgram, startSpinvigil, within } from '../support/daemon.ts';
 import { type MailServer, startMailServer } from '../support/mailServer.ts';
-import { createObservatory, type ObservatoryOptions, type TestObservatory } from '../support/observatory.ts';
+import {
+  createObservatory,
+  digestFarAway,
+  type ObservatoryOptions,
+  type TestObservatory,
+} from '../support/observatory.ts';
 import { runSpinvigil, spinvigilJson } from '../support/spinvigil.ts';
 import { arrivalFile, syntheticArrivals, syntheticPulsar } from '../support/syntheticPulsar.ts';
 
@@ -24,7 +29,7 @@ const after = arrivals.filter(({ mjdText }) => Number(mjdText) >= GLITCH_MJD);
 type Closer = (close: () => Promise<void>) => void;
 
 async function observatory(finished: Closer, options: Partial<ObservatoryOptions> = {}): Promise<TestObservatory> {
-  const made = await createObservatory({ pulsars: [pulsar], ...options });
+  const made = await createObservatory({ pulsars: [pulsar], digestCron: digestFarAway(), ...options });
   finished(made.remove);
   return made;
 }

@@ -26,6 +26,15 @@ export interface ObservatoryOptions {
   readonly digestCron?: string;
 }
 
+/**
+ * A digest on a day of the month half a month away: for programs that run by the machine's own clock and count their mail, so that
+ * the hour of the test makes no difference.
+ */
+export function digestFarAway(now = new Date()): string {
+  const day = ((now.getUTCDate() + 13) % 28) + 1;
+  return `0 8 ${day} * *`;
+}
+
 export async function createObservatory(options: ObservatoryOptions): Promise<TestObservatory> {
   const folder = await mkdtemp(join(tmpdir(), 'spinvigil-test-'));
   const at = (name: string) => join(folder, name);
