@@ -13,8 +13,10 @@ export {
   markPossibleDuplicate,
   safeFileName,
   withoutPicture,
+  writeWhole,
 } from './mailer/index.ts';
 export { composeEventMail, type EventMail } from './message.ts';
+export { messageId } from './messageId.ts';
 export type { MorningReview, QuarantinedRow } from './morningReview.ts';
 export { eventsCsv } from './notice/csv.ts';
 export { type CsvColumns, csvTable } from './notice/csvTable.ts';
@@ -29,12 +31,14 @@ export {
   type AlertReason,
   DEFAULT_HISTORICAL_DAYS,
   DEFAULT_HOURLY_CAP,
+  DEFAULT_SHARPER_BY,
   type EventChanged,
   mailOrSummary,
   messagesFor,
   type PlannedMessage,
   type ToldBefore,
 } from './policy.ts';
+export { type Belief, beliefText, historyLines } from './wording/beliefs.ts';
 export { dateOfMjd, isoDay, mjdText, momentText, timeInWords } from './wording/dates.ts';
 export { percent, quantity } from './wording/numbers.ts';
 export { eventName, subjectOf } from './wording/phrases.ts';

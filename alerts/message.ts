@@ -22,6 +22,7 @@ import { renderPng } from './picture.ts';
 import { eventSvg } from './plot/index.ts';
 import type { PlannedMessage } from './policy.ts';
 import { bullets, table, heading as textHeading, wrap } from './text.ts';
+import { type Belief, historyLines } from './wording/beliefs.ts';
 import {
   DRILL_TEXT,
   footerText,
@@ -44,6 +45,8 @@ export interface EventMail {
   readonly planned: PlannedMessage;
   /** The revision that the last mail told; null: nothing was told. */
   readonly toldRevision: number | null;
+  /** What was believed when, oldest first, this revision the last; absent: the mail does not tell. */
+  readonly history?: readonly Belief[];
 }
 
 const CID = 'event-plot@spinvigil';
@@ -53,6 +56,7 @@ export async function composeEventMail(mail: EventMail, setting: MailSetting): P
   const sheet = eventSheet(event, mail.picture, setting.timezone);
   const png = await drawn(mail.picture, sheet);
   const missing = mail.picture !== null && png === null ? NO_PICTURE : null;
+  const history = lately(mail.history ?? []);
   const name = safeFileName(event.id);
   const notice = voevent(event, {
     observatory: setting.observatory,
@@ -70,8 +74,8 @@ export async function composeEventMail(mail: EventMail, setting: MailSetting): P
       eventId: event.id,
       recipients: planned.recipients,
       subject: subjectOfMail(sheet, planned.kind, setting.observatory.name),
-      text: eventText(sheet, planned, setting, missing),
-      html: eventHtml(sheet, planned, setting, { shown: png !== null, missing }),
+      text: eventText(sheet, planned, setting, { missing, history }),
+      html: eventHtml(sheet, planned, setting, { shown: png !== null, missing, history }),
       picture: png === null ? null : { cid: CID, fileName: `${name}.png`, png },
       attachments: [
         { fileName: `${name}-r${planned.revision}.xml`, contentType: 'application/xml', content: notice },
@@ -80,6 +84,24 @@ export async function composeEventMail(mail: EventMail, setting: MailSetting): P
     },
     setting,
   );
+}
+
+/** What stands in a mail beside the sheet. */
+interface Beside {
+  /** The plot is among the parts of the mail. */
+  readonly shown: boolean;
+  /** In words, that it is not though it should be. */
+  readonly missing: string | null;
+  /** Lines of what was believed before; empty: nothing else was. */
+  readonly history: readonly string[];
+}
+
+/** Older beliefs are on the page. */
+const BELIEFS_SHOWN = 8;
+
+/** A first belief has no history. */
+function lately(history: readonly Belief[]): readonly string[] {
+  return history.length < 2 ? [] : historyLines(history.slice(-BELIEFS_SHOWN));
 }
 
 /** A plot that cannot be drawn must not hold up the alert: the mail then says that it is missing. */
@@ -103,20 +125,23 @@ export function eventText(
   sheet: EventSheet,
   planned: PlannedMessage,
   setting: MailSetting,
-  missing: string | null,
+  { missing, history }: Pick<Beside, 'missing' | 'history'>,
 ): string {
+  const drill = planned.kind === 'drill';
   const blocks = [
+    drill ? wrap(opening(planned)) : '',
     [sheet.title, sheet.size]
       .filter((line) => line !== '')
       .map((line) => wrap(line))
       .join('\n'),
-    wrap(opening(planned)),
+    drill ? '' : wrap(opening(planned)),
     wrap(sheet.meaning),
     missing === null ? '' : wrap(missing),
     sheet.caution === '' ? '' : wrap(sheet.caution),
     table(sheet.rows),
     section(HEADINGS.check, sheet.check),
     section(HEADINGS.observe, sheet.observe),
+    section(HEADINGS.history, history),
     setting.reviewUrl === null ? '' : `${reviewLine}:\n${eventUrl(setting.reviewUrl, planned.eventId)}`,
     `-- \n${wrap(footerText(setting.observatory))}`,
   ];
@@ -131,23 +156,25 @@ export function eventHtml(
   sheet: EventSheet,
   planned: PlannedMessage,
   setting: MailSetting,
-  plot: { readonly shown: boolean; readonly missing: string | null },
+  { shown, missing, history }: Beside,
 ): string {
   return page({
     title: sheet.title,
     preview: `${sheet.size} ${opening(planned)}`,
     tone: TONE[planned.kind],
     blocks: [
+      planned.kind === 'drill' ? paragraph(opening(planned), 'strong') : null,
       title(sheet.title, setting.observatory.name),
       figure(sheet.size),
-      paragraph(opening(planned), 'strong'),
+      planned.kind === 'drill' ? null : paragraph(opening(planned), 'strong'),
       paragraph(sheet.meaning),
-      plot.shown ? pictureBlock(CID, `${PICTURE_TEXT} ${sheet.title}. ${sheet.size}`) : null,
-      plot.missing === null ? null : paragraph(plot.missing),
+      shown ? pictureBlock(CID, `${PICTURE_TEXT} ${sheet.title}. ${sheet.size}`) : null,
+      missing === null ? null : paragraph(missing),
       sheet.caution === '' ? null : paragraph(sheet.caution, 'strong'),
       rowTable(sheet.rows),
       ...(sheet.check.length === 0 ? [] : [heading(HEADINGS.check), list(sheet.check)]),
       ...(sheet.observe.length === 0 ? [] : [heading(HEADINGS.observe), list(sheet.observe)]),
+      ...(history.length === 0 ? [] : [heading(HEADINGS.history), list(history)]),
       setting.reviewUrl === null ? null : link(reviewLine, eventUrl(setting.reviewUrl, planned.eventId)),
     ],
     footer: footerText(setting.observatory),

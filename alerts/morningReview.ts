@@ -26,15 +26,32 @@ export interface MorningReview {
   readonly unlockedPulsars: readonly string[];
   /** What was taken in since the last review: files, arrivals, and how many pulsars they belong to. */
   readonly intake: { readonly files: number; readonly arrivals: number; readonly pulsars: number };
-  /** The smallest glitch that would have been confirmed with 90 % probability, per pulsar; empty where not computed. */
+  /** The smallest glitch that would have been confirmed with 90 % probability, per pulsar, the blindest first; without those of which none is known. */
   readonly limits: readonly {
     readonly pulsar: string;
     readonly deltaNuOverNu90: number;
     readonly delayDays90: number;
   }[];
+  readonly falseAlerts: FalseAlertCount;
   readonly mail: { readonly waiting: number; readonly refused: number; readonly oldestWaitingHours: number | null };
   /** Anything the operator must know: clock tables or leap seconds that ran out, a wall clock that stepped. */
   readonly warnings: readonly string[];
+}
+
+/** The operator's budget of false alerts, and what is known of them so far. */
+export interface FalseAlertCount {
+  /** Of the whole programme. */
+  readonly budgetPerYear: number;
+  /** Ever confirmed, whatever came of it. */
+  readonly confirmed: number;
+  readonly accepted: number;
+  readonly rejected: number;
+  readonly withdrawn: number;
+  /** Rejected or withdrawn, of those confirmed within a year. */
+  readonly falseInLastYear: number;
+  /** Steps in ν by sign: all on record, and the confirmed ones. */
+  readonly suspectedSteps: { readonly up: number; readonly down: number };
+  readonly confirmedSteps: { readonly up: number; readonly down: number };
 }
 
 export interface QuarantinedRow {

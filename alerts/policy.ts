@@ -1,5 +1,6 @@
-import type { Explanation, PulsarEvent } from '../detectors/steps/pulsarEvent.ts';
+import type { Explanation, Interval, PulsarEvent } from '../detectors/steps/pulsarEvent.ts';
 import { type EventMailKind, messageId } from './messageId.ts';
+import { isConstrained } from './wording/numbers.ts';
 
 /**
  * Whom to tell, when, and why. Pure: the daemon calls `messagesFor` with every change of an event, queues what comes back in the
@@ -32,12 +33,14 @@ export interface AlertPolicy {
   readonly nowMjd: number;
   /** An event confirmed by an arrival older than this waits for the digest instead of waking anyone. */
   readonly historicalDays: number;
+  /** An update is mailed when a 68 % interval has shrunk by this factor since the last mail. */
+  readonly sharperBy: number;
 }
 
 export const DEFAULT_HISTORICAL_DAYS = 30;
 
-/** An update is mailed when the 68 % interval of the size has shrunk by this factor since the last mail. */
-export const SHARPENED_FACTOR = 2;
+/** An update is mailed when a 68 % interval has shrunk by this factor since the last mail, unless the operator set another. */
+export const DEFAULT_SHARPER_BY = 2;
 
 export type AlertReason =
   // these are mailed
@@ -46,7 +49,11 @@ export type AlertReason =
   | 'withdrawn after it was told'
   | 'explanation changed'
   | 'recovery first established'
+  | 'alias fell'
   | 'size sharpened'
+  | 'epoch sharpened'
+  | 'spin-down step sharpened'
+  | 'recovery sharpened'
   // these are not
   | 'suspected only'
   | 'in the digest only'
@@ -93,7 +100,11 @@ const MAIL_KIND: Readonly<Record<AlertReason, EventMailKind | null>> = {
   'withdrawn after it was told': 'withdrawal',
   'explanation changed': 'update',
   'recovery first established': 'update',
+  'alias fell': 'update',
   'size sharpened': 'update',
+  'epoch sharpened': 'update',
+  'spin-down step sharpened': 'update',
+  'recovery sharpened': 'update',
   'suspected only': null,
   'in the digest only': null,
   historical: null,
@@ -111,7 +122,8 @@ function reasonFor(change: EventChanged, policy: AlertPolicy): AlertReason {
   if (told.as.state === 'withdrawn') return 'confirmed again';
   if (told.as.explanation !== after.explanation) return 'explanation changed';
   if (told.as.recovery.terms.length === 0 && after.recovery.terms.length > 0) return 'recovery first established';
-  return hasSharpened(told.as, after) ? 'size sharpened' : 'nothing new';
+  if (plausibleSizes(after) < plausibleSizes(told.as)) return 'alias fell';
+  return whatSharpened(told.as, after, policy.sharperBy) ?? 'nothing new';
 }
 
 function firstReason(after: PulsarEvent, policy: AlertPolicy): AlertReason {
@@ -123,14 +135,36 @@ function firstReason(after: PulsarEvent, policy: AlertPolicy): AlertReason {
   return after.state === 'accepted' ? 'verdict' : 'first confirmation';
 }
 
-/** The size as the event has it: Δν, or the time step of a clock or dispersion step. */
-function hasSharpened(told: PulsarEvent, now: PulsarEvent): boolean {
-  const sharpened = (was: readonly [number, number] | null, is: readonly [number, number] | null) =>
-    was !== null && is !== null && was[1] - was[0] >= SHARPENED_FACTOR * (is[1] - is[0]);
-  return (
-    sharpened(told.deltaNuHzInterval68, now.deltaNuHzInterval68) ||
-    sharpened(told.timeStepUsInterval68, now.timeStepUsInterval68)
-  );
+/** Step sizes that differ by whole turns between arrivals, and are worth a thought. */
+function plausibleSizes({ aliases }: PulsarEvent): number {
+  return aliases.filter(({ probability }) => probability >= 0.01).length;
+}
+
+type Quantity = readonly [value: number | null, interval68: Interval | null];
+
+/** What is known by so much better than when it was told; a quantity whose sign is not known yet says nothing. */
+function whatSharpened(told: PulsarEvent, now: PulsarEvent, factor: number): AlertReason | null {
+  const sharper = (was: Quantity, is: Quantity) =>
+    isConstrained(...is) && was[1] !== null && is[1] !== null && width(was[1]) >= factor * width(is[1]);
+  const some = (quantity: (event: PulsarEvent) => Quantity) => sharper(quantity(told), quantity(now));
+  if (some((e) => [e.deltaNuHz, e.deltaNuHzInterval68]) || some((e) => [e.timeStepUs, e.timeStepUsInterval68])) {
+    return 'size sharpened';
+  }
+  if (some((e) => [e.deltaNuDot, e.deltaNuDotInterval68])) return 'spin-down step sharpened';
+  const terms = now.recovery.terms.length === told.recovery.terms.length ? now.recovery.terms : [];
+  const recovery = terms.some((is, i) => {
+    const was = told.recovery.terms[i]!;
+    return (
+      sharper([was.fraction, was.fractionInterval68], [is.fraction, is.fractionInterval68]) ||
+      sharper([was.timescaleDays, was.timescaleDaysInterval68], [is.timescaleDays, is.timescaleDaysInterval68])
+    );
+  });
+  if (recovery) return 'recovery sharpened';
+  return some((e) => [e.epochMjd, e.epochInterval68]) ? 'epoch sharpened' : null;
+}
+
+function width([low, high]: Interval): number {
+  return high - low;
 }
 
 export const DEFAULT_HOURLY_CAP = 10;

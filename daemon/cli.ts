@@ -1,28 +1,36 @@
 #!/usr/bin/env node
-import { readFileSync } from 'node:fs';
-import { join } from 'node:path';
 import { Argument, Command, CommanderError, Option } from 'commander';
 import { NOTICE_FORMS, STATES } from './commands/choices.ts';
 import { processTerminal as terminal } from './commands/terminal.ts';
 import { EXIT, type ExitCode, OperatorError } from './errors.ts';
-import { packageRoot } from './packageRoot.ts';
+import { programVersion } from './packageRoot.ts';
 
 // The command line: which commands there are, what they take, and what the shell learns from them. What a command needs is loaded when it
 // runs, so that help and complaints come at once.
 
 function createProgram(): Command {
-  const { version } = JSON.parse(readFileSync(join(packageRoot(), 'package.json'), 'utf8')) as { version: string };
   const program = new Command('spinvigil')
     .description('Unattended glitch watching for pulsar timing programmes.')
-    .version(version)
+    .version(programVersion())
     .addHelpText(
       'after',
       `\nExit codes: 0 done, 1 the work failed, 2 wrong usage or configuration, 3 another instance holds the state folder.`,
     );
-  const command = (name: string, description: string) =>
+  const add: Add = (name, description) =>
     program.command(name).description(description).option('--config <file>', 'configuration', './spinvigil.toml');
-  const event = () => new Argument('<event>', 'its id; one it had before will do');
+  addWork(add);
+  addEvents(add);
+  addPulsars(add);
+  addCopies(add);
+  return program;
+}
 
+/** Begins a command. */
+type Add = (name: string, description: string) => Command;
+
+const event = () => new Argument('<event>', 'its id; one it had before will do');
+
+function addWork(command: Add): void {
   command('watch', 'the daemon: take in what the feeds deliver, decide, alert, serve the review page').action(
     async (options) => (await import('./commands/watch.ts')).watch(terminal, options),
   );
@@ -38,6 +46,9 @@ function createProgram(): Command {
     .option('--mail', 'mail what the watch would have mailed')
     .option('--json', 'print the summary as JSON')
     .action(async (files, options) => (await import('./commands/replay.ts')).replay(terminal, files, options));
+}
+
+function addEvents(command: Add): void {
   command('events', 'the event log')
     .option('--since <date>', 'with an epoch at or after a date (2026-03-29, UTC) or an MJD')
     .option('--pulsar <name>', 'of this pulsar, site events that it showed among them')
@@ -57,16 +68,53 @@ function createProgram(): Command {
     .option('--note <text>', 'why', '')
     .option('--json', 'print the event as JSON')
     .action(async (id, options) => (await import('./commands/review.ts')).review(terminal, id, options));
+  command('reviewer', 'set the password with which a reviewer logs in on the review page')
+    .argument('<name>', 'one of [review] reviewers')
+    .option('--remove', 'take the password away')
+    .action(async (name, options) => (await import('./commands/reviewer.ts')).reviewer(terminal, name, options));
   command('morning', 'the morning review')
     .option('--date <date>', 'of an earlier day, such as 2026-03-29')
     .option('--html <file>', 'write it as a page to this file')
     .option('--json', 'print as JSON')
     .action(async (options) => (await import('./commands/morning.ts')).morning(terminal, options));
+}
+
+function addPulsars(command: Add): void {
+  command('limits', 'the smallest glitch that would have been confirmed, per pulsar, the blindest first')
+    .option('--pulsar <name>', 'of this pulsar')
+    .option('--json', 'print as JSON')
+    .action(async (options) => (await import('./commands/limits.ts')).limits(terminal, options));
+  command('plan', 'when to observe a pulsar next, and what that would settle')
+    .argument('<pulsar>', 'its name in the models folder')
+    .option('--json', 'print as JSON')
+    .action(async (pulsar, options) => (await import('./commands/plan.ts')).plan(terminal, pulsar, options));
   command('arrivals', 'every arrival of a pulsar on record: times, delays, deviation, and what was done with it')
     .argument('<pulsar>', 'its name in the models folder')
     .addOption(new Option('--csv', 'print as CSV, safe for spreadsheets').conflicts('json'))
     .option('--json', 'print as JSON')
     .action(async (pulsar, options) => (await import('./commands/arrivals.ts')).arrivals(terminal, pulsar, options));
+  command('model', 'the spin-down model of a pulsar to fold with, after its last confirmed event')
+    .argument('<pulsar>', 'its name in the models folder')
+    .option('--at <date>', 'as it was good at a date (2026-03-29, UTC) or an MJD')
+    .option('--to <file>', 'write it there, whole at once: a shell that is sent there empties the file first')
+    .option('--json', 'as JSON; else as a file for the models folder')
+    .action(async (pulsar, options) => (await import('./commands/model.ts')).model(terminal, pulsar, options));
+  command(
+    'drill',
+    'a rehearsal: a synthetic glitch in a copy of the data, through the whole chain to a mail marked DRILL',
+  )
+    .argument('<pulsar>', 'its name in the models folder')
+    .requiredOption('--size <ratio>', 'Δν/ν, such as 2e-8; negative: a spin-down')
+    .option('--days-ago <days>', 'the glitch so long before the last arrival; else thirty arrivals ago')
+    .addOption(new Option('--at <date>', 'the glitch at a date (2026-03-29, UTC) or an MJD').conflicts('daysAgo'))
+    .option('--nudot <ratio>', 'Δν̇/ν̇', '0')
+    .option('--recovery <Q,days>', 'this share of Δν decays within so many days, such as 0.2,30')
+    .option('--mail-to <address...>', 'mail it to these; else to those of [mail]')
+    .option('--json', 'print as JSON')
+    .action(async (pulsar, options) => (await import('./commands/drill.ts')).drill(terminal, pulsar, options));
+}
+
+function addCopies(command: Add): void {
   command('export', 'an event as a notice for others')
     .addArgument(event())
     .addOption(new Option('--as <form>', 'the form').choices(NOTICE_FORMS).makeOptionMandatory())
@@ -77,7 +125,6 @@ function createProgram(): Command {
   command('restore', 'bring a copy back; the watch must not run')
     .argument('<file>', 'a copy made by backup')
     .action(async (file, options) => (await import('./commands/copies.ts')).restore(terminal, file, options));
-  return program;
 }
 
 /** Runs one command line and answers with what the shell is to learn. */
@@ -90,20 +137,23 @@ async function main(args: readonly string[]): Promise<ExitCode> {
   } catch (error) {
     // Commander has printed what it complains of.
     if (error instanceof CommanderError) return error.exitCode === 0 ? EXIT.done : EXIT.wrongUsage;
-    if (!(error instanceof OperatorError)) throw explained(error);
-    const advice = error.advice === null ? '' : `; ${error.advice}`;
-    terminal.err.write(`spinvigil: ${error.message}${advice}\n`);
-    return error.exitCode;
+    const known = isUnfit(error) ? UNFIT : error;
+    if (!(known instanceof OperatorError)) throw error;
+    const advice = known.advice === null ? '' : `; ${known.advice}`;
+    terminal.err.write(`spinvigil: ${known.message}${advice}\n`);
+    return known.exitCode;
   }
 }
 
 /** A native module that was built for another Node is the installation's fault, not ours. */
-function explained(error: unknown): unknown {
-  const { code } = (error ?? {}) as NodeJS.ErrnoException;
-  return code === 'ERR_DLOPEN_FAILED'
-    ? new Error('The database module does not fit this version of Node: run npm ci again.', { cause: error })
-    : error;
+function isUnfit(error: unknown): boolean {
+  return ((error ?? {}) as NodeJS.ErrnoException).code === 'ERR_DLOPEN_FAILED';
 }
+
+const UNFIT = new OperatorError(`the database module does not fit this Node (${process.version})`, {
+  exitCode: EXIT.workFailed,
+  advice: 'run npm ci again with the Node that runs the watch',
+});
 
 // A reader that has gone away (`| head`) ends the output, not the work.
 process.stdout.on('error', () => {});

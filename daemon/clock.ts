@@ -77,6 +77,10 @@ export function mjdOf(at: Date): number {
   return UNIX_EPOCH_MJD + at.getTime() / MS_PER_DAY;
 }
 
+export function instantOfMjd(mjd: number): Date {
+  return new Date((mjd - UNIX_EPOCH_MJD) * MS_PER_DAY);
+}
+
 /**
  * Sees a wall clock that was set: compares how far it went with how far the monotonic clock went since the last call.
  * Returns the step in seconds when it is larger than `toleranceS`, else null.

@@ -1,13 +1,15 @@
 import { type Backlog, createBacklog } from './backlog.ts';
 import { systemClock } from './clock.ts';
+import type { Feed } from './config/configuration.ts';
 import { reasonOf } from './errors.ts';
 import { Pipeline } from './pipeline.ts';
+import type { Progress } from './progress.ts';
 import { type FileInHand, recall } from './stages/intake.ts';
 import { quarantineUnread } from './stages/unreadFile.ts';
 import type { Station } from './station.ts';
 import { storageTrouble } from './store/index.ts';
 import type { ReadyFile, WatchProblem } from './watch/feedLook.ts';
-import { createWatcher, type FeedStatus } from './watch/watcher.ts';
+import { createWatcher, type FeedStatus, type WatcherOptions } from './watch/watcher.ts';
 
 /** From the watched folders into the pipeline, for as long as the daemon runs. */
 export interface FeedIntake {
@@ -23,11 +25,20 @@ export interface IntakeOptions {
   readonly onMail: () => void;
   /** The storage failed in a way that must not be retried. */
   readonly onFatal: (error: unknown) => void;
+  readonly progress: Progress;
 }
 
-export function startIntake(station: Station, { onMail, onFatal }: IntakeOptions): FeedIntake {
+/** Without a step for so long a decision hangs: the longest pulsar takes a minute. */
+const DECISION_LIMIT_MS = 600_000;
+const LOOK_LIMIT_MS = 600_000;
+/** Or for so many of the feed's own beats. */
+const BEATS_LATE = 10;
+
+export function startIntake(station: Station, { onMail, onFatal, progress }: IntakeOptions): FeedIntake {
   const { configuration, log } = station;
-  const pipeline = new Pipeline(station);
+  const decision = progress.stage('decide', DECISION_LIMIT_MS);
+  decision.rest();
+  const pipeline = new Pipeline(station, decision);
   let trouble: string | null = null;
 
   const noteTrouble = (error: unknown) => {
@@ -70,6 +81,7 @@ export function startIntake(station: Station, { onMail, onFatal }: IntakeOptions
       log.warn(factsOf(problem), problem.message);
     },
     onProblemEnded: (problem) => log.info({ ...factsOf(problem), was: problem.message }, 'problem ended'),
+    onProgress: feedProgress(configuration.feeds, progress),
     async onSettled(file, bytes, filesWaiting) {
       const decide = filesWaiting === 0 && backlog.isEmpty ? 'now if fresh' : 'later';
       const options = { decide, mail: true, acceptUnterminated: file.stoodLong } as const;
@@ -89,6 +101,20 @@ export function startIntake(station: Station, { onMail, onFatal }: IntakeOptions
       await decided;
       await catchUp;
     },
+  };
+}
+
+function feedProgress(feeds: readonly Feed[], progress: Progress): NonNullable<WatcherOptions['onProgress']> {
+  const looks = new Map(
+    feeds.map(({ name, pollSeconds }) => [
+      name,
+      progress.stage(`feed ${name}`, Math.max(LOOK_LIMIT_MS, BEATS_LATE * pollSeconds * 1000)),
+    ]),
+  );
+  return (feed, what) => {
+    // While it waits, what it waits for must make progress.
+    if (what === 'waits') looks.get(feed)?.rest();
+    else looks.get(feed)?.step();
   };
 }
 

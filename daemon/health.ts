@@ -1,6 +1,7 @@
 import type { Clock } from './clock.ts';
 import type { Configuration } from './config/configuration.ts';
 import type { FeedIntake } from './feedIntake.ts';
+import type { Progress } from './progress.ts';
 import type { WatchHealth } from './review/desk.ts';
 import type { DeliveryLoop } from './schedule/deliver.ts';
 import type { Store } from './store/index.ts';
@@ -13,6 +14,15 @@ export interface HealthSources {
   /** Null before they have started. */
   readonly intake: Pick<FeedIntake, 'status' | 'storageTrouble'> | null;
   readonly delivery: Pick<DeliveryLoop, 'trouble'> | null;
+  /** Absent: nothing of it is known. */
+  readonly progress?: Pick<Progress, 'late'>;
+}
+
+/** What a heartbeat may say. */
+export interface Pulse {
+  /** Why the watch may not be called alive; empty: it is. */
+  readonly stopped: readonly string[];
+  readonly mailBlocked: boolean;
 }
 
 /** A look that is late by this many beats: the feed hangs (a dead mount, a loop that ended). */
@@ -22,9 +32,21 @@ const MAIL_LATE_MS = 3_600_000;
 
 export function watchHealth(sources: HealthSources): WatchHealth {
   const problems = [...feedProblems(sources), ...mailProblems(sources), ...decisionProblems(sources)];
+  problems.push(...late(sources).map((stage) => `No progress: ${stage}.`));
   const storage = sources.intake?.storageTrouble() ?? null;
   if (storage !== null) problems.push(`Nothing can be written: ${storage}. Intake pauses and nothing is lost.`);
   return { ok: problems.length === 0, problems };
+}
+
+export function pulse(sources: HealthSources): Pulse {
+  const storage = sources.intake?.storageTrouble() ?? null;
+  const stopped = late(sources).map((stage) => `no progress: ${stage}`);
+  if (storage !== null) stopped.push(`nothing can be written: ${storage}`);
+  return { stopped, mailBlocked: mailWaitingMs(sources) >= MAIL_LATE_MS };
+}
+
+function late({ progress }: HealthSources): readonly string[] {
+  return progress?.late() ?? [];
 }
 
 function feedProblems({ configuration, intake, clock }: HealthSources): string[] {
@@ -39,11 +61,15 @@ function feedProblems({ configuration, intake, clock }: HealthSources): string[]
   });
 }
 
-function mailProblems({ store, clock, delivery }: HealthSources): string[] {
+function mailWaitingMs({ store, clock }: HealthSources): number {
   const { oldestWaitingSince } = store.outboxCounts();
-  const waitingMs = oldestWaitingSince === null ? 0 : clock.now().getTime() - Date.parse(oldestWaitingSince);
+  return oldestWaitingSince === null ? 0 : clock.now().getTime() - Date.parse(oldestWaitingSince);
+}
+
+function mailProblems(sources: HealthSources): string[] {
+  const waitingMs = mailWaitingMs(sources);
   if (waitingMs < MAIL_LATE_MS) return [];
-  const why = delivery?.trouble() ?? null;
+  const why = sources.delivery?.trouble() ?? null;
   return [`Mail has been waiting for ${Math.floor(waitingMs / 3_600_000)} h${why === null ? '' : `: ${why}`}.`];
 }
 

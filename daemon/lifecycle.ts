@@ -1,130 +1,82 @@
-import { type MorningReview, prepareRenderer } from '../alerts/index.ts';
 import { systemClock } from './clock.ts';
+import type { Configuration } from './config/configuration.ts';
 import { EXIT, OperatorError, reasonOf } from './errors.ts';
-import { type FeedIntake, startIntake } from './feedIntake.ts';
-import { watchHealth } from './health.ts';
 import type { Log } from './log.ts';
-import { mailerFor } from './mailerFor.ts';
-import { morningReview, tableWarnings } from './morning.ts';
 import { loadOrders, openRecord, problemLine } from './opening.ts';
-import { createStoreDesk } from './review/storeDesk.ts';
-import { openReviewPage, type ReviewPage } from './reviewPage.ts';
-import { type DeliveryLoop, startDelivery } from './schedule/deliver.ts';
-import { type DigestSchedule, startDigestSchedule } from './schedule/digest.ts';
-import { makeDigest, reportGivenUp } from './schedule/ownMail.ts';
-import { startUpkeep } from './schedule/upkeep.ts';
-import { createStation, type Station } from './station.ts';
-import { loadTables } from './tables/loadTables.ts';
+import { rereadConfiguration } from './reload.ts';
+import { createVerdictTokens } from './review/verdictToken.ts';
+import type { ServiceManager } from './serviceManager.ts';
+import { startShift } from './shift.ts';
+import type { Summons } from './summons.ts';
 
 /**
- * The daemon from its start to its end. What is needed first starts first and ends last: the record, the page, mail, then the feeds, so
- * that what a backlog turns up can be seen and told while it is worked through.
+ * The daemon from its start to its end. The record is held throughout; everything else works for one configuration, in a shift that gives way to
+ * the next when the operator has a new one taken up.
  */
 export interface WatchOptions {
   readonly configFile: string;
   readonly log: Log;
   /** Aborted by a signal: finish what is in hand, then end. */
   readonly stop: AbortSignal;
+  /** Given by a signal: read the configuration again. */
+  readonly reload: Summons;
+  readonly manager: ServiceManager;
   /** For the person who started it. */
   readonly say: (line: string) => void;
 }
 
-const MAIL_GRACE_MS = 5_000;
-
 /** Resolves once stopped; rejects when it cannot start, or when the storage fails for good. */
-export async function runWatch({ configFile, log, stop, say }: WatchOptions): Promise<void> {
-  const { configuration, warnings: complaints } = loadOrders(configFile);
-  for (const complaint of complaints) log.warn(problemLine(complaint));
+export async function runWatch(options: WatchOptions): Promise<void> {
+  const { configFile, log, manager } = options;
+  const { configuration, warnings } = loadOrders(configFile);
+  for (const complaint of warnings) log.warn(problemLine(complaint));
   const store = openRecord(configuration, 'daemon');
-  const endings: (() => Promise<void> | void)[] = [() => store.close()];
   const failure = failureOnce();
-  let page: ReviewPage | null = null;
-  let delivery: DeliveryLoop | null = null;
-  let intake: FeedIntake | null = null;
+  const parts = {
+    ...options,
+    store,
+    clock: systemClock,
+    tokens: createVerdictTokens(),
+    startedAt: systemClock.now(),
+    onFatal: failure.raise,
+  };
   try {
-    const clock = systemClock;
-    const sky = loadTables();
-    const warnings = () => tableWarnings(sky, clock.now());
-    for (const warning of warnings()) log.warn(warning);
-    const station = createStation({
-      configuration,
-      store,
-      tables: sky.tables,
-      clock,
-      log,
-      reviewUrl: () => page?.url() ?? null,
-    });
-    const morning = () => morningReview({ configuration, store, clock, warnings: warnings() });
-    const health = () => watchHealth({ configuration, store, clock, intake, delivery });
-    const desk = createStoreDesk({ configuration, store, clock, morning, health });
-
-    page = await openReviewPage(station, desk);
-    endings.push(page.close);
-    const actions = { onMail: () => delivery?.wake(), onFatal: failure.raise };
-    const mail = startMail(station, actions);
-    delivery = mail;
-    endings.push(() => mail.stop(MAIL_GRACE_MS));
-    const digest = startDigest(station, morning, actions.onMail);
-    endings.push(digest.stop);
-    const upkeep = startUpkeep(station, { ...actions, onClockStep: digest.catchUp, tableWarnings: warnings });
-    endings.push(upkeep.stop);
-    intake = startIntake(station, actions);
-    endings.push(intake.stop);
-
-    say(startLine(station));
-    void prepareRenderer().catch((error) => log.warn({ reason: reasonOf(error) }, 'no pictures can be drawn for mail'));
-    await Promise.race([aborted(stop), failure.raised]);
-    log.info('stopping');
+    let orders: Configuration | null = configuration;
+    while (orders !== null) {
+      const shift = await startShift(parts, orders);
+      try {
+        orders = await Promise.race([nextOrders(options, orders, shift.onBadReload), failure.raised]);
+        log.info(orders === null ? 'stopping' : 'taking up the new configuration');
+        if (orders === null) void manager.tell('STOPPING=1', 'STATUS=stopping');
+      } finally {
+        await shift.end();
+      }
+    }
   } finally {
-    for (const end of endings.reverse()) await end();
+    store.close();
   }
   log.info('stopped');
 }
 
-function startMail(
-  station: Station,
-  { onMail, onFatal }: { readonly onMail: () => void; readonly onFatal: (error: unknown) => void },
-): DeliveryLoop {
-  const { configuration, store, clock, log } = station;
-  return startDelivery({
-    store,
-    clock,
-    log,
-    mailer: mailerFor(configuration.mail),
-    from: configuration.mail.from,
-    async onGivenUp(mail, state, why) {
-      await reportGivenUp(station, mail, state, why);
-      onMail();
-    },
-    onFatal,
-  });
-}
-
-function startDigest(station: Station, morning: () => MorningReview, onMail: () => void): DigestSchedule {
-  const { configuration, store, clock, log } = station;
-  const { digestCron: cron, timezone: zone } = configuration.mail;
-  const digest = startDigestSchedule({
-    cron,
-    zone,
-    clock,
-    log,
-    desk: {
-      wasMade: (date) => (store.lastDigest()?.civilDate ?? '') >= date,
-      async make(date) {
-        await makeDigest(station, date, morning());
-        onMail();
-      },
-    },
-  });
-  void digest.catchUp();
-  return digest;
-}
-
-function startLine({ configuration, reviewUrl }: Station): string {
-  const feeds = configuration.feeds.map(({ name }) => name).join(', ');
-  const url = reviewUrl();
-  const page = url === null ? 'no review page yet (see the log)' : `review page: ${url}`;
-  return `${configuration.observatory.name}: watching ${feeds} for ${configuration.models.size} pulsars; ${page}`;
+/** Waits for a configuration to be taken up; null: for the end. */
+async function nextOrders(
+  { stop, reload, manager, log }: WatchOptions,
+  present: Configuration,
+  onBad: (problems: readonly string[]) => Promise<void>,
+): Promise<Configuration | null> {
+  for (;;) {
+    await Promise.race([aborted(stop), reload.given()]);
+    if (stop.aborted) return null;
+    void manager.tell('RELOADING=1');
+    const read = rereadConfiguration(present);
+    if ('configuration' in read) {
+      for (const warning of read.warnings) log.warn(warning);
+      return read.configuration;
+    }
+    for (const problem of read.problems) log.error({ problem }, 'the new configuration is not taken up');
+    void manager.tell('READY=1');
+    await onBad(read.problems).catch((error) => log.error({ reason: reasonOf(error) }, 'nobody could be told of it'));
+  }
 }
 
 function aborted(signal: AbortSignal): Promise<void> {

@@ -1,3 +1,4 @@
+import { fstatSync } from 'node:fs';
 import { type Logger, pino } from 'pino';
 
 /**
@@ -26,8 +27,7 @@ export interface LogOptions {
 
 export function createLog(options: LogOptions = {}): Log {
   const write = options.write ?? writeToStderr();
-  const { JOURNAL_STREAM } = process.env;
-  const journal = options.journal ?? JOURNAL_STREAM !== undefined;
+  const journal = options.journal ?? goesToJournal();
   const destination = {
     lastLevel: 30,
     write(line: string) {
@@ -48,6 +48,20 @@ export function createLog(options: LogOptions = {}): Log {
   );
 }
 
+/** The device and inode that systemd names are those of our stderr: it may have been sent elsewhere since (systemd.exec(5)). */
+function goesToJournal(): boolean {
+  const { JOURNAL_STREAM } = process.env;
+  if (JOURNAL_STREAM === undefined) return false;
+  try {
+    const { dev, ino } = fstatSync(STDERR, { bigint: true });
+    return JOURNAL_STREAM === `${dev}:${ino}`;
+  } catch {
+    return false;
+  }
+}
+
+const STDERR = 2;
+
 /** A log that says nothing, for one-off commands and tests. */
 export const silentLog = (): Log => createLog({ level: 'silent', write: () => {} });
 
@@ -60,10 +74,22 @@ function shorten(fields: Record<string, unknown>): Record<string, unknown> {
   );
 }
 
+/** A reader that is slow holds back so much and no more. */
+const MOST_HELD_BACK_BYTES = 4 * 1024 * 1024;
+let dropped = 0;
+
+/** Lines that nobody took since the program started. */
+export function droppedLogLines(): number {
+  return dropped;
+}
+
 /** Goes on when nobody reads any more (a closed pipe, a full journal): the daemon's work is worth more than its log. */
 function writeToStderr(): (line: string) => void {
-  process.stderr.on('error', () => {});
+  process.stderr.on('error', () => {
+    dropped += 1;
+  });
   return (line) => {
-    process.stderr.write(line);
+    if (process.stderr.writableLength > MOST_HELD_BACK_BYTES) dropped += 1;
+    else process.stderr.write(line);
   };
 }

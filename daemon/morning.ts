@@ -3,12 +3,13 @@ import type { MorningReview } from '../alerts/index.ts';
 import type { PulsarEvent } from '../detectors/steps/pulsarEvent.ts';
 import { changesInBrief } from './changesInBrief.ts';
 import { civilTime, instantOf, mjdOf } from './clock.ts';
+import { falseAlertCount } from './falseAlertCount.ts';
 import { recordWarnings } from './schedule/dailyChecks.ts';
 import { type DigestRule, digestRule } from './schedule/digestDue.ts';
 import { silentFeeds } from './schedule/silentFeeds.ts';
 import { clockStepWarnings } from './schedule/upkeep.ts';
 import type { Station } from './station.ts';
-import type { Store } from './store/index.ts';
+import type { PulsarReportRow, Store } from './store/index.ts';
 import { type LoadedTables, leapSecondWarning } from './tables/loadTables.ts';
 import { endedTableWarnings } from './tables/tableEnds.ts';
 
@@ -34,6 +35,7 @@ export function morningReview(sources: MorningSources, date?: string): MorningRe
   const counts = store.outboxCounts();
   const oldest = counts.oldestWaitingSince;
   const reports = store.pulsarReports();
+  const silent = silentPulsars(store, now);
   return {
     observatory: configuration.observatory.name,
     ...period,
@@ -45,10 +47,15 @@ export function morningReview(sources: MorningSources, date?: string): MorningRe
     changed: changesInBrief(store.eventChangesSince(period.since).filter((change) => change.at <= period.until)),
     quarantined: store.quarantinedSince(period.since).filter((row) => row.at <= period.until),
     silentFeeds: silentFeeds(configuration, store, now),
-    silentPulsars: silentPulsars(store, now),
+    silentPulsars: silent,
     unlockedPulsars: reports.filter((report) => !report.locked).map((report) => report.pulsar),
     intake: store.intakeSince(period.since),
-    limits: [],
+    limits: limitsOf(reports, silent, mjdOf(now)),
+    falseAlerts: falseAlertCount(
+      events.map(({ event }) => event),
+      configuration.budget.falseAlertsPerYear,
+      mjdOf(now),
+    ),
     mail: {
       waiting: counts.queued + counts.attempting,
       refused: counts.refused,
@@ -61,6 +68,22 @@ export function morningReview(sources: MorningSources, date?: string): MorningRe
       ...clockStepWarnings(sources),
     ],
   };
+}
+
+/** The blindest first. Of a pulsar that is no longer observed as it was, the limit says nothing. */
+function limitsOf(
+  reports: readonly PulsarReportRow[],
+  silent: MorningReview['silentPulsars'],
+  today: number,
+): MorningReview['limits'] {
+  const missed = new Set(silent.map(({ pulsar }) => pulsar));
+  return reports
+    .flatMap(({ pulsar, lastArrivalMjd, limit }) => {
+      if (!limit || limit.deltaNuOverNu90 === null || limit.delayDays90 === null) return [];
+      if (missed.has(pulsar) || lastArrivalMjd === null || today - lastArrivalMjd > MOST_DAYS_MISSED) return [];
+      return [{ pulsar, deltaNuOverNu90: limit.deltaNuOverNu90, delayDays90: limit.delayDays90 }];
+    })
+    .sort((a, b) => b.deltaNuOverNu90 - a.deltaNuOverNu90);
 }
 
 type Period = Pick<MorningReview, 'date' | 'since' | 'until'>;

@@ -1,4 +1,4 @@
-import { existsSync } from 'node:fs';
+import { existsSync, readFileSync } from 'node:fs';
 import { dirname, join } from 'node:path';
 import { fileURLToPath } from 'node:url';
 
@@ -11,4 +11,11 @@ export function packageRoot(): string {
     folder = parent;
   }
   return folder;
+}
+
+let version: string | null = null;
+
+export function programVersion(): string {
+  version ??= (JSON.parse(readFileSync(join(packageRoot(), 'package.json'), 'utf8')) as { version: string }).version;
+  return version;
 }

@@ -1,16 +1,14 @@
-import type { PulsarReport } from '../detectors/report.ts';
 import { mjdOf } from './clock.ts';
-import { reasonOf } from './errors.ts';
+import type { Stage } from './progress.ts';
 import { bringToBarycentre, retime } from './stages/arrival.ts';
 import { type Consequences, consequencesOf, NO_CONSEQUENCES } from './stages/consequences.ts';
-import { reportRow } from './stages/decision.ts';
-import { followPulsar, type LogChanges } from './stages/deviation.ts';
 import { type FileInHand, type Intake, isOnRecord, SET_ASIDE, takeRows } from './stages/intake.ts';
+import { writeCurrentModels } from './stages/modelFiles.ts';
 import { noteDecided, noteOpen, openDecisions } from './stages/openDecisions.ts';
-import { PulsarWatches } from './stages/pulsarWatches.ts';
+import { SiteWatches } from './stages/sites.ts';
 import type { Station } from './station.ts';
 import { step } from './store/crashStep.ts';
-import { emptyBatch, type IntakeBatch, type NewArrival, type PulsarReportRow, storageTrouble } from './store/index.ts';
+import { emptyBatch, type IntakeBatch, type NewArrival, storageTrouble } from './store/index.ts';
 
 /**
  * The way of the data, as DEVELOPERS.md draws it. A file comes in at one end; what a person is shown comes out at the other. Everything
@@ -19,8 +17,8 @@ import { emptyBatch, type IntakeBatch, type NewArrival, type PulsarReportRow, st
  *     file       a watcher or `replay` hands over a file that stands still
  *     intake     its rows, against those on record                          stages/intake
  *     arrival    new rows at the barycentre                                 stages/arrival
- *     deviation  the detector follows each pulsar through its log           stages/deviation
- *     decision   steps of one site are one event                            stages/decision
+ *     deviation  the detector follows each pulsar through its log           stages/sites, stages/deviation
+ *     decision   a step of a site's clock is one event, of the site         stages/decision
  *     event      what that means for the events on record                   stages/eventChanges
  *     alert      whom to tell, and the mail                                 stages/alert
  *     review     all of it on record, for the page and for people           store
@@ -82,14 +80,17 @@ class Stopped extends Error {
 /** Takes one file after the other: calls wait for those before them. */
 export class Pipeline {
   readonly #station: Station;
-  readonly #watches = new PulsarWatches();
+  readonly #watches = new SiteWatches();
+  readonly #stage: Stage | null;
   #last: Promise<unknown> = Promise.resolve();
   #stopping = false;
   /** Paths whose reading storage trouble cut off, with its beginning noted. */
   readonly #interrupted = new Set<string>();
 
-  constructor(station: Station) {
+  /** @param stage told of every step, and when nothing is in hand */
+  constructor(station: Station, stage: Stage | null = null) {
     this.#station = station;
+    this.#stage = stage;
   }
 
   takeIn(file: FileInHand, options: TakeInOptions): Promise<TakenIn> {
@@ -132,9 +133,14 @@ export class Pipeline {
   }
 
   #inTurn<Result>(work: () => Promise<Result>): Promise<Result> {
-    const mine = this.#last.then(() => {
+    const mine = this.#last.then(async () => {
       if (this.#stopping) throw new Stopped();
-      return work();
+      this.#stage?.step();
+      try {
+        return await work();
+      } finally {
+        this.#stage?.rest();
+      }
     });
     this.#last = mine.catch(() => {});
     return mine;
@@ -207,13 +213,18 @@ export class Pipeline {
     options: DecideOptions,
   ): Promise<Consequences> {
     try {
-      const { reports, rows } = await this.#follow(pulsars, batch, options);
+      const { onPulsar = () => {} } = options;
+      const pause = () => this.#pause();
+      const decided = await this.#watches.follow(this.#station, pulsars, batch, { pause, onPulsar });
       for (let round = 1; round <= MOST_ROUNDS; round++) {
         const consequences =
-          rows.length === 0 ? NO_CONSEQUENCES : await consequencesOf(this.#station, { reports, rows }, options);
+          decided.rows.length === 0 ? NO_CONSEQUENCES : await consequencesOf(this.#station, decided, options);
         step('decided');
         const outcome = this.#station.store.commitIntake({ ...batch, ...consequences });
-        if (outcome.kind === 'committed') return consequences;
+        if (outcome.kind === 'committed') {
+          await writeCurrentModels(this.#station, this.#watches, decided);
+          return consequences;
+        }
         this.#station.log.info({ event: outcome.eventId }, 'an event changed meanwhile: deciding again');
       }
       throw new Error('the events on record kept changing while they were decided about');
@@ -223,35 +234,11 @@ export class Pipeline {
     }
   }
 
-  /** The detector's work, pulsar by pulsar; between them the page, the mail and a signal to stop get their turn. */
-  async #follow(
-    pulsars: readonly string[],
-    changes: LogChanges,
-    { onPulsar }: DecideOptions,
-  ): Promise<{ reports: readonly PulsarReport[]; rows: readonly PulsarReportRow[] }> {
-    const reports: PulsarReport[] = [];
-    const rows: PulsarReportRow[] = [];
-    for (const [i, pulsar] of pulsars.entries()) {
-      if (this.#stopping) throw new Stopped();
-      try {
-        const report = followPulsar(this.#station, this.#watches, pulsar, changes);
-        reports.push(report);
-        rows.push(reportRow(this.#station, report));
-      } catch (error) {
-        if (storageTrouble(error) !== null) throw error;
-        rows.push(...this.#leftOpen(pulsar, error));
-      }
-      onPulsar?.(i + 1);
-      await new Promise((resolve) => setImmediate(resolve));
-    }
-    return { reports, rows };
-  }
-
-  /** One pulsar that cannot be decided about holds up no other, and loses no arrival: it is tried again at its next arrival and start. */
-  #leftOpen(pulsar: string, error: unknown): PulsarReportRow[] {
-    this.#station.log.error({ pulsar, err: error }, 'no decision about this pulsar: a fault of the program');
-    const before = this.#station.store.pulsarReport(pulsar);
-    return before === null ? [] : [{ ...before, basis: `left open: ${reasonOf(error)}` }];
+  /** Between two pulsars the page, the mail and a signal to stop get their turn. */
+  async #pause(): Promise<void> {
+    if (this.#stopping) throw new Stopped();
+    this.#stage?.step();
+    await new Promise((resolve) => setImmediate(resolve));
   }
 
   #setAside({ file }: Intake, readings: number): TakenIn {

@@ -67,6 +67,8 @@ export interface EventChange {
   readonly at: string;
   /** In words; a verdict is one of the changes. */
   readonly what: string;
+  /** `mailed: size sharpened`, `not mailed: suspected only`; absent or null: from before this was kept. */
+  readonly alert?: string | null;
   /** As the detector held it then, its state included. */
   readonly event: PulsarEvent;
 }

@@ -29,7 +29,7 @@ export interface Station {
 }
 
 /** Grows when a change of the program makes old decisions worth taking again. */
-const DECISIONS_VERSION = 1;
+const DECISIONS_VERSION = 2;
 
 export function createStation(
   parts: Pick<Station, 'configuration' | 'store' | 'tables' | 'clock' | 'log' | 'reviewUrl'>,

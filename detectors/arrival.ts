@@ -58,6 +58,8 @@ export interface TimedArrival {
   readonly key: string;
   /** After a binary's orbit is removed (`emissionTdb`). */
   readonly tdb: Mjd;
+  /** MJD as the site's clock read; absent: the arrival came at the barycentre. */
+  readonly siteMjd?: number;
   readonly uncertaintyUs: number;
   readonly frequencyMhz: number;
   readonly site: string;

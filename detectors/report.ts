@@ -1,3 +1,4 @@
+import type { DetectionLimit } from './limits/detectionLimit.ts';
 import type { EventPicture, PulsarEvent } from './steps/pulsarEvent.ts';
 
 /** Strength of the random walks (turns, days) and of the measurement noise of one pulsar. */
@@ -37,11 +38,15 @@ export interface PulsarReport {
   /** False until one pulse count has won: alerts are held until then. */
   readonly locked: boolean;
   readonly lastArrivalMjd: number | null;
+  /** The smallest glitch that would have been confirmed. */
+  readonly limit: DetectionLimit;
 }
 
 export interface DetectorSettings {
-  /** Natural-log posterior odds. */
+  /** Natural-log posterior odds that an event must reach whatever the pulsar's own null says. */
   readonly confirmLogOdds: number;
+  /** The pulsar's share of the operator's budget. */
+  readonly falseAlertsPerYear: number;
   readonly suspectLogOdds: number;
   /** How many recent gaps are candidates. */
   readonly windowArrivals: number;

@@ -1,7 +1,7 @@
 import { createHash } from 'node:crypto';
-import { access, constants, mkdir, open, rename } from 'node:fs/promises';
-import { join } from 'node:path';
+import { access, constants, mkdir } from 'node:fs/promises';
 import type { DeliveryOutcome, Mailer } from './mailer.ts';
+import { writeWhole } from './wholeFile.ts';
 
 /**
  * Mail into a folder, one file a message and recipient. The name follows from the message, so that a message delivered again replaces
@@ -13,7 +13,7 @@ export function folderMailer(folder: string): Mailer {
       const name = fileName(mime, recipient);
       try {
         await mkdir(folder, { recursive: true });
-        await writeWhole(folder, name, mime);
+        await writeWhole(folder, name, mime, 0o600);
         return { state: 'delivered', detail: name };
       } catch (error) {
         return failed(error);
@@ -29,25 +29,6 @@ export function folderMailer(folder: string): Mailer {
       }
     },
   };
-}
-
-/** The bytes are on disk under the final name, or the final name is as before: write, flush, rename, flush the folder. */
-async function writeWhole(folder: string, name: string, bytes: Buffer): Promise<void> {
-  const temporary = join(folder, `.${name}.tmp`);
-  const file = await open(temporary, 'w', 0o600);
-  try {
-    await file.writeFile(bytes);
-    await file.sync();
-  } finally {
-    await file.close();
-  }
-  await rename(temporary, join(folder, name));
-  const directory = await open(folder, 'r');
-  try {
-    await directory.sync();
-  } finally {
-    await directory.close();
-  }
 }
 
 /** `20230702T031000Z-1f0c….eml`: the message's own date, so that a listing is in order. */

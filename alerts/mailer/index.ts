@@ -4,6 +4,7 @@ import { smtpMailer } from './smtp.ts';
 
 export { compose, type MailParts, markPossibleDuplicate, safeFileName } from './compose.ts';
 export type { Delivery, DeliveryOutcome, Mailer, MailerDependencies, MailTimeouts, MailTransport } from './mailer.ts';
+export { writeWhole } from './wholeFile.ts';
 export { withoutPicture } from './withoutPicture.ts';
 
 /** @throws Error for a server that would get the mail over an open network in plain text */

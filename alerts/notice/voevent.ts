@@ -3,7 +3,7 @@ import type { PulsarEvent } from '../../detectors/steps/pulsarEvent.ts';
 import { type Markup, markup } from '../markup.ts';
 import { domainOf } from '../messageId.ts';
 import { dateOfMjd } from '../wording/dates.ts';
-import { eventName, explanationName, meaningOf } from '../wording/phrases.ts';
+import { DRILL_TEXT, eventName, explanationName, meaningOf } from '../wording/phrases.ts';
 import { whatParams } from './whatParams.ts';
 
 /**
@@ -58,7 +58,7 @@ ${position(event, context.model)}        </AstroCoords>
   <How>
     <Description>Step in the spin of a pulsar found from its pulse arrival times, brought to the solar-system barycentre (TDB), by comparing explanations; intervals hold 68 % probability.</Description>
   </How>
-${why(event)}${citations(event, context)}  <Description>${description(event)}</Description>
+${why(event)}${citations(event, context)}  <Description>${description(event, context.drill)}</Description>
 </voe:VOEvent>
 `;
 }
@@ -68,12 +68,13 @@ function identifier(event: PulsarEvent, contact: string, revision: number): stri
   return `ivo://${domainOf(contact)}/spinvigil#${event.id.replace(/[^A-Za-z0-9._+-]+/g, '_')}-r${revision}`;
 }
 
-function description(event: PulsarEvent): string {
+function description(event: PulsarEvent, drill: boolean): string {
   const vetted =
     event.state === 'accepted'
       ? 'Accepted by a reviewer.'
       : 'Found by a program and not yet accepted by a reviewer: to be vetted before it is announced.';
-  return `${event.pulsar}: ${eventName(event)}. ${meaningOf(event)} ${vetted}`;
+  const rehearsal = drill ? `${DRILL_TEXT} ` : '';
+  return `${rehearsal}${event.pulsar}: ${eventName(event)}. ${meaningOf(event)} ${vetted}`;
 }
 
 function position(event: PulsarEvent, model: PulsarModel | null): Markup | null {

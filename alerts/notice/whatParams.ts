@@ -16,7 +16,7 @@ export function whatParams(event: PulsarEvent, model: PulsarModel | null, revisi
     ...event.recovery.terms.flatMap(recovery),
     ...(model === null ? [] : reference(model)),
     ...evidence(event),
-    { name: 'revision', value: revision, ucd: 'meta.version', meaning: 'of this event on record' },
+    { name: 'revision', value: revision, whole: true, ucd: 'meta.version', meaning: 'of this event on record' },
   ];
   return [
     textParam('pulsar', event.pulsar, 'meta.id;meta.main'),
@@ -30,7 +30,10 @@ interface Param {
   readonly name: string;
   readonly value: number | null;
   readonly interval68?: Interval | null;
+  /** As VOUnits (IVOA Recommendation, version 1.0) spells it. */
   readonly unit?: string;
+  /** A count. */
+  readonly whole?: boolean;
   /** From the IVOA's controlled vocabulary (UCD1+). */
   readonly ucd?: string;
   readonly meaning: string;
@@ -133,6 +136,7 @@ function evidence(event: PulsarEvent): Param[] {
     {
       name: 'arrivals_used',
       value: event.arrivalsUsed,
+      whole: true,
       ucd: 'meta.number',
       meaning: 'arrivals that the numbers rest on',
     },
@@ -140,16 +144,16 @@ function evidence(event: PulsarEvent): Param[] {
     {
       name: 'false_alerts_per_year',
       value: event.falseAlertsPerYearAtThisLevel,
-      unit: 'yr-1',
+      unit: 'yr**-1',
       meaning: 'expected from noise alone in the whole programme at this level',
     },
   ];
 }
 
 /** The value, and its interval as two more numbers, in a group. What is not known is left out. */
-function numberParams({ name, value, interval68, unit, ucd, meaning }: Param): Markup[] {
+function numberParams({ name, value, interval68, unit, whole, ucd, meaning }: Param): Markup[] {
   if (value === null || !Number.isFinite(value)) return [];
-  const attributes = markup`${unit === undefined ? null : markup` unit="${unit}"`}${ucd === undefined ? null : markup` ucd="${ucd}"`} dataType="float"`;
+  const attributes = markup`${unit === undefined ? null : markup` unit="${unit}"`}${ucd === undefined ? null : markup` ucd="${ucd}"`} dataType="${whole ? 'int' : 'float'}"`;
   const main = markup`<Param name="${name}" value="${value}"${attributes}><Description>${meaning}</Description></Param>`;
   if (!interval68) return [main];
   const end = (which: string, x: number) => markup`<Param name="${name}_${which}" value="${x}"${attributes}/>`;

@@ -24,6 +24,11 @@ export function whatToCheck(event: PulsarEvent): string[] {
     'Other pulsars of that night: if they moved by the same time, it is the site and not the pulsar.',
     'A second site: does it see the same deviation?',
   ];
+  if (event.explanation === 'lost count')
+    return [
+      'The arrivals before and after: a wrong start model, a mislabelled pulsar or a change of the file format loses the count too.',
+      'Whether another group followed the pulsar through the gap: their count settles it at once.',
+    ];
   if (event.explanation === 'mode switching')
     return [...common, 'The pulse profiles before and after: did the shape change?'];
   if (event.explanation === 'dispersion step')
@@ -42,6 +47,10 @@ export function whatToObserve(event: PulsarEvent, picture: EventPicture | null):
   if (event.state === 'withdrawn' || event.state === 'rejected' || isSiteEvent(event)) return [];
   if (event.explanation === 'dispersion step')
     return ['Observe in two widely separated bands on one day: that tells dispersion from rotation.'];
+  if (event.explanation === 'lost count')
+    return [
+      'Twice on one day, some hours apart, and again after one, three and ten days: that settles the count soonest.',
+    ];
   const after = picture === null ? null : picture.points.filter((p) => p.used && p.mjd > picture.epochMjd).length;
   const advice: string[] = [];
   if (after !== null && after < FEW_ARRIVALS_AFTER) {

@@ -2,6 +2,7 @@ import type { PulsarEvent } from '../../detectors/steps/pulsarEvent.ts';
 import { oneLine } from '../markup.ts';
 import type { MorningReview } from '../morningReview.ts';
 import { epochText, mjdText, momentText, timeInWords } from './dates.ts';
+import { falseAlertLines } from './falseAlerts.ts';
 import { percent, plain, power } from './numbers.ts';
 import { isSiteEvent } from './phrases.ts';
 import { eventSheet } from './sheet.ts';
@@ -58,6 +59,7 @@ export function morningWords(review: MorningReview, timezone: string): MorningWo
     ),
     section('Pulse count not settled: no alerts from these', review.unlockedPulsars.map(oneLine)),
     { heading: 'What was looked at', lines: lookedAt(review, timezone) },
+    { heading: 'False alerts', lines: falseAlertLines(review.falseAlerts) },
   ].filter((s) => s.lines.length > 0);
   return { title: `Morning review ${oneLine(review.date)}`, summary: summaryOf(review), sections };
 }
@@ -121,17 +123,19 @@ function lookedAt(review: MorningReview, timezone: string): string[] {
   return [taken, ...limitLines(review)];
 }
 
+/** So many are read in the morning; the page and the command have all. */
+const BLINDEST = 7;
+
 function limitLines({ limits }: MorningReview): string[] {
-  const sorted = limits
-    .filter((l) => Number.isFinite(l.deltaNuOverNu90))
-    .toSorted((a, b) => a.deltaNuOverNu90 - b.deltaNuOverNu90);
-  const middle = sorted[Math.floor((sorted.length - 1) / 2)];
-  const worst = sorted.at(-1);
-  if (middle === undefined || worst === undefined) return [];
-  const line = `A glitch of Δν/ν = ${power(middle.deltaNuOverNu90)} or more would have been confirmed with 90 % probability in half of ${sorted.length} pulsars`;
-  return sorted.length === 1
-    ? [
-        `A glitch of Δν/ν = ${power(worst.deltaNuOverNu90)} or more would have been confirmed with 90 % probability in ${oneLine(worst.pulsar)}, within ${plain(worst.delayDays90, 2)} d.`,
-      ]
-    : [`${line}; the blindest is ${oneLine(worst.pulsar)}, ${power(worst.deltaNuOverNu90)}.`];
+  const known = limits.toSorted((a, b) => b.deltaNuOverNu90 - a.deltaNuOverNu90);
+  const middle = known[Math.floor(known.length / 2)];
+  if (middle === undefined) return [];
+  const one = ({ pulsar, deltaNuOverNu90, delayDays90 }: MorningReview['limits'][number]) =>
+    `${oneLine(pulsar)}: Δν/ν = ${power(deltaNuOverNu90)} or more, within ${plain(delayDays90, 2)} d`;
+  const lines = [
+    `A glitch would have been confirmed with 90 % probability${known.length === 1 ? '' : `, in half of ${known.length} pulsars from Δν/ν = ${power(middle.deltaNuOverNu90)} on`}. The blindest first:`,
+    ...known.slice(0, BLINDEST).map(one),
+  ];
+  const more = known.length - BLINDEST;
+  return more > 0 ? [...lines, `and ${more} that would have shown less (spinvigil limits lists them)`] : lines;
 }

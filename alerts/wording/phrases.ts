@@ -14,14 +14,15 @@ const MEANING: Readonly<Record<Explanation, string>> = {
   'slow spin-up': 'The pulsar appears to have spun up over days to weeks rather than at one instant.',
   'spin-down-rate change': 'The spin-down rate appears to have changed, with no step in the rotation frequency itself.',
   'mode switching':
-    'The deviations look like a switch between states of pulse shape and spin-down rate, not like a glitch.',
+    'The pulsar switches between two spin-down rates, back and forth: not a glitch. Later switches are followed without an alert.',
   'clock step':
     'Arrival times stepped by the same amount, as after a step of the site clock or a change of cabling or backend: not the pulsar.',
   'bad arrival': 'One arrival time stands off alone; those around it agree with the model.',
   'bad session': 'The arrival times of one session stand off together; the sessions around it agree with the model.',
   'dispersion step':
     'The step grows with the inverse square of the observing frequency: the dispersion measure changed, not the rotation.',
-  'lost count': 'The count of turns between arrivals was off by whole turns; with the right count no event is left.',
+  'lost count':
+    'The count of turns was lost: after a gap, or as the noise grew, no prediction tells one whole turn from the next. Alerts of this pulsar are held until one count has won again; a step that lies in the gap may stay unseen.',
 };
 
 export function meaningOf(event: PulsarEvent): string {
@@ -91,7 +92,11 @@ const REASON: Readonly<Record<AlertReason, string>> = {
     'WITHDRAWN: later or corrected arrivals took the evidence away. Please tell those you passed it on to.',
   'explanation changed': 'Update: the most probable explanation has changed.',
   'recovery first established': 'Update: a recovery is now established.',
-  'size sharpened': 'Update: the size is now known at least twice as well.',
+  'alias fell': 'Update: a size that had been possible, by whole turns between arrivals, has fallen out.',
+  'size sharpened': 'Update: the size is now known much better.',
+  'epoch sharpened': 'Update: the epoch is now known much better.',
+  'spin-down step sharpened': 'Update: the step in the spin-down rate is now known much better.',
+  'recovery sharpened': 'Update: the recovery is now known much better.',
   'suspected only': 'Suspected only: not mailed.',
   'in the digest only': 'Shown in the morning review.',
   historical: 'Confirmed by old arrivals: shown in the morning review.',
@@ -105,7 +110,11 @@ export const DRILL_TEXT =
 export const NO_PICTURE = 'The plot could not be drawn; the review page has the numbers.';
 export const POSSIBLE_DUPLICATE = 'possible duplicate';
 export const PICTURE_TEXT = 'Phase deviation with the fit, residual to the fit, and rotation frequency against time.';
-export const HEADINGS = { check: 'Check before you accept it', observe: 'What to observe next' } as const;
+export const HEADINGS = {
+  check: 'Check before you accept it',
+  observe: 'What to observe next',
+  history: 'What was believed when',
+} as const;
 export const reviewLine = 'Review page';
 
 /** Before the subject, where the mail must not be taken for a plain alert. */

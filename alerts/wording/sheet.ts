@@ -1,6 +1,7 @@
 import type { EventPicture, PulsarEvent, RecoveryTerm } from '../../detectors/steps/pulsarEvent.ts';
 import { oneLine } from '../markup.ts';
 import { CAUTION, rivalSizes, rivalText, whatToCheck, whatToObserve } from './advice.ts';
+import { contextRows } from './context.ts';
 import { civilEpoch, dateOfMjd, dayText, epochText, mjdText } from './dates.ts';
 import { isConstrained, NOT_CONSTRAINED, percent, plain, quantity } from './numbers.ts';
 import { eventName, explanationName, falseAlertText, meaningOf, stateText, subjectOf } from './phrases.ts';
@@ -30,7 +31,13 @@ export function eventSheet(event: PulsarEvent, picture: EventPicture | null, tim
     title: `${subjectOf(event)}: ${eventName(event)}`,
     size: sizeText(event),
     meaning: meaningOf(event),
-    rows: [...whenRows(event, picture, timezone), ...sizeRows(event), ...recoveryRows(event), ...trustRows(event)],
+    rows: [
+      ...whenRows(event, picture, timezone),
+      ...sizeRows(event),
+      ...recoveryRows(event),
+      ...trustRows(event),
+      ...contextRows(event),
+    ],
     caution: decided ? '' : CAUTION,
     check: decided ? [] : whatToCheck(event),
     observe: whatToObserve(event, picture),
@@ -104,7 +111,7 @@ function recoveryRows(event: PulsarEvent): SheetRow[] {
   if (event.deltaNuHz === null) return [];
   if (event.recovery.terms.length === 0) return [{ label: 'Recovery', value: NOT_CONSTRAINED }];
   const rows = event.recovery.terms.map((term, i) => ({
-    label: event.recovery.terms.length > 1 ? `Recovery ${i + 1}` : 'Recovery',
+    label: `${term.kind === 'delayed rise' ? 'Delayed rise' : 'Recovery'}${event.recovery.terms.length > 1 ? ` ${i + 1}` : ''}`,
     value: termText(term),
   }));
   return event.recovery.q === null || rows.length < 2
@@ -120,7 +127,7 @@ function termText(term: RecoveryTerm): string {
     unit: 'd',
     scale: 'power',
   });
-  return `Q = ${q}, τ = ${tau}`;
+  return term.kind === 'delayed rise' ? `Δνⱼ/Δν = ${q}, τ = ${tau}` : `Q = ${q}, τ = ${tau}`;
 }
 
 function trustRows(event: PulsarEvent): SheetRow[] {

@@ -2,8 +2,6 @@ import type { QuarantinedRow } from '../../alerts/index.ts';
 import type { ArrivalVerdict } from '../../detectors/report.ts';
 import { formatMjd } from '../../detectors/time/mjd.ts';
 import { systemClock } from '../clock.ts';
-import { closestName } from '../closestName.ts';
-import { EXIT, OperatorError } from '../errors.ts';
 import { silentLog } from '../log.ts';
 import type { ArrivalRecord } from '../records.ts';
 import { followPulsar } from '../stages/deviation.ts';
@@ -11,7 +9,7 @@ import { PulsarWatches } from '../stages/pulsarWatches.ts';
 import { createStation } from '../station.ts';
 import { loadTables } from '../tables/loadTables.ts';
 import { arrivalsCsv, arrivalTable } from './arrivalForms.ts';
-import { withRecord } from './record.ts';
+import { requireModel, withRecord } from './record.ts';
 import { printJson, type Terminal } from './terminal.ts';
 
 /**
@@ -43,13 +41,7 @@ export async function arrivals(
 ): Promise<void> {
   const { tables } = loadTables();
   await withRecord(options.config, (store, configuration) => {
-    if (!configuration.models.has(pulsar)) {
-      const near = closestName(pulsar, [...configuration.models.keys()]);
-      throw new OperatorError(`there is no model of ${pulsar}${near === null ? '' : ` (did you mean ${near}?)`}`, {
-        exitCode: EXIT.wrongUsage,
-        advice: `models stand in ${configuration.modelsFolder}`,
-      });
-    }
+    requireModel(pulsar, configuration);
     const parts = { configuration, store, tables, clock: systemClock, log: silentLog(), reviewUrl: () => null };
     const report = followPulsar(createStation(parts), new PulsarWatches(), pulsar, NO_CHANGES);
     const verdicts = new Map(report.arrivals.map((verdict) => [verdict.key, verdict]));

@@ -1,5 +1,6 @@
 import { eventJson, eventsCsv, voevent } from '../../alerts/index.ts';
 import { systemClock } from '../clock.ts';
+import { citedRevision } from '../stages/told.ts';
 import type { NoticeForm } from './choices.ts';
 import { eventOf, withRecord } from './record.ts';
 import type { Terminal } from './terminal.ts';
@@ -17,7 +18,8 @@ export async function exportEvent(
     else {
       const model = event.site === null ? (models.get(event.pulsar) ?? null) : null;
       const issuedAt = systemClock.now();
-      terminal.out(voevent(event, { observatory, model, revision, issuedAt, cites: null, drill: false }));
+      const cites = citedRevision({ store }, event.id, revision);
+      terminal.out(voevent(event, { observatory, model, revision, issuedAt, cites, drill: false }));
     }
   });
 }

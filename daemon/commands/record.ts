@@ -1,3 +1,4 @@
+import type { PulsarModel } from '../../detectors/spin/pulsarModel.ts';
 import { closestName } from '../closestName.ts';
 import type { Configuration } from '../config/configuration.ts';
 import { EXIT, OperatorError } from '../errors.ts';
@@ -25,6 +26,17 @@ export function requirePulsar(name: string, known: readonly string[]): void {
   const near = closestName(name, known);
   throw new OperatorError(`there is no pulsar ${name}${near === null ? '' : ` (did you mean ${near}?)`}`, {
     exitCode: EXIT.wrongUsage,
+  });
+}
+
+/** The start model of a pulsar. */
+export function requireModel(pulsar: string, { models, modelsFolder }: Configuration): PulsarModel {
+  const model = models.get(pulsar);
+  if (model !== undefined) return model;
+  const near = closestName(pulsar, [...models.keys()]);
+  throw new OperatorError(`there is no model of ${pulsar}${near === null ? '' : ` (did you mean ${near}?)`}`, {
+    exitCode: EXIT.wrongUsage,
+    advice: `models stand in ${modelsFolder}`,
   });
 }
 

@@ -1,4 +1,4 @@
-import { eventSheet } from '../../alerts/index.ts';
+import { eventSheet, historyLines } from '../../alerts/index.ts';
 import type { EventRecord, OutboxRecord } from '../records.ts';
 import { eventOf, withRecord } from './record.ts';
 import { table } from './table.ts';
@@ -34,10 +34,7 @@ function eventText(record: EventRecord, sent: readonly OutboxRecord[], timezone:
     ...lines(sheet.caution === '' ? [] : [sheet.caution]),
     ...titled('Check before accepting', sheet.check),
     ...titled('What to observe next', sheet.observe),
-    ...titled(
-      'History',
-      record.history.map(({ at, revision, what }) => `${at}  revision ${revision}: ${what}`),
-    ),
+    ...titled('History', historyLines(record.history)),
     ...titled(
       'Verdicts',
       record.verdicts.map(({ at, verdict, by, note }) => `${at}  ${verdict} by ${by}${note === '' ? '' : `: ${note}`}`),

@@ -5,6 +5,8 @@ import type { ClockTable } from '../../detectors/time/siteClock.ts';
 import type { TtBipmTable } from '../../detectors/time/ttBipm.ts';
 import type { Layout } from '../intake/layouts/read.ts';
 import type { TextColumns } from '../intake/layouts/textColumns.ts';
+import type { HeartbeatSettings } from './heartbeatSettings.ts';
+import type { ReviewSettings } from './reviewSettings.ts';
 
 /** The whole of what the operator set: `spinvigil.toml`, the models folder and the clock tables, checked and frozen. Paths are absolute. */
 export interface Configuration {
@@ -15,10 +17,13 @@ export interface Configuration {
   readonly sites: readonly Site[];
   readonly feeds: readonly Feed[];
   readonly modelsFolder: string;
+  /** Where the current model of each pulsar is written for others; null: nowhere. */
+  readonly currentModelsFolder: string | null;
   readonly models: ReadonlyMap<string, PulsarModel>;
   readonly budget: { readonly falseAlertsPerYear: number };
   readonly mail: MailSettings;
-  readonly review: { readonly host: string; readonly port: number; readonly reviewers: readonly string[] };
+  readonly review: ReviewSettings;
+  readonly heartbeat: HeartbeatSettings;
 }
 
 /** Tables that the operator keeps beside the built-in ones. */
@@ -60,6 +65,8 @@ export interface MailSettings {
   readonly digestCron: string;
   /** An event that an arrival older than this confirms is shown in the digest and mailed to nobody. */
   readonly historicalAfterDays: number;
+  /** An update is mailed when a quantity is known so many times as well as the last mail said. */
+  readonly updateWhenSharperBy: number;
 }
 
 export interface SmtpTransport {

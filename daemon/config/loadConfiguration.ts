@@ -4,11 +4,12 @@ import type { ConfigProblem, Configuration, Feed, MailSettings, Site } from './c
 import { readEarth } from './earth.ts';
 import { readFeeds } from './feeds.ts';
 import { checkOverlaps, checkStateFolder, type NamedFolder } from './folders.ts';
-import { parseListen } from './listenAddress.ts';
+import { readHeartbeat } from './heartbeatSettings.ts';
 import { readMail, type Surroundings } from './mailSettings.ts';
 import { loadModels } from './models.ts';
+import { readReview } from './reviewSettings.ts';
 import { createSectionReader, type SectionReader } from './sectionReader.ts';
-import { budgetTable, modelsTable, observatoryTable, reviewTable, rootTable, stateTable } from './sections.ts';
+import { budgetTable, modelsTable, observatoryTable, rootTable, stateTable } from './sections.ts';
 import { readSites } from './sites.ts';
 import { readTextFile } from './textFile.ts';
 import { isFault, parseToml } from './tomlDocument.ts';
@@ -69,15 +70,22 @@ function readParts(reader: SectionReader, around: Surroundings, problems: Config
   const modelsSection = reader.read(['models'], modelsTable);
   const budget = reader.read(['budget'], budgetTable);
   const mail = readMail(reader, around);
-  const review = readReview(reader);
 
   const stateFolder = state && around.absolute(state.folder);
   if (stateFolder !== null)
     checkStateFolder(reader, { title: 'the state folder', path: ['state', 'folder'], folder: stateFolder });
+  const review = readReview(reader, around, stateFolder);
+  const heartbeat = readHeartbeat(reader);
   const modelsFolder = modelsSection && around.absolute(modelsSection.folder);
-  checkOverlaps(reader, feedFolders(feeds), otherFolders({ stateFolder, modelsFolder, mail, file: reader.file }));
+  const writeFolder = modelsSection?.write_folder;
+  const currentModelsFolder = writeFolder === undefined ? null : around.absolute(writeFolder);
+  const others = otherFolders({ stateFolder, modelsFolder, mail, file: reader.file });
+  const written = currentModels(currentModelsFolder);
+  checkOverlaps(reader, feedFolders(feeds), [...others, ...written]);
+  checkOverlaps(reader, written, others);
   const models = modelsFolder === null ? null : loadModels(modelsFolder, shelf, problems);
-  return { observatory, stateFolder, earth, sites, feeds, modelsFolder, models, budget, mail, review };
+  const folders = { stateFolder, modelsFolder, currentModelsFolder };
+  return { observatory, ...folders, earth, sites, feeds, models, budget, mail, review, heartbeat };
 }
 
 function assemble(file: string, parts: Parts): Configuration {
@@ -89,10 +97,12 @@ function assemble(file: string, parts: Parts): Configuration {
     sites: parts.sites.map(sound<Site>),
     feeds: parts.feeds.map(sound<Feed>),
     modelsFolder: sound(parts.modelsFolder),
+    currentModelsFolder: parts.currentModelsFolder,
     models: sound(parts.models),
     budget: { falseAlertsPerYear: sound(parts.budget).false_alerts_per_year },
     mail: sound<MailSettings>(parts.mail),
     review: sound(parts.review),
+    heartbeat: sound(parts.heartbeat),
   };
 }
 
@@ -102,23 +112,16 @@ function sound<Part>(part: Part | null): Part {
   return part;
 }
 
-function readReview(reader: SectionReader): Configuration['review'] | null {
-  const table = reader.has(['review']) ? reader.read(['review'], reviewTable) : reviewTable.parse({});
-  if (table === null) return null;
-  const twice = table.reviewers.findIndex((name, index) => table.reviewers.indexOf(name) < index);
-  if (twice >= 0) reader.error(['review', 'reviewers', twice], `"${table.reviewers[twice]}" stands there twice`);
-  const address = parseListen(table.listen);
-  if ('problem' in address) {
-    reader.error(['review', 'listen'], address.problem);
-    return null;
-  }
-  return { ...address, reviewers: table.reviewers };
-}
-
 function feedFolders(feeds: readonly (Feed | null)[]): NamedFolder[] {
   return feeds.flatMap((feed, index) =>
     feed === null ? [] : [{ title: `feed "${feed.name}"`, path: ['feed', index, 'folder'], folder: feed.folder }],
   );
+}
+
+/** Models that we write are not models that we read: else the program would follow itself. */
+function currentModels(folder: string | null): NamedFolder[] {
+  const title = 'the folder of current models';
+  return folder === null ? [] : [{ title, path: ['models', 'write_folder'], folder }];
 }
 
 function otherFolders(parts: {

@@ -1,4 +1,5 @@
 import type { z } from 'zod';
+import { isLoopback } from '../loopback.ts';
 import type { FolderTransport, MailSettings, SmtpTransport } from './configuration.ts';
 import { readMailPassword } from './secrets.ts';
 import type { SectionReader } from './sectionReader.ts';
@@ -26,7 +27,8 @@ export function readMail(reader: SectionReader, around: Surroundings): MailSetti
     table.transport === 'smtp' ? smtpTransport(reader, table, around) : folderTransport(reader, table, around);
   if (transport === null || twice >= 0) return null;
   const { from, to, timezone, digest_cron: digestCron, historical_after_days: historicalAfterDays } = table;
-  return { transport, from, to, timezone, digestCron, historicalAfterDays };
+  const updateWhenSharperBy = table.update_when_sharper_by;
+  return { transport, from, to, timezone, digestCron, historicalAfterDays, updateWhenSharperBy };
 }
 
 function folderTransport(reader: SectionReader, table: MailTable, around: Surroundings): FolderTransport | null {
@@ -62,9 +64,4 @@ function smtpTransport(reader: SectionReader, table: MailTable, around: Surround
   }
   if (!sound || host === undefined) return null;
   return { kind: 'smtp', host, port: table.port ?? USUAL_PORT[secure], secure, user, passwordFile };
-}
-
-/** Names and addresses of this machine alone. */
-export function isLoopback(host: string): boolean {
-  return host === 'localhost' || host === '::1' || /^127(?:\.[0-9]{1,3}){3}$/.test(host);
 }

@@ -1,4 +1,5 @@
 import { closeSync, constants, fstatSync, openSync, readSync } from 'node:fs';
+import { dirname } from 'node:path';
 import { inspect } from 'node:util';
 
 /**
@@ -46,8 +47,17 @@ export function readMailPassword(file: string | null, environment: NodeJS.Proces
   return { secret: new Secret(value) };
 }
 
-/** Refuses a file that others can read, that is a link, or that does not hold one line. The complaint says what to run. */
+/** Refuses a file that does not hold one line, or that is not the owner's alone. The complaint says what to run. */
 export function readSecretFile(file: string): SecretResult {
+  const read = readPrivateFile(file, LONGEST_SECRET_BYTES);
+  return 'problem' in read ? read : secretOf(read.bytes, file);
+}
+
+/** The bytes of a file that its owner alone can read; refuses links and anything that others could have read or written. */
+export function readPrivateFile(
+  file: string,
+  longestBytes: number,
+): { readonly bytes: Buffer } | { readonly problem: string } {
   let descriptor: number;
   try {
     descriptor = openSync(file, constants.O_RDONLY | constants.O_NOFOLLOW | constants.O_NONBLOCK | constants.O_NOCTTY);
@@ -57,23 +67,33 @@ export function readSecretFile(file: string): SecretResult {
   try {
     const stat = fstatSync(descriptor);
     if (!stat.isFile()) return { problem: `${file} is not a regular file` };
-    if ((stat.mode & 0o077) !== 0) {
+    if ((stat.mode & (isCredential(file) ? 0o037 : 0o077)) !== 0) {
       return { problem: `${file} can be read or written by others than its owner; run: chmod 600 ${shellWord(file)}` };
     }
     const self = process.geteuid?.();
     if (self !== undefined && stat.uid !== self && stat.uid !== 0) {
       return { problem: `${file} belongs to another user; run: chown ${self} ${shellWord(file)}` };
     }
-    const bytes = Buffer.alloc(LONGEST_SECRET_BYTES + 1);
-    return secretOf(bytes.subarray(0, readSync(descriptor, bytes, 0, bytes.length, 0)), file);
+    const bytes = Buffer.alloc(longestBytes + 1);
+    const read = bytes.subarray(0, readSync(descriptor, bytes, 0, bytes.length, 0));
+    if (read.length > longestBytes)
+      return { problem: `${file} holds more than ${longestBytes} bytes: not what belongs here` };
+    return { bytes: read };
   } finally {
     closeSync(descriptor);
   }
 }
 
+/**
+ * One that systemd hands over (LoadCredential). It grants the service's user reading by an access list, whose mask stat(2) shows as the
+ * group's right (from memory, of systemd.exec(5) and acl(5)); the folder itself lets nobody else in.
+ */
+function isCredential(file: string): boolean {
+  const { CREDENTIALS_DIRECTORY } = process.env;
+  return CREDENTIALS_DIRECTORY !== undefined && dirname(file) === CREDENTIALS_DIRECTORY;
+}
+
 function secretOf(bytes: Buffer, file: string): SecretResult {
-  if (bytes.length > LONGEST_SECRET_BYTES)
-    return { problem: `${file} holds more than ${LONGEST_SECRET_BYTES} bytes: not a password` };
   const value = bytes.toString('utf8').replace(/\r?\n$/, '');
   if (value === '') return { problem: `${file} is empty; write the password on its first line` };
   // A tab or any other control character cannot have been meant either.

@@ -1,5 +1,5 @@
 import { z } from 'zod';
-import { DEFAULT_HISTORICAL_DAYS } from '../../alerts/index.ts';
+import { DEFAULT_HISTORICAL_DAYS, DEFAULT_SHARPER_BY } from '../../alerts/index.ts';
 import { LAYOUTS } from '../intake/layouts/read.ts';
 import { cronProblem } from './cronText.ts';
 import { mailAddress, name, numberBetween, oneOf, path, words } from './fields.ts';
@@ -18,6 +18,7 @@ export const rootTable = z.strictObject({
   budget: nested,
   mail: nested,
   review: nested,
+  heartbeat: nested,
 });
 
 export const observatoryTable = z.strictObject({ name: words, contact: words });
@@ -46,7 +47,7 @@ export const feedTable = z.strictObject({
   expect_every_hours: numberBetween(0.01, 100_000, 'h').optional(),
 });
 
-export const modelsTable = z.strictObject({ folder: path });
+export const modelsTable = z.strictObject({ folder: path, write_folder: path.optional() });
 
 export const budgetTable = z.strictObject({ false_alerts_per_year: numberBetween(1e-6, 1000, 'per year') });
 
@@ -70,6 +71,7 @@ export const mailTable = z.strictObject({
     error: ({ input }) => `"${String(input)}" is not a time zone; write an IANA name such as "Europe/Berlin" or "UTC"`,
   }),
   historical_after_days: numberBetween(1, 1_000_000, 'd').default(DEFAULT_HISTORICAL_DAYS),
+  update_when_sharper_by: numberBetween(1.1, 1000, '(a factor)').default(DEFAULT_SHARPER_BY),
   digest_cron: z.string().superRefine((text, context) => {
     const problem = cronProblem(text);
     if (problem !== null) context.addIssue({ code: 'custom', message: problem });
@@ -79,7 +81,42 @@ export const mailTable = z.strictObject({
 export const reviewTable = z.strictObject({
   listen: z.string().default('127.0.0.1:8417'),
   reviewers: z.array(name).default([]),
+  password_file: path.optional(),
+  tls_certificate_file: path.optional(),
+  tls_key_file: path.optional(),
+  behind_proxy: z
+    .string()
+    .refine(isOrigin, 'must be the address that browsers use, without a path, such as "https://watch.example.org"')
+    .optional(),
+  proxy_address: z.array(z.string()).min(1, 'must name at least one IP address').optional(),
+  monitor_token_file: path.optional(),
 });
+
+const heartbeatUrl = z
+  .string()
+  .refine(
+    isWebAddress,
+    'must be an http or https address without user name, such as "https://alive.example.org/watch"',
+  );
+
+export const heartbeatTable = z.strictObject({
+  url: heartbeatUrl.optional(),
+  mail_blocked_url: heartbeatUrl.optional(),
+  every_minutes: numberBetween(1, 1440, 'minutes').default(5),
+  mail_to: z.array(mailAddress).min(1, 'must name at least one recipient').optional(),
+  mail_every_hours: numberBetween(0.1, 1000, 'h').default(6),
+});
+
+function isOrigin(text: string): boolean {
+  const url = URL.parse(text);
+  return url !== null && (url.protocol === 'https:' || url.protocol === 'http:') && url.origin === text;
+}
+
+function isWebAddress(text: string): boolean {
+  const url = URL.parse(text);
+  if (url === null || !['http:', 'https:'].includes(url.protocol)) return false;
+  return url.username === '' && url.password === '' && url.hash === '' && !/[\s\p{Cc}]/u.test(text);
+}
 
 function isTimeZone(text: string): boolean {
   if (!/^[A-Za-z]/.test(text)) return false;

@@ -27,6 +27,10 @@ export interface ReviewDesk {
   /** Newest first. */
   outbox(most: number): readonly OutboxRecord[];
   health(): WatchHealth;
+  /** What the page Health shows beside the problems. */
+  vitalSigns(): VitalSigns;
+  /** For a monitoring system: OpenMetrics text. */
+  metrics(): string;
   /** One transaction; nothing is recorded unless the event still stands at `expectedRevision`. */
   recordVerdict(order: VerdictOrder): VerdictOutcome;
 }
@@ -61,6 +65,42 @@ export interface WatchHealth {
   readonly ok: boolean;
   /** For a person, without paths or secrets. Empty when ok. */
   readonly problems: readonly string[];
+}
+
+/** How the watch stands in numbers. */
+export interface VitalSigns {
+  readonly versions: { readonly program: string; readonly node: string; readonly sqlite: string };
+  readonly startedAt: string;
+  readonly recordBytes: number;
+  readonly residentBytes: number;
+  readonly stages: readonly StageSign[];
+  readonly tables: readonly TableSign[];
+  readonly heartbeats: readonly HeartbeatSign[];
+}
+
+/** A part of the daemon that must go on making progress. */
+export interface StageSign {
+  readonly name: string;
+  /** Nothing is in hand, so that none is expected. */
+  readonly resting: boolean;
+  readonly secondsSinceProgress: number;
+  readonly limitSeconds: number;
+  readonly late: boolean;
+}
+
+export interface TableSign {
+  readonly name: string;
+  /** Null: it does not end. */
+  readonly endsMjd: number | null;
+  readonly state: 'good' | 'ends soon' | 'ended';
+}
+
+export interface HeartbeatSign {
+  /** Without the address: it may be a secret. */
+  readonly way: 'web' | 'mail';
+  readonly lastSentAt: string | null;
+  /** Why the last one was held back or did not arrive; null: it did. */
+  readonly trouble: string | null;
 }
 
 export interface VerdictOrder {

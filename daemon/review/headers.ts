@@ -26,3 +26,6 @@ export const SECURITY_HEADERS: readonly (readonly [name: string, value: string])
   ['Referrer-Policy', 'same-origin'],
   ['Permissions-Policy', 'camera=(), geolocation=(), microphone=()'],
 ];
+
+/** RFC 6797: the browser does not come back in plain HTTP. Sent under TLS alone. */
+export const TLS_ONLY_HEADER = ['Strict-Transport-Security', 'max-age=31536000'] as const;

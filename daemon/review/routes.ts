@@ -1,27 +1,34 @@
 import { randomUUID } from 'node:crypto';
-import { type Context, Hono } from 'hono';
+import { Hono } from 'hono';
 import { bodyLimit } from 'hono/body-limit';
 import { eventJson, eventsCsv } from '../../alerts/index.ts';
+import type { Session } from './access/sessions.ts';
+import {
+  type AccessParts,
+  addAccessRoutes,
+  barrier,
+  type ReviewContext as Context,
+  type ReviewEnvironment,
+} from './accessRoutes.ts';
 import type { ReviewDesk } from './desk.ts';
 import { MARK } from './looks/mark.ts';
 import { SCRIPT } from './looks/script.ts';
 import { STYLE } from './looks/style.ts';
 import { eventPage } from './pages/event.ts';
+import { healthPage } from './pages/health.ts';
 import { type Frame, type Html, type PageContent, page, plainPage, type Section } from './pages/layout.ts';
+import { accountPage } from './pages/login.ts';
 import { type FeedsContent, feedsPage, mailPage, pulsarsPage } from './pages/overviews.ts';
 import { type TonightContent, tonightPage } from './pages/tonight.ts';
 import type { RefusedVerdict } from './pages/verdict.ts';
 import { eventPath, subjectOf } from './pages/wording.ts';
 import { complaintAbout, LARGEST_FORM_BYTES, readSubmittedVerdict, type SubmittedVerdict } from './verdictForm.ts';
-import type { VerdictTokens } from './verdictToken.ts';
 
-export interface ReviewApp {
+export interface ReviewApp extends AccessParts {
   readonly desk: ReviewDesk;
-  readonly observatory: string;
   /** Empty: any name may sign. */
   readonly reviewers: readonly string[];
   readonly now: () => Date;
-  readonly tokens: VerdictTokens;
   /** Told of every fault; the visitor sees only its id. */
   readonly onFault: (fault: ReviewFault) => void;
 }
@@ -31,37 +38,49 @@ export interface ReviewFault {
   readonly error: unknown;
 }
 
+/** OpenMetrics 1.0, “Content-Type”. */
+const OPEN_METRICS_TYPE = 'application/openmetrics-text; version=1.0.0; charset=utf-8';
 const LONGEST_LIST = 200;
 const RECENT_DECISIONS = 20;
 
 /** The closed list of what the page answers. Nothing is read from disk; what is not listed is 404. */
-export function createReviewApp(app: ReviewApp): Hono {
+export function createReviewApp(app: ReviewApp): Hono<ReviewEnvironment> {
   const { desk } = app;
-  const frame = (): Frame => ({
+  const frame = (c: Context): Frame => ({
     observatory: app.observatory,
     now: app.now(),
     version: desk.version(),
     health: desk.health(),
+    reviewer: c.get('session')?.reviewer ?? null,
   });
   const show: Show = (c, contentOf, status = 200) => {
     // The version is read before the content: what changes in between is then noticed by the page's next look.
-    const around = frame();
+    const around = frame(c);
     const content = contentOf();
     return content === null ? unknownEvent(c) : c.html(page(around, content), status);
   };
 
-  const routes = new Hono();
+  const routes = new Hono<ReviewEnvironment>();
+  routes.use(barrier(app));
   const sections: readonly (readonly [path: string, name: Section, main: () => Html])[] = [
     ['/', 'Tonight', () => tonightPage(tonightOf(desk))],
     ['/pulsars', 'Pulsars', () => pulsarsPage(desk.pulsars())],
     ['/feeds', 'Feeds', () => feedsPage(feedsOf(desk))],
     ['/mail', 'Mail', () => mailPage(desk.outbox(LONGEST_LIST), LONGEST_LIST)],
+    ['/health', 'Health', () => healthPage(desk.vitalSigns(), app.now())],
   ];
   for (const [path, name, main] of sections) {
     routes.get(path, (c) => show(c, () => ({ title: name, section: name, main: main() })));
   }
   addEventRoutes(routes, app, show);
   addMachineRoutes(routes, desk);
+  addAccessRoutes(routes, app);
+  routes.get('/account', (c) => {
+    const session = c.get('session');
+    if (session === null) return c.redirect('/login', 303);
+    const token = app.tokens.issueFor('log out', session.id);
+    return show(c, () => ({ title: 'Account', section: null, main: accountPage(session.reviewer, token) }));
+  });
 
   routes.get('/assets/review.css', (c) => c.body(STYLE, 200, { 'Content-Type': 'text/css; charset=utf-8' }));
   routes.get('/assets/review.js', (c) => c.body(SCRIPT, 200, { 'Content-Type': 'text/javascript; charset=utf-8' }));
@@ -98,7 +117,7 @@ function unknownEvent(c: Context): Response | Promise<Response> {
   return c.html(plainPage('No such event', ['No event on record has this id.']), 404);
 }
 
-function addEventRoutes(routes: Hono, app: ReviewApp, show: Show): void {
+function addEventRoutes(routes: Hono<ReviewEnvironment>, app: ReviewApp, show: Show): void {
   const { desk } = app;
   const showEvent = (c: Context, id: string, refused: RefusedVerdict | null, status: 200 | 403 | 409 | 422) =>
     show(
@@ -106,8 +125,10 @@ function addEventRoutes(routes: Hono, app: ReviewApp, show: Show): void {
       () => {
         const record = desk.event(id);
         if (record === null) return null;
-        const token = app.tokens.issue(record.event.id, record.revision);
-        const main = eventPage(record, { token, reviewers: app.reviewers, refused });
+        const session = c.get('session');
+        const token = app.tokens.issue(record.event.id, record.revision, session?.id);
+        const form = { token, reviewers: app.reviewers, signer: session?.reviewer ?? null, refused };
+        const main = eventPage(record, form);
         return { title: subjectOf(record.event), section: null, main };
       },
       status,
@@ -149,7 +170,7 @@ function addEventRoutes(routes: Hono, app: ReviewApp, show: Show): void {
     if (submitted === null) {
       return c.html(plainPage('Malformed form', ['The form could not be read. Nothing was changed.']), 400);
     }
-    const refusal = signVerdict(app, id, submitted);
+    const refusal = signVerdict(app, id, submitted, c.get('session'));
     if (refusal === 'signed') return c.redirect(eventPath(id), 303);
     return showEvent(c, id, refusal.refused, refusal.status);
   });
@@ -160,13 +181,20 @@ interface VerdictRefusal {
   readonly refused: RefusedVerdict;
 }
 
-function signVerdict(app: ReviewApp, eventId: string, submitted: SubmittedVerdict): 'signed' | VerdictRefusal {
-  const { draft, revision } = submitted;
+function signVerdict(
+  app: ReviewApp,
+  eventId: string,
+  submitted: SubmittedVerdict,
+  session: Session | null,
+): 'signed' | VerdictRefusal {
+  const { revision } = submitted;
+  // Whoever is logged in signs with no other name.
+  const draft = session === null ? submitted.draft : { ...submitted.draft, by: session.reviewer };
   const refuse = (status: VerdictRefusal['status'], reason: string, judgedRevision: number | null = null) => ({
     status,
     refused: { reason, draft, judgedRevision },
   });
-  if (!app.tokens.accepts(submitted.token, eventId, revision)) {
+  if (!app.tokens.accepts(submitted.token, eventId, revision, session?.id)) {
     return refuse(
       403,
       'This form is from before the daemon was restarted, or not from this page. Check it and sign again.',
@@ -186,13 +214,14 @@ function signVerdict(app: ReviewApp, eventId: string, submitted: SubmittedVerdic
   return outcome.kind === 'conflict' ? refuse(409, outcome.message, revision) : 'signed';
 }
 
-function addMachineRoutes(routes: Hono, desk: ReviewDesk): void {
+function addMachineRoutes(routes: Hono<ReviewEnvironment>, desk: ReviewDesk): void {
   routes.get('/api/version', (c) => c.json({ version: desk.version() }));
   routes.get('/api/events', (c) => c.json(desk.events().map((entry) => entry.event)));
   routes.get('/api/events/:id', (c) => {
     const record = desk.event(c.req.param('id'));
     return record === null ? c.json({ error: 'no such event' }, 404) : c.json(record);
   });
+  routes.get('/metrics', (c) => c.body(desk.metrics(), 200, { 'Content-Type': OPEN_METRICS_TYPE }));
   routes.get('/healthz', (c) => {
     const health = desk.health();
     return c.json({ status: health.ok ? 'ok' : 'degraded', problems: health.problems }, health.ok ? 200 : 503);

@@ -1,27 +1,34 @@
 import { createServer, type IncomingMessage, type Server, type ServerOptions, type ServerResponse } from 'node:http';
+import { createServer as createTlsServer } from 'node:https';
 import type { AddressInfo } from 'node:net';
 import type { Duplex } from 'node:stream';
 import { getRequestListener } from '@hono/node-server';
+import { type ReviewSettings, reachProblem } from '../config/reviewSettings.ts';
+import { readTls, type TlsIdentity } from '../config/tlsFiles.ts';
 import { EXIT, OperatorError } from '../errors.ts';
+import { isLoopback } from '../loopback.ts';
+import type { Gate } from './access/gate.ts';
+import type { AccessParts } from './accessRoutes.ts';
 import type { ReviewDesk } from './desk.ts';
-import { ALLOWED_METHODS, authoritiesOf, isLoopback, type Refusal, refusalOf } from './guard.ts';
-import { SECURITY_HEADERS } from './headers.ts';
+import { entranceOf, ownOrigin } from './entrance.ts';
+import { ALLOWED_METHODS, admit, type Entrance, type Refusal, type Visitor } from './guard.ts';
+import { SECURITY_HEADERS, TLS_ONLY_HEADER } from './headers.ts';
 import { plainPage } from './pages/layout.ts';
 import { createReviewApp, type ReviewFault } from './routes.ts';
-import { createVerdictTokens } from './verdictToken.ts';
+import { listenerAnswers } from './selfProbe.ts';
+import type { VerdictTokens } from './verdictToken.ts';
 
 /**
- * The review page's listener. It has no login, so it listens on loopback only: whoever reaches it has an account on this
- * machine or a tunnel to it. Everything that arrives is bounded in time, size and number; the request head is judged
- * before it is routed.
+ * The review page's listener: on loopback in plain HTTP, beyond it with TLS or behind the named proxy. Everything that arrives is bounded in
+ * time, size and number; the request head is judged before it is routed.
  */
-export interface ReviewSettings {
-  readonly host: string;
-  /** 0: any free port. */
-  readonly port: number;
+export interface ReviewServerSettings extends Omit<ReviewSettings, 'passwordFile' | 'monitorTokenFile'> {
+  /** Port 0: any free one. */
   readonly desk: ReviewDesk;
   readonly observatory: string;
-  readonly reviewers: readonly string[];
+  readonly gate: Gate;
+  readonly tokens: VerdictTokens;
+  readonly isMonitor: AccessParts['isMonitor'];
   readonly now: () => Date;
   readonly onFault?: (fault: ReviewFault) => void;
   readonly limits?: Partial<ServerLimits>;
@@ -40,6 +47,8 @@ export interface ServerLimits {
 export interface ReviewServer {
   /** With a closing slash: `http://127.0.0.1:8420/`. */
   readonly url: string;
+  /** Whether it still does. */
+  answers(): Promise<boolean>;
   /** Answers what is under way, at most `CLOSE_GRACE_MS`, then cuts. */
   close(): Promise<void>;
 }
@@ -57,39 +66,64 @@ const MOST_HEADERS = 60;
 const REQUESTS_A_CONNECTION = 200;
 const CLOSE_GRACE_MS = 2_000;
 
-/** Rejects with an `OperatorError` when the host is not loopback or the port is taken. */
-export async function startReviewServer(settings: ReviewSettings): Promise<ReviewServer> {
-  if (!isLoopback(settings.host)) {
-    throw new OperatorError(`the review page will not listen on ${settings.host}: it has no login`, {
-      exitCode: EXIT.wrongUsage,
-      advice: 'set [review] listen to 127.0.0.1:PORT and reach it from elsewhere through an SSH tunnel',
-    });
-  }
+/** Rejects with an `OperatorError` when the page would stand open to others, its certificate cannot be used, or the port is taken. */
+export async function startReviewServer(settings: ReviewServerSettings): Promise<ReviewServer> {
+  const identity = safeIdentity(settings);
   const limits = { ...DEFAULT_LIMITS, ...settings.limits };
-  const app = createReviewApp({
-    ...settings,
-    tokens: createVerdictTokens(),
-    onFault: settings.onFault ?? (() => {}),
-  });
-  const answer = getRequestListener(app.fetch);
-  let authorities: ReadonlySet<string> = new Set();
-  const server = createServer(serverOptions(limits), (incoming, outgoing) => {
+  const app = createReviewApp({ ...settings, onFault: settings.onFault ?? (() => {}) });
+  const visitors = new WeakMap<IncomingMessage, Visitor>();
+  const answer = getRequestListener((request, { incoming }) =>
+    app.fetch(request, { visitor: visitors.get(incoming as IncomingMessage) }),
+  );
+  let entrance: Entrance = { scheme: 'http', isOwnAuthority: () => false, proxy: settings.proxy };
+  const onRequest = (incoming: IncomingMessage, outgoing: ServerResponse) => {
     for (const [name, value] of SECURITY_HEADERS) outgoing.setHeader(name, value);
-    const refusal = refusalOf(headOf(incoming), authorities);
-    if (refusal === null) void answer(incoming, outgoing);
-    else refuse(outgoing, refusal);
-  });
+    const admitted = admit(headOf(incoming), incoming.socket.remoteAddress ?? '', entrance);
+    if ('status' in admitted) {
+      refuse(outgoing, admitted);
+      return;
+    }
+    if (admitted.secure) outgoing.setHeader(...TLS_ONLY_HEADER);
+    visitors.set(incoming, admitted);
+    void answer(incoming, outgoing);
+  };
+  const server =
+    identity === null
+      ? createServer(serverOptions(limits), onRequest)
+      : createTlsServer({ ...serverOptions(limits), ...tlsOptions(identity, limits) }, onRequest);
   server.maxConnections = limits.connections;
   server.maxHeadersCount = MOST_HEADERS;
   server.maxRequestsPerSocket = REQUESTS_A_CONNECTION;
   server.setTimeout(limits.idleMs);
   server.on('clientError', refuseUnreadable);
+  server.on('tlsClientError', (_error, socket) => socket.destroy());
   server.on('connect', (_incoming, socket) => socket.destroy());
 
   const port = await listen(server, settings);
-  authorities = authoritiesOf(settings.host, port);
-  const name = settings.host.includes(':') ? `[${settings.host}]` : settings.host;
-  return { url: `http://${name}:${port}/`, close: () => closeServer(server) };
+  entrance = entranceOf(settings, port, identity?.certificate ?? null);
+  return {
+    url: `${settings.proxy?.origin ?? ownOrigin(settings.host, port, identity)}/`,
+    answers: () => listenerAnswers({ host: settings.host, port, tls: identity !== null }),
+    close: () => closeServer(server),
+  };
+}
+
+/** Null: no TLS. Throws when the page would stand open to others. */
+function safeIdentity(settings: ReviewServerSettings): TlsIdentity | null {
+  const { host, tls, proxy, reviewers } = settings;
+  const wrong = (message: string) => new OperatorError(message, { exitCode: EXIT.wrongUsage, advice: 'see [review]' });
+  const problem = reachProblem({ host, tls, proxy, addressNamed: true });
+  if (problem !== null) throw wrong(`the review page will not listen: ${problem}`);
+  if ((proxy !== null || !isLoopback(host)) && reviewers.length === 0)
+    throw wrong('the review page will not listen: no reviewers are named who could log in');
+  if (tls === null) return null;
+  const identity = readTls(tls);
+  if ('problem' in identity) throw wrong(`the review page will not listen: ${identity.problem}`);
+  return identity;
+}
+
+function tlsOptions({ certificates, key }: TlsIdentity, limits: ServerLimits) {
+  return { cert: certificates, key, minVersion: 'TLSv1.2', handshakeTimeout: limits.headersMs } as const;
 }
 
 function serverOptions(limits: ServerLimits): ServerOptions {
@@ -134,7 +168,7 @@ function statusOf(code: string | undefined): string {
   return '400 Bad Request';
 }
 
-async function listen(server: Server, { host, port }: ReviewSettings): Promise<number> {
+async function listen(server: Server, { host, port, tls, proxy }: ReviewServerSettings): Promise<number> {
   await new Promise<void>((resolve, reject) => {
     server.once('error', (error: NodeJS.ErrnoException) => {
       const taken = error.code === 'EADDRINUSE';
@@ -152,7 +186,7 @@ async function listen(server: Server, { host, port }: ReviewSettings): Promise<n
     server.listen({ host, port }, resolve);
   });
   const { address, port: bound } = server.address() as AddressInfo;
-  if (!isLoopback(address)) {
+  if (!isLoopback(address) && tls === null && proxy === null) {
     server.close();
     throw new OperatorError(`the review page will not listen on ${address}: ${host} is not a loopback address here`, {
       exitCode: EXIT.wrongUsage,

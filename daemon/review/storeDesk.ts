@@ -3,8 +3,17 @@ import { type MorningReview, voevent } from '../../alerts/index.ts';
 import type { Clock } from '../clock.ts';
 import type { Configuration } from '../config/configuration.ts';
 import type { EventRecord } from '../records.ts';
+import { citedRevision } from '../stages/told.ts';
 import type { Store } from '../store/index.ts';
-import type { Decision, FeedOverview, PulsarOverview, ReviewDesk, VerdictOutcome, WatchHealth } from './desk.ts';
+import type {
+  Decision,
+  FeedOverview,
+  PulsarOverview,
+  ReviewDesk,
+  VerdictOutcome,
+  VitalSigns,
+  WatchHealth,
+} from './desk.ts';
 
 /** The desk over the record. It reads what is stored; the one thing it writes is a verdict. */
 export interface StoreDeskParts {
@@ -13,6 +22,8 @@ export interface StoreDeskParts {
   readonly clock: Clock;
   readonly morning: () => MorningReview;
   readonly health: () => WatchHealth;
+  readonly vitalSigns: () => VitalSigns;
+  readonly metrics: () => string;
 }
 
 /** Silence grows without anything being written: the morning is made anew after this time at the latest. */
@@ -30,15 +41,17 @@ export function createStoreDesk(parts: StoreDeskParts): ReviewDesk {
     event: (id) => store.event(id),
     notice(id, issuedAt) {
       const record = store.event(id);
-      return record === null ? null : noticeOf(record, configuration, issuedAt);
+      return record === null ? null : noticeOf(store, record, configuration, issuedAt);
     },
     morning,
-    pulsars: () => pulsars(configuration, store, morning()),
+    pulsars: () => pulsars(configuration, store),
     feeds: () => feeds(configuration, store, morning()),
     files: (most) => store.recentFiles(most),
     quarantine: (most) => store.recentQuarantine(most),
     outbox: (most) => store.outbox().slice(-most).reverse(),
     health: parts.health,
+    vitalSigns: parts.vitalSigns,
+    metrics: parts.metrics,
     recordVerdict({ eventId, ...order }): VerdictOutcome {
       const outcome = store.recordVerdict(eventId, order);
       if (outcome.kind === 'unknown event') return { kind: 'unknown' };
@@ -83,30 +96,34 @@ function decisions(store: Store, most: number): Decision[] {
     });
 }
 
-function noticeOf({ event, revision }: EventRecord, configuration: Configuration, issuedAt: Date): string {
+function noticeOf(
+  store: Store,
+  { event, revision }: EventRecord,
+  configuration: Configuration,
+  issuedAt: Date,
+): string {
   const model = event.site === null ? (configuration.models.get(event.pulsar) ?? null) : null;
   return voevent(event, {
     observatory: configuration.observatory,
     model,
     revision,
     issuedAt,
-    cites: null,
+    cites: citedRevision({ store }, event.id, revision),
     drill: false,
   });
 }
 
 /** Every configured pulsar, also one of which nothing has come in yet. */
-function pulsars(configuration: Configuration, store: Store, morning: MorningReview): PulsarOverview[] {
+function pulsars(configuration: Configuration, store: Store): PulsarOverview[] {
   const reports = new Map(store.pulsarReports().map((report) => [report.pulsar, report]));
-  const limits = new Map(morning.limits.map((limit) => [limit.pulsar, limit]));
   return [...configuration.models.keys()].sort().map((pulsar) => {
-    const [report, limit] = [reports.get(pulsar), limits.get(pulsar)];
+    const report = reports.get(pulsar);
     return {
       pulsar,
       lastArrivalMjd: report?.lastArrivalMjd ?? null,
       locked: report?.locked ?? false,
-      deltaNuOverNu90: limit?.deltaNuOverNu90 ?? null,
-      delayDays90: limit?.delayDays90 ?? null,
+      deltaNuOverNu90: report?.limit?.deltaNuOverNu90 ?? null,
+      delayDays90: report?.limit?.delayDays90 ?? null,
     };
   });
 }

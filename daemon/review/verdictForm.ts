@@ -24,11 +24,8 @@ const VERDICTS = ['accept', 'reject', 'reopen'] as const;
  * bad UTF-8, a bad percent escape, an unknown field or a field given twice is null.
  */
 export function readSubmittedVerdict(body: Uint8Array): SubmittedVerdict | null {
-  const fields = readFields(body);
+  const fields = readForm(body, ['verdict', 'by', 'note', 'revision', 'token']);
   if (fields === null) return null;
-  for (const name of fields.keys()) {
-    if (!['verdict', 'by', 'note', 'revision', 'token'].includes(name)) return null;
-  }
   const revisionText = fields.get('revision') ?? '';
   if (!/^[0-9]{1,9}$/.test(revisionText)) return null;
   return {
@@ -65,7 +62,8 @@ function plainText(text: string): string {
   return text.replace(/\r\n?/g, '\n').replace(/[^\P{Cc}\n\t]/gu, '\ufffd');
 }
 
-function readFields(body: Uint8Array): Map<string, string> | null {
+/** Null for a body that is no form, or that has a field besides those that are known. */
+export function readForm(body: Uint8Array, known: readonly string[]): Map<string, string> | null {
   const fields = new Map<string, string>();
   try {
     const text = new TextDecoder('utf-8', { fatal: true, ignoreBOM: true }).decode(body);
@@ -74,7 +72,7 @@ function readFields(body: Uint8Array): Map<string, string> | null {
       const cut = pair.indexOf('=');
       const [name, value] = cut < 0 ? [pair, ''] : [pair.slice(0, cut), pair.slice(cut + 1)];
       const decodedName = decodeURIComponent(name.replaceAll('+', ' '));
-      if (fields.has(decodedName)) return null;
+      if (fields.has(decodedName) || !known.includes(decodedName)) return null;
       fields.set(decodedName, decodeURIComponent(value.replaceAll('+', ' ')));
     }
   } catch {

@@ -9,6 +9,7 @@ import {
 import { type Clock, clockStepWatch } from '../clock.ts';
 import { reasonOf } from '../errors.ts';
 import type { Log } from '../log.ts';
+import type { Stage } from '../progress.ts';
 import type { OutboxRecord } from '../records.ts';
 import { step } from '../store/crashStep.ts';
 import type { ClaimedMail, MailOutcome } from '../store/shapes.ts';
@@ -39,7 +40,12 @@ export interface DeliveryOptions {
   readonly onGivenUp: (mail: OutboxRecord, state: 'refused' | 'expired', why: string) => Promise<void>;
   /** The store failed in a way that must not be retried. */
   readonly onFatal: (error: unknown) => void;
+  /** Told at every turn and attempt. */
+  readonly stage?: Stage;
 }
+
+/** One attempt may take as long as RFC 5321, section 4.5.3.2, lets a server take for all its answers. */
+export const DELIVERY_LIMIT_MS = 1_800_000;
 
 const LOOK_EVERY_MS = 15_000;
 const STORE_RETRY_MS = 5_000;
@@ -70,12 +76,14 @@ export function startDelivery(options: DeliveryOptions): DeliveryLoop {
     lastTrouble = outcome.state === 'delivered' ? null : outcome.detail;
     if (outcome.loginRefused) loginPausedUntilMs = clock.monotonicMs() + pauseMs(pauseKey(mail), 'login refused');
     await note(options, mail, settled(mail, outcome, { remark, clock }), stopping.signal);
+    options.stage?.step();
     return true;
   };
 
   const mayExpire = trustInWallClock(clock);
   const loop = async () => {
     while (!stopping.signal.aborted) {
+      options.stage?.step();
       try {
         if (mayExpire()) await expireOld(options);
         while (!stopping.signal.aborted && (await sendOne()));
@@ -163,6 +171,7 @@ async function note(
     } catch (error) {
       if (!mayPass(error) || stopping.aborted) throw error;
       log.error({ ...facts, reason: reasonOf(error) }, 'what became of a mail cannot be noted yet; trying again');
+      options.stage?.step();
       await new Promise((resolve) => setTimeout(resolve, STORE_RETRY_MS));
     }
   }

@@ -12,6 +12,46 @@ export async function makeDigest(station: Station, date: string, review: Morning
   station.store.commitDigest(date, newMessage(composed, null, setting.now), setting.now.toISOString());
 }
 
+const HEARTBEAT = 'heartbeat';
+
+/** Queues a mail that says the watch lives; `false`: an earlier one still waits, and a second would say nothing more. */
+export async function mailHeartbeat(station: Station, to: readonly string[]): Promise<boolean> {
+  const { store } = station;
+  const waiting = [
+    ...store.outbox({ kind: 'notice', state: 'queued' }),
+    ...store.outbox({ kind: 'notice', state: 'attempting' }),
+  ];
+  if (waiting.some(({ messageId }) => messageId.includes(`${HEARTBEAT}.`))) return false;
+  const setting = mailSetting(station);
+  const notice = {
+    name: `${HEARTBEAT}.${setting.now.getTime()}`,
+    subject: 'the watch is alive',
+    paragraphs: [
+      'Feeds are looked at, decisions are taken, mail leaves. This message comes at regular times; when it does not, look at the watch.',
+    ],
+  };
+  const composed = await composeOperatorNotice(notice, to, setting);
+  store.commitNotice(newMessage(composed, null, setting.now), setting.now.toISOString());
+  return true;
+}
+
+/** Tells the operators what is wrong with the configuration that the daemon was told to take up. */
+export async function reportBadReload(station: Station, problems: readonly string[]): Promise<void> {
+  const { mail, observatory, file } = station.configuration;
+  const setting = mailSetting(station);
+  const notice = {
+    name: `reload.${setting.now.getTime()}`,
+    subject: 'the new configuration was not taken up',
+    paragraphs: [
+      `The watch was told to read ${file} again. It cannot be used, and the watch goes on with the configuration it had:`,
+      ...problems,
+      'Mend it, try it with “spinvigil check”, then reload again.',
+    ],
+  };
+  const composed = await composeOperatorNotice(notice, [...new Set([...mail.to, observatory.contact])], setting);
+  station.store.commitNotice(newMessage(composed, null, setting.now), setting.now.toISOString());
+}
+
 /** Tells the others that a recipient could not be reached. About a notice nobody is told: that could go on for ever. */
 export async function reportGivenUp(
   station: Station,

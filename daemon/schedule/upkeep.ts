@@ -1,4 +1,5 @@
 import { clockStepWatch } from '../clock.ts';
+import type { Stage } from '../progress.ts';
 import type { Station } from '../station.ts';
 import { storageTrouble } from '../store/index.ts';
 import { createDailyChecks } from './dailyChecks.ts';
@@ -13,6 +14,7 @@ export function startUpkeep(
     readonly onClockStep: () => Promise<void>;
     readonly tableWarnings: () => readonly string[];
     readonly onFatal: (error: unknown) => void;
+    readonly stage: Stage;
   },
 ): Loop {
   const { store, clock, log } = station;
@@ -23,6 +25,7 @@ export function startUpkeep(
     name: 'upkeep',
     pauseMs: UPKEEP_MS,
     log,
+    stage: actions.stage,
     async work() {
       if (!store.isInPlace()) {
         actions.onFatal(new Error(`the record in ${station.configuration.stateFolder} was moved, removed or replaced`));
@@ -47,6 +50,8 @@ export function startUpkeep(
 }
 
 const UPKEEP_MS = 60_000;
+/** The daily check of a large record takes minutes. */
+export const UPKEEP_LIMIT_MS = 1_200_000;
 const CLOCK_STEPPED = 'clock_stepped';
 const REMEMBERED_MS = 86_400_000;
 

@@ -1,23 +1,26 @@
 import {
+  type Belief,
   type ComposedMessage,
   composeEventMail,
   composeStormNotice,
   type EventMail,
   mailOrSummary,
   messagesFor,
-  type ToldBefore,
 } from '../../alerts/index.ts';
 import type { EventPicture, PulsarEvent } from '../../detectors/steps/pulsarEvent.ts';
 import { mjdOf } from '../clock.ts';
-import type { EventChange, OutboxRecord } from '../records.ts';
+import type { OutboxRecord } from '../records.ts';
 import { mailSetting, type Station } from '../station.ts';
 import type { NewMessage } from '../store/index.ts';
 import type { KeptEvent } from './eventChanges.ts';
+import { mailedSoFar, NOTHING_MAILED } from './told.ts';
 
 export interface Alerts {
   readonly messages: readonly NewMessage[];
   /** Message-IDs of mail that still waits and that this replaces. */
   readonly superseded: readonly string[];
+  /** Event id → in words, whether its change is mailed and why, for its history. */
+  readonly why: ReadonlyMap<string, string>;
 }
 
 /** Decides for each changed event whether anybody is told, and writes the mail. Every decision is logged with its reason. */
@@ -28,6 +31,7 @@ export async function planAlerts(
 ): Promise<Alerts> {
   const messages: NewMessage[] = [];
   const superseded: string[] = [];
+  const why = new Map<string, string>();
   const storm = stormWatch(station);
   for (const change of changes) {
     if (change.what === null) continue;
@@ -39,14 +43,18 @@ export async function planAlerts(
     );
     const facts = { event: after.id, revision: change.revision, state: after.state, change: change.what };
     station.log.info({ ...facts, alert: decision.reason, mails: decision.messages.length }, 'event changed');
+    const history = beliefs(station, change, after);
+    let outcome: MailVerdict = 'not mailed';
     for (const planned of decision.messages) {
-      const mail = { event: after, planned, picture: pictureOf(after), toldRevision: mailed.toldRevision };
-      const message = await composeWithin(station, mail, storm);
-      if (message !== null) messages.push(message);
+      const mail = { event: after, planned, picture: pictureOf(after), toldRevision: mailed.toldRevision, history };
+      const composed = await composeWithin(station, mail, storm);
+      if (composed.message !== null) messages.push(composed.message);
+      outcome = composed.verdict;
     }
+    why.set(after.id, `${outcome}: ${decision.reason}`);
     if (decision.messages.length > 0 || after.state === 'withdrawn') superseded.push(...mailed.unsent);
   }
-  return { messages, superseded };
+  return { messages, superseded, why };
 }
 
 /** A standing verdict is what people see, whatever the detector goes on to find. */
@@ -63,45 +71,8 @@ function policyFor(station: Station, event: PulsarEvent) {
     contact: configuration.observatory.contact,
     nowMjd: mjdOf(clock.now()),
     historicalDays: configuration.mail.historicalAfterDays,
+    sharperBy: configuration.mail.updateWhenSharperBy,
   };
-}
-
-interface Mailed {
-  readonly told: ToldBefore | null;
-  readonly toldRevision: number | null;
-  /** Messages of which no attempt was made yet, to anybody. */
-  readonly unsent: readonly string[];
-}
-
-const NOTHING_MAILED: Mailed = { told: null, toldRevision: null, unsent: [] };
-
-/** What may have left about an event. Mail that only waits tells nobody: news replaces it. */
-function mailedSoFar(station: Station, eventId: string): Mailed {
-  const copies = station.store.outbox({ eventId, kind: 'event' });
-  const left = new Set(copies.filter(mayHaveLeft).map((copy) => copy.messageId));
-  const unsent = new Set(
-    copies.filter((copy) => copy.state === 'queued' && !left.has(copy.messageId)).map((copy) => copy.messageId),
-  );
-  const sent = copies.filter((copy) => left.has(copy.messageId));
-  const first = sent[0];
-  const last = sent.at(-1);
-  const described = last === undefined ? null : asDescribed(station.store.event(eventId)?.history ?? [], last);
-  if (first === undefined || described === null) return { ...NOTHING_MAILED, unsent: [...unsent] };
-  return {
-    told: { firstMessageId: first.messageId, as: described.event },
-    toldRevision: described.revision,
-    unsent: [...unsent],
-  };
-}
-
-function mayHaveLeft(copy: OutboxRecord): boolean {
-  return copy.attempts > 0 || copy.state === 'delivered';
-}
-
-/** A revision and the mail about it are written in one transaction, with one time. */
-function asDescribed(history: readonly EventChange[], mail: OutboxRecord): EventChange | null {
-  const exact = history.find((change) => change.at === mail.createdAt);
-  return exact ?? history.findLast((change) => change.at <= mail.createdAt) ?? history[0] ?? null;
 }
 
 interface Storm {
@@ -123,14 +94,16 @@ function stormWatch({ store, clock }: Station): Storm {
   };
 }
 
+type MailVerdict = 'mailed' | 'not mailed' | 'in the storm notice only' | 'on the page only, in a storm';
+
 async function composeWithin(
   station: Station,
   mail: Omit<EventMail, 'model'>,
   storm: Storm,
-): Promise<NewMessage | null> {
+): Promise<{ readonly message: NewMessage | null; readonly verdict: MailVerdict }> {
   const { planned, event } = mail;
   const verdict = mailOrSummary(planned, storm);
-  if (verdict === 'page only') return null;
+  if (verdict === 'page only') return { message: null, verdict: 'on the page only, in a storm' };
   const setting = mailSetting(station);
   if (verdict === 'summary') {
     storm.summarySent = true;
@@ -139,11 +112,19 @@ async function composeWithin(
       .slice(0, 13)
       .replace(/[^0-9]/g, '')}`;
     const notice = { name, mailedInTheHour: storm.eventMails };
-    return newMessage(await composeStormNotice(notice, planned.recipients, setting), null, setting.now);
+    const composed = await composeStormNotice(notice, planned.recipients, setting);
+    return { message: newMessage(composed, null, setting.now), verdict: 'in the storm notice only' };
   }
   storm.eventMails += 1;
   const model = station.configuration.models.get(event.pulsar) ?? null;
-  return newMessage(await composeEventMail({ ...mail, model }, setting), planned.inReplyTo, setting.now);
+  const composed = await composeEventMail({ ...mail, model }, setting);
+  return { message: newMessage(composed, planned.inReplyTo, setting.now), verdict: 'mailed' };
+}
+
+/** What was believed when, this change included, for the mail about it. */
+function beliefs({ store, clock }: Station, { before, revision, what }: KeptEvent, after: PulsarEvent): Belief[] {
+  const earlier = before === null ? [] : (store.event(before.event.id)?.history ?? []);
+  return [...earlier, { revision, at: clock.now().toISOString(), what: what ?? '', event: after }];
 }
 
 /** A composed message as the outbox keeps it: one character a byte. */

@@ -1,23 +1,30 @@
-import { combineSiteEvents } from '../../detectors/index.ts';
+import { type BelievedStep, siteEvents, siteSteps } from '../../detectors/index.ts';
 import type { PulsarReport } from '../../detectors/report.ts';
 import type { EventPicture, PulsarEvent } from '../../detectors/steps/pulsarEvent.ts';
 import type { Station } from '../station.ts';
 import type { PulsarReportRow } from '../store/index.ts';
 
-/** What is published, from what the detector says about each pulsar alone: a step that a whole site shows is one event, of the site. */
-export function publishedEvents({ store }: Station, changed: readonly PulsarReportRow[]): readonly PulsarEvent[] {
-  const own = new Map(store.pulsarReports().map((report) => [report.pulsar, report.events]));
-  for (const report of changed) own.set(report.pulsar, report.events);
-  const inOrder = [...own].sort(([a], [b]) => (a < b ? -1 : 1));
-  return combineSiteEvents(inOrder.flatMap(([, events]) => events));
+/** What is published: the pulsars' own events, and the steps that whole sites show as events of the sites. */
+export function publishedEvents(
+  { store }: Station,
+  changed: readonly PulsarReportRow[],
+  known?: readonly BelievedStep[],
+): readonly PulsarEvent[] {
+  const rows = new Map(store.pulsarReports().map((report) => [report.pulsar, report]));
+  for (const report of changed) rows.set(report.pulsar, report);
+  const steps = known ?? siteSteps([...rows.values()].flatMap(({ times }) => times ?? []));
+  // Only a site's event bears a site.
+  const own = [...rows.values()].flatMap(({ events }) => events.map((event) => ({ ...event, site: null })));
+  return [...own, ...siteEvents(steps)].sort((a, b) => a.epochMjd - b.epochMjd || (a.id < b.id ? -1 : 1));
 }
 
 /** A report as the record keeps it. */
 export function reportRow(station: Station, report: PulsarReport): PulsarReportRow {
   const model = station.configuration.models.get(report.pulsar);
   if (model === undefined) throw new Error(`${report.pulsar} has no model`);
-  const { pulsar, events, locked, noise, lastArrivalMjd } = report;
-  return { pulsar, basis: station.basisOf(model), events, locked, noise, lastArrivalMjd };
+  const { pulsar, events, locked, noise, lastArrivalMjd, limit, arrivals } = report;
+  const basis = station.basisOf(model);
+  return { pulsar, basis, events, locked, noise, lastArrivalMjd, limit, arrivals: arrivals.length };
 }
 
 /** The picture of an event: the new one, or the one on record where its pulsar was not looked at this time. */

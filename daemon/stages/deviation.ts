@@ -1,5 +1,13 @@
-import { type BarycentredArrival, emissionTdb, type TimedArrival } from '../../detectors/arrival.ts';
+import {
+  type BarycentredArrival,
+  emissionTdb,
+  type ReceivedArrival,
+  type TimedArrival,
+} from '../../detectors/arrival.ts';
+import type { SiteStep } from '../../detectors/index.ts';
 import type { PulsarReport } from '../../detectors/report.ts';
+import type { PulsarModel } from '../../detectors/spin/pulsarModel.ts';
+import { mjdNumber } from '../../detectors/time/mjd.ts';
 import type { ArrivalRecord } from '../records.ts';
 import type { Station } from '../station.ts';
 import type { IntakeBatch, RetimedArrival } from '../store/index.ts';
@@ -34,21 +42,37 @@ function timed(record: ArrivalRecord, retimed: RetimedArrival | undefined): Time
 
 function timedArrival(
   key: string,
-  received: Omit<TimedArrival, 'key' | 'tdb'>,
+  received: ReceivedArrival,
   barycentred: Pick<BarycentredArrival, 'tdb' | 'delays'>,
 ): TimedArrival {
-  const { uncertaintyUs, frequencyMhz, site, receiver, pulseNumber } = received;
-  return { key, tdb: emissionTdb(barycentred), uncertaintyUs, frequencyMhz, site, receiver, pulseNumber };
+  const { uncertaintyUs, frequencyMhz, site, receiver, pulseNumber, time, timeScale } = received;
+  const siteMjd = timeScale === 'UTC' ? { siteMjd: mjdNumber(time) } : {};
+  return { key, tdb: emissionTdb(barycentred), ...siteMjd, uncertaintyUs, frequencyMhz, site, receiver, pulseNumber };
 }
 
-/** Follows one pulsar's phase through its log: what the detector says about it alone. */
+/** A pulsar as the operator describes it. */
+export function modelOf({ configuration }: Station, pulsar: string): PulsarModel {
+  const model = configuration.models.get(pulsar);
+  if (model === undefined) throw new Error(`${pulsar} has no model in ${configuration.modelsFolder}`);
+  return model;
+}
+
+/** The same with the steps of its sites' clocks that are on record. */
+export function modelInUse(station: Station, pulsar: string): PulsarModel {
+  return withSiteSteps(modelOf(station, pulsar), station.store.pulsarReport(pulsar)?.siteSteps ?? []);
+}
+
+export function withSiteSteps(model: PulsarModel, siteSteps: readonly SiteStep[]): PulsarModel {
+  return siteSteps.length === 0 ? model : { ...model, siteSteps };
+}
+
+/** Follows one pulsar's phase through its log: what the detector says about it alone, the steps of its sites on record known. */
 export function followPulsar(
   station: Station,
   watches: PulsarWatches,
   pulsar: string,
   changes: LogChanges,
 ): PulsarReport {
-  const model = station.configuration.models.get(pulsar);
-  if (model === undefined) throw new Error(`${pulsar} has no model in ${station.configuration.modelsFolder}`);
+  const model = modelInUse(station, pulsar);
   return watches.report(model, station.settingsOf(model), liveLog(station, pulsar, changes));
 }

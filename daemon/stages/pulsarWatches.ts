@@ -1,5 +1,12 @@
 import type { TimedArrival } from '../../detectors/arrival.ts';
-import { advance, report, startWatch } from '../../detectors/index.ts';
+import {
+  advance,
+  type CurrentModel,
+  currentModel,
+  type PulsarWatch,
+  report,
+  startWatch,
+} from '../../detectors/index.ts';
 import type { DetectorSettings, PulsarReport } from '../../detectors/report.ts';
 import type { PulsarModel } from '../../detectors/spin/pulsarModel.ts';
 import { compareMjd } from '../../detectors/time/mjd.ts';
@@ -22,6 +29,11 @@ export class PulsarWatches {
    * @param log its live arrivals in time order (`inTimeOrder`), the new ones among them
    */
   report(model: PulsarModel, settings: DetectorSettings, log: readonly TimedArrival[]): PulsarReport {
+    return report(this.follow(model, settings, log));
+  }
+
+  /** The watch over a pulsar, up to date with its log. */
+  follow(model: PulsarModel, settings: DetectorSettings, log: readonly TimedArrival[]): PulsarWatch {
     const running = this.#resume(model, settings, log);
     for (let i = running.taken.length; i < log.length; i++) {
       const arrival = log[i]!;
@@ -29,7 +41,13 @@ export class PulsarWatches {
       running.taken.push(arrival.key);
     }
     this.#remember(model.name, running);
-    return report(running.watch);
+    return running.watch;
+  }
+
+  /** The model to fold with, of a pulsar whose report this is; null: it is not followed, or has no arrivals to speak of. */
+  currentModel({ pulsar, events }: Pick<PulsarReport, 'pulsar' | 'events'>): CurrentModel | null {
+    const running = this.#watches.get(pulsar);
+    return running === undefined ? null : currentModel(running.watch, events);
   }
 
   /** After a commit that failed: what is in memory may be ahead of the log. */
@@ -43,7 +61,7 @@ export class PulsarWatches {
     this.#watches.delete(model.name);
     if (
       running !== undefined &&
-      running.model === model &&
+      isSameModel(running.model, model) &&
       running.settings === settings &&
       startsWith(log, running.taken)
     ) {
@@ -63,9 +81,17 @@ export class PulsarWatches {
 interface Running {
   readonly model: PulsarModel;
   readonly settings: DetectorSettings;
-  readonly watch: ReturnType<typeof startWatch>;
+  readonly watch: PulsarWatch;
   /** Keys of the arrivals folded in so far, in order. A key is an arrival's content, so equal keys are equal arrivals. */
   readonly taken: string[];
+}
+
+/** The operator's model with the same steps of the sites' clocks. */
+function isSameModel(a: PulsarModel, b: PulsarModel): boolean {
+  if (a === b) return true;
+  const { siteSteps: stepsOfA, ...restOfA } = a;
+  const { siteSteps: stepsOfB, ...restOfB } = b;
+  return JSON.stringify(stepsOfA) === JSON.stringify(stepsOfB) && JSON.stringify(restOfA) === JSON.stringify(restOfB);
 }
 
 function startsWith(log: readonly TimedArrival[], taken: readonly string[]): boolean {

@@ -111,7 +111,7 @@ export function upsertEvent(db: Db, upsert: EventUpsert, at: string): 'written' 
     },
   );
   putPicture(db, event.id, picture);
-  if (change !== null) addHistory(db, event, revision, change, at);
+  if (change !== null) addHistory(db, event, { revision, what: change, alert: upsert.alert ?? null, at });
   return 'written';
 }
 

@@ -17,6 +17,28 @@ export const MIGRATIONS: readonly Migration[] = [
     sql: `ALTER TABLE quarantine ADD COLUMN pulsar TEXT;
 CREATE INDEX quarantine_by_pulsar ON quarantine (pulsar) WHERE pulsar IS NOT NULL;`,
   },
+  {
+    name: 'who is logged in; verdicts that nothing can change',
+    sql: `CREATE TABLE sessions (
+  -- SHA-256 of the token that the visitor holds.
+  id TEXT PRIMARY KEY,
+  reviewer TEXT NOT NULL,
+  started_at TEXT NOT NULL,
+  expires_at TEXT NOT NULL,
+  CHECK (expires_at > started_at)
+) STRICT, WITHOUT ROWID;
+CREATE INDEX sessions_by_reviewer ON sessions (reviewer);
+-- The event's id may change with late data, and is no part of what was signed.
+CREATE TRIGGER verdicts_stand BEFORE UPDATE OF id, verdict, reviewer, note, at, revision ON verdicts
+BEGIN SELECT RAISE(ABORT, 'verdicts are never changed'); END;
+CREATE TRIGGER verdicts_are_added BEFORE INSERT ON verdicts
+WHEN EXISTS (SELECT 1 FROM verdicts WHERE id = NEW.id OR (event_id = NEW.event_id AND revision = NEW.revision))
+BEGIN SELECT RAISE(ABORT, 'verdicts are never replaced'); END;`,
+  },
+  {
+    name: 'why a revision was mailed or not',
+    sql: 'ALTER TABLE event_changes ADD COLUMN alert TEXT;',
+  },
 ];
 
 export const SCHEMA_VERSION = MIGRATIONS.length;

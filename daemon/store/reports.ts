@@ -24,14 +24,14 @@ function toReport({ pulsar, basis, body }: ReportRow): PulsarReportRow {
 }
 
 export function putPulsarReport(db: Db, report: PulsarReportRow, at: string): void {
-  const { pulsar, basis, events, locked, noise, lastArrivalMjd } = report;
+  const { pulsar, basis, ...body } = report;
   run(
     db,
     `INSERT INTO pulsar_reports (pulsar, basis, body, at) VALUES (?, ?, ?, ?)
      ON CONFLICT (pulsar) DO UPDATE SET basis = excluded.basis, body = excluded.body, at = excluded.at`,
     pulsar,
     basis,
-    toJson(`report of ${pulsar}`, { events, locked, noise, lastArrivalMjd }),
+    toJson(`report of ${pulsar}`, body),
     at,
   );
 }

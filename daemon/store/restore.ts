@@ -144,10 +144,17 @@ function settleMail(file: string, delivered: readonly Delivered[]): void {
           WHERE state IN ('queued', 'attempting') AND EXISTS (
             SELECT 1 FROM delivered_before d WHERE d.message_id = outbox.message_id AND d.recipient = outbox.recipient);
         UPDATE outbox SET possible_duplicate = 1 WHERE state IN ('queued', 'attempting');`);
+      endSessions(db);
     });
   } finally {
     db.close();
   }
+}
+
+/** Who logged out since the copy was made stays out; a copy of an older schema knows no sessions. */
+function endSessions(db: Db): void {
+  const known = db.prepare("SELECT 1 FROM sqlite_schema WHERE name = 'sessions'").get();
+  if (known !== undefined) db.exec('DELETE FROM sessions');
 }
 
 function forceLogToDisk(file: string): void {

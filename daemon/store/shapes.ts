@@ -1,5 +1,8 @@
 import type { BarycentredArrival, Quality, ReceivedArrival } from '../../detectors/arrival.ts';
+import type { DetectionLimit } from '../../detectors/limits/detectionLimit.ts';
 import type { NoiseModel } from '../../detectors/report.ts';
+import type { PulsarTimes } from '../../detectors/site/pulsarTimes.ts';
+import type { SiteStep } from '../../detectors/site/siteStep.ts';
 import type { EventPicture, PulsarEvent } from '../../detectors/steps/pulsarEvent.ts';
 import type { EventRecord, FileRecord, OutboxRecord } from '../records.ts';
 
@@ -116,6 +119,14 @@ export interface PulsarReportRow {
   readonly locked: boolean;
   readonly noise: NoiseModel;
   readonly lastArrivalMjd: number | null;
+  /** What it says of the clocks of its sites; absent in records of before that was kept. */
+  readonly times?: PulsarTimes;
+  /** The steps of those clocks that `events` rest on; absent: none. */
+  readonly siteSteps?: readonly SiteStep[];
+  /** Absent in records of before limits were kept: `limits` works it out, and the next decision keeps it. */
+  readonly limit?: DetectionLimit;
+  /** Live arrivals that the report rests on; absent with the limit. */
+  readonly arrivals?: number;
 }
 
 export interface EventUpsert {
@@ -128,6 +139,8 @@ export interface EventUpsert {
   readonly revision: number;
   /** The line for its history; null refreshes the numbers without a new revision. */
   readonly change: string | null;
+  /** In words, whether that change was mailed, and why; absent or null: not known. */
+  readonly alert?: string | null;
 }
 
 export interface NewMessage {

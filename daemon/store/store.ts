@@ -6,6 +6,7 @@ import * as arrivals from './arrivals.ts';
 import { writeBackup } from './backup.ts';
 import { commitIntake } from './commitIntake.ts';
 import type { Db } from './connection.ts';
+import { libraryVersion, type RecordCounts, recordCounts } from './counts.ts';
 import * as events from './events.ts';
 import * as files from './files.ts';
 import type { InstanceLock } from './instanceLock.ts';
@@ -14,6 +15,7 @@ import * as morning from './morning.ts';
 import * as outbox from './outbox.ts';
 import * as recent from './recent.ts';
 import * as reports from './reports.ts';
+import * as sessions from './sessions.ts';
 import type {
   ClaimedMail,
   CommitOutcome,
@@ -138,6 +140,29 @@ export class Store {
     return verdicts.recordVerdict(this.#db, eventId, input);
   }
 
+  // --- who is logged in
+
+  putSession(session: sessions.SessionRow): void {
+    sessions.putSession(this.#db, session);
+  }
+
+  session(id: string): sessions.SessionRow | null {
+    return sessions.session(this.#db, id);
+  }
+
+  endSession(id: string): void {
+    sessions.endSession(this.#db, id);
+  }
+
+  endSessionsOlderThan(now: string): void {
+    sessions.endSessionsOlderThan(this.#db, now);
+  }
+
+  /** Works beside a running daemon. Answers how many there were. */
+  endSessionsOf(reviewer: string): number {
+    return sessions.endSessionsOf(this.#db, reviewer);
+  }
+
   // --- mail
 
   /** The digest of a civil date, at most one for ever; `false`: it was queued before. */
@@ -223,6 +248,14 @@ export class Store {
   }
 
   // --- upkeep
+
+  counts(): RecordCounts {
+    return recordCounts(this.#db);
+  }
+
+  libraryVersion(): string {
+    return libraryVersion(this.#db);
+  }
 
   meta(key: string): string | null {
     return meta.read(this.#db, key);

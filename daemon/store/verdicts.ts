@@ -63,6 +63,7 @@ function write(db: Db, record: EventRecord, { verdict, by, note, at }: VerdictIn
   step('verdict written');
   run(db, 'UPDATE events SET state = ?, revision = revision + 1, told = 1, changed_at = ? WHERE id = ?', shown, at, id);
   const what = `${DONE[verdict]} by ${by}${note === '' ? '' : `: ${note}`}`;
-  addHistory(db, { ...record.event, state: record.detectorState }, record.revision + 1, what, at);
+  const line = { revision: record.revision + 1, what, alert: 'not mailed: verdict', at };
+  addHistory(db, { ...record.event, state: record.detectorState }, line);
   step('verdict shown');
 }

@@ -33,6 +33,8 @@ export interface WatcherOptions {
   /** Once when a problem begins; again at the next look where it throws. */
   onProblem(problem: WatchProblem): void;
   onProblemEnded?(problem: WatchProblem): void;
+  /** How the loop of a feed goes on: it looked, it waits for a file to be taken in, the file is done with. */
+  onProgress?(feed: string, what: 'looked' | 'waits' | 'handed over'): void;
   readonly clock: Clock;
   readonly settleMs?: number;
   /** Largest file, bytes. */
@@ -140,6 +142,7 @@ function startFeed(feed: Feed, options: WatcherOptions, shared: Shared): FeedLoo
       const look = await lookOnce(loop, startMs);
       const lookMs = options.clock.monotonicMs() - startMs;
       ledger.update([...look.problems, ...notices.follow(look.root)]);
+      options.onProgress?.(feed.name, 'looked');
       const { root, moving } = look;
       status = {
         feed: feed.name,
@@ -207,6 +210,7 @@ async function handOverOne(file: ReadyFile, { options, watched, turns, readyFile
   }
   try {
     const waiting = () => [...readyFiles.values()].reduce((sum, files) => sum + files, -1);
+    options.onProgress?.(file.feed, 'waits');
     const outcome = await turns(() => options.onSettled(file, reading.bytes, waiting()));
     failures.delete(file.path);
     if (outcome === 'taken') watched.taken(file, options.clock.monotonicMs());
@@ -216,5 +220,7 @@ async function handOverOne(file: ReadyFile, { options, watched, turns, readyFile
     failures.set(file.path, times + 1);
     const waitMs = Math.min(LONGEST_RETRY_MS, FIRST_RETRY_MS * 2 ** times);
     tryLater(waitMs, { kind: 'not taken in', message: `could not be taken in: ${reasonOf(error)}` });
+  } finally {
+    options.onProgress?.(file.feed, 'handed over');
   }
 }

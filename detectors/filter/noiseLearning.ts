@@ -7,15 +7,20 @@ import type { LogNormal, NoisePrior } from './noisePrior.ts';
 const LEAST_SCALE = 0.5;
 const LARGEST_SCALE = 10;
 
+/** Strengths of one walk, in scatters of the prior: a pulsar may be far noisier than the population law expects. */
+const STRENGTHS = [0.5, 1, 1.5, 2, 2.5, 3, 3.5, 4, 5];
+const WALKS = [0, 1, 2];
+
 /**
- * In scatters of the prior (phase, frequency, torque): where to look first. The likelihood can have a peak for each kind
- * of walk; where two are left, they lie within a nat or so of each other.
+ * In scatters of the prior (phase, frequency, torque, scale, floor): where to look first. The likelihood has a peak for
+ * each kind of walk, and a descent that begins at the wrong one stays there, so that noise is learned far too quiet.
  */
 const FIRST_LOOKS = [
   ...[-1, 0, 1].flatMap((frequency) => [-1, 0, 1].map((torque) => [0, frequency, torque, 0, 0])),
-  [1, -1, -1, 0, 0],
-  [2, -1, -1, 0, 0],
+  ...WALKS.flatMap((walk) => STRENGTHS.map((z) => [...WALKS.map((other) => (other === walk ? z : -1)), 0, 0])),
 ];
+/** The best look of each walk is followed down if it is within so many natural-log units of the best of all. */
+const WORTH_FOLLOWING = 20;
 
 /**
  * The most probable noise model: innovations likelihood times the population prior, over the logarithms of the three
@@ -35,12 +40,10 @@ export function learnNoise(
     0.5 * point.reduce((sum, z) => sum + z * z, 0) - logLikelihood(problem, coordinates.noiseAt(point));
   const looks: Float64Array[] = FIRST_LOOKS.map((look) => Float64Array.from(look));
   if (start) looks.push(coordinates.pointOf(start));
-  const { point } = minimise(cost, cheapest(cost, looks), {
-    differenceStep: 0.02,
-    longestStep: 1.5,
-    tolerance: 0.01,
-    maxSteps: 30,
-  });
+  const descents = worthFollowing(cost, looks).map((look) =>
+    minimise(cost, look, { differenceStep: 0.02, longestStep: 1.5, tolerance: 0.01, maxSteps: 30 }),
+  );
+  const { point } = descents.reduce((a, b) => (b.value < a.value ? b : a));
   return coordinates.noiseAt(point);
 }
 
@@ -86,7 +89,16 @@ function priorCoordinates(prior: NoisePrior, medianSigmaTurns: number): PriorCoo
   };
 }
 
-function cheapest(cost: (point: Float64Array) => number, points: readonly Float64Array[]): Float64Array {
-  const costs = points.map(cost);
-  return points[costs.indexOf(Math.min(...costs))]!;
+/** The cheapest look of each walk that leads, where it is not far above the cheapest of all. */
+function worthFollowing(cost: (point: Float64Array) => number, looks: readonly Float64Array[]): Float64Array[] {
+  const priced = looks.map((look) => ({ look, value: cost(look), leading: leadingWalk(look) }));
+  const least = Math.min(...priced.map(({ value }) => value));
+  return WALKS.flatMap((walk) => {
+    const own = priced.filter(({ leading, value }) => leading === walk && value <= least + WORTH_FOLLOWING);
+    return own.length === 0 ? [] : [own.reduce((a, b) => (b.value < a.value ? b : a)).look];
+  });
+}
+
+function leadingWalk(point: Float64Array): number {
+  return WALKS.reduce((lead, walk) => (point[walk]! > point[lead]! ? walk : lead));
 }

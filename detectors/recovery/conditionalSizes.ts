@@ -1,151 +1,191 @@
 import { logSumExp } from '../math/logSumExp.ts';
-import { type GapSystem, type RecoveryColumn, ROWS } from './gapSystem.ts';
+import { BASE_ROWS, type GapSystem, type RecoveryColumns } from './gapSystem.ts';
 import type { SizeScale } from './sizePrior.ts';
 
-/** The Gaussian of the sizes (Δν_p, Δν̇_p, Δν₁ in turns and days) at one epoch and timescale, and room to compute it. */
+/** Δν_p and Δν̇_p; one more parameter comes with each exponential. */
+export const BASE_SIZES = 2;
+
+/**
+ * The Gaussian of the sizes (Δν_p, Δν̇_p, Δν₁, … in turns and days) at one epoch and one set of timescales: each rung of
+ * the prior has an exact Gaussian posterior and evidence. Room is kept between calls.
+ */
 export interface ConditionalSizes {
-  /** ROWS × 3: the columns of Δν_p, Δν̇_p, Δν₁. */
+  readonly count: number;
+  readonly rows: number;
+  /** count × rows: the columns of the sizes. */
   readonly design: Float64Array;
-  /** Normal equations: pp, pq, pd, qq, qd, dd; their right side; the square of the data. */
+  /** The data, with the shift of the count. */
+  readonly data: Float64Array;
+  /** Normal equations (lower triangle) and their right side. */
   readonly normal: Float64Array;
-  /** By rung of the size prior: ln evidence, mean, covariance. */
+  readonly right: Float64Array;
+  /** By rung: ln evidence. */
   readonly logShares: Float64Array;
-  readonly means: Float64Array;
-  readonly covariances: Float64Array;
-  /** Over all rungs. Covariance: upper triangle by rows. */
-  readonly mean: Float64Array;
-  readonly covariance: Float64Array;
-  /** ln p(data | epoch, timescale), up to a constant. */
-  logDensity: number;
+  /** Of the rung solved last: prior widths, Cholesky factor and its inverse, solution. */
+  readonly widths: Float64Array;
+  readonly factor: Float64Array;
+  readonly inverse: Float64Array;
+  readonly solution: Float64Array;
 }
 
-export function createSizes(scaleCount: number): ConditionalSizes {
+/** Mean and covariance (count × count) of a Gaussian. */
+export interface Gaussian {
+  readonly mean: Float64Array;
+  readonly covariance: Float64Array;
+}
+
+export function createSizes(terms: number, rungs: number): ConditionalSizes {
+  const count = BASE_SIZES + terms;
+  const rows = BASE_ROWS + terms;
   return {
-    design: new Float64Array(3 * ROWS),
-    normal: new Float64Array(10),
-    logShares: new Float64Array(scaleCount),
-    means: new Float64Array(3 * scaleCount),
-    covariances: new Float64Array(6 * scaleCount),
-    mean: new Float64Array(3),
-    covariance: new Float64Array(6),
-    logDensity: 0,
+    count,
+    rows,
+    design: new Float64Array(count * rows),
+    data: new Float64Array(rows),
+    normal: new Float64Array(count * count),
+    right: new Float64Array(count),
+    logShares: new Float64Array(rungs),
+    widths: new Float64Array(count),
+    factor: new Float64Array(count * count),
+    inverse: new Float64Array(count * count),
+    solution: new Float64Array(count),
   };
 }
 
-/**
- * Fills `sizes` for an epoch `lead` days before the end of the gap: each rung of the prior has an exact Gaussian
- * posterior and evidence; the rungs are averaged and their Gaussians joined, moments kept.
- */
-export function conditionalSizes(
+/** ln p(data | epoch, timescales), up to a constant, for an epoch `lead` days before the end of the gap. */
+export function logDensityAt(
   system: GapSystem,
-  recovery: RecoveryColumn,
+  recovery: RecoveryColumns,
   lead: number,
   countShift: number,
   scales: readonly SizeScale[],
   sizes: ConditionalSizes,
-): void {
-  writeDesign(system, recovery, lead, sizes.design);
-  writeNormalEquations(system, recovery, countShift, sizes);
-  for (let k = 0; k < scales.length; k++) solveRung(sizes, k, scales[k]!, recovery.decays);
-  sizes.logDensity = logSumExp(sizes.logShares);
-  matchMoments(sizes);
-}
-
-function writeNormalEquations(
-  system: GapSystem,
-  recovery: RecoveryColumn,
-  countShift: number,
-  { design, normal }: ConditionalSizes,
-): void {
-  normal.fill(0);
-  normal[9] = recovery.restSquare;
-  for (let row = 0; row < ROWS; row++) {
-    const z = recovery.target[row]! + countShift * system.step[row]!;
-    const p = design[3 * row]!;
-    const q = design[3 * row + 1]!;
-    const d = design[3 * row + 2]!;
-    normal[0] = normal[0]! + p * p;
-    normal[1] = normal[1]! + p * q;
-    normal[2] = normal[2]! + p * d;
-    normal[3] = normal[3]! + q * q;
-    normal[4] = normal[4]! + q * d;
-    normal[5] = normal[5]! + d * d;
-    normal[6] = normal[6]! + p * z;
-    normal[7] = normal[7]! + q * z;
-    normal[8] = normal[8]! + d * z;
-    normal[9] = normal[9]! + z * z;
+): number {
+  writeDesign(system, recovery, lead, sizes);
+  for (let row = 0; row < sizes.rows; row++) {
+    sizes.data[row] = recovery.target[row]! + (row < BASE_ROWS ? countShift * system.step[row]! : 0);
   }
-}
-
-/** By the Cholesky factor L of I + S G S, where S holds the prior's widths and G the normal equations. */
-function solveRung(sizes: ConditionalSizes, k: number, scale: SizeScale, decays: boolean): void {
-  const { normal, logShares, means, covariances } = sizes;
-  const sp = scale.rate;
-  const sq = scale.second;
-  const sd = decays ? sp : 0;
-  const l00 = Math.sqrt(1 + sp * sp * normal[0]!);
-  const l10 = (sp * sq * normal[1]!) / l00;
-  const l20 = (sp * sd * normal[2]!) / l00;
-  const l11 = Math.sqrt(Math.max(1, 1 + sq * sq * normal[3]! - l10 * l10));
-  const l21 = (sq * sd * normal[4]! - l10 * l20) / l11;
-  const l22 = Math.sqrt(Math.max(1, 1 + sd * sd * normal[5]! - l20 * l20 - l21 * l21));
-  const u0 = (sp * normal[6]!) / l00;
-  const u1 = (sq * normal[7]! - l10 * u0) / l11;
-  const u2 = (sd * normal[8]! - l20 * u0 - l21 * u1) / l22;
-  const unexplained = normal[9]! - u0 * u0 - u1 * u1 - u2 * u2;
-  logShares[k] = -0.5 * unexplained - Math.log(l00 * l11 * l22 * logShares.length);
-  // L⁻¹; then the mean is S L⁻ᵀ u and the covariance S L⁻ᵀ L⁻¹ S.
-  const i00 = 1 / l00;
-  const i11 = 1 / l11;
-  const i22 = 1 / l22;
-  const i10 = -l10 * i00 * i11;
-  const i21 = -l21 * i11 * i22;
-  const i20 = -(l20 * i00 + l21 * i10) * i22;
-  means[3 * k] = sp * (i00 * u0 + i10 * u1 + i20 * u2);
-  means[3 * k + 1] = sq * (i11 * u1 + i21 * u2);
-  means[3 * k + 2] = sd * i22 * u2;
-  covariances[6 * k] = sp * sp * (i00 * i00 + i10 * i10 + i20 * i20);
-  covariances[6 * k + 1] = sp * sq * (i10 * i11 + i20 * i21);
-  covariances[6 * k + 2] = sp * sd * i20 * i22;
-  covariances[6 * k + 3] = sq * sq * (i11 * i11 + i21 * i21);
-  covariances[6 * k + 4] = sq * sd * i21 * i22;
-  covariances[6 * k + 5] = sd * sd * i22 * i22;
-}
-
-/** Mean and covariance of a mixture of three-dimensional Gaussians. */
-function matchMoments({ logShares, logDensity, means, covariances, mean, covariance }: ConditionalSizes): void {
-  mean.fill(0);
-  covariance.fill(0);
-  for (let k = 0; k < logShares.length; k++) {
-    const share = Math.exp(logShares[k]! - logDensity);
-    for (let i = 0; i < 3; i++) mean[i] = mean[i]! + share * means[3 * k + i]!;
+  writeNormalEquations(sizes);
+  for (let k = 0; k < scales.length; k++) {
+    sizes.logShares[k] = solveRung(sizes, scales[k]!) - 0.5 * recovery.restSquare;
   }
-  for (let k = 0; k < logShares.length; k++) {
+  return logSumExp(sizes.logShares, scales.length);
+}
+
+/** After `logDensityAt`: the rungs' Gaussians joined into one, moments kept. */
+export function joinedSizes(sizes: ConditionalSizes, scales: readonly SizeScale[], logDensity: number): Gaussian {
+  const { count, logShares, solution } = sizes;
+  const mean = new Float64Array(count);
+  const covariance = new Float64Array(count * count);
+  const solved: { share: number; solution: Float64Array }[] = [];
+  for (let k = 0; k < scales.length; k++) {
     const share = Math.exp(logShares[k]! - logDensity);
     if (share < 1e-9) continue;
-    let entry = 0;
-    for (let i = 0; i < 3; i++) {
-      for (let j = i; j < 3; j++) {
-        const product = (means[3 * k + i]! - mean[i]!) * (means[3 * k + j]! - mean[j]!);
-        covariance[entry] = covariance[entry]! + share * (covariances[6 * k + entry]! + product);
-        entry += 1;
-      }
+    solveRung(sizes, scales[k]!);
+    for (let i = 0; i < count; i++) mean[i] = mean[i]! + share * solution[i]!;
+    addCovariance(sizes, share, covariance);
+    solved.push({ share, solution: solution.slice() });
+  }
+  for (const { share, solution } of solved) {
+    for (let i = 0; i < count; i++) {
+      const away = share * (solution[i]! - mean[i]!);
+      for (let j = 0; j < count; j++)
+        covariance[i * count + j] = covariance[i * count + j]! + away * (solution[j]! - mean[j]!);
     }
+  }
+  return { mean, covariance };
+}
+
+/**
+ * Columns of Δν_p, Δν̇_p and Δνⱼ for an epoch `lead` days before the first arrival after the gap, from those in s: with
+ * Δt = s + lead, minus (Δt, Δt²/2, τ(1 − e^(−Δt/τ))), because a spin-up makes pulses early.
+ */
+function writeDesign(system: GapSystem, recovery: RecoveryColumns, lead: number, sizes: ConditionalSizes): void {
+  const { step, ramp, parabola } = system;
+  const { rows, design } = sizes;
+  for (let row = 0; row < BASE_ROWS; row++) {
+    design[row] = -(ramp[row]! + lead * step[row]!);
+    design[rows + row] = -(parabola[row]! + lead * ramp[row]! + 0.5 * lead * lead * step[row]!);
+  }
+  for (let j = 0; j < recovery.columns.length; j++) {
+    const timescale = recovery.timescalesDays[j]!;
+    const column = recovery.columns[j]!;
+    const remaining = Math.exp(-lead / timescale);
+    const decayed = -timescale * Math.expm1(-lead / timescale);
+    const at = (BASE_SIZES + j) * rows;
+    for (let row = 0; row < rows; row++)
+      design[at + row] = -(remaining * column[row]! + (row < BASE_ROWS ? decayed * step[row]! : 0));
+  }
+}
+
+function writeNormalEquations({ count, rows, design, data, normal, right }: ConditionalSizes): void {
+  for (let i = 0; i < count; i++) {
+    for (let j = 0; j <= i; j++) {
+      let sum = 0;
+      for (let row = 0; row < rows; row++) sum += design[i * rows + row]! * design[j * rows + row]!;
+      normal[i * count + j] = sum;
+    }
+    let sum = 0;
+    for (let row = 0; row < rows; row++) sum += design[i * rows + row]! * data[row]!;
+    right[i] = sum;
   }
 }
 
 /**
- * Columns of Δν_p, Δν̇_p and Δν₁ for an epoch `lead` days before the first arrival after the gap, from those in s: with
- * Δt = s + lead, minus (Δt, Δt²/2, τ(1 − e^(−Δt/τ))), because a spin-up makes pulses early.
+ * Solution and ln evidence of one rung, by the Cholesky factor L of I + S N S with S the prior's widths and N the normal
+ * equations. The misfit is taken at the solution, where an error of the solution enters by its square: the difference
+ * of squares would lose its digits when the glitch is a million times the errors.
  */
-function writeDesign(system: GapSystem, recovery: RecoveryColumn, lead: number, design: Float64Array): void {
-  const { step, ramp, parabola } = system;
-  const { column, timescaleDays, decays } = recovery;
-  const remaining = Math.exp(-lead / timescaleDays);
-  const decayed = -timescaleDays * Math.expm1(-lead / timescaleDays);
-  for (let row = 0; row < ROWS; row++) {
-    design[3 * row] = -(ramp[row]! + lead * step[row]!);
-    design[3 * row + 1] = -(parabola[row]! + lead * ramp[row]! + 0.5 * lead * lead * step[row]!);
-    design[3 * row + 2] = decays ? -(decayed * step[row]! + remaining * column[row]!) : 0;
+function solveRung(sizes: ConditionalSizes, scale: SizeScale): number {
+  const { count, rows, design, data, normal, right, widths, factor, solution } = sizes;
+  let logDeterminant = 0;
+  for (let i = 0; i < count; i++) {
+    widths[i] = i === 0 ? scale.rate : i === 1 ? scale.second : scale.decay;
+    let value = widths[i]! * right[i]!;
+    for (let j = 0; j <= i; j++) {
+      let sum = widths[i]! * widths[j]! * normal[i * count + j]!;
+      for (let k = 0; k < j; k++) sum -= factor[i * count + k]! * factor[j * count + k]!;
+      if (j < i) {
+        factor[i * count + j] = sum / factor[j * count + j]!;
+        value -= factor[i * count + j]! * solution[j]!;
+      } else factor[i * count + i] = Math.sqrt(1 + Math.max(0, sum));
+    }
+    solution[i] = value / factor[i * count + i]!;
+    logDeterminant += Math.log(factor[i * count + i]!);
+  }
+  let misfit = 0;
+  for (let i = count - 1; i >= 0; i--) {
+    let value = solution[i]!;
+    for (let k = i + 1; k < count; k++) value -= factor[k * count + i]! * solution[k]!;
+    value /= factor[i * count + i]!;
+    misfit += value * value;
+    solution[i] = value;
+  }
+  for (let i = 0; i < count; i++) solution[i] = solution[i]! * widths[i]!;
+  for (let row = 0; row < rows; row++) {
+    let left = data[row]!;
+    for (let i = 0; i < count; i++) left -= design[i * rows + row]! * solution[i]!;
+    misfit += left * left;
+  }
+  return scale.logShare - 0.5 * misfit - logDeterminant;
+}
+
+/** Adds share × S L⁻ᵀ L⁻¹ S of the rung solved last. */
+function addCovariance({ count, widths, factor, inverse }: ConditionalSizes, share: number, into: Float64Array): void {
+  inverse.fill(0);
+  for (let j = 0; j < count; j++) {
+    inverse[j * count + j] = 1 / factor[j * count + j]!;
+    for (let i = j + 1; i < count; i++) {
+      let sum = 0;
+      for (let k = j; k < i; k++) sum -= factor[i * count + k]! * inverse[k * count + j]!;
+      inverse[i * count + j] = sum / factor[i * count + i]!;
+    }
+  }
+  for (let i = 0; i < count; i++) {
+    for (let j = 0; j < count; j++) {
+      let sum = 0;
+      for (let k = Math.max(i, j); k < count; k++) sum += inverse[k * count + i]! * inverse[k * count + j]!;
+      into[i * count + j] = into[i * count + j]! + share * widths[i]! * widths[j]! * sum;
+    }
   }
 }

@@ -1,5 +1,5 @@
 import { choleskyFactor, solveLower, solveLowerTransposed } from '../math/cholesky.ts';
-import { type GapSystem, type RecoveryColumn, ROWS } from './gapSystem.ts';
+import { BASE_ROWS, type GapSystem, type RecoveryColumns } from './gapSystem.ts';
 import type { SizeScale } from './sizePrior.ts';
 
 /** Where in a gap to evaluate the posterior for one shift of the pulse count after the event. */
@@ -12,8 +12,8 @@ export interface EpochGrid {
   readonly leads: Float64Array;
 }
 
-const COARSE = 24;
-const FINE = 20;
+const COARSE = 16;
+const FINE = 14;
 /** Beyond so many admissible shifts, every second, third … stands for its neighbours. */
 const MOST_SHIFTS = 9;
 /** Largest exponent in the backward extrapolation of a recovery. */
@@ -24,10 +24,8 @@ const STEEPEST = 30;
  * turn of the curve before it, the posterior has a peak of width σ(phase)/|Δν|. Returns grids that resolve every peak.
  * Candidate epochs are 1/Δν apart; the counts as given are shift 0.
  */
-export function epochGrids(system: GapSystem, recovery: RecoveryColumn, widest: SizeScale): EpochGrid[] {
-  const { lengthDays } = system.gap;
+export function epochGrids({ gap: { lengthDays } }: GapSystem, curve: BackwardCurve): EpochGrid[] {
   const coarse = coarseLeads(lengthDays);
-  const curve = backwardCurve(system, recovery, widest);
   const heights = Float64Array.from(coarse, (lead) => curve.height(lead));
   const shifts = admissibleShifts(heights, curve.sd(0), curve.rateSd * lengthDays);
   const stride = Math.ceil(shifts.length / MOST_SHIFTS);
@@ -53,14 +51,14 @@ export function epochGrids(system: GapSystem, recovery: RecoveryColumn, widest: 
 function coarseLeads(lengthDays: number): Float64Array {
   const leads = new Set<number>();
   for (let i = 0; i <= COARSE; i++) leads.add((i / COARSE) * lengthDays);
-  for (const part of [0.02, 0.01, 0.003, 0.001, 0.0003, 0.0001]) {
+  for (const part of [0.02, 0.005, 0.001, 0.0002]) {
     leads.add(part * lengthDays);
     leads.add((1 - part) * lengthDays);
   }
   return Float64Array.from(leads).sort();
 }
 
-interface BackwardCurve {
+export interface BackwardCurve {
   /** Deviation, `lead` days before the first arrival after the gap, of the curve fitted after it. */
   height(lead: number): number;
   slope(lead: number): number;
@@ -69,46 +67,61 @@ interface BackwardCurve {
 }
 
 /** Least squares with the phase step free, held loosely by the size prior. */
-function backwardCurve(system: GapSystem, recovery: RecoveryColumn, widest: SizeScale): BackwardCurve {
+export function backwardCurve(system: GapSystem, recovery: RecoveryColumns, widest: SizeScale): BackwardCurve {
   const { step, ramp, parabola } = system;
-  const { column, target, timescaleDays, decays } = recovery;
-  const sds = [1e3, widest.rate, widest.second, decays ? widest.rate : 0];
-  const signs = [1, -1, -1, -1];
-  const columns = [step, ramp, parabola, column].map((entries, j) => entries.map((x) => x * signs[j]! * sds[j]!));
-  const normal = new Float64Array(ROWS * ROWS);
-  const solution = new Float64Array(ROWS);
-  for (let i = 0; i < ROWS; i++) {
-    for (let j = 0; j < ROWS; j++) {
-      let sum = i === j ? 1 : 0;
-      for (let k = 0; k < ROWS; k++) sum += columns[i]![k]! * columns[j]![k]!;
-      normal[i * ROWS + j] = sum;
-    }
-    for (let k = 0; k < ROWS; k++) solution[i] = solution[i]! + columns[i]![k]! * target[k]!;
+  const { columns, target, timescalesDays } = recovery;
+  const count = BASE_ROWS + timescalesDays.length;
+  const sds = [1e3, widest.rate, widest.second, ...timescalesDays.map(() => widest.decay)];
+  const scaled = [step, ramp, parabola, ...columns].map((column, j) =>
+    Float64Array.from(column, (x) => (j === 0 ? x : -x) * sds[j]!),
+  );
+  const normal = new Float64Array(count * count);
+  const solution = new Float64Array(count);
+  for (let i = 0; i < count; i++) {
+    for (let j = 0; j <= i; j++) normal[i * count + j] = dot(scaled[i]!, scaled[j]!) + (i === j ? 1 : 0);
+    solution[i] = dot(scaled[i]!, target);
   }
-  choleskyFactor(normal, ROWS);
-  solveLower(normal, ROWS, solution);
-  solveLowerTransposed(normal, ROWS, solution);
-  const [phase = 0, rate = 0, second = 0, decay = 0] = solution.map((x, j) => x * sds[j]!);
-  const steepness = (lead: number): number => Math.min(STEEPEST, lead / timescaleDays);
-  const sd = (direction: Float64Array): number => {
-    solveLower(normal, ROWS, direction);
+  choleskyFactor(normal, count);
+  solveLower(normal, count, solution);
+  solveLowerTransposed(normal, count, solution);
+  for (let j = 0; j < count; j++) solution[j] = solution[j]! * sds[j]!;
+  const [phase = 0, rate = 0, second = 0] = solution;
+  const grown = (lead: number, j: number): number =>
+    timescalesDays[j]! * Math.expm1(Math.min(STEEPEST, lead / timescalesDays[j]!));
+  const direction = new Float64Array(count);
+  const sd = (lead: number): number => {
+    direction[0] = sds[0]!;
+    direction[1] = sds[1]! * lead;
+    direction[2] = -0.5 * sds[2]! * lead * lead;
+    for (let j = BASE_ROWS; j < count; j++) direction[j] = sds[j]! * grown(lead, j - BASE_ROWS);
+    solveLower(normal, count, direction);
     return Math.hypot(...direction);
   };
+  const alongRate = new Float64Array(count);
+  alongRate[1] = sds[1]!;
+  solveLower(normal, count, alongRate);
   return {
-    height: (lead) =>
-      phase + rate * lead - 0.5 * second * lead * lead + decay * timescaleDays * Math.expm1(steepness(lead)),
-    slope: (lead) => rate - second * lead + decay * Math.exp(steepness(lead)),
-    sd: (lead) =>
-      sd(
-        Float64Array.of(
-          sds[0]!,
-          sds[1]! * lead,
-          -0.5 * sds[2]! * lead * lead,
-          sds[3]! * timescaleDays * Math.expm1(steepness(lead)),
-        ),
-      ),
-    rateSd: sd(Float64Array.of(0, sds[1]!, 0, 0)),
+    height: (lead) => {
+      let sum = phase + rate * lead - 0.5 * second * lead * lead;
+      for (let j = BASE_ROWS; j < count; j++) sum += solution[j]! * grown(lead, j - BASE_ROWS);
+      return sum;
+    },
+    slope: (lead) => {
+      let sum = rate - second * lead;
+      for (let j = BASE_ROWS; j < count; j++)
+        sum += solution[j]! * Math.exp(Math.min(STEEPEST, lead / timescalesDays[j - BASE_ROWS]!));
+      return sum;
+    },
+    sd,
+    rateSd: Math.hypot(...alongRate),
   };
+}
+
+/** Over the entries of the shorter. */
+function dot(a: Float64Array, b: Float64Array): number {
+  let sum = 0;
+  for (let i = 0; i < Math.min(a.length, b.length); i++) sum += a[i]! * b[i]!;
+  return sum;
 }
 
 /** Whole turns that the backward curve reaches within the gap, and 0; only 0 while the rate itself is unsure. */

@@ -14,6 +14,14 @@ export interface EventData {
   readonly lastGapBeforeIndex: number;
   /** Other events, each a free step. */
   readonly disturbances: readonly Disturbance[];
+  /** Exponentials of other events, each a free amplitude beside their step. */
+  readonly otherRecoveries?: readonly OtherRecovery[];
+}
+
+/** An exponential that another event brought: from arrival `beforeIndex` on. */
+export interface OtherRecovery {
+  readonly beforeIndex: number;
+  readonly timescaleDays: number;
 }
 
 /** A stretch without arrivals in use, in which the event may lie. */
@@ -64,6 +72,12 @@ export function eventFrame(event: EventData): EventFrame {
     if (!isInside(disturbance, indices[0]!, indices.at(-1)!)) continue;
     const from = indices.findIndex((index) => index >= disturbance.beforeIndex);
     addDisturbance(disturbance, arrivals, from, layout, add);
+  }
+  for (const { beforeIndex, timescaleDays } of event.otherRecoveries ?? []) {
+    if (beforeIndex <= indices[0]! || beforeIndex > indices.at(-1)!) continue;
+    const from = indices.findIndex((index) => index >= beforeIndex);
+    const start = arrivals[from]!.tDays;
+    add(from, ({ tDays }) => Math.exp(-(tDays - start) / timescaleDays));
   }
   const data = Float64Array.from(arrivals, ({ deviationTurns }) => deviationTurns);
   const frame = {

@@ -1,12 +1,13 @@
+import { choleskyFactor, solveLower } from '../math/cholesky.ts';
 import { applyBasis, emptyBasis, extendBasis, type OrthogonalBasis } from '../math/orthogonalBasis.ts';
 import { type CandidateGap, type EventFrame, eventColumn, reduce } from './eventFrame.ts';
 
-/** Rows of the small system: phase step, ramp, parabola, exponential. */
-export const ROWS = 4;
+/** Rows that every small system has: phase step, ramp, parabola. One more comes with each exponential. */
+export const BASE_ROWS = 3;
 
 /**
  * One candidate gap, boiled down. After the gap every glitch, wherever in the gap its epoch lies, is a combination of
- * four columns in s = time since the first arrival after the gap: 1, s, s²/2 and τ(1 − e^(−s/τ)). Their triangular
+ * the columns 1, s, s²/2 and τⱼ(1 − e^(−s/τⱼ)) in s = time since the first arrival after the gap. Their triangular
  * factor is all that the posterior needs, so that an epoch costs a hundred operations whatever the number of arrivals.
  */
 export interface GapSystem {
@@ -20,14 +21,24 @@ export interface GapSystem {
   readonly target: Float64Array;
   readonly rest: Float64Array;
   readonly restSquare: number;
+  /** Exponentials already reduced, by timescale. */
+  readonly exponentials: Map<number, Exponential>;
 }
 
-/** The exponential's part for one timescale; without one, zeros. */
-export interface RecoveryColumn {
-  readonly timescaleDays: number;
-  readonly decays: boolean;
-  readonly column: Float64Array;
-  /** The data along all four rows. */
+/** One exponential, reduced: its part along the first three rows, and what is left of it. */
+interface Exponential {
+  readonly base: Float64Array;
+  readonly rest: Float64Array;
+  /** Rest · rest of the data. */
+  readonly alongData: number;
+}
+
+/** The exponentials of one model, as further columns of the small system. */
+export interface RecoveryColumns {
+  readonly timescalesDays: readonly number[];
+  /** One per timescale, each with all rows. */
+  readonly columns: readonly Float64Array[];
+  /** The data along all rows. */
   readonly target: Float64Array;
   /** Square of what no column explains. */
   readonly restSquare: number;
@@ -39,58 +50,70 @@ export function gapSystem(frame: EventFrame, gap: CandidateGap): GapSystem {
     const column = eventColumn(frame.arrivals, gap.after, ({ tDays }) => power(tDays - gap.endDays));
     reduce(frame, column, gap.after);
     extendBasis(basis, column);
-    const rows = new Float64Array(ROWS);
-    rows.set(column.subarray(0, ROWS));
-    return rows;
+    // With fewer arrivals than rows the rest is 0.
+    return Float64Array.from({ length: BASE_ROWS }, (_, row) => column[row] ?? 0);
   };
   const step = since(() => 1);
   const ramp = since((s) => s);
   const parabola = since((s) => 0.5 * s * s);
   const rest = Float64Array.from(frame.data);
   applyBasis(basis, rest);
-  const target = new Float64Array(ROWS);
+  const target = new Float64Array(BASE_ROWS);
   for (let row = 0; row < basis.rank; row++) {
     target[row] = rest[row]!;
     rest[row] = 0;
   }
-  return { gap, basis, step, ramp, parabola, target, rest, restSquare: dot(rest, rest) };
+  return { gap, basis, step, ramp, parabola, target, rest, restSquare: dot(rest, rest), exponentials: new Map() };
 }
 
-export function withoutRecovery(system: GapSystem): RecoveryColumn {
-  return {
-    timescaleDays: 1,
-    decays: false,
-    column: new Float64Array(ROWS),
-    target: system.target,
-    restSquare: system.restSquare,
-  };
+/** The columns of any number of exponentials, made orthogonal among themselves. */
+export function recoveryColumns(
+  frame: EventFrame,
+  system: GapSystem,
+  timescalesDays: readonly number[],
+): RecoveryColumns {
+  const terms = timescalesDays.length;
+  const exponentials = timescalesDays.map((timescale) => exponential(frame, system, timescale));
+  const factor = new Float64Array(terms * terms);
+  const along = Float64Array.from(exponentials, ({ alongData }) => alongData);
+  for (let i = 0; i < terms; i++)
+    for (let j = 0; j <= i; j++) factor[i * terms + j] = dot(exponentials[i]!.rest, exponentials[j]!.rest);
+  choleskyFactor(factor, terms);
+  solveLower(factor, terms, along);
+  const target = new Float64Array(BASE_ROWS + terms);
+  target.set(system.target);
+  target.set(along, BASE_ROWS);
+  const columns = exponentials.map(({ base }, j) => {
+    const column = new Float64Array(BASE_ROWS + terms);
+    column.set(base);
+    for (let i = 0; i <= j; i++) column[BASE_ROWS + i] = factor[j * terms + i]!;
+    return column;
+  });
+  return { timescalesDays, columns, target, restSquare: Math.max(0, system.restSquare - dot(along, along)) };
 }
 
-export function recoveryColumn(frame: EventFrame, system: GapSystem, timescaleDays: number): RecoveryColumn {
-  const { gap, basis, rest } = system;
-  const full = eventColumn(
+function exponential(frame: EventFrame, system: GapSystem, timescaleDays: number): Exponential {
+  const known = system.exponentials.get(timescaleDays);
+  if (known) return known;
+  const { gap, basis } = system;
+  const rest = eventColumn(
     frame.arrivals,
     gap.after,
     ({ tDays }) => -timescaleDays * Math.expm1(-(tDays - gap.endDays) / timescaleDays),
   );
-  reduce(frame, full, gap.after);
-  const before = dot(full, full);
-  applyBasis(basis, full);
-  const column = new Float64Array(ROWS);
+  reduce(frame, rest, gap.after);
+  const before = dot(rest, rest);
+  applyBasis(basis, rest);
+  const base = new Float64Array(BASE_ROWS);
   for (let row = 0; row < basis.rank; row++) {
-    column[row] = full[row]!;
-    full[row] = 0;
+    base[row] = rest[row]!;
+    rest[row] = 0;
   }
-  const target = Float64Array.from(system.target);
-  const own = dot(full, full);
-  let restSquare = system.restSquare;
-  if (own > 1e-16 * before) {
-    const length = Math.sqrt(own);
-    column[ROWS - 1] = length;
-    target[ROWS - 1] = dot(full, rest) / length;
-    restSquare = Math.max(0, restSquare - target[ROWS - 1]! ** 2);
-  }
-  return { timescaleDays, decays: true, column, target, restSquare };
+  // What rounding leaves of a column that the first three explain is no column of its own.
+  if (dot(rest, rest) < 1e-16 * before) rest.fill(0);
+  const made = { base, rest, alongData: dot(rest, system.rest) };
+  system.exponentials.set(timescaleDays, made);
+  return made;
 }
 
 function dot(a: Float64Array, b: Float64Array): number {

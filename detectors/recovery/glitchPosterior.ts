@@ -1,76 +1,94 @@
 import { logAddExp } from '../math/logSumExp.ts';
-import { conditionalSizes, createSizes } from './conditionalSizes.ts';
-import { epochGrids } from './epochGrid.ts';
+import { type ConditionalSizes, createSizes, type Gaussian, joinedSizes, logDensityAt } from './conditionalSizes.ts';
+import { backwardCurve, epochGrids } from './epochGrid.ts';
 import type { EventFrame } from './eventFrame.ts';
-import type { GapSystem, RecoveryColumn } from './gapSystem.ts';
-import type { SizeScale } from './sizePrior.ts';
+import type { GapSystem, RecoveryColumns } from './gapSystem.ts';
+import { type SizeScale, widestOf } from './sizePrior.ts';
 
 /**
- * One point of the posterior: an epoch, a timescale and a shift of the count, with the exact Gaussian of the sizes
- * (Δν_p, Δν̇_p, Δν₁ in turns and days) given these.
+ * One point of the posterior: an epoch, timescales and a shift of the count, with the exact Gaussian of the sizes
+ * (Δν_p, Δν̇_p, Δν₁, … in turns and days) given these.
  */
-export interface GlitchPoint {
+export interface GlitchPoint extends Gaussian {
   readonly epochDays: number;
-  readonly timescaleDays: number;
+  readonly timescalesDays: readonly number[];
   /** Whole turns added to the deviations after the event. */
   readonly countShift: number;
   /** ln of the posterior mass (not normalised) that the point stands for. */
   readonly logMass: number;
   /** ln of the posterior density per day at the point. */
   readonly logDensity: number;
-  readonly mean: readonly [persistent: number, persistentSecond: number, decaying: number];
-  /** Upper triangle by rows: pp, pq, pd, qq, qd, dd. */
-  readonly covariance: readonly [number, number, number, number, number, number];
 }
 
-/** Points lighter than e⁻¹⁴ of the heaviest change nothing. */
-const NEGLIGIBLE = 14;
+/** Spots lighter than e⁻⁹ of the heaviest change nothing that is reported. */
+const NEGLIGIBLE = 9;
 
-export interface PointCloud {
-  readonly points: readonly GlitchPoint[];
+/** A place in the gap, before its sizes are worked out. */
+export interface Spot {
+  readonly lead: number;
+  readonly countShift: number;
+  readonly logMass: number;
+}
+
+/** The posterior over one gap for one set of timescales, integrated over the epoch. */
+export interface EpochPosterior {
+  readonly system: GapSystem;
+  readonly recovery: RecoveryColumns;
+  /** Room for the sizes at a spot. */
+  readonly sizes: ConditionalSizes;
+  readonly spots: readonly Spot[];
   readonly logEvidence: number;
+  /** By rung of the size prior: ln of its largest mass at any spot, over that of the heaviest spot. */
+  readonly rungs: Float64Array;
 }
 
-/** The posterior over one gap at one timescale (or without recovery), integrated over the epoch. */
+/** `hopeless`: timescales whose evidence is sure to be below are not integrated; what it can be at most stands for it. */
 export function explore(
   frame: EventFrame,
   system: GapSystem,
-  recovery: RecoveryColumn,
+  recovery: RecoveryColumns,
   scales: readonly SizeScale[],
-): PointCloud {
-  const points: GlitchPoint[] = [];
+  hopeless = Number.NEGATIVE_INFINITY,
+): EpochPosterior {
+  const spots: Spot[] = [];
+  const rungs = new Float64Array(scales.length).fill(Number.NEGATIVE_INFINITY);
   let logEvidence = Number.NEGATIVE_INFINITY;
   let heaviest = Number.NEGATIVE_INFINITY;
-  const sizes = createSizes(scales.length);
-  for (const grid of epochGrids(system, recovery, widestOf(scales))) {
-    const { leads } = grid;
+  const sizes = createSizes(recovery.columns.length, scales.length);
+  // With its phase step free as well no glitch fits better.
+  const most = -0.5 * recovery.restSquare;
+  if (most < hopeless) return { system, recovery, sizes, spots, logEvidence: most, rungs };
+  const curve = backwardCurve(system, recovery, widestOf(scales));
+  for (const { leads, countShift, logWeight } of epochGrids(system, curve)) {
     for (let i = 0; i < leads.length; i++) {
       const width = 0.5 * (leads[Math.min(i + 1, leads.length - 1)]! - leads[Math.max(i - 1, 0)]!);
-      conditionalSizes(system, recovery, leads[i]!, grid.countShift, scales, sizes);
-      const logDensity = sizes.logDensity + grid.logWeight - Math.log(frame.windowDays);
-      const logMass = logDensity + Math.log(width);
+      const lead = leads[i]!;
+      const shareOfWindow = logWeight + Math.log(width / frame.windowDays);
+      const logMass = logDensityAt(system, recovery, lead, countShift, scales, sizes) + shareOfWindow;
       logEvidence = logAddExp(logEvidence, logMass);
       if (logMass < heaviest - NEGLIGIBLE) continue;
       heaviest = Math.max(heaviest, logMass);
-      const [p = 0, q = 0, d = 0] = sizes.mean;
-      const [pp = 0, pq = 0, pd = 0, qq = 0, qd = 0, dd = 0] = sizes.covariance;
-      points.push({
-        epochDays: system.gap.endDays - leads[i]!,
-        timescaleDays: recovery.timescaleDays,
-        countShift: grid.countShift,
-        logMass,
-        logDensity,
-        mean: [p, q, d],
-        covariance: [pp, pq, pd, qq, qd, dd],
-      });
+      for (let k = 0; k < rungs.length; k++) rungs[k] = Math.max(rungs[k]!, sizes.logShares[k]! + shareOfWindow);
+      spots.push({ lead, countShift, logMass });
     }
   }
-  return { points: points.filter(({ logMass }) => logMass > heaviest - NEGLIGIBLE), logEvidence };
+  return { system, recovery, sizes, spots, logEvidence, rungs: rungs.map((mass) => mass - heaviest) };
 }
 
-function widestOf(scales: readonly SizeScale[]): SizeScale {
+/** The point at one spot, with its sizes. `logWeight`: ln of the prior mass of these timescales. */
+export function pointAt(
+  { system, recovery, sizes }: EpochPosterior,
+  { lead, countShift, logMass }: Spot,
+  scales: readonly SizeScale[],
+  logWeight: number,
+): GlitchPoint {
+  const logDensity = logDensityAt(system, recovery, lead, countShift, scales, sizes);
   return {
-    rate: Math.max(...scales.map(({ rate }) => rate)),
-    second: Math.max(...scales.map(({ second }) => second)),
+    epochDays: system.gap.endDays - lead,
+    timescalesDays: recovery.timescalesDays,
+    countShift,
+    logMass: logMass + logWeight,
+    logDensity,
+    ...joinedSizes(sizes, scales, logDensity),
   };
 }

@@ -100,22 +100,23 @@ export function mixtureQuantile({ weights, means, sds }: GaussianMixture, probab
 
 /** The estimate of a quantity known on weighted grid points, each standing for its neighbourhood. */
 export function gridEstimate(values: Float64Array, weights: Float64Array): Estimate {
-  const order = Array.from(values.keys()).sort((a, b) => values[a]! - values[b]!);
-  const total = weights.reduce((sum, weight) => sum + weight, 0);
-  const middles = new Float64Array(order.length);
+  const byValue = new Map<number, number>();
+  values.forEach((value, i) => {
+    byValue.set(value, (byValue.get(value) ?? 0) + weights[i]!);
+  });
+  const grid = [...byValue].sort((a, b) => a[0] - b[0]);
+  const total = grid.reduce((sum, [, weight]) => sum + weight, 0);
   let before = 0;
-  order.forEach((index, i) => {
-    middles[i] = (before + 0.5 * weights[index]!) / total;
-    before += weights[index]!;
+  const middles = grid.map(([, weight]) => {
+    before += weight;
+    return (before - 0.5 * weight) / total;
   });
   const quantile = (probability: number): number => {
-    let i = middles.findIndex((middle) => middle >= probability);
-    if (i < 0) i = order.length;
-    if (i === 0 || i === order.length) return values[order[Math.min(i, order.length - 1)]!]!;
-    const left = values[order[i - 1]!]!;
-    const right = values[order[i]!]!;
+    const i = middles.findIndex((middle) => middle >= probability);
+    if (i <= 0) return grid.at(i)![0];
+    const left = grid[i - 1]![0];
     const part = (probability - middles[i - 1]!) / (middles[i]! - middles[i - 1]!);
-    return left + part * (right - left);
+    return left + part * (grid[i]![0] - left);
   };
   return estimate(moments({ weights, means: values, sds: new Float64Array(values.length) }), quantile);
 }

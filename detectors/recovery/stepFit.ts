@@ -5,14 +5,16 @@ import { type CandidateGap, type EventData, type EventFrame, eventColumn, eventF
 import { type Estimate, gridEstimate, mixtureEstimate } from './mixture.ts';
 
 const SECONDS_PER_DAY = 86_400;
-/** Evenly spaced epochs tried in each gap. */
+/** Evenly spaced epochs tried in each gap; a ramp begins too gently for its first day to matter. */
 const EPOCHS = 40;
+const RAMP_EPOCHS = 6;
 
 /**
  * `time`: arrivals come late by a fixed time, as when a clock or an instrument changes. `dispersion`: late by a time
- * ∝ f⁻². `spin-down rate`: ν̇ changes, phase and ν are continuous.
+ * ∝ f⁻². `spin-down rate`: ν̇ changes, phase and ν are continuous. `ramp`: ν rises evenly over `durationDays`, then keeps
+ * what it has gained.
  */
-export type StepKind = 'time' | 'dispersion' | 'spin-down rate';
+export type StepKind = 'time' | 'dispersion' | 'spin-down rate' | 'ramp';
 
 export interface StepFitInput extends EventData {
   readonly kind: StepKind;
@@ -20,6 +22,8 @@ export interface StepFitInput extends EventData {
   readonly frequencyDerivativeHzPerS: number;
   /** A step of these groups alone; absent: of all arrivals. */
   readonly groups?: readonly number[];
+  /** Of a ramp. */
+  readonly durationDays?: number;
 }
 
 export interface StepFit {
@@ -29,7 +33,7 @@ export interface StepFit {
   /** Most probable epoch, days from the pivot; the middle of the gap where the data cannot tell. */
   readonly bestEpochDays: number;
   readonly epochDays: Estimate;
-  /** µs late (`dispersion`: at 1400 MHz), or Hz/s. */
+  /** µs late (`dispersion`: at 1400 MHz), Hz/s, or Hz gained over a ramp. */
   readonly size: Estimate;
   /** Deviation (turns, late positive) that the most probable step adds. */
   readonly curve: (arrival: Pick<CountedArrival, 'tDays' | 'frequencyMhz' | 'group'>) => number;
@@ -37,7 +41,8 @@ export interface StepFit {
 
 /**
  * The posterior of a step with one size, flat in its epoch over the candidate gaps. Prior on the size: zero-mean
- * Gaussians on a ladder of widths, each as likely as the next: 1 µs … a quarter turn, or 1e-4 … 1 of ν̇.
+ * Gaussians on a ladder of widths, each as likely as the next: 1 µs … a quarter turn, 1e-4 … 1 of ν̇,
+ * or 1e-10 … 1e-5 of ν.
  * @throws RangeError when no candidate gap lies between arrivals in use.
  */
 export function fitStep(input: StepFitInput): StepFit {
@@ -77,25 +82,39 @@ interface StepShape {
   readonly unit: number;
   /** The data depend on where in the gap the epoch is. */
   readonly continuous: boolean;
+  readonly epochs: number;
 }
 
-function stepShape({ kind, groups, frequencyHz }: StepFitInput): StepShape {
+function stepShape({ kind, groups, frequencyHz, durationDays = 1 }: StepFitInput): StepShape {
   const concerns = (arrival: SeenArrival): number => (groups === undefined || groups.includes(arrival.group) ? 1 : 0);
   const microseconds = 1e6 / frequencyHz;
   switch (kind) {
     case 'time':
-      return { value: concerns, unit: microseconds, continuous: false };
+      return { value: concerns, unit: microseconds, continuous: false, epochs: EPOCHS };
     case 'dispersion':
       return {
         value: (arrival) => concerns(arrival) * dispersionCoefficient(arrival.frequencyMhz),
         unit: microseconds,
         continuous: false,
+        epochs: EPOCHS,
       };
     case 'spin-down rate':
       return {
         value: (arrival, epochDays) => -0.5 * concerns(arrival) * (arrival.tDays - epochDays) ** 2,
         unit: 1 / (SECONDS_PER_DAY * SECONDS_PER_DAY),
         continuous: true,
+        epochs: EPOCHS,
+      };
+    case 'ramp':
+      return {
+        value: (arrival, epochDays) => {
+          const since = arrival.tDays - epochDays;
+          const rising = Math.min(since, durationDays);
+          return -concerns(arrival) * ((rising * rising) / (2 * durationDays) + since - rising);
+        },
+        unit: 1 / SECONDS_PER_DAY,
+        continuous: true,
+        epochs: RAMP_EPOCHS,
       };
   }
 }
@@ -106,6 +125,7 @@ function sizeWidths({ kind, frequencyHz, frequencyDerivativeHzPerS }: StepFitInp
     const spinDown = Math.max(Math.abs(frequencyDerivativeHzPerS), 1e-18) * SECONDS_PER_DAY * SECONDS_PER_DAY;
     return [1e-4, 1e-3, 1e-2, 1e-1, 1].map((part) => part * spinDown);
   }
+  if (kind === 'ramp') return [1e-10, 1e-9, 1e-8, 1e-7, 1e-6, 1e-5].map((part) => part * frequencyHz * SECONDS_PER_DAY);
   const widths = [1, 10, 100, 1e3, 1e4, 1e5].map((us) => us * 1e-6 * frequencyHz).filter((turns) => turns < 0.25);
   return [...widths, 0.25];
 }
@@ -119,10 +139,10 @@ interface StepCandidate {
 }
 
 function gapCandidates(frame: EventFrame, gap: CandidateGap, shape: StepShape): StepCandidate[] {
-  const weight = gap.lengthDays / frame.windowDays / EPOCHS;
+  const weight = gap.lengthDays / frame.windowDays / shape.epochs;
   let held: StepCandidate | null = null;
-  return Array.from({ length: EPOCHS }, (_, i) => {
-    const epochDays = gap.endDays - ((i + 0.5) / EPOCHS) * gap.lengthDays;
+  return Array.from({ length: shape.epochs }, (_, i) => {
+    const epochDays = gap.endDays - ((i + 0.5) / shape.epochs) * gap.lengthDays;
     if (held && !shape.continuous) return { ...held, epochDays };
     const column = eventColumn(frame.arrivals, gap.after, (arrival) => shape.value(arrival, epochDays));
     reduce(frame, column, gap.after);

@@ -120,6 +120,24 @@ function binaryFraction(value: number): Fraction {
   return { numerator: BigInt(mantissa), denominator: 1n << BigInt(doublings) };
 }
 
+/** 106 bits are 31.9 decimal digits; with one more, a text that was read would not come out as it was written. */
+const TEXT_DIGITS = 31;
+
+/** The decimal text of a number: `123.4567`, rounded to 31 digits, without an exponent. */
+export function formatDoubleDouble(value: DoubleDouble): string {
+  const [a, b] = [binaryFraction(value.hi), binaryFraction(value.lo)];
+  const numerator = a.numerator * b.denominator + b.numerator * a.denominator;
+  const denominator = a.denominator * b.denominator;
+  const size = numerator < 0n ? -numerator : numerator;
+  if (size === 0n) return '0';
+  const decimals = Math.max(0, TEXT_DIGITS - 1 - Math.floor(Math.log10(Math.abs(value.hi))));
+  const scaled = (2n * size * 10n ** BigInt(decimals) + denominator) / (2n * denominator);
+  const digits = scaled.toString().padStart(decimals + 1, '0');
+  const whole = digits.slice(0, digits.length - decimals);
+  const rest = digits.slice(digits.length - decimals).replace(/0+$/, '');
+  return `${numerator < 0n ? '-' : ''}${whole}${rest === '' ? '' : `.${rest}`}`;
+}
+
 /** Correctly rounded by way of a long decimal quotient: Number() of a decimal text rounds exactly. */
 function nearestDouble({ numerator, denominator }: Fraction): number {
   if (numerator === 0n) return 0;

@@ -1,3 +1,4 @@
+import type { SiteStep } from '../site/siteStep.ts';
 import type { Mjd } from '../time/mjd.ts';
 import type { Orbit } from './orbitModel.ts';
 
@@ -40,6 +41,8 @@ export interface PulsarModel {
   readonly glitches: readonly KnownGlitch[];
   /** What is known of how late receivers are; absent: all is learned. */
   readonly receivers?: readonly DeclaredOffset[];
+  /** Steps of the clocks of its sites that all pulsars there have shown together; absent: none. */
+  readonly siteSteps?: readonly SiteStep[];
   readonly noise: NoiseSettings;
   readonly alerts: AlertSettings;
 }

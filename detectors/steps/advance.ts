@@ -7,7 +7,9 @@ import { newBank } from './bank.ts';
 import { decide } from './decide.ts';
 import { withoutOffset } from './declaredOffsets.ts';
 import { searchLargeStep } from './largeStep.ts';
+import { watchCount } from './lostCount.ts';
 import type { PulsarWatch } from './pulsarWatch.ts';
+import { reacquire } from './reacquire.ts';
 import { learningDue, relearn } from './relearn.ts';
 import { addNuisance, canLock, startBeam } from './start.ts';
 import { stepAt } from './stepAt.ts';
@@ -25,11 +27,18 @@ export function advance(watch: PulsarWatch, arrival: TimedArrival): void {
   if (news.newGroup) addNuisance(watch, 'offset');
   if (news.newBand) addNuisance(watch, 'dispersion');
   stepAt(watch, index, watch.locked);
+  if (watch.lost !== null) reacquire(watch, index);
+  else follow(watch, index);
+  if (watch.lost === null && learningDue(watch, index)) relearn(watch, index);
+}
+
+function follow(watch: PulsarWatch, index: number): void {
   searchLargeStep(watch, index);
-  if (watch.locked) decide(watch, index);
-  else if (canLock(watch, index)) {
+  if (watch.locked) {
+    decide(watch, index);
+    watchCount(watch, index);
+  } else if (canLock(watch, index)) {
     watch.locked = true;
     watch.oldestGap = index + 1;
   }
-  if (learningDue(watch, index)) relearn(watch, index);
 }

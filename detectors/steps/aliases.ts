@@ -35,6 +35,8 @@ export interface SizedGlitch {
 export function aliasesOf(input: GlitchFitInput, bestGap: number): SizedGlitch {
   const asCounted = { fit: fitGlitch(input), counted: input.arrivals };
   const candidates = [asCounted];
+  // With one exponential at most: which size it is shows without the finer points of the recovery.
+  const mostTerms = Math.min(1, input.mostTerms ?? 1);
   for (const order of ORDERS) {
     const sized = asCounted.fit.deltaNuHz.mean + order / SIDEREAL_DAY_S;
     if (sized < LOWEST * input.frequencyHz || sized > HIGHEST * input.frequencyHz) continue;
@@ -43,7 +45,7 @@ export function aliasesOf(input: GlitchFitInput, bestGap: number): SizedGlitch {
     const there = { firstGapBeforeIndex: bestGap, lastGapBeforeIndex: bestGap };
     candidates.push({ fit: fitGlitch({ ...input, ...there, arrivals: counted }), counted });
   }
-  const logEvidence = candidates.map(({ fit }) => Math.max(fit.logEvidencePlain, fit.logEvidenceRecovery));
+  const logEvidence = candidates.map(({ fit }) => fit.logEvidence);
   const highest = Math.max(...logEvidence);
   const weights = logEvidence.map((e) => Math.exp(e - highest));
   const total = weights.reduce((a, b) => a + b, 0);

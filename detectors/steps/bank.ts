@@ -1,11 +1,13 @@
 /**
  * The bank: the null beam (nothing new has happened) and, for each recent gap between arrivals and each explanation, a
- * beam of its own, so that a small step is not pruned before its evidence has grown.
+ * beam of its own, so that a small step is not pruned before its evidence has grown. Those for which nothing speaks wait
+ * and cost next to nothing (waiting.ts); the others are carried through each arrival.
  */
 
 import type { NoiseModel } from '../report.ts';
-import { logWeightOf, type Observation, observe, observeFirmly, pruned } from './beam.ts';
-import { type BirthPlace, born, KINDS, type Kind } from './births.ts';
+import { logWeightOf, type Observation, observe, pruned } from './beam.ts';
+import type { BirthPlace, Cause, Kind } from './births.ts';
+import { type Family, newFamily, observeFamily } from './family.ts';
 import {
   copyOf,
   type Decay,
@@ -15,18 +17,19 @@ import {
   type Prediction,
   propagate,
   withState,
-  zeros,
 } from './hypothesis.ts';
-
-/** All hypotheses that say: this kind of thing happened in the gap before arrival `gap`. */
-export interface Family {
-  readonly kind: Kind;
-  /** Index of the first arrival after the gap. */
-  readonly gap: number;
-  beam: Hypothesis[];
-  /** Natural log of the weight of all of them. */
-  logWeight: number;
-}
+import { enterGap, type Leader, lookAhead, newLeader, newPrediction, withOneMoreStateSeen } from './leader.ts';
+import { carryOver } from './signatures.ts';
+import { release, summon } from './summons.ts';
+import {
+  FAMILY_FLOOR_NATS,
+  type Passage,
+  passageWithOneMoreState,
+  recall,
+  type WaitingGap,
+  waitingGap,
+  withOneMoreState,
+} from './waiting.ts';
 
 /** The heaviest null hypothesis after an arrival, kept to search back from. */
 export interface Snapshot {
@@ -38,7 +41,14 @@ export interface Snapshot {
 export interface Bank {
   noise: NoiseModel;
   beam: Hypothesis[];
+  /** How many null hypotheses are kept. */
+  width: number;
+  /** The families that are carried. */
   families: Family[];
+  /** Gaps, oldest first, whose other families wait; and the arrivals since the first of them. */
+  waiting: WaitingGap[];
+  passages: Passage[];
+  leader: Leader;
   /** Natural log that all weights have been divided by so far. */
   logScale: number;
   snapshots: Snapshot[];
@@ -47,27 +57,7 @@ export interface Bank {
   readonly scratch: Prediction;
 }
 
-const NULL_BEAM = 16;
-/** A large glitch wraps within its first gaps: many counts must stay open. */
-const YOUNG_BEAM: Readonly<Record<Kind, number>> = {
-  glitch: 20,
-  'spin-down-rate change': 4,
-  'clock step': 6,
-  'dispersion step': 4,
-};
-const OLD_BEAM: Readonly<Record<Kind, number>> = {
-  glitch: 3,
-  'spin-down-rate change': 2,
-  'clock step': 2,
-  'dispersion step': 2,
-};
-/** A gap is young for this many arrivals: its counts may still branch. */
-const YOUNG_ARRIVALS = 5;
-/** Null hypotheses within this of the heaviest become parents. */
-const PARENT_NATS = 5;
-const PARENTS = 3;
-/** A family this far below everything else is not carried on. */
-const FAMILY_FLOOR_NATS = 18;
+export const NULL_BEAM = 16;
 const SNAPSHOTS = 64;
 
 /** A bank whose hypotheses have seen the arrivals up to the one of `at`. */
@@ -77,9 +67,20 @@ export function newBank(
   at: { readonly index: number; readonly tDays: number },
   decays: readonly Decay[],
 ): Bank {
-  const scratch = { deviation: 0, variance: 0, gain: zeros(beam[0]!.mean.length), plain: true };
-  const snapshots = [{ ...at, hypothesis: copyOf(beam[0]!) }];
-  return { noise, beam, families: [], logScale: 0, snapshots, decays, scratch };
+  const [best] = beam as [Hypothesis];
+  return {
+    noise,
+    beam,
+    width: NULL_BEAM,
+    families: [],
+    waiting: [],
+    passages: [],
+    leader: newLeader(best),
+    logScale: 0,
+    snapshots: [{ ...at, hypothesis: copyOf(best) }],
+    decays,
+    scratch: newPrediction(best.mean.length),
+  };
 }
 
 /** One more nuisance in every hypothesis: a receiver or a band seen for the first time. */
@@ -90,8 +91,11 @@ export function addState(bank: Bank, variance: number): Bank {
     ...bank,
     beam,
     families: bank.families.map((f) => ({ ...f, beam: f.beam.map(grow) })),
+    waiting: bank.waiting.map((gap) => withOneMoreState(gap, variance)),
+    passages: bank.passages.map(passageWithOneMoreState),
+    leader: withOneMoreStateSeen(bank.leader),
     snapshots: bank.snapshots.map((s) => ({ ...s, hypothesis: grow(s.hypothesis) })),
-    scratch: { deviation: 0, variance: 0, gain: zeros(beam[0]!.mean.length), plain: true },
+    scratch: newPrediction(beam[0]!.mean.length),
   };
 }
 
@@ -100,55 +104,76 @@ export interface BankStep {
   readonly seen: Observation;
   readonly tDays: number;
   readonly gapDays: number;
+  /** Of what is not known of a step of the site's clock in the gap, turns². */
+  readonly clockVariance: number;
   readonly place: BirthPlace | null;
   readonly oldestGap: number;
+  /** Every family is carried from its birth: the same answer, slowly. */
+  readonly carryAll: boolean;
 }
 
 export function stepBank(bank: Bank, step: BankStep): void {
-  const gap = gapOf(step.gapDays, bank.noise, bank.decays);
+  const { seen } = step;
+  const gap = gapOf(step.gapDays, bank.noise, bank.decays, step.clockVariance);
+  if (!step.carryAll) release(bank, seen.index);
   carry(bank, gap);
-  if (step.place !== null) giveBirth(bank, step.place, step.seen.index);
-  bank.beam = observe(bank.beam, step.seen, NULL_BEAM, bank.scratch);
+  if (step.place !== null) giveBirth(bank, step.place, seen.index);
+  if (bank.waiting.length > 0) bank.passages.push({ gap, seen, heaviest: -Infinity });
+  lookAhead(bank.leader, bank.beam[0]!, seen);
+  bank.beam = observe(bank.beam, seen, bank.width, bank.scratch);
   const last = { page: null };
-  for (const family of bank.families) {
-    const age = step.seen.index - family.gap;
-    if (age < YOUNG_ARRIVALS) family.beam = observe(family.beam, step.seen, YOUNG_BEAM[family.kind], bank.scratch);
-    else observeFirmly(family.beam, step.seen, bank.scratch, last);
-    if (age === YOUNG_ARRIVALS) family.beam = pruned(family.beam, OLD_BEAM[family.kind]);
-  }
+  for (const family of bank.families) observeFamily(family, seen, bank.scratch, last);
+  summon(bank, seen, step.carryAll);
   settle(bank, step.oldestGap);
-  bank.snapshots.push({ index: step.seen.index, tDays: step.tDays, hypothesis: absoluteCopy(bank, bank.beam[0]!) });
+  bank.snapshots.push({ index: seen.index, tDays: step.tDays, hypothesis: absoluteCopy(bank, bank.beam[0]!) });
   if (bank.snapshots.length > SNAPSHOTS) bank.snapshots.shift();
 }
 
 function carry(bank: Bank, gap: Gap): void {
   for (const h of bank.beam) propagate(h, gap);
   for (const family of bank.families) for (const h of family.beam) propagate(h, gap);
+  carryOver(bank.leader.signatures, gap);
 }
 
 function giveBirth(bank: Bank, place: BirthPlace, index: number): void {
-  const best = bank.beam[0]!.logWeight;
-  const parents = bank.beam.slice(0, PARENTS).filter((h) => h.logWeight > best - PARENT_NATS);
-  for (const kind of KINDS) {
-    const beam = parents.flatMap((parent) => born(kind, parent, place));
-    if (beam.length > 0) bank.families.push({ kind, gap: index, beam, logWeight: logWeightOf(beam) });
-  }
+  const gap = waitingGap(bank.beam, place, index, bank.logScale, bank.leader.gained);
+  bank.waiting.push(gap);
+  enterGap(bank.leader, gap);
+}
+
+/** The family as it is now, whether it is carried or waits; null when it was never born, or has been dropped. */
+export function familyOf(bank: Bank, kind: Cause, gap: number): Family | null {
+  const carried = bank.families.find((f) => f.gap === gap && f.kind === kind);
+  if (carried !== undefined) return carried;
+  const waiting = bank.waiting.find((w) => w.index === gap);
+  if (waiting === undefined || kind === 'lost count' || waiting.told.includes(kind)) return null;
+  return recall(waiting, kind, bank.passages, bank.logScale, bank.scratch);
+}
+
+/** Adds hypotheses that a search has found to the family of a gap; `width` of them are kept open. */
+export function joinFamily(bank: Bank, kind: Kind, gap: number, found: readonly Hypothesis[], width: number): void {
+  const family = familyOf(bank, kind, gap);
+  const beam = family === null ? [...found] : [...family.beam, ...found];
+  const others = bank.families.filter((f) => f !== family);
+  bank.families = [...others, { ...newFamily(kind, gap, pruned(beam, width)), openSizes: width }];
+  const waiting = bank.waiting.find((w) => w.index === gap);
+  if (waiting !== undefined && !waiting.told.includes(kind)) waiting.told = [...waiting.told, kind];
 }
 
 /** Drops what is too old or too light to matter, and divides all weights by their sum. */
 function settle(bank: Bank, oldestGap: number): void {
   const nothing = logWeightOf(bank.beam);
   let heaviest = nothing;
-  for (const family of bank.families) {
-    family.logWeight = logWeightOf(family.beam);
-    heaviest = Math.max(heaviest, family.logWeight);
-  }
+  for (const { logWeight } of bank.families) heaviest = Math.max(heaviest, logWeight);
+  const passage = bank.passages.at(-1);
+  if (passage !== undefined) passage.heaviest = heaviest + bank.logScale;
   let sum = Math.exp(nothing - heaviest);
   bank.families = bank.families.filter((f) => {
     if (f.gap < oldestGap || f.logWeight < heaviest - FAMILY_FLOOR_NATS) return false;
     sum += Math.exp(f.logWeight - heaviest);
     return true;
   });
+  dropGaps(bank, oldestGap);
   const total = heaviest + Math.log(sum);
   bank.logScale += total;
   for (const h of bank.beam) h.logWeight -= total;
@@ -156,6 +181,16 @@ function settle(bank: Bank, oldestGap: number): void {
     family.logWeight -= total;
     for (const h of family.beam) h.logWeight -= total;
   }
+}
+
+function dropGaps(bank: Bank, oldestGap: number): void {
+  const { waiting, passages, leader } = bank;
+  while (waiting.length > 0 && waiting[0]!.index < oldestGap) {
+    waiting.shift();
+    leader.signatures.first++;
+  }
+  const from = waiting.length === 0 ? Infinity : waiting[0]!.index;
+  while (passages.length > 0 && passages[0]!.seen.index < from) passages.shift();
 }
 
 function absoluteCopy(bank: Bank, h: Hypothesis): Hypothesis {
@@ -166,9 +201,12 @@ function absoluteCopy(bank: Bank, h: Hypothesis): Hypothesis {
 
 /** An event is believed: its hypotheses become the null, with the strongest dissenters kept beside them. */
 export function collapse(bank: Bank, winners: readonly Hypothesis[], dissenters: readonly Hypothesis[]): void {
-  const kept = pruned([...winners], NULL_BEAM - 4);
+  const kept = pruned([...winners], bank.width - 4);
   const others = dissenters.length > 0 ? pruned([...dissenters], 4) : [];
   bank.beam = [...kept, ...others].sort((a, b) => b.logWeight - a.logWeight);
   bank.families = [];
+  bank.waiting = [];
+  bank.passages = [];
+  bank.leader = newLeader(bank.beam[0]!);
   settle(bank, 0);
 }

@@ -21,7 +21,7 @@ export interface Observation {
 }
 
 /** Share of arrivals that are bad in ways no error bar covers (common practice, no source). */
-const OUTLIER_SHARE = 0.02;
+export const OUTLIER_SHARE = 0.02;
 /** A bad session is paid for once: the next arrival of a session that began badly is likely bad too. */
 const OUTLIER_SHARE_AFTER_OUTLIER = 0.8;
 /** A turn, or the outlier branch, is followed while it is within e^-9 of the best branch. */
@@ -31,6 +31,10 @@ const AMBIGUOUS_SPREAD = 0.1;
 /** A pulse number in a file is wrong, or begins a new numbering, this often (common practice, no source). */
 const LOG_WRONG_NUMBER = Math.log(1e-4);
 const LOG_TWO_PI = Math.log(2 * Math.PI);
+const LOG_OUTLIER = Math.log(OUTLIER_SHARE);
+const LOG_GOOD = Math.log(1 - OUTLIER_SHARE);
+const LOG_OUTLIER_AFTER_OUTLIER = Math.log(OUTLIER_SHARE_AFTER_OUTLIER);
+const LOG_GOOD_AFTER_OUTLIER = Math.log(1 - OUTLIER_SHARE_AFTER_OUTLIER);
 
 /** A branch not yet followed: weights are compared before any state is copied. */
 interface Branch {
@@ -53,17 +57,23 @@ export function observe(
 ): Hypothesis[] {
   const branches: Branch[] = [];
   for (const h of beam) branch(h, seen, scratch, branches);
-  branches.sort((a, b) => b.logWeight - a.logWeight);
+  if (branches.length > 1) branches.sort(byWeight);
   const floor = branches[0]!.logWeight - 2 * BRANCH_NATS;
-  const taken: Branch[] = [];
-  const branchesOf = new Map<Hypothesis, number>();
-  for (const b of branches) {
-    if (b.logWeight < floor || taken.length >= 2 * keep) break;
-    taken.push(b);
-    branchesOf.set(b.parent, (branchesOf.get(b.parent) ?? 0) + 1);
+  let taken = 0;
+  while (taken < branches.length && taken < 2 * keep && branches[taken]!.logWeight >= floor) taken++;
+  const next: Hypothesis[] = [];
+  for (let i = 0; i < taken; i++) {
+    const b = branches[i]!;
+    // The last branch of a parent may have the parent itself.
+    next.push(follow(b, branchesAgain(branches, i, taken) ? copyOf(b.parent) : b.parent, seen, scratch));
   }
-  const next = taken.map((b) => follow(b, branchesOf.get(b.parent) === 1 ? b.parent : copyOf(b.parent), seen, scratch));
   return next.length <= 1 ? next : pruned(next, keep);
+}
+
+function branchesAgain(branches: readonly Branch[], from: number, until: number): boolean {
+  const { parent } = branches[from]!;
+  for (let i = from + 1; i < until; i++) if (branches[i]!.parent === parent) return true;
+  return false;
 }
 
 function branch(h: Hypothesis, seen: Observation, scratch: Prediction, into: Branch[]): void {
@@ -71,24 +81,35 @@ function branch(h: Hypothesis, seen: Observation, scratch: Prediction, into: Bra
   const spread2 = scratch.variance + seen.variance;
   const offset = seen.deviation - scratch.deviation;
   const nearest = -Math.round(offset);
-  const outlierShare = seen.sameSession && h.lastSetAside ? OUTLIER_SHARE_AFTER_OUTLIER : OUTLIER_SHARE;
-  const level = Math.log(1 - outlierShare) - 0.5 * (LOG_TWO_PI + Math.log(spread2));
-  const logOutlier = Math.log(outlierShare);
+  const afterOutlier = seen.sameSession && h.lastSetAside;
+  const level = (afterOutlier ? LOG_GOOD_AFTER_OUTLIER : LOG_GOOD) - 0.5 * (LOG_TWO_PI + Math.log(spread2));
+  const logOutlier = afterOutlier ? LOG_OUTLIER_AFTER_OUTLIER : LOG_OUTLIER;
   const numbered = numberedTurns(h, seen);
   const reach = spread2 < AMBIGUOUS_SPREAD * AMBIGUOUS_SPREAD ? 0 : Math.min(8, Math.ceil(4 * Math.sqrt(spread2)));
-  const densityOf = (turns: number): number =>
-    level - (0.5 * (offset + turns) ** 2) / spread2 + (numbered === null || turns === numbered ? 0 : LOG_WRONG_NUMBER);
-  const best = Math.max(densityOf(nearest), numbered === null ? -Infinity : densityOf(numbered), logOutlier);
+  const atNearest = logDensity(level, offset, spread2, nearest, numbered);
+  const atNumbered = numbered === null ? -Infinity : logDensity(level, offset, spread2, numbered, numbered);
+  const floor = Math.max(atNearest, atNumbered, logOutlier) - BRANCH_NATS;
   const { logWeight } = h;
-  if (logOutlier > best - BRANCH_NATS)
+  if (logOutlier > floor)
     into.push({ parent: h, logWeight: logWeight + logOutlier, used: false, turns: nearest, slipped: false });
-  const follow = (turns: number): void => {
-    const logDensity = densityOf(turns);
-    if (logDensity > best - BRANCH_NATS)
-      into.push({ parent: h, logWeight: logWeight + logDensity, used: true, turns, slipped: turns !== nearest });
-  };
-  for (let turns = nearest - reach; turns <= nearest + reach; turns++) follow(turns);
-  if (numbered !== null && Math.abs(numbered - nearest) > reach) follow(numbered);
+  for (let turns = nearest - reach; turns <= nearest + reach; turns++) {
+    const density = reach === 0 ? atNearest : logDensity(level, offset, spread2, turns, numbered);
+    if (density > floor)
+      into.push({ parent: h, logWeight: logWeight + density, used: true, turns, slipped: turns !== nearest });
+  }
+  if (numbered !== null && Math.abs(numbered - nearest) > reach && atNumbered > floor)
+    into.push({ parent: h, logWeight: logWeight + atNumbered, used: true, turns: numbered, slipped: true });
+}
+
+/** Natural log of the density of an arrival at this count, a wrong pulse number paid for. */
+function logDensity(level: number, offset: number, spread2: number, turns: number, numbered: number | null): number {
+  const wrongNumber = numbered === null || turns === numbered ? 0 : LOG_WRONG_NUMBER;
+  return level - (0.5 * (offset + turns) ** 2) / spread2 + wrongNumber;
+}
+
+/** Natural log of how much likelier an arrival with this innovation is when taken as good than as an outlier. */
+export function logGoodOverOutlier(innovation: number, variance: number): number {
+  return LOG_GOOD - LOG_OUTLIER - 0.5 * (LOG_TWO_PI + Math.log(variance) + (innovation * innovation) / variance);
 }
 
 /** The whole turns that the arrival's own pulse number asks for; null when it has none, or is the first that has one. */
@@ -173,14 +194,19 @@ export function pruned(beam: Hypothesis[], keep: number): Hypothesis[] {
   const kept: Hypothesis[] = [];
   for (const h of beam) {
     if (h.logWeight < floor) break;
-    const twin = kept.find((k) => alike(k, h));
-    if (twin) twin.logWeight = logAddExp(twin.logWeight, h.logWeight);
+    const twin = twinOf(h, kept);
+    if (twin !== null) twin.logWeight = logAddExp(twin.logWeight, h.logWeight);
     else if (kept.length < keep) kept.push(h);
   }
   return kept;
 }
 
-function byWeight(a: Hypothesis, b: Hypothesis): number {
+function twinOf(h: Hypothesis, kept: readonly Hypothesis[]): Hypothesis | null {
+  for (const other of kept) if (alike(other, h)) return other;
+  return null;
+}
+
+function byWeight(a: { readonly logWeight: number }, b: { readonly logWeight: number }): number {
   return b.logWeight - a.logWeight;
 }
 

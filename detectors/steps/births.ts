@@ -5,19 +5,23 @@
 
 import { SPIN_STATES } from '../filter/stateSpace.ts';
 import { copyOf, type Hypothesis, loosen } from './hypothesis.ts';
+import type { Modes } from './modeSwitching.ts';
 
 export const KINDS = ['glitch', 'spin-down-rate change', 'clock step', 'dispersion step'] as const;
 export type Kind = (typeof KINDS)[number];
+/** What a record may say has happened: one of the kinds that are born, or that the count of turns was lost. */
+export type Cause = Kind | 'lost count';
 
 /**
  * Events per year of one pulsar. Glitch: 107 in 1911 pulsar-years (Yu et al. 2013, MNRAS 429, 688). The others: common
  * practice, no source; rare enough that two independent sessions must speak for them.
  */
-export const RATE_PER_YEAR: Readonly<Record<Kind, number>> = {
+export const RATE_PER_YEAR: Readonly<Record<Cause, number>> = {
   glitch: 0.056,
   'spin-down-rate change': 0.01,
   'clock step': 0.03,
   'dispersion step': 0.02,
+  'lost count': 0.05,
 };
 const DAYS_PER_YEAR = 365.25;
 const SECONDS_PER_DAY = 86_400;
@@ -65,12 +69,31 @@ export interface BirthPlace {
   readonly dispersionDirection: readonly number[] | null;
   /** Turns at 1 GHz per pc cm⁻³. */
   readonly turnsPerDispersion: number;
+  /** Of a pulsar known to switch between two spin-down rates. */
+  readonly modes: Modes | null;
   /** The whole turns after the gap are decided: any size may be tried. */
   readonly countKnown: boolean;
 }
 
+/** The same place after a state was added: no step of before goes along it. */
+export function widened(place: BirthPlace): BirthPlace {
+  const { offsetDirections, dispersionDirection } = place;
+  return {
+    ...place,
+    offsetDirections: offsetDirections.map((direction) => [...direction, 0]),
+    dispersionDirection: dispersionDirection === null ? null : [...dispersionDirection, 0],
+  };
+}
+
+const ANY_PER_YEAR = KINDS.reduce((sum, kind) => sum + RATE_PER_YEAR[kind], 0);
+
+/** Natural log of how many events of any kind are expected in the gap. */
+export function logRateOfAny({ gapDays, modes }: BirthPlace): number {
+  return Math.log(((ANY_PER_YEAR + (modes?.switchesPerYear ?? 0)) * gapDays) / DAYS_PER_YEAR);
+}
+
 /** Children of one hypothesis (its state just before the arrival after the gap), weighted by the prior. */
-export function born(kind: Kind, parent: Hypothesis, place: BirthPlace): Hypothesis[] {
+export function born(kind: Cause, parent: Hypothesis, place: BirthPlace): Hypothesis[] {
   const logRate = Math.log((RATE_PER_YEAR[kind] * place.gapDays) / DAYS_PER_YEAR);
   const children: Hypothesis[] = [];
   const add = (share: number, change: (h: Hypothesis) => void) => {
@@ -89,6 +112,10 @@ export function born(kind: Kind, parent: Hypothesis, place: BirthPlace): Hypothe
       break;
     case 'spin-down-rate change':
       for (const [share, size] of RATE_CHANGE_SIZES) add(share, (h) => rateChange(h, size, place));
+      if (place.modes !== null) {
+        const { stepTurns, switchesPerYear } = place.modes;
+        add(switchesPerYear / RATE_PER_YEAR[kind], (h) => freeSecond(h, stepTurns));
+      }
       break;
     case 'clock step':
       for (const direction of place.offsetDirections)
@@ -101,6 +128,9 @@ export function born(kind: Kind, parent: Hypothesis, place: BirthPlace): Hypothe
       if (place.dispersionDirection !== null)
         for (const [share, size] of DISPERSION_SIZES)
           add(share, (h) => loosen(h, place.dispersionDirection!, (size * place.turnsPerDispersion) ** 2));
+      break;
+    case 'lost count':
+      add(1, (h) => loseCount(h, place));
       break;
   }
   return children;
@@ -118,8 +148,22 @@ export function glitch(h: Hypothesis, rateTurns: number, place: BirthPlace): voi
   rateChange(h, GLITCH_RATE_SIZE, place);
 }
 
+/** σ of Δν/ν across a loss of the count: a glitch may hide in it. */
+const LOST_SIZE = 2e-5;
+/** σ of the deviation after it: any number of turns, for numbers near 1. */
+const LOST_TURNS = 10;
+
+/** Nothing of the rotation before the gap is held against the arrivals after it. */
+export function loseCount(h: Hypothesis, place: BirthPlace): void {
+  h.cov[0]! += LOST_TURNS ** 2;
+  glitch(h, LOST_SIZE * place.frequencyHz * SECONDS_PER_DAY, place);
+}
+
 function rateChange(h: Hypothesis, relativeSize: number, place: BirthPlace): void {
-  const size = h.mean.length;
-  const step = relativeSize * Math.abs(place.frequencyDerivativeHzPerS) * SECONDS_PER_DAY ** 2;
-  h.cov[(SPIN_STATES - 1) * (size + 1)]! += step * step;
+  freeSecond(h, relativeSize * Math.abs(place.frequencyDerivativeHzPerS) * SECONDS_PER_DAY ** 2);
+}
+
+/** `step`: σ of a step in the second derivative, turns/day². */
+function freeSecond(h: Hypothesis, step: number): void {
+  h.cov[(SPIN_STATES - 1) * (h.mean.length + 1)]! += step * step;
 }

@@ -34,7 +34,8 @@ const WORTH_NAMING = 3;
 /** Events as free steps of their own, so that they are neither learned as noise nor found again. */
 export function disturbances(watch: PulsarWatch, except?: Track): Disturbance[] {
   return watch.tracks
-    .filter((t) => t !== except && (t.state === 'confirmed' || (t.state === 'suspected' && t.logOdds > WORTH_NAMING)))
+    .filter((t) => except === undefined || (t.number !== except.number && t.partOf !== except.number))
+    .filter((t) => t.state === 'confirmed' || (t.state === 'suspected' && t.logOdds > WORTH_NAMING))
     .flatMap((t) => freed(watch, t).map((what) => ({ beforeIndex: t.bestGap, ...what })));
 }
 

@@ -1,24 +1,33 @@
 /** From weights to states: suspected at a low threshold, confirmed at the budget's, withdrawn when the evidence goes. */
 
 import { logAddExp } from '../math/logSumExp.ts';
+import { requiredLogOdds } from '../nulls/ownNull.ts';
 import { mjdNumber } from '../time/mjd.ts';
 import { collapse } from './bank.ts';
 import { explanationsOf, sessionsUsed, spreadOf, weigh } from './evidence.ts';
 import type { Hypothesis } from './hypothesis.ts';
 import { jointOdds } from './jointOdds.ts';
+import { judgeSwitching, switchingRecord } from './modeSwitching.ts';
 import type { PulsarWatch } from './pulsarWatch.ts';
-import { expectRecovery, looseRecovery } from './recoveryStates.ts';
+import { expectRecovery, FRESH_RECOVERY_SHARE, looseRecovery } from './recoveryStates.ts';
+import { followRecovery } from './relearn.ts';
+import { reshape, shape } from './reshape.ts';
+import { logSignWeight } from './signPrior.ts';
 import { overlaps, type Track } from './track.ts';
 
 /** A confirmed event's explanation must hold at least this share against the other explanations. */
-const EXPLANATION_SHARE = 0.99;
+export const EXPLANATION_SHARE = 0.99;
 const LEAST_SESSIONS = 2;
 /** The second weighing goes through the whole record: a long one is not asked again at each arrival. */
 const ARRIVALS_PER_QUESTION = 400;
+/** Where noise is the better explanation, the arrivals since the gap must grow by this share before it is asked again. */
+const PATIENCE_AFTER_REFUSAL = 0.15;
 
 export function decide(watch: PulsarWatch, index: number): void {
   for (const track of watch.tracks) if (track.confirmedAt !== null && !track.settled) reconsider(watch, track);
-  suspect(watch, index);
+  // While the size of a large step is open, what does not fit speaks for another size, not for another event.
+  if ((watch.largeStep?.track ?? null) === null) suspect(watch, index);
+  reshape(watch, index);
 }
 
 /** An event that was confirmed stays under trial for as long as a hypothesis without it is alive. */
@@ -57,7 +66,9 @@ function suspect(watch: PulsarWatch, index: number): void {
   const kind = evidence.strongest;
   if (kind === null) return;
   const spread = spreadOf(bank, kind);
-  const track = open ?? reopened(watch, spread) ?? newTrack(watch, index);
+  const known = open ?? reopened(watch, spread);
+  if (known?.state === 'withdrawn' && index < known.askAgainAt) return;
+  const track = known ?? newTrack(watch, index);
   const sessionOf = (i: number) => watch.line.seen[i]!.session;
   Object.assign(track, spread, {
     kind,
@@ -65,23 +76,41 @@ function suspect(watch: PulsarWatch, index: number): void {
     logOdds: odds,
     explanations: explanationsOf(bank, evidence, spread.firstGap, sessionOf),
   } satisfies Partial<Track>);
+  track.partOf = (kind === 'spin-down-rate change' ? switchingRecord(watch)?.number : null) ?? null;
   const weight = evidence.byKind.get(kind)!;
-  if (weight - evidence.nothing < watch.settings.confirmLogOdds || weight < Math.log(EXPLANATION_SHARE)) return;
+  const gained = weight - evidence.nothing;
+  if (gained + Math.LN2 < watch.settings.confirmLogOdds || weight < Math.log(EXPLANATION_SHARE)) return;
   const families = bank.families.filter((f) => f.kind === kind);
   const bestFamily = families.find((f) => f.gap === spread.bestGap)!;
   const holder = bestFamily.beam.reduce((a, b) => (b.logWeight > a.logWeight ? b : a));
   if (sessionsUsed(holder, spread.bestGap, sessionOf) < LEAST_SESSIONS) return;
-  if (index < track.askAgainAt) return;
-  const joint = jointOdds(watch, track, holder);
-  if (joint < watch.settings.confirmLogOdds) {
-    track.logOdds = Math.min(track.logOdds, joint);
-    track.askAgainAt = index + 1 + Math.floor(index / ARRIVALS_PER_QUESTION);
+  // While the counts after a gap are in doubt, a step would only stand for a wrong one.
+  if (watch.doubt !== null) return;
+  if (index < track.askAgainAt || (watch.largeStep === null && followRecovery(watch, index))) return;
+  const sign = logSignWeight(watch, track);
+  if (gained + sign < watch.settings.confirmLogOdds) return;
+  const joint = jointOdds(watch, track, holder) + sign;
+  const demands = { explanationShare: EXPLANATION_SHARE, sessions: LEAST_SESSIONS };
+  if (joint < requiredLogOdds(watch, Math.min(joint, gained + sign), demands)) {
+    refuse(watch, track, index, joint);
     return;
   }
+  shape(watch, track, holder, joint);
   track.state = 'confirmed';
   track.confirmedAt ??= index;
+  if (watch.largeStep !== null && kind === 'glitch') watch.largeStep.track = track.number;
   believe(watch, track);
+  if (kind === 'spin-down-rate change') judgeSwitching(watch, track);
   watch.oldestGap = index + 1;
+}
+
+/** Noise explains it as well: no longer suspected, unless more arrivals speak for it. */
+function refuse(watch: PulsarWatch, track: Track, index: number, joint: number): void {
+  track.logOdds = Math.min(track.logOdds, joint);
+  track.askAgainAt = index + 1 + Math.floor(index / ARRIVALS_PER_QUESTION);
+  if (joint >= watch.settings.suspectLogOdds) return;
+  track.state = 'withdrawn';
+  if (joint < 0) track.askAgainAt += Math.ceil(PATIENCE_AFTER_REFUSAL * (index - track.bestGap));
 }
 
 /** The hypotheses of the event become the null; the best of the others stay beside them, to take it back if need be. */
@@ -97,7 +126,7 @@ function believe(watch: PulsarWatch, track: Track): void {
   if (track.kind === 'glitch') {
     const best = winners.reduce((a, b) => (b.logWeight > a.logWeight ? b : a));
     track.rateStep = Math.abs(best.mean[1]! - bank.beam[0]!.mean[1]!);
-    for (const h of winners) looseRecovery(h, bank.decays, track.rateStep);
+    for (const h of winners) looseRecovery(h, bank.decays, FRESH_RECOVERY_SHARE * track.rateStep);
   }
   collapse(bank, winners, dissenters);
 }
@@ -110,7 +139,7 @@ function reopened(watch: PulsarWatch, spread: Parameters<typeof overlaps>[1]): T
     : undefined;
 }
 
-function newTrack(watch: PulsarWatch, index: number): Track {
+export function newTrack(watch: PulsarWatch, index: number): Track {
   const day = Math.floor(mjdNumber(watch.line.seen[index]!.arrival.tdb));
   const stem = `${watch.model.name.replace(/\s+/g, '')}-${day}`;
   const same = watch.tracks.filter((t) => t.id === stem || t.id.startsWith(`${stem}.`)).length;
@@ -128,6 +157,9 @@ function newTrack(watch: PulsarWatch, index: number): Track {
     askAgainAt: 0,
     logOdds: 0,
     explanations: {},
+    shapes: null,
+    modes: null,
+    partOf: null,
     settled: false,
   };
   watch.tracks.push(track);

@@ -1,15 +1,17 @@
 /** What the operator declares of the receivers: how late their times are, and what that leaves to be learned. */
 
 import type { TimedArrival } from '../arrival.ts';
+import { lateByUs } from '../site/siteStep.ts';
 import type { DeclaredOffset, PulsarModel } from '../spin/pulsarModel.ts';
 import { addSeconds, type Mjd } from '../time/mjd.ts';
 
 type Place = Pick<TimedArrival, 'site' | 'receiver'>;
 
-/** The time of an arrival as a receiver without a declared offset would have had it. */
+/** The time of an arrival as a receiver without a declared offset, at a clock that never stepped, would have had it. */
 export function withoutOffset(model: PulsarModel, arrival: TimedArrival): Mjd {
   const declared = declaredOffset(model, arrival);
-  return declared === null ? arrival.tdb : addSeconds(arrival.tdb, -declared.offsetUs * 1e-6);
+  const lateUs = (declared?.offsetUs ?? 0) + lateByUs(model.siteSteps ?? [], arrival);
+  return lateUs === 0 ? arrival.tdb : addSeconds(arrival.tdb, -lateUs * 1e-6);
 }
 
 /** σ (s) of what is left of the offset of one receiver against another; null: nothing was declared of it. */

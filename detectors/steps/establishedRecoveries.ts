@@ -12,12 +12,14 @@ export function withoutRecoveries(watch: PulsarWatch, counted: CountedArrival[])
     const fit = measure(watch, track)?.glitch;
     if (!fit?.recovery) continue;
     const { bestEpochDays } = fit;
-    const timescale = fit.recovery.timescaleDays.median;
-    const turns = fit.recovery.frequencyStepHz.mean * SECONDS_PER_DAY * timescale;
-    left = left.map((a) => {
-      const since = a.tDays - bestEpochDays;
-      return since <= 0 ? a : { ...a, deviationTurns: a.deviationTurns - turns * Math.expm1(-since / timescale) };
-    });
+    for (const term of fit.recovery.terms) {
+      const timescale = term.timescaleDays.median;
+      const turns = term.frequencyStepHz.mean * SECONDS_PER_DAY * timescale;
+      left = left.map((a) => {
+        const since = a.tDays - bestEpochDays;
+        return since <= 0 ? a : { ...a, deviationTurns: a.deviationTurns - turns * Math.expm1(-since / timescale) };
+      });
+    }
   }
   return left;
 }

@@ -53,9 +53,11 @@ export interface Decay {
   readonly timescaleDays: number;
 }
 
-export function gapOf(days: number, noise: NoiseModel, decays: readonly Decay[]): Gap {
+/** @param clockVariance of what is not known of a step of the site's clock in the gap, turns² */
+export function gapOf(days: number, noise: NoiseModel, decays: readonly Decay[], clockVariance = 0): Gap {
   const walk = new Float64Array(SPIN_STATES * SPIN_STATES);
   writeProcessNoise(days, noise, walk);
+  walk[0]! += clockVariance;
   return {
     days,
     walk,
@@ -116,8 +118,16 @@ export function propagate(h: Hypothesis, gap: Gap): void {
 export interface Sight {
   /** Coefficients of all states; the first is 1. */
   readonly row: readonly number[];
+  /** The states that it sees at all. */
+  readonly seen: readonly number[];
   /** True when only the deviation is seen: the common and faster case. */
   readonly plain: boolean;
+}
+
+export function sightOf(row: readonly number[]): Sight {
+  const seen: number[] = [];
+  for (let state = 0; state < row.length; state++) if (row[state] !== 0) seen.push(state);
+  return { row, seen, plain: seen.length === 1 };
 }
 
 /** Scratch of one prediction: expected deviation, its variance without measurement noise, and P·row. */
@@ -140,15 +150,17 @@ export function predict(h: Hypothesis, sight: Sight, into: Prediction): void {
     into.variance = cov[0]!;
     return;
   }
+  const { row, seen } = sight;
   let deviation = 0;
   let variance = 0;
-  for (let i = 0; i < size; i++) {
-    let sum = 0;
-    for (let j = 0; j < size; j++) sum += cov[i * size + j]! * sight.row[j]!;
-    gain[i] = sum;
-    deviation += mean[i]! * sight.row[i]!;
-    variance += sum * sight.row[i]!;
+  for (let i = 0; i < size; i++) gain[i] = 0;
+  for (const j of seen) {
+    const factor = row[j]!;
+    // Symmetric: the row is read instead of the column.
+    for (let i = 0; i < size; i++) gain[i]! += cov[j * size + i]! * factor;
+    deviation += mean[j]! * factor;
   }
+  for (const i of seen) variance += gain[i]! * row[i]!;
   into.deviation = deviation;
   into.variance = variance;
 }

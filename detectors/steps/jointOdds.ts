@@ -11,8 +11,9 @@ import { born } from './births.ts';
 import { countedArrivals, disturbances, freed } from './counts.ts';
 import { withoutRecoveries } from './establishedRecoveries.ts';
 import { gapOf, type Hypothesis, propagate, type Story } from './hypothesis.ts';
-import { birthPlace } from './places.ts';
+import { birthPlace, clockVariance } from './places.ts';
 import { asFixed, type PulsarWatch } from './pulsarWatch.ts';
+import { looseRecovery, RECOVERY_SHARE } from './recoveryStates.ts';
 import { decisionsOf, retrace, takeIn } from './retrace.ts';
 import { foundStartRate, startBeam } from './start.ts';
 import type { Track } from './track.ts';
@@ -36,7 +37,10 @@ export function jointOdds(watch: PulsarWatch, track: Track, h: Hypothesis): numb
   const posterior = (noise: NoiseModel, event: Track | null) =>
     logEvidence(watch, decisions, noise, { event, startRate, except: track }) +
     logNoisePrior(noise, watch.prior, medianSigma);
-  return posterior(learn([...others, ...own]), track) - posterior(learn(others), null);
+  const alone = learn(others);
+  // Noise learned with the event's states quite free may be too quiet for an event of any size that is expected.
+  const withEvent = Math.max(posterior(learn([...others, ...own]), track), posterior(alone, track));
+  return withEvent - posterior(alone, null);
 }
 
 /** ln P(arrivals | noise, events): with `event`, its sizes as a mixture at its most probable gap, by prior rate. */
@@ -56,9 +60,11 @@ function logEvidence(
     }
     const gapDays = watch.line.seen[i]!.tDays - watch.line.seen[i - 1]!.tDays;
     const place = { ...birthPlace(watch, i, gapDays), countKnown: true };
-    for (const h of beam) propagate(h, gapOf(gapDays, noise, watch.states.decays));
-    const { kind } = given.event;
+    const gap = gapOf(gapDays, noise, watch.states.decays, clockVariance(watch, i));
+    for (const h of beam) propagate(h, gap);
+    const { kind, rateStep } = given.event;
     beam = beam.flatMap((h) => born(kind, h, place));
+    if (kind === 'glitch') for (const h of beam) looseRecovery(h, watch.states.decays, RECOVERY_SHARE * rateStep);
     for (const h of beam) takeIn(watch, h, decision, noise);
   }
   return logWeightOf(beam);

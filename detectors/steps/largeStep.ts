@@ -1,38 +1,49 @@
 /**
- * A run of arrivals that fit nothing: seeks a large step by the circular search and hands what it finds to the bank. Before
- * a pulsar is locked the same search corrects a start model that is too far off.
+ * A run of arrivals that fit nothing: a large step is on trial. Its size is sought by the circular search, from before the run,
+ * again and again as arrivals come in, until one size has won: few arrivals fit many sizes. Before a pulsar is
+ * locked the same search corrects a start model that is too far off.
  */
 
-import { SPIN_STATES } from '../filter/stateSpace.ts';
-import type { Snapshot } from './bank.ts';
-import { logWeightOf, observe, pruned } from './beam.ts';
-import { RATE_PER_YEAR } from './births.ts';
-import { type SearchPeak, searchStep } from './circularSearch.ts';
-import { copyOf, gapOf, type Hypothesis, propagate } from './hypothesis.ts';
+import { joinFamily, NULL_BEAM, type Snapshot } from './bank.ts';
+import { pruned } from './beam.ts';
+import { BENDS, HIGHEST_STEP, LOWEST_STEP, STRAIGHT, searchStep } from './circularSearch.ts';
+import type { Hypothesis } from './hypothesis.ts';
+import { bestFollowed, expectedDeviation, expectedSpread } from './largeStepSizes.ts';
 import type { PulsarWatch } from './pulsarWatch.ts';
-import { observationOf } from './timeline.ts';
+import { expectRecovery } from './recoveryStates.ts';
+import { shareOfCount } from './start.ts';
+
+/** A large step on trial. */
+export interface LargeStep {
+  /** Index of the first arrival after it. */
+  readonly start: number;
+  readonly before: Snapshot;
+  /** Arrivals since it at which its size is sought next. */
+  nextSearch: number;
+  /** Number of the event it has become. */
+  track: number | null;
+}
 
 const LEAST_RUN = 4;
 const LEAST_RUN_DAYS = 0.5;
 /** Searched again when the run has grown by this factor. */
 const RUN_GROWTH = 1.4;
-/** Δν/ν searched. */
-const LOWEST_STEP = -1e-5;
-const HIGHEST_STEP = 5e-5;
-/** Sizes are log-uniform over 1e-9…1e-4 of ν. */
-const LOG_RANGE = Math.log(1e5);
-const START_SPREAD_TURNS = 0.05;
-/** Start models whose frequency is off by more than their stated errors allow (common practice, no source). */
-const WRONG_START_SHARE = 0.05;
-const DAYS_PER_YEAR = 365.25;
-const KEEP = 10;
+/** Later arrivals tell recoveries apart, not sizes: the search looks at the first ones, the hypotheses at all. */
+const MOST_POINTS = 14;
+/** Sizes kept open; arrivals after which no more is sought. */
+const MOST_SIZES = 48;
+const LONGEST_TRIAL = 60;
+/** One size has won: arrivals since the step, the latest that fit it, and its share of the weight. */
+const WON_RUN = 10;
+const WON_FITS = 5;
+const WON_SHARE = 0.999;
 
 /** Of a run, so many may have been taken for good by chance. */
 const LEAST_SHARE_SET_ASIDE = 0.7;
 const LONGEST_RUN = 40;
 
 /** Where the run of arrivals that the hypothesis cannot explain began: most since then were set aside. */
-function runStart(h: Hypothesis, index: number): number {
+export function runStart(h: Hypothesis, index: number): number {
   let start = index + 1;
   let setAside = 0;
   for (let s = h.story; s !== null && index - s.index < LONGEST_RUN; s = s.before) {
@@ -45,88 +56,73 @@ function runStart(h: Hypothesis, index: number): number {
 
 /** Adds what it finds to the bank; does nothing while the latest arrivals fit. */
 export function searchLargeStep(watch: PulsarWatch, index: number): void {
+  watch.largeStep ??= newTrial(watch, index);
+  const step = watch.largeStep;
+  if (step === null) return;
+  if (isOver(watch, step, index)) {
+    endTrial(watch);
+    return;
+  }
+  const run = index + 1 - step.start;
+  if (run < step.nextSearch) return;
+  step.nextSearch = Math.ceil(run * RUN_GROWTH);
+  if (watch.locked) expectRecovery(watch);
+  const { seen } = watch.line;
+  const { hypothesis, tDays } = step.before;
+  const turnsPerDay = watch.model.spin.frequencyHz.hi * 86_400;
+  const points = seen.slice(step.start, Math.min(index + 1, step.start + MOST_POINTS)).map((s, i) => ({
+    days: s.tDays - seen[step.start]!.tDays,
+    deviation: wrapped(s.deviation - expectedDeviation(watch, hypothesis, tDays, step.start + i)),
+  }));
+  const spread = expectedSpread(watch, hypothesis, tDays, index);
+  const bends = watch.locked ? BENDS : STRAIGHT;
+  const peaks = searchStep(points, LOWEST_STEP * turnsPerDay, HIGHEST_STEP * turnsPerDay, spread, bends);
+  const found = bestFollowed(watch, peaks, step, index);
+  if (found.length === 0) return;
+  for (const h of found) h.logWeight -= watch.bank!.logScale;
+  handOver(watch, step, pruned(found, MOST_SIZES));
+}
+
+export function endTrial(watch: PulsarWatch): void {
+  watch.largeStep = null;
+  if (watch.bank !== null) watch.bank.width = NULL_BEAM;
+}
+
+function newTrial(watch: PulsarWatch, index: number): LargeStep | null {
   const bank = watch.bank!;
   const { seen } = watch.line;
   const start = runStart(bank.beam[0]!, index);
-  const run = index + 1 - start;
-  if (run < LEAST_RUN) {
-    watch.nextSearch = LEAST_RUN;
-    return;
-  }
-  if (run < watch.nextSearch || seen[index]!.tDays - seen[start]!.tDays < LEAST_RUN_DAYS) return;
-  watch.nextSearch = Math.ceil(run * RUN_GROWTH);
+  if (index + 1 - start < LEAST_RUN || seen[index]!.tDays - seen[start]!.tDays < LEAST_RUN_DAYS) return null;
   const before = bank.snapshots.find((s) => s.index === start - 1);
-  if (before === undefined) return;
-  const turnsPerDay = watch.model.spin.frequencyHz.hi * 86_400;
-  const points = seen.slice(start, index + 1).map((s) => ({
-    days: s.tDays - seen[start]!.tDays,
-    deviation: wrapped(s.deviation - predictedDeviation(before, s.tDays)),
-  }));
-  const spread = predictionSpread(watch, before, seen[index]!.tDays);
-  const peaks = searchStep(points, LOWEST_STEP * turnsPerDay, HIGHEST_STEP * turnsPerDay, spread);
-  const found = peaks.flatMap((peak) => followed(watch, before, peak, start, index));
-  if (found.length === 0) return;
-  for (const h of found) h.logWeight -= bank.logScale;
-  if (!watch.locked) {
-    // Before the lock it is the start model that is wrong, not the pulsar that has changed.
-    bank.beam = pruned([...bank.beam, ...found], bank.beam.length + found.length);
+  return before === undefined ? null : { start, before, nextSearch: 0, track: null };
+}
+
+/** One size has won and the arrivals fit again; or nothing came of it. */
+function isOver(watch: PulsarWatch, step: LargeStep, index: number): boolean {
+  const run = index + 1 - step.start;
+  if (run > LONGEST_TRIAL) return true;
+  const best = watch.bank!.beam[0]!;
+  if (step.track === null) return runStart(best, index) > index && watch.tracks.every((t) => t.state !== 'suspected');
+  if (watch.tracks[step.track]!.settled && watch.tracks[step.track]!.state === 'withdrawn') return true;
+  if (run < WON_RUN || !best.tracks.includes(step.track)) return false;
+  let fits = 0;
+  for (let s = best.story; s !== null && s.used; s = s.before) fits++;
+  return fits >= WON_FITS && shareOfCount(watch.bank!, best) > WON_SHARE;
+}
+
+function handOver(watch: PulsarWatch, step: LargeStep, found: Hypothesis[]): void {
+  const bank = watch.bank!;
+  bank.width = MOST_SIZES;
+  if (watch.locked && step.track === null) {
+    joinFamily(bank, 'glitch', step.start, found, MOST_SIZES);
     return;
   }
-  const family = bank.families.find((f) => f.gap === start && f.kind === 'glitch');
-  if (family) {
-    family.beam.push(...found);
-    family.logWeight = logWeightOf(family.beam);
-  } else bank.families.push({ kind: 'glitch', gap: start, beam: found, logWeight: logWeightOf(found) });
-}
-
-function predictedDeviation(from: Snapshot, tDays: number): number {
-  const t = tDays - from.tDays;
-  const { mean } = from.hypothesis;
-  return mean[0]! + t * mean[1]! + (t * t * mean[2]!) / 2;
-}
-
-/** σ of the prediction at the end of the run, turns. */
-function predictionSpread(watch: PulsarWatch, from: Snapshot, tDays: number): number {
-  const h = copyOf(from.hypothesis);
-  propagate(h, gapOf(tDays - from.tDays, watch.noise, watch.states.decays));
-  return Math.sqrt(h.cov[0]!);
+  // Before the lock it is the start model that is wrong; after its confirmation the null holds the step already.
+  const { track } = step;
+  const tagged = track === null ? found : found.map((h) => ({ ...h, tracks: [...h.tracks, track] }));
+  bank.beam = pruned([...bank.beam, ...tagged], MOST_SIZES);
 }
 
 function wrapped(turns: number): number {
   return turns - Math.round(turns);
-}
-
-/** The hypothesis of one peak, taken through the run. */
-function followed(watch: PulsarWatch, from: Snapshot, peak: SearchPeak, start: number, index: number): Hypothesis[] {
-  const { seen } = watch.line;
-  const gapDays = seen[start]!.tDays - from.tDays;
-  const h = copyOf(from.hypothesis);
-  propagate(h, gapOf(gapDays, watch.noise, watch.states.decays));
-  const size = h.mean.length;
-  h.mean[0]! += peak.phase;
-  h.mean[1]! -= peak.frequencyStep;
-  // The epoch is open, so the deviation after the gap is too; the peak's width is the spread of the rate.
-  for (let i = 1; i < size; i++) {
-    h.cov[i] = 0;
-    h.cov[i * size] = 0;
-  }
-  h.cov[0] = START_SPREAD_TURNS ** 2;
-  h.cov[size + 1]! += (2 * peak.width) ** 2;
-  const rateStep = 0.01 * Math.abs(watch.model.spin.frequencyDerivativeHzPerS) * 86_400 ** 2;
-  h.cov[(SPIN_STATES - 1) * (size + 1)]! += rateStep * rateStep;
-  const rootTwoPi = Math.sqrt(2 * Math.PI);
-  const stepOrWidth = Math.max(Math.abs(peak.frequencyStep), peak.width);
-  h.logWeight +=
-    Math.log(watch.locked ? (RATE_PER_YEAR.glitch * gapDays) / DAYS_PER_YEAR : WRONG_START_SHARE) +
-    Math.log(Math.min(1, (rootTwoPi * 2 * peak.width) / (LOG_RANGE * stepOrWidth))) +
-    Math.log(rootTwoPi * START_SPREAD_TURNS);
-  let beam: Hypothesis[] = [h];
-  for (let i = start; i <= index; i++) {
-    if (i > start) {
-      const gap = gapOf(seen[i]!.tDays - seen[i - 1]!.tDays, watch.noise, watch.states.decays);
-      for (const b of beam) propagate(b, gap);
-    }
-    beam = observe(beam, observationOf(watch.line, i, watch.states, watch.noise), KEEP, watch.bank!.scratch);
-  }
-  return beam.slice(0, 3);
 }

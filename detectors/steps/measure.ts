@@ -1,21 +1,27 @@
 /** How big: the exact fit of one event to the counted arrivals around it, whichever kind it is. */
 
-import type { CountedArrival } from '../filter/countedArrival.ts';
+import type { CountedArrival, Disturbance } from '../filter/countedArrival.ts';
+import type { OtherRecovery } from '../recovery/eventFrame.ts';
 import { fitGlitch, type GlitchFit } from '../recovery/glitchFit.ts';
 import type { Estimate } from '../recovery/mixture.ts';
+import { fitRamp } from '../recovery/rampFit.ts';
 import { fitStep, type StepFit } from '../recovery/stepFit.ts';
 import type { NoiseModel } from '../report.ts';
 import { type Alias, aliasesOf } from './aliases.ts';
+import { familyOf } from './bank.ts';
 import { bestOf, countedArrivals, disturbances } from './counts.ts';
 import type { Hypothesis } from './hypothesis.ts';
 import type { PulsarWatch } from './pulsarWatch.ts';
+import { isSlow } from './slowSpinUp.ts';
 import { groupsOfSite } from './timeline.ts';
-import type { Track } from './track.ts';
+import type { Shapes, Track } from './track.ts';
 
 /** The fit of one event; `arrivals` are those it rests on, with `first` the index of the first of them. */
 export interface Measurement {
   readonly glitch: GlitchFit | null;
   readonly step: StepFit | null;
+  /** Of a slow spin-up. */
+  readonly ramp?: { readonly deltaNuHz: Estimate; readonly durationDays: Estimate };
   readonly epochDays: Estimate;
   readonly aliases: readonly Alias[];
   readonly arrivals: readonly CountedArrival[];
@@ -33,30 +39,72 @@ interface Basis {
   readonly marks: string;
 }
 
-export interface MeasuredTrack {
+interface Kept {
   readonly basis: Basis;
   readonly measurement: Measurement | null;
 }
+
+/** Measurements of one track: jointly with all events near it, or with the recoveries of the earlier ones alone. */
+export type MeasuredTrack = Partial<Record<Scope, Kept>>;
+type Scope = 'joint' | 'earlier';
 
 /** Arrivals on each side of the event that the fit rests on. */
 const REACH = 200;
 /** The fit looks at no more candidate gaps than this on each side of the best. */
 const MOST_GAPS = 4;
+/** Exponentials looked for: a mere suspicion needs no more than a hint of a recovery. */
+const MOST_TERMS = { suspected: 1, confirmed: 3, withdrawn: 1 } as const;
 
+/** The event fitted jointly with those near it: their steps free, and their recoveries too, at their own timescales. */
 export function measure(watch: PulsarWatch, track: Track): Measurement | null {
+  return measured(watch, track, 'joint');
+}
+
+function measured(watch: PulsarWatch, track: Track, scope: Scope): Measurement | null {
   const h = holderOf(watch, track);
   const from = Math.max(0, track.bestGap - REACH);
   const until = Math.min(watch.line.seen.length, track.bestGap + REACH);
-  const others = disturbances(watch, track).filter((d) => d.beforeIndex > from && d.beforeIndex < until);
-  const marks = JSON.stringify([track.kind, track.bestGap, track.firstGap, track.lastGap, others]);
-  const known = watch.measured.get(track.number);
-  const basis = { noise: watch.noise, arrivals: until, marks };
-  if (known && known.basis.noise === basis.noise && known.basis.arrivals === until && known.basis.marks === marks)
-    return known.measurement;
+  const inReach = (d: { readonly beforeIndex: number }) => d.beforeIndex > from && d.beforeIndex < until;
+  const others = {
+    steps: disturbances(watch, track).filter(inReach),
+    recoveries: otherRecoveries(watch, track, scope).filter(inReach),
+  };
+  const marks = JSON.stringify([
+    track.kind,
+    track.state,
+    track.shapes,
+    track.bestGap,
+    track.firstGap,
+    track.lastGap,
+    others,
+  ]);
+  const all = watch.measured.get(track.number) ?? {};
+  // Without later recoveries both scopes are one and the same fit.
+  for (const known of [all.joint, all.earlier]) {
+    const basis = known?.basis;
+    if (basis?.noise === watch.noise && basis.arrivals === until && basis.marks === marks) return known!.measurement;
+  }
   const arrivals = countedArrivals(watch, h).slice(from, until);
   const measurement = fitted(watch, track, arrivals, from, others);
-  watch.measured.set(track.number, { basis, measurement });
+  const basis = { noise: watch.noise, arrivals: until, marks };
+  watch.measured.set(track.number, { ...all, [scope]: { basis, measurement } });
   return measurement;
+}
+
+interface Others {
+  readonly steps: readonly Disturbance[];
+  readonly recoveries: readonly OtherRecovery[];
+}
+
+/** Those of confirmed glitches. Each is measured with the earlier ones only, so that no two wait for each other. */
+function otherRecoveries(watch: PulsarWatch, track: Track, scope: Scope): OtherRecovery[] {
+  return watch.tracks
+    .filter((t) => t !== track && t.state === 'confirmed' && t.kind === 'glitch' && t.partOf === null)
+    .filter((t) => Math.abs(t.bestGap - track.bestGap) < REACH && (scope === 'joint' || t.bestGap < track.bestGap))
+    .flatMap((t) => {
+      const terms = measured(watch, t, 'earlier')?.glitch?.recovery?.terms ?? [];
+      return terms.map((term) => ({ beforeIndex: t.bestGap, timescaleDays: term.timescaleDays.median }));
+    });
 }
 
 /** The heaviest hypothesis that holds the event for true. */
@@ -64,7 +112,7 @@ function holderOf(watch: PulsarWatch, track: Track): Hypothesis {
   const bank = watch.bank!;
   const holding =
     track.confirmedAt === null
-      ? bank.families.filter((f) => f.kind === track.kind && f.gap === track.bestGap).flatMap((f) => f.beam)
+      ? (familyOf(bank, track.kind, track.bestGap)?.beam ?? [])
       : [...bank.beam, ...bank.families.flatMap((f) => f.beam)].filter((h) => h.tracks.includes(track.number));
   return holding.length === 0 ? bestOf(watch) : holding.reduce((a, b) => (b.logWeight > a.logWeight ? b : a));
 }
@@ -74,15 +122,18 @@ function fitted(
   track: Track,
   arrivals: readonly CountedArrival[],
   from: number,
-  others: ReturnType<typeof disturbances>,
+  others: Others,
 ): Measurement | null {
+  if (track.kind === 'lost count') return null;
   const last = arrivals.length - 1;
   const input = {
     arrivals,
     noise: watch.noise,
     firstGapBeforeIndex: Math.max(1, Math.max(track.firstGap, track.bestGap - MOST_GAPS) - from),
     lastGapBeforeIndex: Math.min(last, Math.min(track.lastGap, track.bestGap + MOST_GAPS) - from),
-    disturbances: others.map((d) => ({ ...d, beforeIndex: d.beforeIndex - from })),
+    disturbances: others.steps.map((d) => ({ ...d, beforeIndex: d.beforeIndex - from })),
+    otherRecoveries: others.recoveries.map((r) => ({ ...r, beforeIndex: r.beforeIndex - from })),
+    mostTerms: MOST_TERMS[track.state],
     frequencyHz: watch.model.spin.frequencyHz.hi,
     frequencyDerivativeHzPerS: watch.model.spin.frequencyDerivativeHzPerS,
   };
@@ -90,6 +141,7 @@ function fitted(
   // Without arrivals in use on both sides there is nothing to fit.
   if (!arrivals.slice(0, input.firstGapBeforeIndex).some(used)) return null;
   if (!arrivals.slice(input.lastGapBeforeIndex).some(used)) return null;
+  if (track.shapes !== null && isSlow(track)) return asRamp(input, from, track.shapes);
   if (track.kind === 'glitch') {
     // Numbered pulses leave no other counts to try.
     const numbered = watch.line.seen[track.bestGap]!.arrival.pulseNumber !== null;
@@ -125,5 +177,25 @@ function fitted(
     first: from,
     curve: step.curve,
     frequencyCurve: (t) => (t > epoch ? rate * (t - epoch) : 0),
+  };
+}
+
+/** A slow rise, wherever among the gaps of its shape it began. */
+function asRamp(input: Parameters<typeof fitRamp>[0], from: number, { firstGap, lastGap }: Shapes): Measurement {
+  const { step, durationDays, frequencyCurve } = fitRamp({
+    ...input,
+    firstGapBeforeIndex: firstGap - from,
+    lastGapBeforeIndex: lastGap - from,
+  });
+  return {
+    glitch: null,
+    step: null,
+    ramp: { deltaNuHz: step.size, durationDays },
+    epochDays: step.epochDays,
+    aliases: [],
+    arrivals: input.arrivals,
+    first: from,
+    curve: step.curve,
+    frequencyCurve,
   };
 }

@@ -1,9 +1,11 @@
 /** Where an event may enter: the gap before an arrival, and the directions in state space that a step may take. */
 
+import { isFelt, isOfClock, type SiteStep } from '../site/siteStep.ts';
 import type { BirthPlace } from './births.ts';
 import { zeros } from './hypothesis.ts';
+import { switchingRecord } from './modeSwitching.ts';
 import type { PulsarWatch } from './pulsarWatch.ts';
-import { dispersionWeight } from './timeline.ts';
+import { dispersionWeight, type Seen } from './timeline.ts';
 
 /** K of the cold-plasma law, s MHz² pc⁻¹ cm³: 1/2.41e-4. */
 const DISPERSION_CONSTANT = 1 / 2.41e-4;
@@ -22,6 +24,7 @@ export function birthPlace(watch: PulsarWatch, index: number, gapDays: number): 
     offsetDirections: offsetDirections(watch, index),
     dispersionDirection: dispersionDirection(watch),
     turnsPerDispersion: turnsPerDispersion(watch),
+    modes: switchingRecord(watch)?.modes ?? null,
     countKnown: watch.line.seen[index]!.arrival.pulseNumber !== null,
   };
 }
@@ -41,6 +44,22 @@ function offsetDirections(watch: PulsarWatch, index: number): number[][] {
       ),
     );
   return directions;
+}
+
+/** Of what is not known of the steps of the site's clock in the gap before the arrival, turns². */
+export function clockVariance({ model, line }: PulsarWatch, index: number): number {
+  let variance = 0;
+  for (const step of model.siteSteps ?? [])
+    if (isFirstAfter(step, line.seen, index)) variance += (step.uncertaintyUs * 1e-6 * model.spin.frequencyHz.hi) ** 2;
+  return variance;
+}
+
+/** Of the arrivals by this clock, the one at `index` is the first after the step. */
+function isFirstAfter(step: SiteStep, seen: readonly Seen[], index: number): boolean {
+  if (!isFelt(step, seen[index]!.arrival)) return false;
+  let before = index - 1;
+  while (before >= 0 && !isOfClock(step, seen[before]!.arrival)) before--;
+  return before >= 0 && !isFelt(step, seen[before]!.arrival);
 }
 
 /** Offsets are kept against the reference group: its own step is one of the deviation, undone in all others. */

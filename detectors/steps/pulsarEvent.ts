@@ -18,12 +18,31 @@ export type EventState = 'suspected' | 'confirmed' | 'withdrawn' | 'accepted' | 
 
 export type Interval = readonly [low: number, high: number];
 
+/** One exponential after a glitch. The optional fields are missing from records of older versions. */
 export interface RecoveryTerm {
+  /** A delayed rise is a part of the step that arrives late; its fraction is negative. */
+  readonly kind?: 'recovery' | 'delayed rise';
   /** Δνⱼ / Δν at the glitch. */
   readonly fraction: number;
   readonly fractionInterval68: Interval;
+  readonly fractionInterval95?: Interval;
   readonly timescaleDays: number;
   readonly timescaleDaysInterval68: Interval;
+  readonly timescaleDaysInterval95?: Interval;
+}
+
+/** What a glitch stands beside. */
+export interface EventContext {
+  /** −ν/(2ν̇); null for a pulsar that does not spin down. */
+  readonly characteristicAgeYears: number | null;
+  /** Since the pulsar's last glitch; null for the first on record. */
+  readonly waitedDays: number | null;
+  /** Of this pulsar, oldest first: those of its model and those on record. */
+  readonly earlierGlitches: readonly { readonly epochMjd: number; readonly deltaNuOverNu: number }[];
+  /** ν ν̈/ν̇² between the glitch before and this one; null where it is not constrained. */
+  readonly brakingIndex: { readonly value: number; readonly interval68: Interval; readonly fromMjd: number } | null;
+  /** What is published of the class. */
+  readonly typical: readonly { readonly text: string; readonly source: string }[];
 }
 
 /**
@@ -45,15 +64,28 @@ export interface PulsarEvent {
   readonly deltaNuHzInterval95: Interval | null;
   readonly deltaNuOverNu: number | null;
   readonly deltaNuOverNuInterval68: Interval | null;
+  /** This and the other optional fields are missing from records of older versions. */
+  readonly deltaNuOverNuInterval95?: Interval | null;
   /** Hz/s */
   readonly deltaNuDot: number | null;
   readonly deltaNuDotInterval68: Interval | null;
+  readonly deltaNuDotInterval95?: Interval | null;
   readonly deltaNuDotOverNuDot: number | null;
   readonly deltaNuDotOverNuDotInterval68: Interval | null;
+  readonly deltaNuDotOverNuDotInterval95?: Interval | null;
   /** Step in arrival time (clock step, dispersion step at the reference frequency), µs; positive is late. */
   readonly timeStepUs: number | null;
   readonly timeStepUsInterval68: Interval | null;
-  readonly recovery: { readonly terms: readonly RecoveryTerm[]; readonly q: number | null };
+  /** Of a slow spin-up: how long ν rose, days. */
+  readonly riseDays?: number | null;
+  readonly riseDaysInterval68?: Interval | null;
+  /** `q`: Σ Δνⱼ/Δν over what decays; null, like its intervals, while no recovery is established. */
+  readonly recovery: {
+    readonly terms: readonly RecoveryTerm[];
+    readonly q: number | null;
+    readonly qInterval68?: Interval | null;
+    readonly qInterval95?: Interval | null;
+  };
   readonly aliases: readonly { readonly deltaNuHz: number; readonly probability: number }[];
   /** Arrival times (MJD) of: the first arrival after the event; the arrivals that brought the states about. */
   readonly firstArrivalMjd: number;
@@ -64,6 +96,8 @@ export interface PulsarEvent {
   readonly falseAlertsPerYearAtThisLevel: number;
   /** For a site event: the pulsars that showed it. Else just this pulsar. */
   readonly pulsars: readonly string[];
+  /** For a glitch; missing from records of older versions. */
+  readonly context?: EventContext;
   /** The site, for a site event; before events are combined, of any clock step or bad session. */
   readonly site: string | null;
 }

@@ -1,12 +1,16 @@
 /** What is remembered of one pulsar between arrivals. A function of (model, arrivals in time order, settings). */
 
 import { type NoisePrior, noisePrior } from '../filter/noisePrior.ts';
+import type { OwnNull } from '../nulls/ownNull.ts';
 import type { DetectorSettings, NoiseModel } from '../report.ts';
 import type { PulsarModel } from '../spin/pulsarModel.ts';
 import { type PhaseAtArrival, phaseEvaluator } from '../spin/spinDownModel.ts';
 import type { Mjd } from '../time/mjd.ts';
 import type { Bank } from './bank.ts';
+import type { LargeStep } from './largeStep.ts';
+import type { Doubt } from './lostCount.ts';
 import type { MeasuredTrack } from './measure.ts';
+import type { Loss } from './reacquire.ts';
 import { newStateMap, newTimeline, type StateMap, type Timeline } from './timeline.ts';
 import type { Track } from './track.ts';
 
@@ -18,16 +22,27 @@ export interface PulsarWatch {
   readonly line: Timeline;
   states: StateMap;
   bank: Bank | null;
+  /** What decisions use: with the margin. */
   noise: NoiseModel;
+  /** The most probable noise, without the margin. */
+  likelyNoise: NoiseModel;
   readonly tracks: Track[];
   /** One pulse count has won; nothing is born, and nothing decided, before. */
   locked: boolean;
+  /** A gap after which the counts are in doubt: nothing is confirmed until they are settled. */
+  doubt: Doubt | null;
+  /** The count is lost since; it is being sought. */
+  lost: Loss | null;
+  /** Every explanation of every gap is carried through every arrival: the same answers, slowly. For comparison. */
+  carriesAll: boolean;
   /** Index of the oldest gap that may still hold a new event. */
   oldestGap: number;
   /** Arrivals at which the noise is learned next. */
   nextLearning: number;
-  /** Run of unexplained arrivals at which the search for a large step is tried next. */
-  nextSearch: number;
+  /** Null while the arrivals fit. */
+  largeStep: LargeStep | null;
+  /** What noise alone would do to the odds, where that had to be known: a cache of a pure function. */
+  ownNull: OwnNull | null;
   /** Measurements already made, by track: a cache of a pure function. */
   readonly measured: Map<number, MeasuredTrack>;
 }
@@ -45,11 +60,16 @@ export function startWatch(model: PulsarModel, settings: DetectorSettings): Puls
     states: newStateMap(),
     bank: null,
     noise: asFixed(model, firstNoise(prior)),
+    likelyNoise: asFixed(model, firstNoise(prior)),
     tracks: [],
     locked: false,
+    doubt: null,
+    lost: null,
+    carriesAll: false,
     oldestGap: 1,
     nextLearning: FIRST_LEARNING,
-    nextSearch: 0,
+    largeStep: null,
+    ownNull: null,
     measured: new Map(),
   };
 }

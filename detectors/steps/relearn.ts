@@ -9,6 +9,7 @@ import { withoutRecoveries } from './establishedRecoveries.ts';
 import type { Hypothesis } from './hypothesis.ts';
 import { jointOdds } from './jointOdds.ts';
 import { asFixed, type PulsarWatch } from './pulsarWatch.ts';
+import { retimeRecovery } from './recoveryTimescales.ts';
 import { decisionsOf, retrace } from './retrace.ts';
 import { foundStartRate, shareOfCount, startBeam } from './start.ts';
 import { stepAt } from './stepAt.ts';
@@ -24,7 +25,7 @@ const LAST_EVENTS = 4;
 
 export function learningDue(watch: PulsarWatch, index: number): boolean {
   const count = index + 1;
-  if (count < watch.nextLearning) return false;
+  if (count < watch.nextLearning || watch.largeStep !== null) return false;
   if (count >= PATIENCE * watch.nextLearning) return true;
   const best = watch.bank!.beam[0]!;
   const open = watch.tracks.some((t) => t.state === 'suspected' || (t.confirmedAt !== null && !t.settled));
@@ -38,13 +39,23 @@ export function relearn(watch: PulsarWatch, index: number): void {
   const counted = withoutRecoveries(watch, countedArrivals(watch, best));
   const known = disturbances(watch);
   const learned = learnNoise(counted, known, watch.prior, watch.noise);
+  watch.likelyNoise = asFixed(watch.model, learned);
   watch.noise = asFixed(watch.model, withMargin(learned, counted, known, watch.prior));
+  retimeRecovery(watch);
   rebuild(watch, index, best, foundStartRate(counted));
+}
+
+/** The recovery followed with a timescale that suits it better: the past gone through again, with the noise as it is. */
+export function followRecovery(watch: PulsarWatch, index: number): boolean {
+  if (!retimeRecovery(watch)) return false;
+  const best = watch.bank!.beam[0]!;
+  rebuild(watch, index, best, foundStartRate(countedArrivals(watch, best)));
+  return true;
 }
 
 /** A confirmed event that more arrivals have shown to be noise is withdrawn, and what it hid is learned. */
 function takeBack(watch: PulsarWatch, best: Hypothesis): void {
-  const confirmed = watch.tracks.filter((t) => t.state === 'confirmed').slice(-LAST_EVENTS);
+  const confirmed = watch.tracks.filter((t) => t.state === 'confirmed' && t.kind !== 'lost count').slice(-LAST_EVENTS);
   for (const track of confirmed) {
     const logOdds = jointOdds(watch, track, best);
     if (logOdds < 0) Object.assign(track, { state: 'withdrawn', logOdds, settled: true } satisfies Partial<Track>);

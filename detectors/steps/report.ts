@@ -1,7 +1,9 @@
 /** Everything the detector says about one pulsar now. */
 
+import { detectionLimit } from '../limits/detectionLimit.ts';
 import type { PulsarReport } from '../report.ts';
 import { mjdNumber } from '../time/mjd.ts';
+import { contextOf, type EarlierGlitch } from './context.ts';
 import { describe, describeBadSession } from './describe.ts';
 import { measure } from './measure.ts';
 import { pictureOf } from './picture.ts';
@@ -11,11 +13,20 @@ import { badSessions, verdictsOf } from './verdicts.ts';
 
 export function report(watch: PulsarWatch): PulsarReport {
   const events: PulsarEvent[] = [];
+  const glitches: EarlierGlitch[] = [];
   const pictures = new Map<string, EventPicture>();
   for (const track of watch.tracks) {
+    if (track.partOf !== null) continue;
     const measured = measure(watch, track);
-    const event = describe(watch, track, measured);
+    const described = describe(watch, track, measured);
+    const earlier = glitches.filter((g) => g.event.epochMjd < described.epochMjd);
+    const event =
+      track.kind === 'glitch' ? { ...described, context: contextOf(watch, track, described, earlier) } : described;
     events.push(event);
+    if (track.kind === 'glitch' && track.state === 'confirmed') {
+      glitches.push({ track, event, measurement: measured });
+      glitches.sort((a, b) => a.event.epochMjd - b.event.epochMjd);
+    }
     const picture = measured === null ? null : pictureOf(watch, event, track.bestGap, measured);
     if (picture !== null) pictures.set(event.id, picture);
   }
@@ -30,5 +41,6 @@ export function report(watch: PulsarWatch): PulsarReport {
     noise: watch.noise,
     locked: watch.locked,
     lastArrivalMjd: last === undefined ? null : mjdNumber(last.arrival.tdb),
+    limit: detectionLimit(watch),
   };
 }

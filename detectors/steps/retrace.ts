@@ -1,17 +1,19 @@
 /** Going through arrivals again whose whole turns are decided: one filter step each, no branching. */
 
 import type { NoiseModel } from '../report.ts';
-import { glitch } from './births.ts';
+import { glitch, loseCount } from './births.ts';
 import { absorb, gapOf, type Hypothesis, loosen, predict, propagate, type Story } from './hypothesis.ts';
-import { birthPlace } from './places.ts';
+import { birthPlace, clockVariance } from './places.ts';
 import type { PulsarWatch } from './pulsarWatch.ts';
-import { looseRecovery } from './recoveryStates.ts';
+import { looseRecovery, RECOVERY_SHARE } from './recoveryStates.ts';
 import { observationOf } from './timeline.ts';
 import type { Track } from './track.ts';
 
 /** σ of a believed glitch when the past is gone through again: wide, its size is known from the arrivals. */
 const BELIEVED_GLITCH_SIZE = 2e-5;
 const BELIEVED_RATE_CHANGE = 0.2;
+/** The same of an event that is nothing else. */
+const BELIEVED_RATE_CHANGE_ALONE = 1;
 const SECONDS_PER_DAY = 86_400;
 
 /** The noise, and the events held for true, under which the past is gone through. */
@@ -32,7 +34,7 @@ export function retrace(watch: PulsarWatch, h: Hypothesis, decision: Story, { no
   const { line, states } = watch;
   const i = decision.index;
   const gapDays = line.seen[i]!.tDays - line.seen[i - 1]!.tDays;
-  propagate(h, gapOf(gapDays, noise, states.decays));
+  propagate(h, gapOf(gapDays, noise, states.decays, clockVariance(watch, i)));
   for (const track of tracks) {
     if (track.bestGap !== i) continue;
     setFree(watch, h, track, gapDays);
@@ -63,13 +65,21 @@ function setFree(watch: PulsarWatch, h: Hypothesis, track: Track, gapDays: numbe
   const nu = place.frequencyHz;
   if (track.kind === 'glitch') {
     glitch(h, BELIEVED_GLITCH_SIZE * nu * SECONDS_PER_DAY, place);
-    looseRecovery(h, watch.states.decays, track.rateStep);
+    looseRecovery(h, watch.states.decays, RECOVERY_SHARE * track.rateStep);
+  } else if (track.kind === 'lost count') {
+    loseCount(h, place);
   } else if (track.kind === 'clock step') {
     for (const direction of place.offsetDirections) loosen(h, direction, 1);
   } else if (track.kind === 'dispersion step' && place.dispersionDirection !== null) {
     loosen(h, place.dispersionDirection, (0.3 * place.turnsPerDispersion) ** 2);
   }
+  const share = track.kind === 'spin-down-rate change' ? BELIEVED_RATE_CHANGE_ALONE : BELIEVED_RATE_CHANGE;
+  const second = share * Math.abs(place.frequencyDerivativeHzPerS) * SECONDS_PER_DAY ** 2;
   const size = h.mean.length;
-  h.cov[2 * size + 2]! +=
-    (BELIEVED_RATE_CHANGE * Math.abs(place.frequencyDerivativeHzPerS) * SECONDS_PER_DAY ** 2) ** 2;
+  h.cov[2 * size + 2]! += second ** 2;
+  if (track.kind !== 'spin-down-rate change') return;
+  // The change came up to so many days sooner or later than in this gap: what it did to ν and phase is free too.
+  const days = watch.line.seen[track.lastGap]!.tDays - watch.line.seen[track.firstGap - 1]!.tDays;
+  h.cov[size + 1]! += (second * days) ** 2;
+  h.cov[0]! += (second * days * days) ** 2 / 4;
 }

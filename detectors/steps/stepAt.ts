@@ -1,5 +1,5 @@
 import { stepBank } from './bank.ts';
-import { birthPlace } from './places.ts';
+import { birthPlace, clockVariance } from './places.ts';
 import type { PulsarWatch } from './pulsarWatch.ts';
 import { observationOf } from './timeline.ts';
 
@@ -11,7 +11,10 @@ export function stepAt(watch: PulsarWatch, index: number, births: boolean): void
     seen: observationOf(line, index, watch.states, watch.noise),
     tDays: line.seen[index]!.tDays,
     gapDays,
-    place: births && gapDays > 0 ? birthPlace(watch, index, gapDays) : null,
+    clockVariance: clockVariance(watch, index),
+    place:
+      births && gapDays > 0 && (watch.largeStep?.track ?? null) === null ? birthPlace(watch, index, gapDays) : null,
     oldestGap: Math.max(watch.oldestGap, index - settings.windowArrivals + 1),
+    carryAll: watch.carriesAll,
   });
 }

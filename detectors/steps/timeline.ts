@@ -5,7 +5,7 @@ import { arrivalVariance, SPIN_STATES } from '../filter/stateSpace.ts';
 import type { NoiseModel } from '../report.ts';
 import { daysBetween, type Mjd } from '../time/mjd.ts';
 import type { Observation } from './beam.ts';
-import { type Decay, zeros } from './hypothesis.ts';
+import { type Decay, sightOf, zeros } from './hypothesis.ts';
 
 /** One arrival on the time line. */
 export interface Seen {
@@ -32,7 +32,7 @@ export interface Timeline {
 }
 
 /** Arrivals closer than this at one site are one session, not independent evidence (common practice, no source). */
-const SESSION_DAYS = 0.1;
+export const SESSION_DAYS = 0.1;
 const BAND_RATIO = 1.1;
 
 export function newTimeline(epoch: Mjd): Timeline {
@@ -104,22 +104,16 @@ export function observationOf(line: Timeline, index: number, map: StateMap, nois
   const seen = line.seen[index]!;
   const row = zeros(map.size);
   row[0] = 1;
-  let plain = true;
   const offset = map.offsets[seen.group] ?? null;
-  if (offset !== null) {
-    row[offset] = 1;
-    plain = false;
-  }
-  if (map.dispersion !== null) {
+  if (offset !== null) row[offset] = 1;
+  if (map.dispersion !== null)
     row[map.dispersion] = dispersionWeight(seen.arrival.frequencyMhz) - dispersionWeight(line.firstBandMhz!);
-    plain = plain && row[map.dispersion] === 0;
-  }
   const before = line.seen[index - 1];
   return {
     index,
     deviation: seen.deviation,
     variance: arrivalVariance(seen.sigmaTurns, noise),
-    sight: { row, plain },
+    sight: sightOf(row),
     turnsToNumber: seen.arrival.pulseNumber === null ? null : seen.modelPulse - seen.arrival.pulseNumber,
     sameSession: before !== undefined && before.session === seen.session,
   };

@@ -1,12 +1,13 @@
 /** An event on the way to a decision: suspected, confirmed or withdrawn, with its weight of evidence. */
 
-import type { Kind } from './births.ts';
+import type { Cause } from './births.ts';
+import type { Modes } from './modeSwitching.ts';
 
 export interface Track {
   /** Tags the hypotheses that hold the event for true. */
   readonly number: number;
   readonly id: string;
-  kind: Kind;
+  kind: Cause;
   state: 'suspected' | 'confirmed' | 'withdrawn';
   /** Arrival (index) after the most probable gap, and the range of gaps that holds 95 % of the weight. */
   bestGap: number;
@@ -22,8 +23,21 @@ export interface Track {
   logOdds: number;
   /** Probability by explanation, wandering and lost count among them. */
   explanations: Readonly<Record<string, number>>;
+  /** What the event looks like as a whole, weighed after the fact; null before it is confirmed. */
+  shapes: Shapes | null;
+  /** Of the first of a series of switches between two spin-down rates. */
+  modes: Modes | null;
+  /** Number of the track of whose event this is a part: it is not an event of its own. */
+  partOf: number | null;
   /** No hypothesis without the event is left: its odds no longer change. */
   settled: boolean;
+}
+
+/** Probability by shape (they sum to 1), and the gaps in which a slow rise may have begun. */
+export interface Shapes {
+  readonly shares: Readonly<Record<string, number>>;
+  readonly firstGap: number;
+  readonly lastGap: number;
 }
 
 /** Where the weight of one kind lies among the gaps. */

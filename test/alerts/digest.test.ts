@@ -22,6 +22,16 @@ const QUIET: MorningReview = {
     { pulsar: 'KR 1902-08', deltaNuOverNu90: 2.13e-9, delayDays90: 6 },
     { pulsar: 'KR 2231+44', deltaNuOverNu90: 4e-8, delayDays90: 9 },
   ],
+  falseAlerts: {
+    budgetPerYear: 1,
+    confirmed: 4,
+    accepted: 2,
+    rejected: 1,
+    withdrawn: 0,
+    falseInLastYear: 1,
+    suspectedSteps: { up: 9, down: 3 },
+    confirmedSteps: { up: 4, down: 0 },
+  },
   mail: { waiting: 0, refused: 0, oldestWaitingHours: null },
   warnings: [],
 };
@@ -60,8 +70,16 @@ describe('the morning review', () => {
     expect(text).toContain('All quiet.');
     expect(text).toContain('312 arrivals of 41 pulsars in 27 files');
     expect(text.replace(/\s+/g, ' ')).toContain(
-      'A glitch of Δν/ν = 2.1 × 10⁻⁹ or more would have been confirmed with 90 % probability in half of 2 pulsars; the blindest is KR 2231+44, 40 × 10⁻⁹.',
+      'A glitch would have been confirmed with 90 % probability, in half of 2 pulsars from Δν/ν = 2.1 × 10⁻⁹ on. The blindest first: - KR 2231+44: Δν/ν = 40 × 10⁻⁹ or more, within 9.0 d - KR 1902-08: Δν/ν = 2.1 × 10⁻⁹ or more, within 6.0 d',
     );
+  });
+
+  it('says what false alerts cost so far, and what the mirror shows', () => {
+    const text = digestText(QUIET, SETTING).replace(/\s+/g, ' ');
+    expect(text).toContain(
+      'Budget 1.0 a year, rejected or withdrawn in the last year 1; confirmed so far 4: 2 accepted, 1 rejected, 0 withdrawn, 1 without a verdict.',
+    );
+    expect(text).toContain('Mirror count: 3 spin-down against 9 spin-up suspected, 0 against 4 confirmed.');
   });
 
   it('without arrivals silence says nothing, and it does not claim quiet', () => {

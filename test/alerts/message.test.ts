@@ -26,6 +26,7 @@ const POLICY = {
   contact: SETTING.observatory.contact,
   nowMjd: 60_128,
   historicalDays: 30,
+  sharperBy: 2,
 };
 
 function planned(event: PulsarEvent): PlannedMessage {

@@ -17,6 +17,7 @@ const POLICY: AlertPolicy = {
   contact: 'duty@kestrel-ridge.example',
   nowMjd: 60_128,
   historicalDays: 30,
+  sharperBy: 2,
 };
 const FIRST_ID = '<first@kestrel-ridge.example>';
 
@@ -36,6 +37,21 @@ const narrowed = (factor: number): PulsarEvent => ({
   ...GLITCH,
   deltaNuHzInterval68: [2.03e-8 - 1.3e-9 / factor, 2.03e-8 + 1.3e-9 / factor],
 });
+
+const torque = (interval: readonly [number, number]): PulsarEvent => ({ ...GLITCH, deltaNuDotInterval68: interval });
+const sharperRecovery: PulsarEvent = {
+  ...GLITCH,
+  recovery: { terms: [{ ...term, timescaleDaysInterval68: [15, 21] }], q: 0.02 },
+};
+const withAlias = (probability: number): PulsarEvent => ({
+  ...GLITCH,
+  aliases: [
+    { deltaNuHz: 2.03e-8, probability: 1 - probability },
+    { deltaNuHz: 9e-6, probability },
+  ],
+});
+const aliased = withAlias(0.2);
+const hardlyAliased = withAlias(0.001);
 
 function decide(
   before: PulsarEvent | null,
@@ -65,6 +81,26 @@ describe('whom to tell, and why', () => {
     ],
     ['a first recovery', GLITCH, recovering, GLITCH, 'recovery first established', 'update'],
     ['a recovery that was told', recovering, recovering, recovering, 'nothing new', null],
+    [
+      'a spin-down step, once its sign is known',
+      GLITCH,
+      torque([-1.6e-15, -0.6e-15]),
+      GLITCH,
+      'spin-down step sharpened',
+      'update',
+    ],
+    ['a spin-down step whose sign is open', GLITCH, torque([-1.1e-15, 0.1e-15]), GLITCH, 'nothing new', null],
+    [
+      'an epoch twice as sharp',
+      GLITCH,
+      { ...GLITCH, epochInterval68: [60_123.3, 60_123.6] },
+      GLITCH,
+      'epoch sharpened',
+      'update',
+    ],
+    ['a recovery twice as sharp', recovering, sharperRecovery, recovering, 'recovery sharpened', 'update'],
+    ['an alias that fell', aliased, GLITCH, aliased, 'alias fell', 'update'],
+    ['an alias that hardly counted', hardlyAliased, GLITCH, hardlyAliased, 'nothing new', null],
     ['another explanation', GLITCH, clock, GLITCH, 'explanation changed', 'update'],
     ['withdrawn after it was told', GLITCH, withdrawn, GLITCH, 'withdrawn after it was told', 'withdrawal'],
     ['still withdrawn', withdrawn, withdrawn, withdrawn, 'nothing new', null],
@@ -87,6 +123,12 @@ describe('whom to tell, and why', () => {
     const decision = decide(before, after, told);
     expect(decision.reason).toBe(reason);
     expect(decision.messages.map((m) => m.kind)).toEqual(kind === null ? [] : [kind]);
+  });
+
+  it('the factor is the operator’s', () => {
+    expect(decide(GLITCH, narrowed(2.1), GLITCH, { sharperBy: 3 }).reason).toBe('nothing new');
+    expect(decide(GLITCH, narrowed(3.1), GLITCH, { sharperBy: 3 }).reason).toBe('size sharpened');
+    expect(decide(GLITCH, narrowed(1.3), GLITCH, { sharperBy: 1.2 }).reason).toBe('size sharpened');
   });
 
   it('A21, A33: what old arrivals confirm waits for the digest, so that a first start is no storm', () => {

@@ -72,6 +72,35 @@ describe('an event', () => {
     expect(outbox(at)).toEqual([]);
   });
 
+  test('keeps what was believed when, and why that was mailed or not; a later mail tells it', async () => {
+    const at = await station();
+    const sent = [];
+    for (const [name, some] of [
+      ['a.csv', all.slice(0, -5)],
+      ['b.csv', all.slice(-5, -2)],
+      ['c.csv', all.slice(-2)],
+    ] as const) {
+      await at.deliver(name, arrivalFile(some), { mail: true });
+      sent.push(...(await deliverAll(at)));
+    }
+    const [listed] = at.store.events() as [ReturnType<typeof at.store.events>[number]];
+    const { history } = at.store.event(listed.event.id)!;
+    const reasons = history.map(({ alert }) => alert);
+    expect(history.length).toBeGreaterThan(1);
+    expect(reasons[0]).toMatch(/^(mailed: first confirmation|not mailed: suspected only)$/);
+    for (const why of reasons) expect(why).toMatch(/^(mailed|not mailed): [a-z]/);
+    const arrivalsUsed = history.map(({ event }) => event.arrivalsUsed);
+    expect(arrivalsUsed).toEqual([...arrivalsUsed].sort((a, b) => a - b));
+
+    const mailed = history.filter(({ alert }) => alert?.startsWith('mailed: '));
+    expect(sent.map(({ mail }) => /\.r(\d+)\./.exec(mail.messageId)?.[1])).toEqual(
+      mailed.map((m) => String(m.revision)),
+    );
+    for (const [i, { parsed }] of sent.entries()) {
+      expect(parsed.text!.includes('What was believed when')).toBe(mailed[i]!.revision > 1);
+    }
+  });
+
   test('that changes before its mail left is told once, as it is now', async () => {
     const at = await station();
     await at.deliver('a.csv', arrivalFile(all.slice(0, -2)), { mail: true });

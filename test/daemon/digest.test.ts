@@ -65,7 +65,7 @@ describe('the schedule on a fake clock', () => {
   }
 
   test.each(['0 8 * * *', '30 2 * * *', '0 0 * * *', '59 23 * * *'])(
-    '%s: one a civil date over both changes',
+    'B9: %s: one a civil date over both changes',
     async (cron) => {
       expect(await run(cron, '2026-03-28T00:00:00Z', '2026-03-30T21:58:00Z')).toEqual(
         cron === '59 23 * * *' ? ['2026-03-28', '2026-03-29'] : ['2026-03-28', '2026-03-29', '2026-03-30'],

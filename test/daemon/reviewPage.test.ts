@@ -1,11 +1,12 @@
 import { type AddressInfo, createServer } from 'node:net';
 import { expect, test } from 'vitest';
 import { createStoreDesk } from '../../daemon/review/storeDesk.ts';
+import { createVerdictTokens } from '../../daemon/review/verdictToken.ts';
 import { openReviewPage } from '../../daemon/reviewPage.ts';
 import { createTestStation } from '../support/station.ts';
 import { syntheticPulsar } from '../support/syntheticPulsar.ts';
 
-test('a port that is taken does not keep the daemon from starting', async () => {
+test('E15: a port that is taken does not keep the daemon from starting', async () => {
   const other = createServer();
   await new Promise<void>((resolve) => other.listen(0, '127.0.0.1', resolve));
   const { port } = other.address() as AddressInfo;
@@ -17,10 +18,12 @@ test('a port that is taken does not keep the daemon from starting', async () => 
     const { configuration, store, clock } = at.station;
     const station = { ...at.station, configuration: { ...configuration, review: { ...configuration.review, port } } };
     const health = () => ({ ok: true, problems: [] });
-    const morning = () => {
+    const unasked = () => {
       throw new Error('nobody asked');
     };
-    const page = await openReviewPage(station, createStoreDesk({ configuration, store, clock, morning, health }));
+    const asked = { morning: unasked, vitalSigns: unasked, metrics: unasked, health };
+    const desk = createStoreDesk({ configuration, store, clock, ...asked });
+    const page = await openReviewPage(station, { desk, tokens: createVerdictTokens() });
     expect(page.url()).toBeNull();
     await page.close();
   } finally {

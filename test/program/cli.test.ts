@@ -10,7 +10,21 @@ import { arrivalFile, syntheticArrivals, syntheticPulsar } from '../support/synt
 // Every command as a person types it: what it prints, and what the shell learns.
 
 const COMMANDS = [
-  ...['watch', 'check', 'replay', 'events', 'show', 'review', 'morning', 'arrivals', 'export', 'backup', 'restore'],
+  ...[
+    'watch',
+    'check',
+    'replay',
+    'events',
+    'show',
+    'review',
+    'morning',
+    'limits',
+    'plan',
+    'arrivals',
+    'export',
+    'backup',
+    'restore',
+  ],
 ];
 const START = 61_000;
 const glitching = syntheticPulsar({
@@ -196,6 +210,33 @@ describe('the commands', () => {
     const record = await spinvigilJson<{ event: PulsarEvent; history: unknown[] }>(['show', event.id, ...config]);
     expect(record.event).toEqual(event);
     expect(record.history).toHaveLength(1);
+  });
+
+  test('model prints the post-glitch model, which check takes in the models folder', async () => {
+    const { code, stdout } = await run('model', 'KR 0417+31');
+    expect(code).toBe(0);
+    expect(stdout).toContain(`# Holds candidate glitch ${event.id}`);
+    expect(stdout).toMatch(/had drifted by 0\.1 turn .* do not fold with it/);
+    const other = await createObservatory({ pulsars: [quiet] });
+    try {
+      await writeFile(join(other.folder, 'models', 'current.toml'), stdout);
+      const checked = await runSpinvigil(['check', '--config', other.configFile]);
+      expect(checked.stdout).toContain('is sound: 1 feeds, 0 sites, 2 pulsars.');
+      expect(checked.code).toBe(0);
+    } finally {
+      await other.remove();
+    }
+  });
+
+  test('drill rehearses, and the log is as it was', async () => {
+    const before = await spinvigilJson<PulsarEvent[]>(['events', ...config]);
+    const { code, stdout, stderr } = await run('drill', 'KR 1021-05', '--size', '3e-7');
+    expect(code, stderr).toBe(0);
+    expect(stdout).toMatch(/confirmed: {2}\d/);
+    expect(await spinvigilJson<PulsarEvent[]>(['events', ...config])).toEqual(before);
+    const small = await run('drill', 'KR 1021-05', '--size', '1e-14');
+    expect(small.code).toBe(1);
+    expect(small.stderr).toContain('nobody would have been told');
   });
 
   test('export writes a notice', async () => {

@@ -1,7 +1,7 @@
 import { uniformFloat64 } from 'pure-rand/distribution/uniformFloat64';
 import { xoroshiro128plus } from 'pure-rand/generator/xoroshiro128plus';
 import type { EventRecord, FileRecord, OutboxRecord } from '../../daemon/records.ts';
-import type { ReviewDesk, VerdictOrder, VerdictOutcome } from '../../daemon/review/desk.ts';
+import type { ReviewDesk, VerdictOrder, VerdictOutcome, VitalSigns } from '../../daemon/review/desk.ts';
 import type { EventPicture, EventState, PulsarEvent } from '../../detectors/steps/pulsarEvent.ts';
 
 /** A desk in memory with one evening of an invented observatory; every text of it can be replaced by a hostile one. */
@@ -149,6 +149,16 @@ export function memoryDesk(records: readonly EventRecord[] = [sampleRecord()], t
       unlockedPulsars: ['KR 2210-05'],
       intake: { files: 3, arrivals: 128, pulsars: 41 },
       limits: [{ pulsar: 'KR 0417+31', deltaNuOverNu90: 2.1e-9, delayDays90: 6.5 }],
+      falseAlerts: {
+        budgetPerYear: 1,
+        confirmed: 4,
+        accepted: 2,
+        rejected: 1,
+        withdrawn: 0,
+        falseInLastYear: 1,
+        suspectedSteps: { up: 9, down: 3 },
+        confirmedSteps: { up: 4, down: 0 },
+      },
       mail: { waiting: 1, refused: 0, oldestWaitingHours: 0.3 },
       warnings: ['The leap-second table ends on 2027-06-28.'],
     }),
@@ -165,9 +175,30 @@ export function memoryDesk(records: readonly EventRecord[] = [sampleRecord()], t
     quarantine: () => quarantine,
     outbox: () => [sampleMail(texts.subject ?? 'Kestrel Ridge: KR 0417+31: candidate glitch')],
     health: () => ({ ok: texts.problem === undefined, problems: texts.problem === undefined ? [] : [texts.problem] }),
+    vitalSigns: () => sampleSigns(),
+    metrics: () => '# EOF\n',
     recordVerdict: (order) => judge(byId, order),
     put: (record) => void byId.set(record.event.id, record),
     verdictCount: () => all().reduce((sum, { verdicts }) => sum + verdicts.length, 0),
+  };
+}
+
+function sampleSigns(): VitalSigns {
+  return {
+    versions: { program: '1.0.0', node: '20.20.2', sqlite: '3.53.2' },
+    startedAt: '2026-11-28T04:00:00.000Z',
+    recordBytes: 41_943_040,
+    residentBytes: 180_355_072,
+    stages: [
+      { name: 'feed north dish', resting: false, secondsSinceProgress: 4, limitSeconds: 600, late: false },
+      { name: 'mail', resting: false, secondsSinceProgress: 2400, limitSeconds: 1800, late: true },
+      { name: 'decide', resting: true, secondsSinceProgress: 31, limitSeconds: 600, late: false },
+    ],
+    tables: [
+      { name: 'leap seconds', endsMjd: 61_584, state: 'good' },
+      { name: 'clock table of north', endsMjd: 61_300, state: 'ended' },
+    ],
+    heartbeats: [{ way: 'web', lastSentAt: '2026-12-01T03:40:00.000Z', trouble: 'held back: no progress: mail' }],
   };
 }
 

@@ -54,6 +54,10 @@ const SIZES: readonly Column<PulsarEvent['aliases'][number]>[] = [
   { head: 'Probability', cell: (alias) => percent(alias.probability), numeric: true },
 ];
 
+function fractionText({ fraction, fractionInterval68 }: PulsarEvent['recovery']['terms'][number]): string {
+  return quantity({ value: fraction, interval68: fractionInterval68, unit: '', scale: 'power' });
+}
+
 const BELIEFS: readonly Column<EventChange>[] = [
   { head: 'Revision', cell: (change) => String(change.revision), numeric: true },
   { head: 'When, UTC', cell: (change) => utc(change.at), whole: true },
@@ -65,5 +69,17 @@ const BELIEFS: readonly Column<EventChange>[] = [
   },
   { head: 'Epoch', cell: ({ event }) => mjdAndDay(event.epochMjd)[0] },
   { head: 'Size', cell: ({ event }) => sizeText(event) || ABSENT, whole: true },
+  {
+    head: 'Δν̇/ν̇',
+    cell: ({ event: { deltaNuDotOverNuDot: value, deltaNuDotOverNuDotInterval68: interval68 } }) =>
+      value === null ? ABSENT : quantity({ value, interval68, unit: '', scale: 'power' }),
+    whole: true,
+  },
+  {
+    head: 'Q',
+    cell: ({ event }) => event.recovery.terms.map(fractionText).join(', ') || ABSENT,
+    whole: true,
+  },
   { head: 'Arrivals', cell: ({ event }) => String(event.arrivalsUsed), numeric: true },
+  { head: 'Mail', cell: ({ alert }) => alert ?? ABSENT },
 ];

@@ -4,13 +4,14 @@ import { utc, visible } from './wording.ts';
 
 export type Html = ReturnType<typeof html>;
 
-export type Section = 'Tonight' | 'Pulsars' | 'Feeds' | 'Mail';
+export type Section = 'Tonight' | 'Pulsars' | 'Feeds' | 'Mail' | 'Health';
 
 const SECTIONS: readonly { readonly name: Section; readonly path: string }[] = [
   { name: 'Tonight', path: '/' },
   { name: 'Pulsars', path: '/pulsars' },
   { name: 'Feeds', path: '/feeds' },
   { name: 'Mail', path: '/mail' },
+  { name: 'Health', path: '/health' },
 ];
 
 /** What every page of one moment shares. */
@@ -19,6 +20,8 @@ export interface Frame {
   readonly now: Date;
   readonly version: string;
   readonly health: WatchHealth;
+  /** Who is logged in; null: nobody logs in here. */
+  readonly reviewer: string | null;
 }
 
 export interface PageContent {
@@ -42,7 +45,7 @@ export function page(frame: Frame, content: PageContent): Html {
               html`<a href="${section.path}"${section.name === content.section ? html` aria-current="page"` : ''}>${section.name}</a>`,
           )}
         </nav>
-        <p class="asof">as of <time datetime="${frame.now.toISOString()}">${utc(frame.now.toISOString())} UTC</time></p>
+        <p class="asof">as of <time datetime="${frame.now.toISOString()}">${utc(frame.now.toISOString())} UTC</time>${frame.reviewer === null ? '' : html` · <a href="/account"><bdi>${visible(frame.reviewer)}</bdi></a>`}</p>
       </header>
       <p id="live" class="live" role="status"></p>
       ${healthBar(frame.health)}
@@ -55,20 +58,28 @@ export function page(frame: Frame, content: PageContent): Html {
 
 /** A page without anything from the desk, for refusals and faults. */
 export function plainPage(title: string, lines: readonly string[]): Html {
+  return plainDocument(
+    title,
+    html`<h1>${title}</h1>
+        ${lines.map((line) => html`<p>${line}</p>`)}
+        <p><a href="/">Start page</a></p>`,
+  );
+}
+
+export function plainDocument(title: string, main: Html, head: Html = html``): Html {
   return document({
     title,
     version: '',
     live: false,
+    head,
     body: html`
       <main id="main" class="plain">
-        <h1>${title}</h1>
-        ${lines.map((line) => html`<p>${line}</p>`)}
-        <p><a href="/">Start page</a></p>
+        ${main}
       </main>`,
   });
 }
 
-function document(parts: { title: string; version: string; live: boolean; body: Html }): Html {
+function document(parts: { title: string; version: string; live: boolean; body: Html; head?: Html }): Html {
   return html`<!doctype html>
 <html lang="en">
   <head>
@@ -76,6 +87,7 @@ function document(parts: { title: string; version: string; live: boolean; body: 
     <meta name="viewport" content="width=device-width, initial-scale=1">
     <meta name="color-scheme" content="light dark">
     <title>${parts.title}</title>
+    ${parts.head ?? ''}
     <link rel="icon" href="/assets/mark.svg" type="image/svg+xml">
     <link rel="stylesheet" href="/assets/review.css">
     <script src="/assets/review.js" defer></script>

@@ -1,5 +1,6 @@
 import { html } from 'hono/html';
 import type { MorningReview } from '../../../alerts/morningReview.ts';
+import { falseAlertLines } from '../../../alerts/wording/falseAlerts.ts';
 import type { PulsarEvent } from '../../../detectors/steps/pulsarEvent.ts';
 import type { Decision, PulsarOverview } from '../desk.ts';
 import { type Column, type Html, table } from './layout.ts';
@@ -52,6 +53,10 @@ export function tonightPage(content: TonightContent): Html {
         rows: content.decisions,
         empty: 'Nothing has been decided yet.',
       })}
+    </section>
+    <section aria-labelledby="false-alerts">
+      <h2 id="false-alerts">False alerts</h2>
+      ${falseAlertLines(morning.falseAlerts).map((line) => html`<p class="lead">${line}</p>`)}
     </section>
     <p class="keys quiet">Keys: <kbd>j</kbd> next event, <kbd>k</kbd> previous, <kbd>Enter</kbd> opens it.</p>`;
 }

@@ -9,6 +9,8 @@ import { epochText, eventPath, ownProbability, sizeText, stateText, utc, VERDICT
 export interface VerdictSection {
   readonly token: string;
   readonly reviewers: readonly string[];
+  /** Who is logged in and signs; null: nobody logs in here, and a name is given with the verdict. */
+  readonly signer: string | null;
   readonly refused: RefusedVerdict | null;
 }
 
@@ -46,8 +48,7 @@ export function verdictForm(record: EventRecord, section: VerdictSection): Html 
     <fieldset><legend class="unseen">Verdict</legend>
       ${CHOICES[record.event.state].map((verdict) => choice(verdict, draft?.verdict === verdict))}
     </fieldset>
-    <label for="by">Signed by</label>
-    ${signature(section.reviewers, draft?.by ?? '')}
+    ${signature(section, draft?.by ?? '')}
     <label for="note">Note <small>up to ${LONGEST_NOTE} characters</small></label>
     <textarea id="note" name="note" rows="4" maxlength="${LONGEST_NOTE}">
 ${draft?.note ?? ''}</textarea>
@@ -62,11 +63,15 @@ function choice(verdict: Verdict, checked: boolean): Html {
       <span><strong>${name}</strong> <small>${means}</small></span></label>`;
 }
 
-function signature(reviewers: readonly string[], chosen: string): Html {
+function signature({ reviewers, signer }: VerdictSection, chosen: string): Html {
+  if (signer !== null) return html`<p>Signed by <strong><bdi>${visible(signer)}</bdi></strong></p>`;
+  const label = html`<label for="by">Signed by</label>`;
   if (reviewers.length === 0) {
-    return html`<input id="by" name="by" required maxlength="${LONGEST_NAME}" autocomplete="name" value="${chosen}">`;
+    return html`${label}
+    <input id="by" name="by" required maxlength="${LONGEST_NAME}" autocomplete="name" value="${chosen}">`;
   }
-  return html`<select id="by" name="by" required>
+  return html`${label}
+    <select id="by" name="by" required>
       <option value="">Choose a name</option>
       ${reviewers.map((name) => html`<option value="${name}"${name === chosen ? html` selected` : ''}>${visible(name)}</option>`)}
     </select>`;

@@ -59,8 +59,18 @@ describe('a configuration', () => {
         to: ['duty@kestrel.example'],
         digestCron: '0 8 * * *',
         historicalAfterDays: 30,
+        updateWhenSharperBy: 2,
       },
-      review: { host: '127.0.0.1', port: 0, reviewers: ['duty', 'timing'] },
+      review: {
+        host: '127.0.0.1',
+        port: 0,
+        reviewers: ['duty', 'timing'],
+        passwordFile: join(folder, 'state', 'reviewers.json'),
+        tls: null,
+        proxy: null,
+        monitorTokenFile: null,
+      },
+      heartbeat: { web: null, mail: null },
     });
     expect([...configuration!.sites[0]!.clockTable!.mjd]).toEqual([58000, 61000]);
     expect([...configuration!.models.keys()]).toEqual(['KR 0417+31']);
@@ -97,7 +107,7 @@ describe('a configuration', () => {
       'spinvigil.toml:18:1 error budget, false_alerts_per_year: must be a number, found a text',
       'spinvigil.toml:24:1 error mail, timezone: "Mars/Olympus" is not a time zone; write an IANA name such as "Europe/Berlin" or "UTC"',
       'spinvigil.toml:25:1 error mail, digest_cron: hour "25" is not a number from 0 to 23, a range or a step',
-      'spinvigil.toml:27:1 error review, listen: 0.0.0.0 can be reached from other machines, and the review page has no login yet; use 127.0.0.1 and, from elsewhere, an SSH tunnel',
+      'spinvigil.toml:27:1 error review, listen: 0.0.0.0 can be reached from other machines: give tls_certificate_file and tls_key_file, or behind_proxy with proxy_address, or listen on 127.0.0.1 and come through an SSH tunnel',
       'a.toml:7:1 error dispersion_measure: must be between 0 and 10000 pc cm⁻³, found -1',
       'b.toml:1:8 error Unspecified values are invalid',
       'c.toml:2:1 error right_ascension: must be "hh:mm:ss.s" or degrees from 0 to 360, found "24:17:32.114"',

@@ -1,6 +1,8 @@
 import { afterEach } from 'vitest';
+import type { Gate } from '../../../daemon/review/access/gate.ts';
 import type { ReviewDesk } from '../../../daemon/review/desk.ts';
-import { type ReviewServer, type ReviewSettings, startReviewServer } from '../../../daemon/review/server.ts';
+import { type ReviewServer, type ReviewServerSettings, startReviewServer } from '../../../daemon/review/server.ts';
+import { createVerdictTokens } from '../../../daemon/review/verdictToken.ts';
 import { memoryDesk, NOW } from '../../support/reviewDesk.ts';
 
 const open: ReviewServer[] = [];
@@ -9,24 +11,43 @@ afterEach(async () => {
   await Promise.all(open.splice(0).map((server) => server.close()));
 });
 
-/** A page on a free loopback port, closed after the test. */
-export async function startSite<Desk extends ReviewDesk>(
-  change: Partial<Omit<ReviewSettings, 'desk'>> & { readonly desk: Desk },
-): Promise<{ readonly url: string; readonly desk: Desk }> {
-  const server = await startReviewServer({
+/** Nobody needs to log in. */
+export const OPEN_GATE: Gate = {
+  isClosed: () => false,
+  logIn: async () => ({ kind: 'wrong' }),
+  sessionOf: () => null,
+  logOut: () => {},
+};
+
+export function siteSettings(
+  change: Partial<ReviewServerSettings> & Pick<ReviewServerSettings, 'desk'>,
+): ReviewServerSettings {
+  return {
     host: '127.0.0.1',
     port: 0,
     observatory: 'Kestrel Ridge',
     reviewers: [],
+    tls: null,
+    proxy: null,
+    gate: OPEN_GATE,
+    tokens: createVerdictTokens(),
+    isMonitor: () => false,
     now: () => NOW,
     ...change,
-  });
+  };
+}
+
+/** A page on a free loopback port, closed after the test. */
+export async function startSite<Desk extends ReviewDesk>(
+  change: Partial<Omit<ReviewServerSettings, 'desk'>> & { readonly desk: Desk },
+): Promise<{ readonly url: string; readonly desk: Desk }> {
+  const server = await startReviewServer(siteSettings(change));
   open.push(server);
   return { url: server.url, desk: change.desk };
 }
 
 /** The same over a desk in memory with one candidate on it. */
-export function startSampleSite(change: Partial<Omit<ReviewSettings, 'desk'>> = {}) {
+export function startSampleSite(change: Partial<Omit<ReviewServerSettings, 'desk'>> = {}) {
   return startSite({ ...change, desk: memoryDesk() });
 }
 

@@ -2,9 +2,9 @@ import { connect, type Socket } from 'node:net';
 import { setTimeout as pause } from 'node:timers/promises';
 import { describe, expect, test } from 'vitest';
 import { startReviewServer } from '../../../daemon/review/server.ts';
-import { memoryDesk, NOW } from '../../support/reviewDesk.ts';
+import { memoryDesk } from '../../support/reviewDesk.ts';
 import { parseAnswer, portOf, readToEnd } from './rawHttp.ts';
-import { startSampleSite } from './reviewSite.ts';
+import { siteSettings, startSampleSite } from './reviewSite.ts';
 
 // E5. The limits are shortened so that the tests are quick; what is asserted is that the server ends the connection by
 // itself while the client would go on, and that others are served meanwhile.
@@ -96,14 +96,7 @@ describe('E5: slow and broken clients', () => {
   });
 
   test('closing ends every connection', async () => {
-    const server = await startReviewServer({
-      host: '127.0.0.1',
-      port: 0,
-      desk: memoryDesk(),
-      observatory: 'Kestrel Ridge',
-      reviewers: [],
-      now: () => NOW,
-    });
+    const server = await startReviewServer(siteSettings({ desk: memoryDesk() }));
     const silent = readToEnd(connect(portOf(server.url), '127.0.0.1'));
     await (await fetch(server.url)).text();
     await server.close();

@@ -37,6 +37,10 @@ beforeEach(async () => {
       return morningReview({ configuration, store, clock, warnings: [] });
     },
     health: () => ({ ok: true, problems: [] }),
+    vitalSigns: () => {
+      throw new Error('nobody asked');
+    },
+    metrics: () => '',
   });
 });
 

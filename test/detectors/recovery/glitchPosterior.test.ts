@@ -1,15 +1,15 @@
 import { describe, expect, it } from 'vitest';
 import type { CountedArrival, Disturbance } from '../../../detectors/filter/countedArrival.ts';
 import { eventFrame } from '../../../detectors/recovery/eventFrame.ts';
-import { gapSystem, recoveryColumn, withoutRecovery } from '../../../detectors/recovery/gapSystem.ts';
-import { explore, type GlitchPoint } from '../../../detectors/recovery/glitchPosterior.ts';
+import { gapSystem, recoveryColumns } from '../../../detectors/recovery/gapSystem.ts';
+import { explore, type GlitchPoint, pointAt } from '../../../detectors/recovery/glitchPosterior.ts';
 import { type DenseFit, denseFit } from '../../support/denseLeastSquares.ts';
 import { dice, observingDays, simulateArrivals } from '../../support/simulatedPulsar.ts';
 
 const walks = { phaseWalk: 1e-8, frequencyWalk: 1e-10, torqueWalk: 1e-15 };
 const noise = { ...walks, uncertaintyScale: 1.3, floorTurns: 4e-4 };
 /** Widths of the size prior, turns and days. */
-const scale = { rate: 0.02, second: 1e-4 };
+const scale = { rate: 0.02, second: 1e-4, decay: 0.015, logShare: 0 };
 
 describe('the posterior at one epoch and timescale', () => {
   const random = dice(31);
@@ -31,15 +31,24 @@ describe('the posterior at one epoch and timescale', () => {
     firstGapBeforeIndex: after,
     lastGapBeforeIndex: after,
     disturbances,
+    otherRecoveries: [{ beforeIndex: 25, timescaleDays: 12 }],
   });
   const system = gapSystem(frame, frame.gaps[0]!);
 
+  function points(timescalesDays: readonly number[]): GlitchPoint[] {
+    const posterior = explore(frame, system, recoveryColumns(frame, system, timescalesDays), [scale]);
+    return posterior.spots.map((spot) => pointAt(posterior, spot, [scale], 0));
+  }
+
   /** Dense generalised least squares with every column written out. */
-  function dense(epochDays: number, timescaleDays: number | null): DenseFit {
+  function dense(epochDays: number, timescalesDays: readonly number[], countShift = 0): DenseFit {
     const since = (t: number): number => Math.max(0, t - epochDays);
     const column = (value: (t: number, i: number) => number) => Float64Array.from(days, value);
-    const glitch = [column((t) => -since(t)), column((t) => -0.5 * since(t) ** 2)];
-    if (timescaleDays !== null) glitch.push(column((t) => -timescaleDays * (1 - Math.exp(-since(t) / timescaleDays))));
+    const glitch = [
+      column((t) => -since(t)),
+      column((t) => -0.5 * since(t) ** 2),
+      ...timescalesDays.map((tau) => column((t) => -tau * (1 - Math.exp(-since(t) / tau)))),
+    ];
     const flat = [
       column(() => 1),
       column((t) => t / 200),
@@ -48,55 +57,52 @@ describe('the posterior at one epoch and timescale', () => {
       column((_, i) => (1400 / arrivals[i]!.frequencyMhz) ** 2),
       column((_, i) => (i >= 15 ? arrivals[i]!.group : 0)),
       column((_, i) => (i >= 20 ? (1400 / arrivals[i]!.frequencyMhz) ** 2 : 0)),
+      column((t, i) => (i >= 25 ? Math.exp(-(t - days[25]!) / 12) : 0)),
     ];
     // "Flat": so wide that it moves nothing at the precision compared.
-    const priorSd = [scale.rate, scale.second, scale.rate].slice(0, glitch.length).concat(flat.map(() => 1e6));
+    const priorSd = [scale.rate, scale.second, ...timescalesDays.map(() => scale.decay), ...flat.map(() => 1e5)];
     const variances = days.map(() => 1.3e-3 ** 2 + 4e-4 ** 2);
-    const y = Float64Array.from(arrivals, ({ deviationTurns }) => deviationTurns);
+    const y = Float64Array.from(arrivals, ({ deviationTurns }, i) => deviationTurns + (i < after ? 0 : countShift));
     return denseFit(days, variances, walks, [...glitch, ...flat], y, priorSd);
   }
 
-  function expectTwin(point: GlitchPoint, twin: DenseFit, parameters: number): void {
+  function expectTwin(point: GlitchPoint, twin: DenseFit): void {
+    const count = point.mean.length;
     const p = Math.sqrt(twin.covariance.length);
-    let entry = 0;
-    for (let a = 0; a < 3; a++) {
-      for (let b = a; b < 3; b++, entry++) {
-        if (b >= parameters) continue;
-        const sds = Math.sqrt(twin.covariance[a * p + a]! * twin.covariance[b * p + b]!);
-        expect(Math.abs(point.covariance[entry]! - twin.covariance[a * p + b]!) / sds).toBeLessThan(1e-7);
-      }
-      if (a >= parameters) continue;
-      const sd = Math.sqrt(twin.covariance[a * p + a]!);
-      expect(Math.abs(point.mean[a]! - twin.solution[a]!) / sd).toBeLessThan(1e-6);
+    const sd = (i: number) => Math.sqrt(twin.covariance[i * p + i]!);
+    for (let a = 0; a < count; a++) {
+      expect(Math.abs(point.mean[a]! - twin.solution[a]!) / sd(a)).toBeLessThan(1e-6);
+      for (let b = 0; b < count; b++)
+        expect(Math.abs(point.covariance[a * count + b]! - twin.covariance[a * p + b]!) / (sd(a) * sd(b))).toBeLessThan(
+          1e-6,
+        );
     }
   }
 
-  it('is dense generalised least squares, without and with a recovery', () => {
-    for (const timescaleDays of [null, 3, 25, 200]) {
-      const recovery = timescaleDays === null ? withoutRecovery(system) : recoveryColumn(frame, system, timescaleDays);
-      const { points } = explore(frame, system, recovery, [scale]);
-      const unshifted = points.filter(({ countShift }) => countShift === 0);
-      expect(unshifted.length).toBeGreaterThan(10);
-      const heaviest = unshifted.reduce((a, b) => (b.logDensity > a.logDensity ? b : a));
-      const reference = dense(heaviest.epochDays, timescaleDays);
-      for (const point of unshifted.filter((_, k) => k % 7 === 0)) {
-        const twin = dense(point.epochDays, timescaleDays);
-        expectTwin(point, twin, timescaleDays === null ? 2 : 3);
-        const difference = point.logDensity - heaviest.logDensity;
-        expect(difference).toBeCloseTo(twin.logLikelihood - reference.logLikelihood, 6);
-      }
+  const models = [[], [3], [25], [200], [4, 30], [2.5, 3], [2, 15, 120], [30, 40, 60]];
+
+  it.each(models)('is dense generalised least squares, with exponentials %j, %j, %j', (...timescales) => {
+    const all = points(timescales);
+    expect(all.length).toBeGreaterThan(10);
+    const heaviest = all.reduce((a, b) => (b.logDensity > a.logDensity ? b : a));
+    const reference = dense(heaviest.epochDays, timescales, heaviest.countShift);
+    for (const point of all.filter((_, k) => k % 5 === 0)) {
+      const twin = dense(point.epochDays, timescales, point.countShift);
+      expectTwin(point, twin);
+      const difference = point.logDensity - heaviest.logDensity;
+      expect(Math.abs(difference - (twin.logLikelihood - reference.logLikelihood))).toBeLessThan(1e-6);
     }
   });
 
-  it('weighs a glitch with recovery against one without on one scale', () => {
-    const at = (timescaleDays: number | null): GlitchPoint => {
-      const recovery = timescaleDays === null ? withoutRecovery(system) : recoveryColumn(frame, system, timescaleDays);
-      return explore(frame, system, recovery, [scale]).points.find(({ countShift }) => countShift === 0)!;
-    };
-    const plain = at(null);
-    const decaying = at(25);
-    const expected = dense(decaying.epochDays, 25).logLikelihood - dense(plain.epochDays, null).logLikelihood;
-    expect(decaying.logDensity - plain.logDensity).toBeCloseTo(expected, 6);
+  it('weighs glitches with and without exponentials on one scale', () => {
+    const plain = points([])[0]!;
+    for (const timescales of models.slice(1)) {
+      const decaying = points(timescales)[0]!;
+      const expected =
+        dense(decaying.epochDays, timescales, decaying.countShift).logLikelihood -
+        dense(plain.epochDays, [], plain.countShift).logLikelihood;
+      expect(Math.abs(decaying.logDensity - plain.logDensity - expected)).toBeLessThan(1e-6);
+    }
   });
 });
 
@@ -131,9 +137,10 @@ describe('how well a size can be known at best', () => {
       disturbances: [],
     });
     const system = gapSystem(frame, frame.gaps[0]!);
-    const wide = { rate: 1e3, second: derivative ? 1e3 : 1e-12 };
-    const { points } = explore(frame, system, withoutRecovery(system), [wide]);
+    const wide = { rate: 1e3, second: derivative ? 1e3 : 1e-12, decay: 0, logShare: 0 };
+    const posterior = explore(frame, system, recoveryColumns(frame, system, []), [wide]);
+    const points = posterior.spots.map((spot) => pointAt(posterior, spot, [wide], 0));
     const middle = points.find(({ epochDays }) => Math.abs(epochDays - (before - 0.5)) < 1e-9)!;
-    expect(Math.sqrt(middle.covariance[0]) / 1e-3 / factor).toBeCloseTo(1, 2);
+    expect(Math.sqrt(middle.covariance[0]!) / 1e-3 / factor).toBeCloseTo(1, 2);
   });
 });

@@ -48,7 +48,7 @@ type Evidences = Partial<Record<StepKind | 'glitch', number>>;
 /** Every kind of step, and the glitch, held against the same arrivals. */
 function evidences(arrivals: readonly CountedArrival[], group?: number): Evidences {
   const kinds: StepKind[] = ['time', 'dispersion', 'spin-down rate'];
-  const found: Evidences = { glitch: fitGlitch(inputFor(arrivals, 'time')).logEvidencePlain };
+  const found: Evidences = { glitch: fitGlitch(inputFor(arrivals, 'time')).logEvidence };
   for (const kind of kinds) {
     found[kind] = fitStep({
       ...inputFor(arrivals, kind),

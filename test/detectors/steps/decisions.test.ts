@@ -1,12 +1,5 @@
 import { describe, expect, it } from 'vitest';
-import {
-  advance,
-  combineSiteEvents,
-  detectorSettings,
-  type PulsarReport,
-  report,
-  startWatch,
-} from '../../../detectors/index.ts';
+import { advance, detectorSettings, type PulsarReport, report, startWatch } from '../../../detectors/index.ts';
 import { dice, observingDays } from '../../support/simulatedPulsar.ts';
 import { modelOf, type Programme, simulateTimedArrivals, spinUp } from '../../support/simulatedWatch.ts';
 
@@ -151,42 +144,5 @@ describe('pulse numbers that come with the arrivals', () => {
     const result = sparse(102, 0, (index) => (index < 25 ? 0 : -12_345));
     expect(confirmed(result)).toEqual([]);
     expect(result.arrivals.every((a) => a.fate === 'used')).toBe(true);
-  });
-});
-
-describe('site events', () => {
-  const [step] = watched(31, { happening: (t) => (t > 180 ? 600e-6 * NU : 0) }).events;
-
-  it('joins the same step of several pulsars into one event that names them', () => {
-    const published = combineSiteEvents([
-      { ...step!, id: 'a', pulsar: 'KR 0001+01' },
-      { ...step!, id: 'b', pulsar: 'KR 0002+02' },
-      { ...step!, id: 'c', pulsar: 'KR 0003+03', state: 'suspected' },
-    ]);
-    expect(published).toHaveLength(1);
-    expect(published[0]!.pulsars).toEqual(['KR 0001+01', 'KR 0002+02', 'KR 0003+03']);
-    expect(published[0]!.site).toBe('kestrel ridge');
-  });
-
-  it('leaves steps of another size, another night or another site alone', () => {
-    const events = [
-      { ...step!, id: 'a', pulsar: 'KR 0001+01' },
-      { ...step!, id: 'b', pulsar: 'KR 0002+02', timeStepUs: -step!.timeStepUs! },
-      { ...step!, id: 'c', pulsar: 'KR 0003+03', epochInterval95: [60_300, 60_303] as const },
-      { ...step!, id: 'd', pulsar: 'KR 0004+04', site: 'elsewhere' },
-    ];
-    expect(
-      combineSiteEvents(events)
-        .map((e) => e.id)
-        .sort(),
-    ).toEqual(['a', 'b', 'c', 'd']);
-  });
-
-  it('does not depend on the order of the pulsars', () => {
-    const events = [
-      { ...step!, id: 'a', pulsar: 'KR 0001+01' },
-      { ...step!, id: 'b', pulsar: 'KR 0002+02', logBayesFactor: 9 },
-    ];
-    expect(JSON.stringify(combineSiteEvents([...events].reverse()))).toBe(JSON.stringify(combineSiteEvents(events)));
   });
 });

@@ -1,5 +1,13 @@
 import { describe, expect, it } from 'vitest';
-import { absorb, gapOf, type Hypothesis, predict, propagate, zeros } from '../../../detectors/steps/hypothesis.ts';
+import {
+  absorb,
+  gapOf,
+  type Hypothesis,
+  predict,
+  propagate,
+  sightOf,
+  zeros,
+} from '../../../detectors/steps/hypothesis.ts';
 import { denseFit } from '../../support/denseLeastSquares.ts';
 import { dice, observingDays, simulateWalk } from '../../support/simulatedPulsar.ts';
 
@@ -59,7 +67,7 @@ describe('the filter of one hypothesis is generalised least squares', () => {
       let logLikelihood = 0;
       days.forEach((day, i) => {
         if (i > 0) propagate(h, gapOf(day - days[i - 1]!, noise, []));
-        predict(h, { row: [1, 0, 0, second[i]!], plain: second[i] === 0 }, scratch);
+        predict(h, sightOf([1, 0, 0, second[i]!]), scratch);
         const variance = scratch.variance + sigma * sigma;
         const innovation = y[i]! - scratch.deviation;
         // The dense twin leaves 2π out.

@@ -1,0 +1,196 @@
+/** A glitch with 0, 1, 2 or 3 exponentials: the posterior and evidence of each model over all candidate gaps. */
+
+import { logSumExp } from '../math/logSumExp.ts';
+import type { CandidateGap, EventFrame } from './eventFrame.ts';
+import { type GapSystem, gapSystem, recoveryColumns } from './gapSystem.ts';
+import { type EpochPosterior, explore, type GlitchPoint, pointAt, type Spot } from './glitchPosterior.ts';
+import { type SizePrior, type SizeScale, sizeScales } from './sizePrior.ts';
+import { type TimescaleCell, type TimescaleRange, timescaleCells } from './timescaleCells.ts';
+
+export const MOST_TERMS = 3;
+
+/**
+ * Prior probability of 0, 1, 2, 3 exponentials: 119 of 726 glitches have a measured recovery (Moragues et al. 2022,
+ * arXiv:2210.09907), many more had too few arrivals for one; more than one is rare (no source).
+ */
+export const TERMS_PRIOR = [0.55, 0.3, 0.1, 0.05] as const;
+
+/** Timescales looked for, days, where the arrivals can show them. */
+const SHORTEST_DAYS = 0.3;
+const LONGEST_DAYS = 3000;
+/** A decay much quicker than the gap is over before it is seen: what it leaves is a step in phase, which noise imitates. */
+const SHORTEST_OF_GAP = 1 / 3;
+/** Of the spacing of the first arrivals after the event. */
+const SHORTEST_OF_SPACING = 0.5;
+/** A decay much slower than the arrivals after the event is a change of ν̇ like any other. */
+const LONGEST_OF_SPAN = 3;
+
+/** A gap so many nats behind the best one with fewer exponentials is not tried with more. */
+const GAP_BEHIND = 12;
+/** A model with 0, 1, 2 exponentials so many nats behind the best of those before it ends the search for more. */
+const MODEL_BEHIND = [0, 1, 0.5, 0] as const;
+/**
+ * Rungs of the size prior that hold less than e⁻⁹ in the best cells of a first pass are left out of the rest; of the
+ * model with one exponential less, e⁻²⁰.
+ */
+const RUNG_BEHIND = 9;
+const RUNG_FAR_BEHIND = 20;
+const CELLS_ASKED = 12;
+/** Timescales that cannot come within so many nats of the best are not looked at closely. */
+const HOPELESS = 60;
+/** A model so many nats behind adds nothing to what is reported, nor does this part of a posterior. */
+const NEGLIGIBLE = 9;
+const LEFT_OUT = 2e-3;
+const LEAST_SHARE = 1e-6;
+
+export interface GlitchModel {
+  readonly terms: number;
+  /** ln p(data | model). */
+  readonly logEvidence: number;
+  /** The same with the model's prior probability. */
+  readonly logWeight: number;
+  /** All that count; masses include the model's prior. */
+  readonly points: readonly GlitchPoint[];
+}
+
+interface GapScan {
+  readonly system: GapSystem;
+  readonly cells: readonly TimescaleCell<Explored>[];
+  readonly logEvidence: number;
+  /** Rungs that a model with one more exponential starts from. */
+  readonly rungs: readonly SizeScale[];
+}
+
+interface Explored {
+  readonly posterior: EpochPosterior;
+  readonly scales: readonly SizeScale[];
+}
+
+/** The models worth weighing, fewest exponentials first. */
+export function glitchModels(frame: EventFrame, prior: SizePrior, mostTerms: number): GlitchModel[] {
+  let systems = frame.gaps.map((gap) => gapSystem(frame, gap));
+  let rungs = new Map<GapSystem, readonly SizeScale[]>();
+  const scanned: GapScan[][] = [];
+  const bestOf = new Map<GapSystem, number>();
+  for (let terms = 0; terms <= mostTerms; terms++) {
+    const all = sizeScales(prior, terms);
+    let known = Number.NEGATIVE_INFINITY;
+    const scans = systems.map((system) => {
+      const scan = scanGap(frame, system, terms, (terms > 1 && rungs.get(system)) || all, known);
+      known = Math.max(known, scan.logEvidence);
+      return scan;
+    });
+    rungs = new Map(scans.map((scan) => [scan.system, scan.rungs]));
+    scanned.push(scans);
+    const weights = scanned.map(logWeightOf);
+    if (weights.at(-1)! < Math.max(...weights) - MODEL_BEHIND[terms]!) break;
+    for (const { system, logEvidence } of scans)
+      bestOf.set(system, Math.max(bestOf.get(system) ?? Number.NEGATIVE_INFINITY, logEvidence));
+    const ahead = Math.max(...bestOf.values());
+    if (terms > 0) systems = systems.filter((system) => bestOf.get(system)! > ahead - GAP_BEHIND);
+  }
+  const best = Math.max(...scanned.map(logWeightOf));
+  return scanned.map((scans, terms) => {
+    const logWeight = logWeightOf(scans, terms);
+    const points = logWeight < best - NEGLIGIBLE ? [] : pointsOf(scans, Math.log(TERMS_PRIOR[terms]!));
+    return { terms, logEvidence: logEvidenceOf(scans), logWeight, points };
+  });
+}
+
+function logEvidenceOf(scans: readonly GapScan[]): number {
+  return logSumExp(scans.map(({ logEvidence }) => logEvidence));
+}
+
+function logWeightOf(scans: readonly GapScan[], terms: number): number {
+  return logEvidenceOf(scans) + Math.log(TERMS_PRIOR[terms]!);
+}
+
+/** `scales`: the rungs of the first pass; of these only the live ones go on. `known`: ln evidence found already. */
+function scanGap(
+  frame: EventFrame,
+  system: GapSystem,
+  terms: number,
+  scales: readonly SizeScale[],
+  known: number,
+): GapScan {
+  const first: EpochPosterior[] = [];
+  let live: readonly SizeScale[] | null = null;
+  let best = known;
+  const cells = timescaleCells(terms, timescaleRange(frame, system.gap), (timescales, refined) => {
+    if (refined) live ??= liveRungs(first, scales, RUNG_BEHIND);
+    const hopeless = best - HOPELESS;
+    const posterior = explore(frame, system, recoveryColumns(frame, system, timescales), live ?? scales, hopeless);
+    if (posterior.spots.length > 0) best = Math.max(best, posterior.logEvidence);
+    if (!refined) first.push(posterior);
+    return { logLikelihood: posterior.logEvidence, value: { posterior, scales: live ?? scales } };
+  });
+  const settled = settle(cells, (timescales) =>
+    explore(frame, system, recoveryColumns(frame, system, timescales), live ?? scales),
+  );
+  const peak = highest(settled).value;
+  return {
+    system,
+    cells: settled,
+    logEvidence: logSumExp(settled.map(({ value, logWeight }) => value.posterior.logEvidence + logWeight)),
+    rungs: liveRungs([peak.posterior], peak.scales, RUNG_FAR_BEHIND),
+  };
+}
+
+/**
+ * A very narrow peak at the middle of a cell is lost from sight when the cell is halved, and hopeless neighbours may then
+ * stand highest, at the most they could be: they are looked at after all.
+ */
+function settle(
+  cells: readonly TimescaleCell<Explored>[],
+  explored: (timescalesDays: readonly number[]) => EpochPosterior,
+): TimescaleCell<Explored>[] {
+  const settled = [...cells];
+  for (let looked = 0; looked < cells.length; looked++) {
+    const top = highest(settled);
+    if (top.value.posterior.spots.length > 0) break;
+    const value = { ...top.value, posterior: explored(top.timescalesDays) };
+    settled[settled.indexOf(top)] = { ...top, value };
+  }
+  return settled;
+}
+
+function highest(cells: readonly TimescaleCell<Explored>[]): TimescaleCell<Explored> {
+  return cells.reduce((a, b) => (b.value.posterior.logEvidence > a.value.posterior.logEvidence ? b : a));
+}
+
+/** The rungs that count in one of the best posteriors. */
+function liveRungs(posteriors: readonly EpochPosterior[], scales: readonly SizeScale[], behind: number): SizeScale[] {
+  const best = posteriors.toSorted((a, b) => b.logEvidence - a.logEvidence).slice(0, CELLS_ASKED);
+  return scales.filter((_, k) => best.some(({ rungs }) => rungs[k]! > -behind));
+}
+
+/** The timescales that the arrivals can show. */
+export function timescaleRange({ arrivals }: Pick<EventFrame, 'arrivals'>, gap: CandidateGap): TimescaleRange {
+  const first = arrivals[gap.after]!.tDays;
+  const span = arrivals.at(-1)!.tDays - first;
+  const spacing = (arrivals[gap.after + 1]?.tDays ?? first) - first;
+  const lowDays = Math.max(SHORTEST_DAYS, SHORTEST_OF_SPACING * spacing, SHORTEST_OF_GAP * gap.lengthDays);
+  return { lowDays, highDays: Math.max(Math.min(LONGEST_DAYS, LONGEST_OF_SPAN * span), 4 * lowDays) };
+}
+
+/** The heaviest points, which together hold nearly all of the posterior. */
+function pointsOf(scans: readonly GapScan[], logPrior: number): GlitchPoint[] {
+  const total = logEvidenceOf(scans);
+  const all: { cell: TimescaleCell<Explored>; spot: Spot; share: number }[] = [];
+  for (const cell of scans.flatMap(({ cells }) => cells)) {
+    for (const spot of cell.value.posterior.spots) {
+      const share = Math.exp(spot.logMass + cell.logWeight - total);
+      if (share > LEAST_SHARE) all.push({ cell, spot, share });
+    }
+  }
+  all.sort((a, b) => b.share - a.share);
+  let left = 1 - LEFT_OUT;
+  const count = all.findIndex(({ share }) => {
+    left -= share;
+    return left < 0;
+  });
+  const kept = count < 0 ? all : all.slice(0, count + 1);
+  return kept.map(({ cell: { value, logWeight }, spot }) =>
+    pointAt(value.posterior, spot, value.scales, logWeight + logPrior),
+  );
+}

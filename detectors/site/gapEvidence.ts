@@ -1,0 +1,211 @@
+/**
+ * One pulsar's word on each gap between its sessions: by how many turns its phase stepped there, and how surely. One
+ * whitening pass; the response of the filter to a unit step of the clock follows the recursion of Willsky & Jones 1976
+ * (IEEE Trans. AC 21, 108), so that what the rotation would absorb of the step is not counted.
+ */
+
+import { SPIN_STATES } from '../filter/stateSpace.ts';
+import {
+  absorbArrival,
+  createWhiteningFilter,
+  expectArrival,
+  loosen,
+  predict,
+  type WhiteningFilter,
+} from '../filter/whiteningFilter.ts';
+import type { PulsarTimes, Session } from './pulsarTimes.ts';
+
+/** A step in phase, modulo one turn, late positive. */
+export interface PhaseStep {
+  readonly turns: number;
+  readonly variance: number;
+  /** More than one session shows it: no bad session does. */
+  readonly lasts: boolean;
+}
+
+export interface GapEvidence {
+  readonly pulsar: PulsarTimes;
+  /** Sessions of the same clock before and after the gap, MJD at the site. */
+  readonly afterMjd: number;
+  readonly beforeMjd: number;
+  /** From the first session after the gap alone, and from all within `HORIZON_DAYS`. */
+  readonly first: PhaseStep;
+  readonly all: PhaseStep;
+}
+
+/** Sessions so long after a gap still speak of a step in it: later, the rotation has absorbed it. */
+export const HORIZON_DAYS = 20;
+/** Predictions wider than this (turns) say nothing of a step, and the pulsar's own count is trusted. */
+const WIDE_TURNS = 0.1;
+const OUTLIER_SIGMAS = 4;
+/** So many sessions set aside in a row: the pulsar itself has moved on. */
+const REACQUIRE_SESSIONS = 4;
+/** Flat priors: turns, turns/day, turns/day². */
+const FREE = [10, 1, 1e-3] as const;
+const RECEIVER_OFFSET_TURNS = 0.3;
+
+interface OpenGap {
+  readonly session: Session;
+  readonly afterMjd: number;
+  readonly first: Omit<PhaseStep, 'lasts'>;
+  /** A step that the filter set aside shows again in the session after it; null: not looked at yet. */
+  isSeenAgain: boolean | null;
+  heard: number;
+  /** What the filter makes of a unit step. */
+  readonly response: Float64Array;
+  information: number;
+  pull: number;
+  closed: boolean;
+}
+
+/**
+ * @param isMember by place: whether the clock in question is the one there
+ * @param lateTurns what earlier steps of the site did to a session
+ */
+export function gapEvidence(
+  times: PulsarTimes,
+  isMember: readonly boolean[],
+  lateTurns: (session: Session) => number,
+): GapEvidence[] {
+  const { sessions } = times;
+  const filter = startFilter(times);
+  const row = new Float64Array(filter.size);
+  const value = new Float64Array(1);
+  const found: GapEvidence[] = [];
+  let open: OpenGap[] = [];
+  let setAside = 0;
+  let before: number | null = null;
+  for (let i = 0; i < sessions.length; i++) {
+    const session = sessions[i]!;
+    predict(filter, i === 0 ? 0 : Math.max(0, session.tDays - sessions[i - 1]!.tDays), times.walks);
+    row.fill(0);
+    row[0] = 1;
+    if (session.place > 0) row[SPIN_STATES - 1 + session.place] = 1;
+    const deviation = session.deviationTurns - lateTurns(session);
+    const seen: Seen = {
+      row,
+      member: isMember[session.place]!,
+      ...compared(filter, row, deviation, session.varianceTurns2),
+    };
+    open = stillOpen(open, session.siteMjd, found, times);
+    for (const gap of open) observeGap(gap, seen);
+    if (seen.member) {
+      // After a session that was set aside, nobody knows on which side of it the phase stepped.
+      if (before !== null && !seen.wide && setAside === 0) open.push(opened(session, before, seen));
+      before = session.siteMjd;
+    }
+    if (session.freed || setAside >= REACQUIRE_SESSIONS) {
+      // What the gap shows against the rotation before it is noted; then the rotation is followed anew.
+      setFree(filter);
+      Object.assign(seen, compared(filter, row, deviation, session.varianceTurns2));
+      for (const gap of open) gap.closed = true;
+    }
+    if (seen.used) {
+      value[0] = filter.expected[0]! + seen.innovation;
+      absorbArrival(filter, value, session.varianceTurns2);
+      for (const gap of open) respond(gap, filter, seen);
+      setAside = 0;
+    } else setAside++;
+  }
+  stillOpen(open, Number.POSITIVE_INFINITY, found, times);
+  return found;
+}
+
+interface Seen {
+  readonly row: Float64Array;
+  /** The clock in question took it. */
+  readonly member: boolean;
+  readonly innovation: number;
+  readonly variance: number;
+  readonly wide: boolean;
+  readonly used: boolean;
+}
+
+function startFilter({ places }: PulsarTimes): WhiteningFilter {
+  const offsets = places.slice(1).map(() => RECEIVER_OFFSET_TURNS);
+  return createWhiteningFilter([...FREE, ...offsets]);
+}
+
+function setFree(filter: WhiteningFilter): void {
+  const work = new Float64Array(filter.size);
+  for (let state = 0; state < SPIN_STATES; state++) {
+    const direction = new Float64Array(filter.size);
+    direction[state] = 1;
+    loosen(filter, direction, FREE[state]!, work);
+  }
+}
+
+/** A session against what the rotation so far predicts: by the pulsar's own count where that fits, else to the nearest turn. */
+function compared(
+  filter: WhiteningFilter,
+  row: Float64Array,
+  deviation: number,
+  own: number,
+): Omit<Seen, 'row' | 'member'> {
+  expectArrival(filter, row);
+  const variance = filter.expectedVariance + own;
+  const wide = variance > WIDE_TURNS ** 2;
+  const limit = OUTLIER_SIGMAS ** 2 * variance;
+  const counted = deviation - filter.expected[0]!;
+  if (wide || counted ** 2 < limit) return { innovation: counted, variance, wide, used: true };
+  const innovation = counted - Math.round(counted);
+  return { innovation, variance, wide, used: innovation ** 2 < limit };
+}
+
+function opened(session: Session, afterMjd: number, seen: Seen): OpenGap {
+  const first = { turns: seen.innovation, variance: seen.variance };
+  const response = new Float64Array(seen.row.length);
+  return {
+    session,
+    afterMjd,
+    first,
+    response,
+    isSeenAgain: seen.used ? false : null,
+    heard: 1,
+    information: 1 / seen.variance,
+    pull: seen.innovation / seen.variance,
+    closed: !seen.used,
+  };
+}
+
+/** The part of a unit step that this session shows. */
+function shown(gap: OpenGap, { row, member }: Seen): number {
+  let expected = 0;
+  for (let k = 0; k < row.length; k++) expected += row[k]! * gap.response[k]!;
+  return (member ? 1 : 0) - expected;
+}
+
+function observeGap(gap: OpenGap, seen: Seen): void {
+  if (gap.isSeenAgain === null && seen.member) {
+    const moved = seen.innovation - gap.first.turns;
+    gap.isSeenAgain = !seen.used && (moved - Math.round(moved)) ** 2 < OUTLIER_SIGMAS ** 2 * seen.variance;
+  }
+  if (gap.closed) return;
+  if (!seen.used) {
+    gap.closed = true;
+    return;
+  }
+  const signature = shown(gap, seen);
+  if (seen.member) gap.heard++;
+  gap.information += signature ** 2 / seen.variance;
+  gap.pull += (signature * seen.innovation) / seen.variance;
+}
+
+function respond(gap: OpenGap, { gain }: WhiteningFilter, seen: Seen): void {
+  if (gap.closed) return;
+  const signature = shown(gap, seen);
+  for (let k = 0; k < gain.length; k++) gap.response[k] = gap.response[k]! + gain[k]! * signature;
+}
+
+/** Lets the gaps go that lie too far back, with what was found of them. */
+function stillOpen(open: OpenGap[], nowMjd: number, found: GapEvidence[], pulsar: PulsarTimes): OpenGap[] {
+  return open.filter((gap) => {
+    if (nowMjd <= gap.session.siteMjd + HORIZON_DAYS) return true;
+    const { afterMjd, information, pull } = gap;
+    const isSeenAgain = gap.isSeenAgain === true;
+    const first = { ...gap.first, lasts: isSeenAgain };
+    const all = { turns: pull / information, variance: 1 / information, lasts: isSeenAgain || gap.heard > 1 };
+    found.push({ pulsar, afterMjd, beforeMjd: gap.session.siteMjd, first, all });
+    return false;
+  });
+}

@@ -1,0 +1,32 @@
+/** Names what a confirmed event looks like as a whole, when it is confirmed and again as its arrivals grow. */
+
+import { bestOf } from './counts.ts';
+import type { Hypothesis } from './hypothesis.ts';
+import { jointOdds } from './jointOdds.ts';
+import type { PulsarWatch } from './pulsarWatch.ts';
+import { earlierHalf, isShaped, isSlow, weighShapes } from './slowSpinUp.ts';
+import type { Track } from './track.ts';
+
+/** Arrivals after the confirmation at which the shape is weighed again. */
+const AGAIN: ReadonlySet<number> = new Set([5, 10, 20, 40, 80]);
+
+/** `logOdds`: of `track` beside the events before it. The second half of a slow rise becomes part of the first. */
+export function shape(watch: PulsarWatch, track: Track, h: Hypothesis, logOdds: number): void {
+  if (!isShaped(track) || track.partOf !== null) return;
+  const earlier = earlierHalf(watch, track);
+  const joined = earlier && weighShapes(watch, earlier, h, { track, logOdds });
+  if (earlier && joined && isSlow({ ...earlier, shapes: joined })) {
+    earlier.shapes = joined;
+    track.partOf = earlier.number;
+  } else track.shapes = weighShapes(watch, track, h);
+}
+
+export function reshape(watch: PulsarWatch, index: number): void {
+  for (const track of watch.tracks) {
+    if (track.state !== 'confirmed' || track.confirmedAt === null || !AGAIN.has(index - track.confirmedAt)) continue;
+    const isWhole = track.modes !== null || watch.tracks.some((t) => t.partOf === track.number);
+    if (isWhole || track.partOf !== null || !isShaped(track)) continue;
+    const best = bestOf(watch);
+    shape(watch, track, best, earlierHalf(watch, track) ? jointOdds(watch, track, best) : 0);
+  }
+}
