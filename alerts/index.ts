@@ -30,14 +30,13 @@ export {
   type AlertPolicy,
   type AlertReason,
   DEFAULT_HISTORICAL_DAYS,
-  DEFAULT_HOURLY_CAP,
   DEFAULT_SHARPER_BY,
   type EventChanged,
-  mailOrSummary,
   messagesFor,
   type PlannedMessage,
   type ToldBefore,
 } from './policy.ts';
+export { DEFAULT_HOURLY_CAP, isQuiet, mailOrSummary, mayWake, type QuietHours } from './restraint.ts';
 export { type Belief, beliefText, historyLines } from './wording/beliefs.ts';
 export { dateOfMjd, isoDay, mjdText, momentText, timeInWords } from './wording/dates.ts';
 export { percent, quantity } from './wording/numbers.ts';

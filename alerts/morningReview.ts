@@ -12,6 +12,8 @@ export interface MorningReview {
   readonly suspected: readonly PulsarEvent[];
   /** Changed state since the last review (a withdrawal, a verdict), newest first. */
   readonly changed: readonly { readonly event: PulsarEvent; readonly what: string; readonly at: string }[];
+  /** News worth a mail of which none left at once: held in the quiet hours, or in a storm told by a summary alone. Newest first. */
+  readonly heldBack: readonly { readonly event: PulsarEvent; readonly why: string; readonly at: string }[];
   readonly quarantined: readonly QuarantinedRow[];
   readonly silentFeeds: readonly {
     readonly feed: string;
@@ -33,7 +35,12 @@ export interface MorningReview {
     readonly delayDays90: number;
   }[];
   readonly falseAlerts: FalseAlertCount;
-  readonly mail: { readonly waiting: number; readonly refused: number; readonly oldestWaitingHours: number | null };
+  readonly mail: {
+    readonly waiting: number;
+    readonly oldestWaitingHours: number | null;
+    /** Refused or expired since the last review. */
+    readonly undelivered: readonly { readonly subject: string; readonly recipient: string; readonly why: string }[];
+  };
   /** Anything the operator must know: clock tables or leap seconds that ran out, a wall clock that stepped. */
   readonly warnings: readonly string[];
 }

@@ -22,11 +22,13 @@ export interface ToldBefore {
   readonly firstMessageId: string;
   /** The event as the last mail described it: an update is news against this, not against yesterday's revision. */
   readonly as: PulsarEvent;
+  /** Whoever may have a copy of any mail about it. */
+  readonly recipients: readonly string[];
 }
 
 export interface AlertPolicy {
   readonly to: readonly string[];
-  /** From the pulsar's own `[alerts]`. */
+  /** From the pulsar's own `[alerts]`, and those who asked for events of its kind. */
   readonly extraRecipients: readonly string[];
   /** The observatory's contact address: its domain ends every Message-ID. */
   readonly contact: string;
@@ -35,6 +37,8 @@ export interface AlertPolicy {
   readonly historicalDays: number;
   /** An update is mailed when a 68 % interval has shrunk by this factor since the last mail. */
   readonly sharperBy: number;
+  /** Suspected events are mailed too, because the operator asked for it; absent: they are not. */
+  readonly mailSuspected?: boolean;
 }
 
 export const DEFAULT_HISTORICAL_DAYS = 30;
@@ -44,6 +48,8 @@ export const DEFAULT_SHARPER_BY = 2;
 
 export type AlertReason =
   // these are mailed
+  | 'first suspicion'
+  | 'confirmed after suspicion'
   | 'first confirmation'
   | 'confirmed again'
   | 'withdrawn after it was told'
@@ -88,13 +94,28 @@ export function messagesFor(change: EventChanged, policy: AlertPolicy): AlertDec
   if (kind === null) return { reason, messages: [] };
   const { after, revision, told } = change;
   const id = messageId({ eventId: after.id, revision, kind, contact: policy.contact });
-  const recipients = [...new Set([...policy.to, ...policy.extraRecipients])];
+  const recipients = recipientsOf(kind, reason, change, policy);
   if (recipients.length === 0) return { reason, messages: [] };
   const message = { kind, reason, eventId: after.id, revision, messageId: id, recipients };
   return { reason, messages: [{ ...message, inReplyTo: told?.firstMessageId ?? null }] };
 }
 
+/** A withdrawal goes to whoever heard what it takes back, whatever the configuration says by now, and to nobody else. */
+function recipientsOf(
+  kind: EventMailKind,
+  reason: AlertReason,
+  { told }: EventChanged,
+  { to, extraRecipients }: AlertPolicy,
+): readonly string[] {
+  const heard = told?.recipients ?? [];
+  if (kind === 'withdrawal') return heard;
+  const corrected = reason === 'explanation changed' ? heard : [];
+  return [...new Set([...to, ...extraRecipients, ...corrected])];
+}
+
 const MAIL_KIND: Readonly<Record<AlertReason, EventMailKind | null>> = {
+  'first suspicion': 'first',
+  'confirmed after suspicion': 'update',
   'first confirmation': 'first',
   'confirmed again': 'update',
   'withdrawn after it was told': 'withdrawal',
@@ -120,6 +141,7 @@ function reasonFor(change: EventChanged, policy: AlertPolicy): AlertReason {
   if (after.state === 'withdrawn') return told.as.state === 'withdrawn' ? 'nothing new' : 'withdrawn after it was told';
   if (after.state === 'suspected') return 'suspected only';
   if (told.as.state === 'withdrawn') return 'confirmed again';
+  if (told.as.state === 'suspected') return 'confirmed after suspicion';
   if (told.as.explanation !== after.explanation) return 'explanation changed';
   if (told.as.recovery.terms.length === 0 && after.recovery.terms.length > 0) return 'recovery first established';
   if (plausibleSizes(after) < plausibleSizes(told.as)) return 'alias fell';
@@ -127,12 +149,13 @@ function reasonFor(change: EventChanged, policy: AlertPolicy): AlertReason {
 }
 
 function firstReason(after: PulsarEvent, policy: AlertPolicy): AlertReason {
-  if (after.state === 'suspected') return 'suspected only';
+  if (after.state === 'suspected' && policy.mailSuspected !== true) return 'suspected only';
   if (after.state === 'withdrawn') return 'withdrawn before it was told';
   if (DIGEST_ONLY.has(after.explanation)) return 'in the digest only';
   const confirmedAt = after.confirmedAtMjd ?? after.suspectedAtMjd;
   if (policy.nowMjd - confirmedAt > policy.historicalDays) return 'historical';
-  return after.state === 'accepted' ? 'verdict' : 'first confirmation';
+  if (after.state === 'accepted') return 'verdict';
+  return after.state === 'suspected' ? 'first suspicion' : 'first confirmation';
 }
 
 /** Step sizes that differ by whole turns between arrivals, and are worth a thought. */
@@ -165,21 +188,4 @@ function whatSharpened(told: PulsarEvent, now: PulsarEvent, factor: number): Ale
 
 function width([low, high]: Interval): number {
   return high - low;
-}
-
-export const DEFAULT_HOURLY_CAP = 10;
-
-/**
- * Against a storm (a bad ephemeris, a fault at the site): the first `cap` event mails of an hour go out, then one summary says
- * that the rest waits on the page and in the digest. A withdrawal always goes out: a copy of what it takes back has left.
- *
- * @param recent event mails queued in the hour before this one, one per event and revision, not per recipient
- */
-export function mailOrSummary(
-  message: PlannedMessage,
-  recent: { readonly eventMails: number; readonly summarySent: boolean },
-  cap: number = DEFAULT_HOURLY_CAP,
-): 'mail' | 'summary' | 'page only' {
-  if (message.kind === 'withdrawal' || recent.eventMails < cap) return 'mail';
-  return recent.summarySent ? 'page only' : 'summary';
 }

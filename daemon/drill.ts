@@ -3,6 +3,7 @@ import { tmpdir } from 'node:os';
 import { join } from 'node:path';
 import { composeEventMail, type DeliveryOutcome, messageId, type PlannedMessage } from '../alerts/index.ts';
 import type { TimedArrival } from '../detectors/arrival.ts';
+import { siteSteps } from '../detectors/index.ts';
 import type { PulsarReport } from '../detectors/report.ts';
 import type { KnownGlitch, PulsarModel } from '../detectors/spin/pulsarModel.ts';
 import { withGlitch } from '../detectors/spin/syntheticGlitch.ts';
@@ -105,8 +106,9 @@ async function eventOnScratch(
 ): Promise<PulsarEvent | null> {
   const others = station.store.pulsarReports().filter(({ pulsar }) => pulsar !== report.pulsar);
   const rows = [...others, reportRow(station, report)];
+  const steps = siteSteps(station.store.pulsarTimes());
   const scratch = { ...station, store };
-  const consequences = await consequencesOf(scratch, { reports: [report], rows }, { mail: false });
+  const consequences = await consequencesOf(scratch, { reports: [report], rows, steps }, { mail: false });
   store.commitIntake({ ...emptyBatch(station.clock.now().toISOString()), ...consequences });
   const epochMjd = mjdNumber(injected.epochTdb);
   const near = store

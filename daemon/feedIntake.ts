@@ -4,7 +4,7 @@ import type { Feed } from './config/configuration.ts';
 import { reasonOf } from './errors.ts';
 import { Pipeline } from './pipeline.ts';
 import type { Progress } from './progress.ts';
-import { type FileInHand, recall } from './stages/intake.ts';
+import { type FileInHand, isAsRecorded, recall } from './stages/intake.ts';
 import { quarantineUnread } from './stages/unreadFile.ts';
 import type { Station } from './station.ts';
 import { storageTrouble } from './store/index.ts';
@@ -70,6 +70,7 @@ export function startIntake(station: Station, { onMail, onFatal, progress }: Int
   const watcher = createWatcher({
     feeds: configuration.feeds,
     recall: (feed, file) => recall(station, feed, file.pathBytes),
+    isAsRecorded: (file, bytes) => isAsRecorded(station, file, bytes),
     clock: systemClock,
     onProblem(problem) {
       try {

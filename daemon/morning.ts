@@ -7,14 +7,18 @@ import { falseAlertCount } from './falseAlertCount.ts';
 import { recordWarnings } from './schedule/dailyChecks.ts';
 import { type DigestRule, digestRule } from './schedule/digestDue.ts';
 import { silentFeeds } from './schedule/silentFeeds.ts';
+import { diskWarning, type TroubleSources } from './schedule/troubles.ts';
 import { clockStepWarnings } from './schedule/upkeep.ts';
+import { wasHeldBack } from './stages/mailVerdict.ts';
 import type { Station } from './station.ts';
 import type { PulsarReportRow, Store } from './store/index.ts';
 import { type LoadedTables, leapSecondWarning } from './tables/loadTables.ts';
 import { endedTableWarnings } from './tables/tableEnds.ts';
 
 /** What the morning review is made from. It reads what is on record and decides nothing. */
-export interface MorningSources extends Pick<Station, 'configuration' | 'store' | 'clock'> {
+export interface MorningSources
+  extends Pick<Station, 'configuration' | 'store' | 'clock'>,
+    Pick<TroubleSources, 'freeBytes'> {
   /** What the caller alone knows (`tableWarnings`). */
   readonly warnings: readonly string[];
 }
@@ -36,6 +40,7 @@ export function morningReview(sources: MorningSources, date?: string): MorningRe
   const oldest = counts.oldestWaitingSince;
   const reports = store.pulsarReports();
   const silent = silentPulsars(store, now);
+  const changes = store.eventChangesSince(period.since).filter((change) => change.at <= period.until);
   return {
     observatory: configuration.observatory.name,
     ...period,
@@ -44,7 +49,8 @@ export function morningReview(sources: MorningSources, date?: string): MorningRe
       .filter(({ event }) => event.state === 'suspected')
       .map(({ event }) => event)
       .sort(mostCredibleFirst),
-    changed: changesInBrief(store.eventChangesSince(period.since).filter((change) => change.at <= period.until)),
+    changed: changesInBrief(changes.filter(({ isFirst }) => !isFirst)),
+    heldBack: changes.flatMap(({ event, alert, at }) => (wasHeldBack(alert) ? [{ event, why: alert ?? '', at }] : [])),
     quarantined: store.quarantinedSince(period.since).filter((row) => row.at <= period.until),
     silentFeeds: silentFeeds(configuration, store, now),
     silentPulsars: silent,
@@ -58,16 +64,23 @@ export function morningReview(sources: MorningSources, date?: string): MorningRe
     ),
     mail: {
       waiting: counts.queued + counts.attempting,
-      refused: counts.refused,
-      oldestWaitingHours: oldest === null ? null : (now.getTime() - Date.parse(oldest)) / HOUR_MS,
+      undelivered: undelivered(store, period),
+      oldestWaitingHours: oldest === null ? null : Math.max(0, (now.getTime() - Date.parse(oldest)) / HOUR_MS),
     },
     warnings: [
       ...recordWarnings(sources),
       ...sources.warnings,
       ...endedTableWarnings(configuration, mjdOf(now)),
       ...clockStepWarnings(sources),
+      ...[diskWarning(sources)].filter((warning) => warning !== null),
     ],
   };
+}
+
+function undelivered(store: Store, { since }: { readonly since: string }): MorningReview['mail']['undelivered'] {
+  return store
+    .outbox({ givenUpSince: since })
+    .map(({ subject, recipient, lastError }) => ({ subject, recipient, why: lastError ?? 'not known' }));
 }
 
 /** The blindest first. Of a pulsar that is no longer observed as it was, the limit says nothing. */

@@ -19,6 +19,24 @@ export interface ArrivalRecord extends ReceivedArrival {
   readonly takenInAt: string;
 }
 
+/** An arrival as received, and the line of the file that brought it. */
+export interface ArrivalOrigin {
+  readonly key: string;
+  /** As the file had it, with all its digits. */
+  readonly timeText: string;
+  readonly timeScale: 'UTC' | 'TDB';
+  readonly site: string;
+  readonly receiver: string;
+  /** Infinite: dispersion was removed before. */
+  readonly frequencyMhz: number;
+  readonly uncertaintyUs: number;
+  readonly status: 'live' | 'revised' | 'withdrawn';
+  readonly feed: string;
+  readonly file: string;
+  readonly line: number;
+  readonly takenInAt: string;
+}
+
 export interface FileRecord {
   readonly id: number;
   readonly feed: string;
@@ -96,5 +114,14 @@ export interface OutboxRecord {
   /** An earlier attempt may have arrived: the copy says so. */
   readonly possibleDuplicate: boolean;
   readonly createdAt: string;
+  /** Held until then; else when it was queued. */
+  readonly mayLeaveAt: string;
   readonly deliveredAt: string | null;
+}
+
+/** One try at one message to one recipient. */
+export interface MailAttempt {
+  readonly begunAt: string;
+  /** In words; null: under way. */
+  readonly outcome: string | null;
 }

@@ -9,17 +9,25 @@ export type {
   NoiseModel,
   PulsarReport,
 } from './report.ts';
+export type { BelievedStep } from './site/belief.ts';
 export { knownSteps } from './site/knownSteps.ts';
 export { type PulsarTimes, pulsarTimes } from './site/pulsarTimes.ts';
-export { type BelievedStep, siteSteps } from './site/siteClock.ts';
 export { siteEvents } from './site/siteEvents.ts';
 export type { SiteStep } from './site/siteStep.ts';
+export { SiteClocks, siteSteps } from './site/siteSteps.ts';
 export { barycentre } from './sky/barycentre.ts';
 export type { PulsarModel } from './spin/pulsarModel.ts';
 export { phaseEvaluator } from './spin/spinDownModel.ts';
 export { advance } from './steps/advance.ts';
 export { type CurrentModel, currentModel } from './steps/currentModel.ts';
-export type { EventContext, EventPicture, EventState, Explanation, Interval, PulsarEvent } from './steps/pulsarEvent.ts';
+export type {
+  EventContext,
+  EventPicture,
+  EventState,
+  Explanation,
+  Interval,
+  PulsarEvent,
+} from './steps/pulsarEvent.ts';
 export { type PulsarWatch, startWatch } from './steps/pulsarWatch.ts';
 export { report } from './steps/report.ts';
 export { detectorSettings } from './steps/threshold.ts';

@@ -26,6 +26,19 @@ export interface ArrivalVerdict {
   readonly reason: string;
 }
 
+/** The last arrivals of a pulsar, at most sixty, after the parabola through those in use. */
+export interface RecentArrivals {
+  /** Days before the last arrival (0 or less); turns, late is positive; their uncertainty. */
+  readonly points: readonly (readonly [
+    days: number,
+    deviationTurns: number,
+    uncertaintyTurns: number,
+    used: boolean,
+  ])[];
+  /** Median time from one session to the next, days; null for a single session. */
+  readonly everyDays: number | null;
+}
+
 /** Everything the detector says about one pulsar, a pure function of model, arrival log and settings. */
 export interface PulsarReport {
   readonly pulsar: string;
@@ -40,6 +53,7 @@ export interface PulsarReport {
   readonly lastArrivalMjd: number | null;
   /** The smallest glitch that would have been confirmed. */
   readonly limit: DetectionLimit;
+  readonly recent: RecentArrivals;
 }
 
 export interface DetectorSettings {

@@ -35,7 +35,13 @@ export function morningWords(review: MorningReview, timezone: string): MorningWo
         ({ event, what, at }) => `${one(event)}. ${oneLine(what)}, ${momentText(new Date(at), timezone)}.`,
       ),
     ),
-    section('Suspected, not mailed', review.suspected.map(one)),
+    section('Suspected', review.suspected.map(one)),
+    section(
+      'Mail held back',
+      review.heldBack.map(
+        ({ event, why, at }) => `${one(event)}. ${momentText(new Date(at), timezone)}: ${oneLine(why)}.`,
+      ),
+    ),
     section('Needs attention', attention(review)),
     section(
       'Quarantined',
@@ -107,10 +113,9 @@ function attention({ warnings, mail }: MorningReview): string[] {
     const oldest = mail.oldestWaitingHours === null ? '' : `, the oldest for ${plain(mail.oldestWaitingHours, 2)} h`;
     lines.push(`${mail.waiting} ${mail.waiting === 1 ? 'mail waits' : 'mails wait'} to be sent${oldest}`);
   }
-  if (mail.refused > 0)
-    lines.push(
-      `${mail.refused} ${mail.refused === 1 ? 'mail was' : 'mails were'} refused or expired: see the mail queue`,
-    );
+  for (const { subject, recipient, why } of mail.undelivered) {
+    lines.push(`“${oneLine(subject)}” did not reach ${oneLine(recipient)}: ${oneLine(why)}`);
+  }
   return lines;
 }
 

@@ -129,7 +129,8 @@ function signed(value: number, decimals: number, plus: '' | '+' = ''): string {
   return `${value < 0 ? MINUS : plus}${text}`;
 }
 
-function superscript(exponent: number): string {
+/** `10` to this power, typeset: `⁻⁹`. */
+export function superscript(exponent: number): string {
   return String(exponent).replace(/./g, (c) => (c === '-' ? '⁻' : (SUPERSCRIPTS[Number(c)] ?? c)));
 }
 

@@ -25,7 +25,12 @@ const MEANING: Readonly<Record<Explanation, string>> = {
     'The count of turns was lost: after a gap, or as the noise grew, no prediction tells one whole turn from the next. Alerts of this pulsar are held until one count has won again; a step that lies in the gap may stay unseen.',
 };
 
+/** Of a site whose clock was back the night after. */
+const SITE_BAD_SESSION =
+  'For one night the arrival times of these pulsars stood off by the same amount, and the night after they were back: the clock or the backend of the site, not the pulsars.';
+
 export function meaningOf(event: PulsarEvent): string {
+  if (event.explanation === 'bad session' && isSiteEvent(event)) return SITE_BAD_SESSION;
   return MEANING[event.explanation];
 }
 
@@ -86,6 +91,9 @@ export function reasonText(reason: AlertReason): string {
 }
 
 const REASON: Readonly<Record<AlertReason, string>> = {
+  'first suspicion':
+    'Suspected only: the evidence is above the lower threshold. It may well come to nothing; a mail follows when it is confirmed or withdrawn.',
+  'confirmed after suspicion': 'Update: the suspected event is now confirmed by the data.',
   'first confirmation': 'First alert for this event.',
   'confirmed again': 'Confirmed again after it was withdrawn.',
   'withdrawn after it was told':

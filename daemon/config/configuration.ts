@@ -1,6 +1,8 @@
+import type { QuietHours } from '../../alerts/index.ts';
 import type { EarthOrientationTable } from '../../detectors/sky/earthOrientation.ts';
 import type { SpkKernel } from '../../detectors/sky/spkKernel.ts';
 import type { PulsarModel } from '../../detectors/spin/pulsarModel.ts';
+import type { Explanation } from '../../detectors/steps/pulsarEvent.ts';
 import type { ClockTable } from '../../detectors/time/siteClock.ts';
 import type { TtBipmTable } from '../../detectors/time/ttBipm.ts';
 import type { Layout } from '../intake/layouts/read.ts';
@@ -67,6 +69,21 @@ export interface MailSettings {
   readonly historicalAfterDays: number;
   /** An update is mailed when a quantity is known so many times as well as the last mail said. */
   readonly updateWhenSharperBy: number;
+  /** Suspected events are mailed too. */
+  readonly mailSuspected: boolean;
+  /** When event mail is held unless the event is large; null: never. */
+  readonly quietHours: QuietHours | null;
+  /** Event mails beyond so many an hour become one summary. */
+  readonly mostPerHour: number;
+  /** Who wants mail about some events beside `to`. */
+  readonly alsoTo: readonly AlsoTo[];
+}
+
+/** Recipients of the events of some kinds, of some pulsars, or of both at once; an empty list: of all. */
+export interface AlsoTo {
+  readonly to: readonly string[];
+  readonly explanations: readonly Explanation[];
+  readonly pulsars: readonly string[];
 }
 
 export interface SmtpTransport {

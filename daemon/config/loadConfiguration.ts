@@ -5,7 +5,7 @@ import { readEarth } from './earth.ts';
 import { readFeeds } from './feeds.ts';
 import { checkOverlaps, checkStateFolder, type NamedFolder } from './folders.ts';
 import { readHeartbeat } from './heartbeatSettings.ts';
-import { readMail, type Surroundings } from './mailSettings.ts';
+import { checkNamedPulsars, readMail, type Surroundings } from './mailSettings.ts';
 import { loadModels } from './models.ts';
 import { readReview } from './reviewSettings.ts';
 import { createSectionReader, type SectionReader } from './sectionReader.ts';
@@ -84,6 +84,7 @@ function readParts(reader: SectionReader, around: Surroundings, problems: Config
   checkOverlaps(reader, feedFolders(feeds), [...others, ...written]);
   checkOverlaps(reader, written, others);
   const models = modelsFolder === null ? null : loadModels(modelsFolder, shelf, problems);
+  checkNamedPulsars(reader, mail, models);
   const folders = { stateFolder, modelsFolder, currentModelsFolder };
   return { observatory, ...folders, earth, sites, feeds, models, budget, mail, review, heartbeat };
 }

@@ -1,9 +1,9 @@
 import type { z } from 'zod';
 import { isLoopback } from '../loopback.ts';
-import type { FolderTransport, MailSettings, SmtpTransport } from './configuration.ts';
+import type { AlsoTo, FolderTransport, MailSettings, SmtpTransport } from './configuration.ts';
 import { readMailPassword } from './secrets.ts';
 import type { SectionReader } from './sectionReader.ts';
-import { mailTable } from './sections.ts';
+import { alsoToTable, mailTable } from './sections.ts';
 
 type MailTable = z.output<typeof mailTable>;
 
@@ -25,10 +25,58 @@ export function readMail(reader: SectionReader, around: Surroundings): MailSetti
   if (twice >= 0) reader.error(['mail', 'to', twice], `"${table.to[twice]}" stands there twice`);
   const transport =
     table.transport === 'smtp' ? smtpTransport(reader, table, around) : folderTransport(reader, table, around);
+  const quietHours = quietHoursOf(reader, table);
+  const alsoTo = readAlsoTo(reader);
   if (transport === null || twice >= 0) return null;
   const { from, to, timezone, digest_cron: digestCron, historical_after_days: historicalAfterDays } = table;
   const updateWhenSharperBy = table.update_when_sharper_by;
-  return { transport, from, to, timezone, digestCron, historicalAfterDays, updateWhenSharperBy };
+  const { mail_suspected: mailSuspected, most_per_hour: mostPerHour } = table;
+  const when = {
+    timezone,
+    digestCron,
+    historicalAfterDays,
+    updateWhenSharperBy,
+    mailSuspected,
+    quietHours,
+    mostPerHour,
+  };
+  return { transport, from, to, alsoTo, ...when };
+}
+
+function quietHoursOf(reader: SectionReader, table: MailTable): MailSettings['quietHours'] {
+  const { quiet_hours: hours, quiet_hours_except_above: exceptAbove = null } = table;
+  if (hours !== undefined) {
+    const [from = '', until = ''] = hours.split('-');
+    return { from, until, exceptAbove };
+  }
+  if (exceptAbove !== null) reader.error(['mail', 'quiet_hours_except_above'], 'needs quiet_hours beside it');
+  return null;
+}
+
+function readAlsoTo(reader: SectionReader): AlsoTo[] {
+  return reader.tablesOf(['mail', 'also_to']).flatMap((path) => {
+    const table = reader.read(path, alsoToTable);
+    if (table === null) return [];
+    if (table.explanations.length === 0 && table.pulsars.length === 0) {
+      reader.error(path, 'says of what: explanations, pulsars or both; who wants everything belongs into [mail] to');
+    }
+    return [table];
+  });
+}
+
+/** A pulsar that has no model would never be mailed about: most likely its name is misspelt. */
+export function checkNamedPulsars(
+  reader: SectionReader,
+  mail: MailSettings | null,
+  models: Pick<ReadonlyMap<string, unknown>, 'has'> | null,
+): void {
+  for (const [i, { pulsars }] of (mail?.alsoTo ?? []).entries()) {
+    for (const [j, pulsar] of pulsars.entries()) {
+      if (models !== null && !models.has(pulsar)) {
+        reader.warning(['mail', 'also_to', i, 'pulsars', j], `"${pulsar}" has no model`);
+      }
+    }
+  }
 }
 
 function folderTransport(reader: SectionReader, table: MailTable, around: Surroundings): FolderTransport | null {

@@ -1,5 +1,6 @@
 import { z } from 'zod';
-import { DEFAULT_HISTORICAL_DAYS, DEFAULT_SHARPER_BY } from '../../alerts/index.ts';
+import { DEFAULT_HISTORICAL_DAYS, DEFAULT_HOURLY_CAP, DEFAULT_SHARPER_BY } from '../../alerts/index.ts';
+import { EXPLANATIONS } from '../../detectors/steps/pulsarEvent.ts';
 import { LAYOUTS } from '../intake/layouts/read.ts';
 import { cronProblem } from './cronText.ts';
 import { mailAddress, name, numberBetween, oneOf, path, words } from './fields.ts';
@@ -51,6 +52,8 @@ export const modelsTable = z.strictObject({ folder: path, write_folder: path.opt
 
 export const budgetTable = z.strictObject({ false_alerts_per_year: numberBetween(1e-6, 1000, 'per year') });
 
+const HOURS_OF_DAY = /^([01]\d|2[0-3]):[0-5]\d-([01]\d|2[0-3]):[0-5]\d$/;
+
 export const mailTable = z.strictObject({
   transport: oneOf(['smtp', 'folder']),
   folder: path.optional(),
@@ -72,10 +75,28 @@ export const mailTable = z.strictObject({
   }),
   historical_after_days: numberBetween(1, 1_000_000, 'd').default(DEFAULT_HISTORICAL_DAYS),
   update_when_sharper_by: numberBetween(1.1, 1000, '(a factor)').default(DEFAULT_SHARPER_BY),
+  mail_suspected: z.boolean().default(false),
+  quiet_hours: z
+    .string()
+    .regex(HOURS_OF_DAY, 'must be two times of day such as "22:00-07:00"')
+    .refine((hours) => hours.slice(0, 5) !== hours.slice(6), 'must not begin and end at the same time')
+    .optional(),
+  quiet_hours_except_above: numberBetween(0, 1, '(Δν/ν)').optional(),
+  most_per_hour: z
+    .int()
+    .refine((count) => count >= 1 && count <= 1000, 'must be a whole number between 1 and 1000')
+    .default(DEFAULT_HOURLY_CAP),
+  also_to: nested,
   digest_cron: z.string().superRefine((text, context) => {
     const problem = cronProblem(text);
     if (problem !== null) context.addIssue({ code: 'custom', message: problem });
   }),
+});
+
+export const alsoToTable = z.strictObject({
+  to: z.array(mailAddress).min(1, 'must name at least one recipient'),
+  explanations: z.array(oneOf(EXPLANATIONS)).default([]),
+  pulsars: z.array(name).default([]),
 });
 
 export const reviewTable = z.strictObject({

@@ -1,5 +1,14 @@
 import type { MorningReview, QuarantinedRow } from '../../alerts/morningReview.ts';
-import type { EventRecord, FileRecord, ListedEvent, OutboxRecord, VerdictRecord } from '../records.ts';
+import type { NoiseModel, RecentArrivals } from '../../detectors/report.ts';
+import type {
+  ArrivalOrigin,
+  EventRecord,
+  FileRecord,
+  ListedEvent,
+  MailAttempt,
+  OutboxRecord,
+  VerdictRecord,
+} from '../records.ts';
 
 /**
  * Everything the review page may ask of the daemon, and the one thing it may change: a verdict.
@@ -9,12 +18,16 @@ import type { EventRecord, FileRecord, ListedEvent, OutboxRecord, VerdictRecord 
 export interface ReviewDesk {
   /** Differs whenever anything shown on a page has changed; the page polls it. */
   version(): string;
+  /** The same by subject, so that a page can say what changed. */
+  marks(): ChangeMarks;
   /** Every event on record, oldest first. */
   events(): readonly ListedEvent[];
   /** Accepted, rejected or withdrawn, the latest first. */
   decisions(most: number): readonly Decision[];
   /** By its id or one it had before; null: no event has this id. */
   event(id: string): EventRecord | null;
+  /** Where the arrivals of an event's picture came from, in time order. */
+  origins(record: EventRecord): readonly ArrivalOrigin[];
   /** The event as a notice for others, VOEvent 2.0 XML; null: no event has this id. */
   notice(id: string, issuedAt: Date): string | null;
   morning(): MorningReview;
@@ -25,7 +38,7 @@ export interface ReviewDesk {
   /** Newest first. */
   quarantine(most: number): readonly QuarantinedRow[];
   /** Newest first. */
-  outbox(most: number): readonly OutboxRecord[];
+  outbox(most: number): readonly OutboxLine[];
   health(): WatchHealth;
   /** What the page Health shows beside the problems. */
   vitalSigns(): VitalSigns;
@@ -33,6 +46,19 @@ export interface ReviewDesk {
   metrics(): string;
   /** One transaction; nothing is recorded unless the event still stands at `expectedRevision`. */
   recordVerdict(order: VerdictOrder): VerdictOutcome;
+}
+
+export interface OutboxLine extends OutboxRecord {
+  /** Oldest first; of those from before they were kept, none. */
+  readonly tries: readonly MailAttempt[];
+}
+
+/** Each differs whenever its subject has changed. */
+export interface ChangeMarks {
+  readonly events: string;
+  readonly files: string;
+  readonly mail: string;
+  readonly health: string;
 }
 
 export interface Decision {
@@ -51,11 +77,26 @@ export interface PulsarOverview {
   /** Smallest Δν/ν confirmed with 90 % probability, and the days it would take; null until known. */
   readonly deltaNuOverNu90: number | null;
   readonly delayDays90: number | null;
+  /** Why there is no limit; null where there is one. */
+  readonly limitReason: string | null;
+  readonly state: PulsarState;
+  /** What the state is about, to open. */
+  readonly eventId: string | null;
+  readonly arrivals: number | null;
+  readonly noise: NoiseModel | null;
+  /** ν of the pulsar's model, Hz. */
+  readonly frequencyHz: number;
+  readonly recent: RecentArrivals | null;
 }
+
+/** The most urgent that holds. */
+export const PULSAR_STATES = ['candidate', 'suspected', 'count open', 'watched', 'nothing yet'] as const;
+export type PulsarState = (typeof PULSAR_STATES)[number];
 
 export interface FeedOverview {
   readonly feed: string;
   readonly lastFileAt: string | null;
+  readonly hoursSince: number | null;
   /** Null: silence of this feed is never reported. */
   readonly expectEveryHours: number | null;
   readonly silent: boolean;

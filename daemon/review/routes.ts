@@ -2,6 +2,7 @@ import { randomUUID } from 'node:crypto';
 import { Hono } from 'hono';
 import { bodyLimit } from 'hono/body-limit';
 import { eventJson, eventsCsv } from '../../alerts/index.ts';
+import type { EventRecord } from '../records.ts';
 import type { Session } from './access/sessions.ts';
 import {
   type AccessParts,
@@ -10,15 +11,18 @@ import {
   type ReviewContext as Context,
   type ReviewEnvironment,
 } from './accessRoutes.ts';
+import { createChanges } from './changes.ts';
 import type { ReviewDesk } from './desk.ts';
 import { MARK } from './looks/mark.ts';
 import { SCRIPT } from './looks/script.ts';
 import { STYLE } from './looks/style.ts';
-import { eventPage } from './pages/event.ts';
+import { THEME_SCRIPT } from './looks/themeScript.ts';
+import { type EventContent, eventPage } from './pages/event.ts';
 import { healthPage } from './pages/health.ts';
 import { type Frame, type Html, type PageContent, page, plainPage, type Section } from './pages/layout.ts';
 import { accountPage } from './pages/login.ts';
-import { type FeedsContent, feedsPage, mailPage, pulsarsPage } from './pages/overviews.ts';
+import { type FeedsContent, feedsPage, mailPage } from './pages/overviews.ts';
+import { pulsarQuery, pulsarsPage } from './pages/pulsars.ts';
 import { type TonightContent, tonightPage } from './pages/tonight.ts';
 import type { RefusedVerdict } from './pages/verdict.ts';
 import { eventPath, subjectOf } from './pages/wording.ts';
@@ -31,6 +35,8 @@ export interface ReviewApp extends AccessParts {
   readonly now: () => Date;
   /** Told of every fault; the visitor sees only its id. */
   readonly onFault: (fault: ReviewFault) => void;
+  /** Ends what would otherwise go on: the streams of news to open pages. */
+  readonly closing?: AbortSignal;
 }
 
 export interface ReviewFault {
@@ -40,6 +46,7 @@ export interface ReviewFault {
 
 /** OpenMetrics 1.0, “Content-Type”. */
 const OPEN_METRICS_TYPE = 'application/openmetrics-text; version=1.0.0; charset=utf-8';
+const SCRIPT_TYPE = 'text/javascript; charset=utf-8';
 const LONGEST_LIST = 200;
 const RECENT_DECISIONS = 20;
 
@@ -62,18 +69,18 @@ export function createReviewApp(app: ReviewApp): Hono<ReviewEnvironment> {
 
   const routes = new Hono<ReviewEnvironment>();
   routes.use(barrier(app));
-  const sections: readonly (readonly [path: string, name: Section, main: () => Html])[] = [
+  const sections: readonly (readonly [path: string, name: Section, main: (c: Context) => Html])[] = [
     ['/', 'Tonight', () => tonightPage(tonightOf(desk))],
-    ['/pulsars', 'Pulsars', () => pulsarsPage(desk.pulsars())],
+    ['/pulsars', 'Pulsars', (c) => pulsarsPage(desk.pulsars(), pulsarQuery(c.req.query()))],
     ['/feeds', 'Feeds', () => feedsPage(feedsOf(desk))],
     ['/mail', 'Mail', () => mailPage(desk.outbox(LONGEST_LIST), LONGEST_LIST)],
     ['/health', 'Health', () => healthPage(desk.vitalSigns(), app.now())],
   ];
   for (const [path, name, main] of sections) {
-    routes.get(path, (c) => show(c, () => ({ title: name, section: name, main: main() })));
+    routes.get(path, (c) => show(c, () => ({ title: name, section: name, main: main(c) })));
   }
   addEventRoutes(routes, app, show);
-  addMachineRoutes(routes, desk);
+  addMachineRoutes(routes, app);
   addAccessRoutes(routes, app);
   routes.get('/account', (c) => {
     const session = c.get('session');
@@ -83,7 +90,8 @@ export function createReviewApp(app: ReviewApp): Hono<ReviewEnvironment> {
   });
 
   routes.get('/assets/review.css', (c) => c.body(STYLE, 200, { 'Content-Type': 'text/css; charset=utf-8' }));
-  routes.get('/assets/review.js', (c) => c.body(SCRIPT, 200, { 'Content-Type': 'text/javascript; charset=utf-8' }));
+  routes.get('/assets/review.js', (c) => c.body(SCRIPT, 200, { 'Content-Type': SCRIPT_TYPE }));
+  routes.get('/assets/theme.js', (c) => c.body(THEME_SCRIPT, 200, { 'Content-Type': SCRIPT_TYPE }));
   routes.get('/assets/mark.svg', (c) => c.body(MARK, 200, { 'Content-Type': 'image/svg+xml' }));
 
   routes.notFound((c) => c.html(plainPage('Nothing here', ['This page has no such address.']), 404));
@@ -99,12 +107,22 @@ export function createReviewApp(app: ReviewApp): Hono<ReviewEnvironment> {
 }
 
 function tonightOf(desk: ReviewDesk): TonightContent {
-  return { morning: desk.morning(), decisions: desk.decisions(RECENT_DECISIONS), pulsars: desk.pulsars() };
+  const decisions = desk.decisions(RECENT_DECISIONS);
+  return { morning: desk.morning(), decisions, pulsars: desk.pulsars(), health: desk.health() };
 }
 
 function feedsOf(desk: ReviewDesk): FeedsContent {
   const lists = { quarantine: desk.quarantine(LONGEST_LIST), files: desk.files(LONGEST_LIST) };
   return { feeds: desk.feeds(), ...lists, most: LONGEST_LIST };
+}
+
+/** With its neighbours in the queue; one that is not in the queue leads to the head of it. */
+function contentOf(desk: ReviewDesk, record: EventRecord): EventContent {
+  const { waiting, suspected } = desk.morning();
+  const queue = [...waiting, ...suspected];
+  const at = queue.findIndex(({ id }) => id === record.event.id);
+  const neighbours = { previous: at < 0 ? null : (queue[at - 1] ?? null), next: queue[at + 1] ?? null };
+  return { record, origins: desk.origins(record), neighbours };
 }
 
 type Show = (
@@ -128,7 +146,7 @@ function addEventRoutes(routes: Hono<ReviewEnvironment>, app: ReviewApp, show: S
         const session = c.get('session');
         const token = app.tokens.issue(record.event.id, record.revision, session?.id);
         const form = { token, reviewers: app.reviewers, signer: session?.reviewer ?? null, refused };
-        const main = eventPage(record, form);
+        const main = eventPage(contentOf(desk, record), form);
         return { title: subjectOf(record.event), section: null, main };
       },
       status,
@@ -214,8 +232,16 @@ function signVerdict(
   return outcome.kind === 'conflict' ? refuse(409, outcome.message, revision) : 'signed';
 }
 
-function addMachineRoutes(routes: Hono<ReviewEnvironment>, desk: ReviewDesk): void {
+function addMachineRoutes(routes: Hono<ReviewEnvironment>, { desk, closing }: ReviewApp): void {
+  const changes = createChanges(desk, closing === undefined ? {} : { closing });
   routes.get('/api/version', (c) => c.json({ version: desk.version() }));
+  routes.get('/api/changes', (c) => {
+    const headers = { 'Content-Type': 'text/event-stream', 'X-Accel-Buffering': 'no' };
+    if (c.req.method === 'HEAD') return c.body(null, 200, headers);
+    const stream = changes.stream();
+    if (stream !== null) return c.body(stream, 200, headers);
+    return c.json({ error: 'too many pages are open; ask /api/version' }, 503, { 'Retry-After': '60' });
+  });
   routes.get('/api/events', (c) => c.json(desk.events().map((entry) => entry.event)));
   routes.get('/api/events/:id', (c) => {
     const record = desk.event(c.req.param('id'));

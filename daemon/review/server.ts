@@ -70,7 +70,8 @@ const CLOSE_GRACE_MS = 2_000;
 export async function startReviewServer(settings: ReviewServerSettings): Promise<ReviewServer> {
   const identity = safeIdentity(settings);
   const limits = { ...DEFAULT_LIMITS, ...settings.limits };
-  const app = createReviewApp({ ...settings, onFault: settings.onFault ?? (() => {}) });
+  const closing = new AbortController();
+  const app = createReviewApp({ ...settings, closing: closing.signal, onFault: settings.onFault ?? (() => {}) });
   const visitors = new WeakMap<IncomingMessage, Visitor>();
   const answer = getRequestListener((request, { incoming }) =>
     app.fetch(request, { visitor: visitors.get(incoming as IncomingMessage) }),
@@ -104,7 +105,10 @@ export async function startReviewServer(settings: ReviewServerSettings): Promise
   return {
     url: `${settings.proxy?.origin ?? ownOrigin(settings.host, port, identity)}/`,
     answers: () => listenerAnswers({ host: settings.host, port, tls: identity !== null }),
-    close: () => closeServer(server),
+    close: () => {
+      closing.abort();
+      return closeServer(server);
+    },
   };
 }
 

@@ -1,14 +1,18 @@
 import { createHash } from 'node:crypto';
 import { type MorningReview, voevent } from '../../alerts/index.ts';
+import type { PulsarEvent } from '../../detectors/steps/pulsarEvent.ts';
 import type { Clock } from '../clock.ts';
 import type { Configuration } from '../config/configuration.ts';
 import type { EventRecord } from '../records.ts';
 import { citedRevision } from '../stages/told.ts';
-import type { Store } from '../store/index.ts';
+import type { PulsarReportRow, Store } from '../store/index.ts';
 import type {
+  ChangeMarks,
   Decision,
   FeedOverview,
+  OutboxLine,
   PulsarOverview,
+  PulsarState,
   ReviewDesk,
   VerdictOutcome,
   VitalSigns,
@@ -28,27 +32,31 @@ export interface StoreDeskParts {
 
 /** Silence grows without anything being written: the morning is made anew after this time at the latest. */
 const MORNING_KEPT_MS = 60_000;
-const DAY_MS = 86_400_000;
+const HOUR_MS = 3_600_000;
+const DAY_MS = 24 * HOUR_MS;
 
 export function createStoreDesk(parts: StoreDeskParts): ReviewDesk {
   const { configuration, store, clock } = parts;
-  const version = () => versionOf(store, clock, parts.health());
+  const marks = () => marksOf(store, clock, parts.health());
+  const version = () => digest(marks());
   const morning = keptWhileSame(parts.morning, version, clock);
   return {
     version,
+    marks,
     events: () => store.events(),
     decisions: (most) => decisions(store, most),
     event: (id) => store.event(id),
+    origins: ({ picture }) => store.origins(picture?.points.map(({ key }) => key) ?? []),
     notice(id, issuedAt) {
       const record = store.event(id);
       return record === null ? null : noticeOf(store, record, configuration, issuedAt);
     },
     morning,
     pulsars: () => pulsars(configuration, store),
-    feeds: () => feeds(configuration, store, morning()),
+    feeds: () => feeds(configuration, store, morning(), clock.now()),
     files: (most) => store.recentFiles(most),
     quarantine: (most) => store.recentQuarantine(most),
-    outbox: (most) => store.outbox().slice(-most).reverse(),
+    outbox: (most) => outbox(store, most),
     health: parts.health,
     vitalSigns: parts.vitalSigns,
     metrics: parts.metrics,
@@ -60,16 +68,19 @@ export function createStoreDesk(parts: StoreDeskParts): ReviewDesk {
   };
 }
 
-/** A digest of what moves when something new is on record: files, mail, events of the last day, the watch's own health. */
-function versionOf(store: Store, clock: Clock, health: WatchHealth): string {
+/** What moves when something new is on record: files, mail, events of the last day, the watch's own health. */
+function marksOf(store: Store, clock: Clock, health: WatchHealth): ChangeMarks {
   const since = new Date(clock.now().getTime() - DAY_MS).toISOString();
-  const moved = [
-    [...store.lastFileByFeed()],
-    store.outboxCounts(),
-    store.events({ since }).map(({ event, revision, changedAt }) => [event.id, revision, changedAt]),
-    health,
-  ];
-  return createHash('sha256').update(JSON.stringify(moved)).digest('hex').slice(0, 16);
+  return {
+    events: digest(store.events({ since }).map(({ event, revision, changedAt }) => [event.id, revision, changedAt])),
+    files: digest([...store.lastFileByFeed()]),
+    mail: digest(store.outboxCounts()),
+    health: digest(health),
+  };
+}
+
+function digest(value: unknown): string {
+  return createHash('sha256').update(JSON.stringify(value)).digest('hex').slice(0, 16);
 }
 
 /** The morning review reads much; several pages and reloads share one. */
@@ -82,6 +93,12 @@ function keptWhileSame(make: () => MorningReview, version: () => string, clock: 
     }
     return kept.review;
   };
+}
+
+function outbox(store: Store, most: number): OutboxLine[] {
+  const rows = store.outbox().slice(-most).reverse();
+  const tries = store.mailAttempts(rows.map(({ id }) => id));
+  return rows.map((row) => ({ ...row, tries: tries.get(row.id) ?? [] }));
 }
 
 function decisions(store: Store, most: number): Decision[] {
@@ -116,24 +133,52 @@ function noticeOf(
 /** Every configured pulsar, also one of which nothing has come in yet. */
 function pulsars(configuration: Configuration, store: Store): PulsarOverview[] {
   const reports = new Map(store.pulsarReports().map((report) => [report.pulsar, report]));
-  return [...configuration.models.keys()].sort().map((pulsar) => {
-    const report = reports.get(pulsar);
-    return {
-      pulsar,
-      lastArrivalMjd: report?.lastArrivalMjd ?? null,
-      locked: report?.locked ?? false,
-      deltaNuOverNu90: report?.limit?.deltaNuOverNu90 ?? null,
-      delayDays90: report?.limit?.delayDays90 ?? null,
-    };
-  });
+  const open = openEvents(store);
+  return [...configuration.models.values()]
+    .sort((a, b) => (a.name < b.name ? -1 : 1))
+    .map(({ name: pulsar, spin }) => {
+      const report = reports.get(pulsar);
+      const event = open.get(pulsar) ?? null;
+      return {
+        pulsar,
+        lastArrivalMjd: report?.lastArrivalMjd ?? null,
+        locked: report?.locked ?? false,
+        deltaNuOverNu90: report?.limit?.deltaNuOverNu90 ?? null,
+        delayDays90: report?.limit?.delayDays90 ?? null,
+        limitReason: report?.limit?.reason ?? null,
+        state: stateOf(report, event),
+        eventId: event?.id ?? null,
+        arrivals: report?.arrivals ?? null,
+        noise: report?.noise ?? null,
+        frequencyHz: spin.frequencyHz.hi,
+        recent: report?.recent ?? null,
+      };
+    });
 }
 
-function feeds(configuration: Configuration, store: Store, morning: MorningReview): FeedOverview[] {
+/** Of each pulsar the event that most needs a person: a confirmed one before a suspected one, the later before the earlier. */
+function openEvents(store: Store): Map<string, PulsarEvent> {
+  const open = new Map<string, PulsarEvent>();
+  for (const state of ['suspected', 'confirmed'] as const) {
+    for (const { event } of store.events({ state })) for (const pulsar of event.pulsars) open.set(pulsar, event);
+  }
+  return open;
+}
+
+function stateOf(report: PulsarReportRow | undefined, event: PulsarEvent | null): PulsarState {
+  if (event !== null) return event.state === 'confirmed' ? 'candidate' : 'suspected';
+  if (report === undefined || report.lastArrivalMjd === null) return 'nothing yet';
+  return report.locked ? 'watched' : 'count open';
+}
+
+function feeds(configuration: Configuration, store: Store, morning: MorningReview, now: Date): FeedOverview[] {
   const last = store.lastFileByFeed();
   const silent = new Set(morning.silentFeeds.map(({ feed }) => feed));
+  const hoursSince = (at: string | undefined) => (at === undefined ? null : (now.getTime() - Date.parse(at)) / HOUR_MS);
   return configuration.feeds.map(({ name, expectEveryHours }) => ({
     feed: name,
     lastFileAt: last.get(name) ?? null,
+    hoursSince: hoursSince(last.get(name)),
     expectEveryHours,
     silent: silent.has(name),
   }));

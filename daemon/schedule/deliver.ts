@@ -145,10 +145,11 @@ function settled(
     return { kind: 'delivered', at: now.toISOString(), ...(remark === null ? {} : { remark }) };
   }
   const error = remark === null ? outcome.detail : `${remark}: ${outcome.detail}`;
-  if (outcome.state === 'refused') return { kind: 'refused', error };
+  const at = now.toISOString();
+  if (outcome.state === 'refused') return { kind: 'refused', error, at };
   const cause = outcome.loginRefused ? 'login refused' : outcome.state;
   const dueAt = new Date(now.getTime() + pauseMs(pauseKey(mail), cause)).toISOString();
-  return { kind: outcome.state, dueAt, error };
+  return { kind: outcome.state, dueAt, error, at };
 }
 
 function pauseKey(mail: ClaimedMail): { id: string; attempts: number } {
@@ -195,8 +196,10 @@ function trustInWallClock(clock: Clock): () => boolean {
 const DISTRUST_MS = 6 * 3_600_000;
 
 async function expireOld(options: DeliveryOptions): Promise<void> {
-  const before = new Date(options.clock.now().getTime() - EXPIRES_AFTER_MS).toISOString();
-  for (const mail of options.store.expireOlderThan(before, 'not delivered in five days')) {
+  const now = options.clock.now();
+  const before = new Date(now.getTime() - EXPIRES_AFTER_MS).toISOString();
+  const end = { error: 'not delivered in five days', at: now.toISOString() };
+  for (const mail of options.store.expireOlderThan(before, end)) {
     options.log.error({ messageId: mail.messageId, to: mail.recipient }, 'mail expired');
     await options.onGivenUp(mail, 'expired', 'it could not be delivered in five days');
   }

@@ -4,9 +4,10 @@ import type { Station } from '../station.ts';
 import { storageTrouble } from '../store/index.ts';
 import { createDailyChecks } from './dailyChecks.ts';
 import { type Loop, startLoop } from './loop.ts';
+import { createSelfAlerts } from './selfAlerts.ts';
 import { FIRST_START, reportSilences } from './silentFeeds.ts';
 
-/** Once a minute: feeds that fell silent, a wall clock that was set, a record that was moved away under the running program. Once a day: `dailyChecks`. */
+/** Once a minute: feeds that fell silent, other trouble with the watch itself, a wall clock that was set, a record that was moved away under the running program. Once a day: `dailyChecks`. */
 export function startUpkeep(
   station: Station,
   actions: {
@@ -21,6 +22,7 @@ export function startUpkeep(
   if (store.meta(FIRST_START) === null) store.setMeta(FIRST_START, clock.now().toISOString());
   const clockStep = clockStepWatch(clock);
   const daily = createDailyChecks(station, actions.tableWarnings);
+  const selfAlerts = createSelfAlerts(station);
   return startLoop({
     name: 'upkeep',
     pauseMs: UPKEEP_MS,
@@ -37,7 +39,7 @@ export function startUpkeep(
         store.setMeta(CLOCK_STEPPED, JSON.stringify({ at: clock.now().toISOString(), seconds: Math.round(stepS) }));
         await actions.onClockStep();
       }
-      if ((await reportSilences(station)) > 0) actions.onMail();
+      if ((await reportSilences(station)) + (await selfAlerts.run()) > 0) actions.onMail();
       try {
         if ((await daily.run()) > 0) actions.onMail();
       } catch (error) {

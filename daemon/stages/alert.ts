@@ -4,16 +4,19 @@ import {
   composeEventMail,
   composeStormNotice,
   type EventMail,
+  isQuiet,
   mailOrSummary,
+  mayWake,
   messagesFor,
 } from '../../alerts/index.ts';
 import type { EventPicture, PulsarEvent } from '../../detectors/steps/pulsarEvent.ts';
-import { mjdOf } from '../clock.ts';
+import { civilTime, instantOf, mjdOf } from '../clock.ts';
 import type { OutboxRecord } from '../records.ts';
 import { mailSetting, type Station } from '../station.ts';
 import type { NewMessage } from '../store/index.ts';
 import type { KeptEvent } from './eventChanges.ts';
-import { mailedSoFar, NOTHING_MAILED } from './told.ts';
+import { HELD, MAILED, NOT_MAILED, PAGE_ONLY, SUMMARY_ONLY } from './mailVerdict.ts';
+import { type Mailed, mailedSoFar, NOTHING_MAILED } from './told.ts';
 
 export interface Alerts {
   readonly messages: readonly NewMessage[];
@@ -32,7 +35,7 @@ export async function planAlerts(
   const messages: NewMessage[] = [];
   const superseded: string[] = [];
   const why = new Map<string, string>();
-  const storm = stormWatch(station);
+  const storms: Storms = new Map();
   for (const change of changes) {
     if (change.what === null) continue;
     const mailed = change.before === null ? NOTHING_MAILED : mailedSoFar(station, change.before.event.id);
@@ -44,15 +47,17 @@ export async function planAlerts(
     const facts = { event: after.id, revision: change.revision, state: after.state, change: change.what };
     station.log.info({ ...facts, alert: decision.reason, mails: decision.messages.length }, 'event changed');
     const history = beliefs(station, change, after);
-    let outcome: MailVerdict = 'not mailed';
+    let outcome = NOT_MAILED;
     for (const planned of decision.messages) {
       const mail = { event: after, planned, picture: pictureOf(after), toldRevision: mailed.toldRevision, history };
-      const composed = await composeWithin(station, mail, storm);
+      const composed = await composeWithin(station, mail, { storms, mailed });
       if (composed.message !== null) messages.push(composed.message);
       outcome = composed.verdict;
     }
     why.set(after.id, `${outcome}: ${decision.reason}`);
-    if (decision.messages.length > 0 || after.state === 'withdrawn') superseded.push(...mailed.unsent);
+    // In a storm the older mail is better than none.
+    const isReplaced = messages.some(({ eventId }) => eventId === after.id);
+    if (isReplaced || after.state === 'withdrawn') superseded.push(...mailed.unsent);
   }
   return { messages, superseded, why };
 }
@@ -65,14 +70,36 @@ function shown({ event, before }: KeptEvent): PulsarEvent {
 
 function policyFor(station: Station, event: PulsarEvent) {
   const { configuration, clock } = station;
+  const { mail } = configuration;
+  const ownRecipients = event.pulsars.flatMap(
+    (pulsar) => configuration.models.get(pulsar)?.alerts.extraRecipients ?? [],
+  );
+  const wanted = mail.alsoTo.filter(
+    ({ explanations, pulsars }) =>
+      (explanations.length === 0 || explanations.includes(event.explanation)) &&
+      (pulsars.length === 0 || pulsars.some((pulsar) => event.pulsars.includes(pulsar))),
+  );
   return {
-    to: configuration.mail.to,
-    extraRecipients: event.pulsars.flatMap((pulsar) => configuration.models.get(pulsar)?.alerts.extraRecipients ?? []),
+    to: mail.to,
+    extraRecipients: [...ownRecipients, ...wanted.flatMap(({ to }) => to)],
     contact: configuration.observatory.contact,
     nowMjd: mjdOf(clock.now()),
-    historicalDays: configuration.mail.historicalAfterDays,
-    sharperBy: configuration.mail.updateWhenSharperBy,
+    historicalDays: mail.historicalAfterDays,
+    sharperBy: mail.updateWhenSharperBy,
+    mailSuspected: mail.mailSuspected,
   };
+}
+
+/** The end of the quiet hours that hold this event's mail; null: it may leave now. */
+function heldUntil({ configuration, clock }: Station, event: PulsarEvent, told: PulsarEvent | null): Date | null {
+  const { quietHours, timezone } = configuration.mail;
+  if (quietHours === null) return null;
+  const now = clock.now();
+  const wall = civilTime(now, timezone);
+  if (!isQuiet(wall.time, quietHours) || mayWake(event, told, quietHours)) return null;
+  const isToday = wall.time < quietHours.until;
+  const date = isToday ? wall.date : new Date(Date.parse(`${wall.date}T12:00:00Z`) + DAY_MS).toISOString().slice(0, 10);
+  return instantOf({ date, time: `${quietHours.until}:00` }, timezone);
 }
 
 interface Storm {
@@ -81,11 +108,13 @@ interface Storm {
 }
 
 const HOUR_MS = 3_600_000;
+const DAY_MS = 86_400_000;
 const STORM_NOTICE = 'storm';
 
-function stormWatch({ store, clock }: Station): Storm {
-  const since = new Date(clock.now().getTime() - HOUR_MS).toISOString();
-  const recent = store.outbox({ since });
+/** What may leave in the hour up to a time. Mail that was held all night leaves in one hour, and counts as of that hour. */
+function stormBefore({ store }: Station, at: Date): Storm {
+  const since = new Date(at.getTime() - HOUR_MS).toISOString();
+  const recent = store.outbox({ mayLeaveSince: since }).filter(({ mayLeaveAt }) => mayLeaveAt <= at.toISOString());
   const messages = (kind: OutboxRecord['kind']) =>
     new Set(recent.filter((copy) => copy.kind === kind).map((copy) => copy.messageId));
   return {
@@ -94,31 +123,46 @@ function stormWatch({ store, clock }: Station): Storm {
   };
 }
 
-type MailVerdict = 'mailed' | 'not mailed' | 'in the storm notice only' | 'on the page only, in a storm';
+/** The storms of this batch, by the time at which its mail may leave. */
+type Storms = Map<string, Storm>;
+
+function stormOf(station: Station, storms: Storms, leavesAt: Date): Storm {
+  const key = leavesAt.toISOString();
+  const known = storms.get(key) ?? stormBefore(station, leavesAt);
+  storms.set(key, known);
+  return known;
+}
 
 async function composeWithin(
   station: Station,
   mail: Omit<EventMail, 'model'>,
-  storm: Storm,
-): Promise<{ readonly message: NewMessage | null; readonly verdict: MailVerdict }> {
+  { storms, mailed }: { readonly storms: Storms; readonly mailed: Mailed },
+): Promise<{ readonly message: NewMessage | null; readonly verdict: string }> {
   const { planned, event } = mail;
-  const verdict = mailOrSummary(planned, storm);
-  if (verdict === 'page only') return { message: null, verdict: 'on the page only, in a storm' };
   const setting = mailSetting(station);
+  const held = heldUntil(station, event, mailed.told?.as ?? null);
+  const leavesAt = held ?? setting.now;
+  const storm = stormOf(station, storms, leavesAt);
+  // It takes the place of those that it replaces.
+  const others = Math.max(0, storm.eventMails - mailed.unsent.length);
+  const recent = { eventMails: others, summarySent: storm.summarySent };
+  const verdict = mailOrSummary(planned, recent, station.configuration.mail.mostPerHour);
+  if (verdict === 'page only') return { message: null, verdict: PAGE_ONLY };
   if (verdict === 'summary') {
     storm.summarySent = true;
-    const name = `${STORM_NOTICE}.${setting.now
+    const hour = leavesAt
       .toISOString()
       .slice(0, 13)
-      .replace(/[^0-9]/g, '')}`;
-    const notice = { name, mailedInTheHour: storm.eventMails };
+      .replace(/[^0-9]/g, '');
+    const notice = { name: `${STORM_NOTICE}.${hour}`, mailedInTheHour: storm.eventMails };
     const composed = await composeStormNotice(notice, planned.recipients, setting);
-    return { message: newMessage(composed, null, setting.now), verdict: 'in the storm notice only' };
+    return { message: newMessage(composed, null, leavesAt), verdict: SUMMARY_ONLY };
   }
-  storm.eventMails += 1;
+  storm.eventMails = others + 1;
   const model = station.configuration.models.get(event.pulsar) ?? null;
   const composed = await composeEventMail({ ...mail, model }, setting);
-  return { message: newMessage(composed, planned.inReplyTo, setting.now), verdict: 'mailed' };
+  const said = held === null ? MAILED : `${HELD} until ${station.configuration.mail.quietHours?.until}`;
+  return { message: newMessage(composed, planned.inReplyTo, leavesAt), verdict: said };
 }
 
 /** What was believed when, this change included, for the mail about it. */

@@ -21,11 +21,11 @@ export const NO_CONSEQUENCES: Consequences = {
   supersededMessages: [],
 };
 
-/** What the detector says about the pulsars that changed, and of the clocks of all sites (absent: to be worked out). */
+/** What the detector says about the pulsars that changed, and of the clocks of all sites. */
 export interface Decided {
   readonly reports: readonly PulsarReport[];
   readonly rows: readonly PulsarReportRow[];
-  readonly steps?: readonly BelievedStep[];
+  readonly steps: readonly BelievedStep[];
 }
 
 /** Decision, event and alert: from what the detector says about single pulsars to events on record and mail. */

@@ -1,4 +1,4 @@
-import { type BelievedStep, siteEvents, siteSteps } from '../../detectors/index.ts';
+import { type BelievedStep, siteEvents } from '../../detectors/index.ts';
 import type { PulsarReport } from '../../detectors/report.ts';
 import type { EventPicture, PulsarEvent } from '../../detectors/steps/pulsarEvent.ts';
 import type { Station } from '../station.ts';
@@ -8,11 +8,10 @@ import type { PulsarReportRow } from '../store/index.ts';
 export function publishedEvents(
   { store }: Station,
   changed: readonly PulsarReportRow[],
-  known?: readonly BelievedStep[],
+  steps: readonly BelievedStep[],
 ): readonly PulsarEvent[] {
   const rows = new Map(store.pulsarReports().map((report) => [report.pulsar, report]));
   for (const report of changed) rows.set(report.pulsar, report);
-  const steps = known ?? siteSteps([...rows.values()].flatMap(({ times }) => times ?? []));
   // Only a site's event bears a site.
   const own = [...rows.values()].flatMap(({ events }) => events.map((event) => ({ ...event, site: null })));
   return [...own, ...siteEvents(steps)].sort((a, b) => a.epochMjd - b.epochMjd || (a.id < b.id ? -1 : 1));
@@ -22,9 +21,9 @@ export function publishedEvents(
 export function reportRow(station: Station, report: PulsarReport): PulsarReportRow {
   const model = station.configuration.models.get(report.pulsar);
   if (model === undefined) throw new Error(`${report.pulsar} has no model`);
-  const { pulsar, events, locked, noise, lastArrivalMjd, limit, arrivals } = report;
+  const { pulsar, events, locked, noise, lastArrivalMjd, limit, arrivals, recent } = report;
   const basis = station.basisOf(model);
-  return { pulsar, basis, events, locked, noise, lastArrivalMjd, limit, arrivals: arrivals.length };
+  return { pulsar, basis, events, locked, noise, lastArrivalMjd, limit, arrivals: arrivals.length, recent };
 }
 
 /** The picture of an event: the new one, or the one on record where its pulsar was not looked at this time. */

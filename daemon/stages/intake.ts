@@ -138,6 +138,22 @@ export function isOnRecord(station: Station, inHand: FileInHand): boolean {
   return true;
 }
 
+/** No file has it: the path is read as one that changed. */
+const SILENTLY_EDITED = 'silently edited';
+
+/** Whether the bytes of a path are those on record, where a file that looks the same is read through again; if not, the record forgets its look. */
+export function isAsRecorded(
+  { store, log }: Station,
+  { feed, path, pathBytes }: Pick<FileInHand, 'feed' | 'path' | 'pathBytes'>,
+  bytes: Buffer,
+): boolean {
+  const known = store.knownFile(feed, { bytesHex: pathBytes.toString('hex') });
+  if (known === null || known.sha256 === '' || known.sha256 === sha256Of(bytes)) return true;
+  log.warn({ feed, file: path }, 'silent edit: other bytes under the same length and times; the file is read again');
+  store.noteUnchanged(known.id, SILENTLY_EDITED);
+  return false;
+}
+
 function sha256Of(bytes: Buffer): string {
   return createHash('sha256').update(bytes).digest('hex');
 }

@@ -6,8 +6,8 @@ import {
   type PulsarWatch,
   pulsarTimes,
   report,
+  SiteClocks,
   type SiteStep,
-  siteSteps,
 } from '../../detectors/index.ts';
 import type { PulsarReport } from '../../detectors/report.ts';
 import { reasonOf } from '../errors.ts';
@@ -39,6 +39,9 @@ export interface FollowOptions {
 export class SiteWatches {
   readonly #alone = new PulsarWatches();
   readonly #withSteps = new PulsarWatches();
+  readonly #clocks = new SiteClocks();
+  /** As on record, by pulsar; null: to be read. */
+  #times: Map<string, PulsarTimes> | null = null;
 
   /** The model to fold with, of a pulsar whose report this is; null: it is not followed, or has no arrivals to speak of. */
   currentModel(reported: PulsarReport, siteSteps: readonly SiteStep[]): CurrentModel | null {
@@ -48,6 +51,7 @@ export class SiteWatches {
   /** After a commit that failed. */
   forget(pulsars: Iterable<string>): void {
     for (const watches of [this.#alone, this.#withSteps]) watches.forget(pulsars);
+    this.#times = null;
   }
 
   async follow(
@@ -57,8 +61,8 @@ export class SiteWatches {
     { pause, onPulsar }: FollowOptions,
   ): Promise<Followed> {
     const recorded = new Map(station.store.pulsarReports().map((row) => [row.pulsar, row]));
-    const times = new Map<string, PulsarTimes>();
-    for (const { pulsar, times: kept } of recorded.values()) if (kept !== undefined) times.set(pulsar, kept);
+    this.#times ??= new Map(station.store.pulsarTimes().map((times) => [times.pulsar, times]));
+    const times = this.#times;
     const rows = new Map<string, PulsarReportRow>();
     const guarded = (pulsar: string, work: () => void) => {
       try {
@@ -75,7 +79,7 @@ export class SiteWatches {
       });
       onPulsar(i + 1);
     }
-    const steps = siteSteps([...times.values()]);
+    const steps = this.#clocks.steps([...times.values()]);
     const reports: PulsarReport[] = [];
     const changed = new Set(pulsars.filter((pulsar) => !rows.has(pulsar)));
     for (const [pulsar, own] of times) {
@@ -88,7 +92,8 @@ export class SiteWatches {
         const watches = known.length === 0 ? this.#alone : this.#withSteps;
         const reported = report(this.#watch(watches, station, { pulsar, changes, steps: known }));
         reports.push(reported);
-        rows.set(pulsar, { ...reportRow(station, reported), times: own, siteSteps: known });
+        const sessions = changed.has(pulsar) ? { times: own } : {};
+        rows.set(pulsar, { ...reportRow(station, reported), ...sessions, siteSteps: known });
       });
     }
     return { reports, rows: [...rows.values()], steps };

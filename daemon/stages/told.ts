@@ -26,10 +26,17 @@ export function mailedSoFar({ store }: Pick<Station, 'store'>, eventId: string):
   const described = last === undefined ? null : asDescribed(store.event(eventId)?.history ?? [], last);
   if (first === undefined || described === null) return { ...NOTHING_MAILED, unsent: [...unsent] };
   return {
-    told: { firstMessageId: first.messageId, as: described.event },
+    told: { firstMessageId: first.messageId, as: described.event, recipients: heardBy(sent) },
     toldRevision: described.revision,
     unsent: [...unsent],
   };
+}
+
+/** Whoever has a copy or will get it; a copy that was given up without an answer may have arrived too. */
+function heardBy(sent: readonly OutboxRecord[]): string[] {
+  const gone = (copy: OutboxRecord) =>
+    copy.state === 'refused' || (copy.state === 'expired' && !copy.possibleDuplicate);
+  return [...new Set(sent.filter((copy) => !gone(copy)).map((copy) => copy.recipient))];
 }
 
 function mayHaveLeft(copy: OutboxRecord): boolean {

@@ -39,6 +39,28 @@ BEGIN SELECT RAISE(ABORT, 'verdicts are never replaced'); END;`,
     name: 'why a revision was mailed or not',
     sql: 'ALTER TABLE event_changes ADD COLUMN alert TEXT;',
   },
+  {
+    name: 'from when on a message may leave, and when it was given up',
+    sql: `ALTER TABLE messages ADD COLUMN may_leave_at TEXT;
+UPDATE messages SET may_leave_at = created_at;
+ALTER TABLE outbox ADD COLUMN given_up_at TEXT;
+CREATE INDEX files_mostly_unusable ON files (taken_in_at) WHERE fault IS NOT NULL OR quarantined * 2 > row_count;`,
+  },
+  {
+    name: 'what pulsars say of the clocks of their sites',
+    sql: 'ALTER TABLE pulsar_reports ADD COLUMN times TEXT CHECK (times IS NULL OR json_valid(times));',
+  },
+  {
+    name: 'each attempt at each mail',
+    sql: `CREATE TABLE mail_attempts (
+  outbox_id INTEGER NOT NULL REFERENCES outbox (id) ON DELETE CASCADE,
+  number INTEGER NOT NULL CHECK (number >= 1),
+  begun_at TEXT NOT NULL,
+  -- Null: under way.
+  outcome TEXT,
+  PRIMARY KEY (outbox_id, number)
+) STRICT, WITHOUT ROWID;`,
+  },
 ];
 
 export const SCHEMA_VERSION = MIGRATIONS.length;

@@ -15,6 +15,26 @@ export function quarantinedSince(db: Db, since: string): QuarantinedRow[] {
   );
 }
 
+/** Files that could not be read, or of whose rows more than half could not be used. */
+export interface UnusableFile {
+  readonly feed: string;
+  readonly path: string;
+  readonly rows: number;
+  readonly quarantined: number;
+  /** Null: it was read. */
+  readonly fault: string | null;
+  readonly takenInAt: string;
+}
+
+export function unusableFilesSince(db: Db, since: string): UnusableFile[] {
+  return rows<UnusableFile>(
+    db,
+    `SELECT feed, path, row_count AS rows, quarantined, fault, taken_in_at AS takenInAt FROM files
+     WHERE (fault IS NOT NULL OR quarantined * 2 > row_count) AND taken_in_at >= ? ORDER BY id`,
+    since,
+  );
+}
+
 export function intakeSince(db: Db, since: string): { files: number; arrivals: number; pulsars: number } {
   return row<{ files: number; arrivals: number; pulsars: number }>(
     db,
@@ -26,12 +46,17 @@ export function intakeSince(db: Db, since: string): { files: number; arrivals: n
 }
 
 export function eventChangesSince(db: Db, since: string): EventChangeLine[] {
-  return rows<{ body: string; state: EventState; what: string; at: string }>(
+  return rows<{ body: string; state: EventState; what: string; alert: string | null; at: string; isFirst: number }>(
     db,
-    `SELECT e.body, e.state, c.what, c.at FROM event_changes c JOIN events e ON e.id = c.event_id
-     WHERE c.at >= ? AND c.revision > 1 ORDER BY c.at DESC, e.id, c.revision DESC`,
+    `SELECT e.body, e.state, c.what, c.alert, c.at, c.revision = 1 AS isFirst
+     FROM event_changes c JOIN events e ON e.id = c.event_id
+     WHERE c.at >= ? ORDER BY c.at DESC, e.id, c.revision DESC`,
     since,
-  ).map(({ body, state, what, at }) => ({ event: { ...fromJson<PulsarEvent>(body), state }, what, at }));
+  ).map(({ body, state, isFirst, ...line }) => ({
+    event: { ...fromJson<PulsarEvent>(body), state },
+    ...line,
+    isFirst: isFirst === 1,
+  }));
 }
 
 /** A file that could not be read (without a signature) is no sign of life. */

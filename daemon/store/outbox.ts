@@ -1,4 +1,4 @@
-import type { OutboxRecord } from '../records.ts';
+import type { MailAttempt, OutboxRecord } from '../records.ts';
 import { type Db, inTransaction, row, rows, run } from './connection.ts';
 import { step } from './crashStep.ts';
 import { currentId } from './events.ts';
@@ -16,7 +16,7 @@ interface OutboxRow extends Omit<OutboxRecord, 'possibleDuplicate'> {
 
 const SELECT = `SELECT o.id, o.message_id AS messageId, o.recipient, m.subject, m.kind, m.event_id AS eventId, o.state,
   o.attempts, o.due_at AS dueAt, o.last_error AS lastError, o.possible_duplicate AS possibleDuplicate,
-  m.created_at AS createdAt, o.delivered_at AS deliveredAt
+  m.created_at AS createdAt, m.may_leave_at AS mayLeaveAt, o.delivered_at AS deliveredAt
   FROM outbox o JOIN messages m ON m.message_id = o.message_id`;
 
 /**
@@ -26,8 +26,8 @@ const SELECT = `SELECT o.id, o.message_id AS messageId, o.recipient, m.subject, 
 export function enqueue(db: Db, message: NewMessage, at: string): void {
   run(
     db,
-    `INSERT INTO messages (message_id, kind, event_id, subject, in_reply_to, content, created_at)
-     VALUES (?, ?, ?, ?, ?, ?, ?) ON CONFLICT (message_id) DO NOTHING`,
+    `INSERT INTO messages (message_id, kind, event_id, subject, in_reply_to, content, created_at, may_leave_at)
+     VALUES (?, ?, ?, ?, ?, ?, ?, ?) ON CONFLICT (message_id) DO NOTHING`,
     message.messageId,
     message.kind,
     message.eventId,
@@ -35,6 +35,7 @@ export function enqueue(db: Db, message: NewMessage, at: string): void {
     message.inReplyTo,
     message.content,
     at,
+    message.dueAt,
   );
   for (const recipient of message.recipients) {
     const before = deliveredBefore(db, message.messageId, recipient);
@@ -72,11 +73,14 @@ function markTold(db: Db, eventId: string): void {
   run(db, 'UPDATE events SET told = 1 WHERE id = ?', eventId);
 }
 
+const REPLACED = 'a newer message replaced it before it left';
+
+/** What is replaced was not given up: its news leaves with the newer message. */
 export function supersede(db: Db, messageId: string): void {
   run(
     db,
-    `UPDATE outbox SET state = 'expired', last_error = 'a newer message replaced it before it left'
-     WHERE message_id = ? AND state = 'queued'`,
+    "UPDATE outbox SET state = 'expired', last_error = ? WHERE message_id = ? AND state = 'queued'",
+    REPLACED,
     messageId,
   );
 }
@@ -130,6 +134,13 @@ export function claimDue(db: Db, now: string): ClaimedMail | null {
       "UPDATE outbox SET state = 'attempting', attempts = attempts + 1 WHERE id = ? AND state = 'queued'",
       due.id,
     );
+    run(
+      db,
+      'INSERT INTO mail_attempts (outbox_id, number, begun_at, outcome) VALUES (?, ?, ?, NULL)',
+      due.id,
+      due.attempts + 1,
+      now,
+    );
     step('mail claimed');
     if (due.eventId !== null) markTold(db, due.eventId);
     step('event told');
@@ -165,24 +176,67 @@ export function settle(db: Db, id: number, outcome: MailOutcome): void {
     } else if (outcome.kind === 'unknown') {
       run(db, 'UPDATE outbox SET possible_duplicate = 1, unknown_ends = unknown_ends + 1 WHERE id = ?', id);
       if (found.unknown_ends === 0) requeue(db, id, outcome.dueAt, outcome.error);
-      else end(db, id, 'expired', `may have arrived, twice without an answer: ${outcome.error}`);
+      else
+        end(db, id, {
+          ...outcome,
+          kind: 'expired',
+          error: `may have arrived, twice without an answer: ${outcome.error}`,
+        });
     } else {
-      end(db, id, outcome.kind, outcome.error);
+      end(db, id, outcome);
     }
+    endAttempt(db, id, outcome);
     step('mail settled');
   });
+}
+
+function endAttempt(db: Db, id: number, outcome: MailOutcome): void {
+  const words = {
+    delivered: 'delivered',
+    later: 'put off',
+    unknown: 'no answer, may have arrived',
+    refused: 'refused',
+    expired: 'given up',
+  }[outcome.kind];
+  const why = outcome.kind === 'delivered' ? outcome.remark : outcome.error;
+  const text = why === undefined ? words : `${words}: ${why}`;
+  run(db, 'UPDATE mail_attempts SET outcome = ? WHERE outbox_id = ? AND outcome IS NULL', text, id);
+}
+
+/** Of each of these rows, oldest first; of attempts from before this was kept, none. */
+export function attemptsAt(db: Db, ids: readonly number[]): Map<number, MailAttempt[]> {
+  const found = rows<MailAttempt & { id: number }>(
+    db,
+    `SELECT outbox_id AS id, begun_at AS begunAt, outcome FROM mail_attempts
+     WHERE outbox_id IN (SELECT value FROM json_each(?)) ORDER BY outbox_id, number`,
+    JSON.stringify(ids),
+  );
+  const attempts = new Map<number, MailAttempt[]>();
+  for (const { id, ...attempt } of found) attempts.set(id, [...(attempts.get(id) ?? []), attempt]);
+  return attempts;
 }
 
 function requeue(db: Db, id: number, dueAt: string, error: string): void {
   run(db, "UPDATE outbox SET state = 'queued', due_at = ?, last_error = ? WHERE id = ?", dueAt, error, id);
 }
 
-function end(db: Db, id: number, state: 'refused' | 'expired', error: string): void {
-  run(db, 'UPDATE outbox SET state = ?, last_error = ? WHERE id = ?', state, error, id);
+interface End {
+  readonly kind: 'refused' | 'expired';
+  readonly error: string;
+  readonly at: string;
+}
+
+function end(db: Db, id: number, { kind, error, at }: End): void {
+  run(db, 'UPDATE outbox SET state = ?, last_error = ?, given_up_at = ? WHERE id = ?', kind, error, at, id);
 }
 
 /** At start nobody is attempting: such a row was cut off, and its message may have arrived. It goes again, marked. */
 export function requeueCutOff(db: Db): void {
+  run(
+    db,
+    `UPDATE mail_attempts SET outcome = 'cut off: the program stopped, may have arrived'
+     WHERE outcome IS NULL AND outbox_id IN (SELECT id FROM outbox WHERE state = 'attempting')`,
+  );
   run(
     db,
     `UPDATE outbox SET state = 'queued', possible_duplicate = 1, last_error = 'the program stopped during the attempt'
@@ -190,15 +244,15 @@ export function requeueCutOff(db: Db): void {
   );
 }
 
-export function expireOlderThan(db: Db, createdBefore: string, reason: string): OutboxRecord[] {
+export function expireOlderThan(db: Db, createdBefore: string, { error, at }: Omit<End, 'kind'>): OutboxRecord[] {
   return inTransaction(db, () => {
     const old = rows<OutboxRow>(
       db,
       `${SELECT} WHERE o.state = 'queued' AND m.created_at < ? ORDER BY o.id`,
       createdBefore,
     );
-    for (const { id } of old) end(db, id, 'expired', reason);
-    return old.map((r) => ({ ...toRecord(r), state: 'expired', lastError: reason }));
+    for (const { id } of old) end(db, id, { kind: 'expired', error, at });
+    return old.map((r) => ({ ...toRecord(r), state: 'expired', lastError: error }));
   });
 }
 
@@ -206,12 +260,16 @@ export function listOutbox(db: Db, filter: OutboxFilter): OutboxRecord[] {
   return rows<OutboxRow>(
     db,
     `${SELECT} WHERE (@state IS NULL OR o.state = @state) AND (@kind IS NULL OR m.kind = @kind)
-       AND (@eventId IS NULL OR m.event_id = @eventId) AND (@since IS NULL OR m.created_at >= @since) ORDER BY o.id`,
+       AND (@eventId IS NULL OR m.event_id = @eventId) AND (@since IS NULL OR m.created_at >= @since)
+       AND (@givenUpSince IS NULL OR o.given_up_at >= @givenUpSince)
+       AND (@mayLeaveSince IS NULL OR m.may_leave_at >= @mayLeaveSince) ORDER BY o.id`,
     {
       state: filter.state ?? null,
       kind: filter.kind ?? null,
       eventId: filter.eventId === undefined ? null : (currentId(db, filter.eventId) ?? filter.eventId),
       since: filter.since ?? null,
+      givenUpSince: filter.givenUpSince ?? null,
+      mayLeaveSince: filter.mayLeaveSince ?? null,
     },
   ).map(toRecord);
 }
@@ -226,7 +284,7 @@ export function outboxCounts(db: Db): OutboxCounts {
   }
   const oldest = row<{ at: string | null }>(
     db,
-    `SELECT min(m.created_at) AS at FROM outbox o JOIN messages m ON m.message_id = o.message_id
+    `SELECT min(max(m.created_at, m.may_leave_at)) AS at FROM outbox o JOIN messages m ON m.message_id = o.message_id
      WHERE o.state IN ('queued', 'attempting')`,
   );
   return { ...counts, oldestWaitingSince: oldest?.at ?? null };

@@ -1,6 +1,6 @@
 import type { BarycentredArrival, Quality, ReceivedArrival } from '../../detectors/arrival.ts';
 import type { DetectionLimit } from '../../detectors/limits/detectionLimit.ts';
-import type { NoiseModel } from '../../detectors/report.ts';
+import type { NoiseModel, RecentArrivals } from '../../detectors/report.ts';
 import type { PulsarTimes } from '../../detectors/site/pulsarTimes.ts';
 import type { SiteStep } from '../../detectors/site/siteStep.ts';
 import type { EventPicture, PulsarEvent } from '../../detectors/steps/pulsarEvent.ts';
@@ -119,7 +119,7 @@ export interface PulsarReportRow {
   readonly locked: boolean;
   readonly noise: NoiseModel;
   readonly lastArrivalMjd: number | null;
-  /** What it says of the clocks of its sites; absent in records of before that was kept. */
+  /** What it says of the clocks of its sites; absent: as it was. Read by itself. */
   readonly times?: PulsarTimes;
   /** The steps of those clocks that `events` rest on; absent: none. */
   readonly siteSteps?: readonly SiteStep[];
@@ -127,6 +127,8 @@ export interface PulsarReportRow {
   readonly limit?: DetectionLimit;
   /** Live arrivals that the report rests on; absent with the limit. */
   readonly arrivals?: number;
+  /** Absent in records of before it was kept. */
+  readonly recent?: RecentArrivals;
 }
 
 export interface EventUpsert {
@@ -152,6 +154,7 @@ export interface NewMessage {
   readonly inReplyTo: string | null;
   /** The composed message, in the mailer's own form; kept as it is. */
   readonly content: string;
+  /** When it may leave. */
   readonly dueAt: string;
 }
 
@@ -197,9 +200,9 @@ export type MailOutcome =
   /** It certainly did not arrive; try again then. */
   | { readonly kind: 'later'; readonly dueAt: string; readonly error: string }
   /** It may have arrived. Sent once more, marked; a second such end expires it. */
-  | { readonly kind: 'unknown'; readonly dueAt: string; readonly error: string }
-  | { readonly kind: 'refused'; readonly error: string }
-  | { readonly kind: 'expired'; readonly error: string };
+  | { readonly kind: 'unknown'; readonly dueAt: string; readonly error: string; readonly at: string }
+  | { readonly kind: 'refused'; readonly error: string; readonly at: string }
+  | { readonly kind: 'expired'; readonly error: string; readonly at: string };
 
 export interface OutboxFilter {
   readonly state?: OutboxRecord['state'];
@@ -207,6 +210,10 @@ export interface OutboxFilter {
   readonly eventId?: string;
   /** Queued first at or after this time. */
   readonly since?: string;
+  /** Refused or expired at or after this time; without what newer mail replaced. */
+  readonly givenUpSince?: string;
+  /** That could leave at this time at the earliest. */
+  readonly mayLeaveSince?: string;
 }
 
 export interface OutboxCounts {
@@ -215,14 +222,18 @@ export interface OutboxCounts {
   readonly delivered: number;
   readonly refused: number;
   readonly expired: number;
-  /** When the oldest message not yet settled was queued first. */
+  /** Since when the oldest message not yet settled could have left: ahead of now while all are held. */
   readonly oldestWaitingSince: string | null;
 }
 
 export interface EventChangeLine {
   readonly event: PulsarEvent;
   readonly what: string;
+  /** In words, whether it was mailed and why; null: not on record. */
+  readonly alert: string | null;
   readonly at: string;
+  /** The event is new with it. */
+  readonly isFirst: boolean;
 }
 
 export type OpenFailureKind =

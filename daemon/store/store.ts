@@ -1,7 +1,16 @@
 import type { QuarantinedRow } from '../../alerts/morningReview.ts';
 import type { TimedArrival } from '../../detectors/arrival.ts';
+import type { PulsarTimes } from '../../detectors/site/pulsarTimes.ts';
 import type { Mjd } from '../../detectors/time/mjd.ts';
-import type { ArrivalRecord, EventRecord, FileRecord, ListedEvent, OutboxRecord } from '../records.ts';
+import type {
+  ArrivalOrigin,
+  ArrivalRecord,
+  EventRecord,
+  FileRecord,
+  ListedEvent,
+  MailAttempt,
+  OutboxRecord,
+} from '../records.ts';
 import * as arrivals from './arrivals.ts';
 import { writeBackup } from './backup.ts';
 import { commitIntake } from './commitIntake.ts';
@@ -109,8 +118,17 @@ export class Store {
     return reports.pulsarReport(this.#db, pulsar);
   }
 
+  /** Without `times`: those come from `pulsarTimes`. */
   pulsarReports(): PulsarReportRow[] {
     return reports.pulsarReports(this.#db);
+  }
+
+  pulsarTimes(): PulsarTimes[] {
+    return reports.pulsarTimes(this.#db);
+  }
+
+  unlockedPulsars(): { readonly pulsar: string; readonly arrivals: number }[] {
+    return reports.unlockedPulsars(this.#db);
   }
 
   /** One transaction; a batch that breaks a rule of the record is thrown and leaves nothing. */
@@ -189,14 +207,19 @@ export class Store {
   }
 
   /** Gives up what was queued first before that time and still waits; answers what it gave up. */
-  expireOlderThan(createdBefore: string, reason: string): OutboxRecord[] {
+  expireOlderThan(createdBefore: string, end: { readonly error: string; readonly at: string }): OutboxRecord[] {
     this.#requireLock();
-    return outbox.expireOlderThan(this.#db, createdBefore, reason);
+    return outbox.expireOlderThan(this.#db, createdBefore, end);
   }
 
   /** In the order of queueing. */
   outbox(filter: OutboxFilter = {}): OutboxRecord[] {
     return outbox.listOutbox(this.#db, filter);
+  }
+
+  /** By the id of the outbox's row, oldest first. */
+  mailAttempts(outboxIds: readonly number[]): Map<number, MailAttempt[]> {
+    return outbox.attemptsAt(this.#db, outboxIds);
   }
 
   outboxCounts(): OutboxCounts {
@@ -209,6 +232,11 @@ export class Store {
     return morning.quarantinedSince(this.#db, since);
   }
 
+  /** Files that could not be read or of which most rows could not be used. */
+  unusableFilesSince(since: string): morning.UnusableFile[] {
+    return morning.unusableFilesSince(this.#db, since);
+  }
+
   /** Newest first. */
   recentFiles(most: number): FileRecord[] {
     return recent.recentFiles(this.#db, most);
@@ -217,6 +245,11 @@ export class Store {
   /** Newest first, without that of files delivered again since. */
   recentQuarantine(most: number): QuarantinedRow[] {
     return recent.recentQuarantine(this.#db, most);
+  }
+
+  /** Of arrivals by key: as received, and the line that brought them. */
+  origins(keys: readonly string[]): ArrivalOrigin[] {
+    return recent.origins(this.#db, keys);
   }
 
   /** Rows that name a pulsar and could not be used, newest first, without that of files delivered again since. */
@@ -228,7 +261,7 @@ export class Store {
     return morning.intakeSince(this.#db, since);
   }
 
-  /** Every change of an event but its first entry, newest first. */
+  /** Every change of an event, newest first. */
   eventChangesSince(since: string): EventChangeLine[] {
     return morning.eventChangesSince(this.#db, since);
   }

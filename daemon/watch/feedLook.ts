@@ -22,6 +22,10 @@ export interface FeedLook {
   refused(file: FoundFile, reason: string): void;
   /** Offered again after standing still for long. */
   notYetWhole(file: FoundFile): void;
+  /** Taken in, and as it was then by length and times. */
+  isTaken(file: FoundFile): boolean;
+  /** Its bytes are not those that were taken in, though it looks the same: offered again like a file that changed. */
+  doubt(file: FoundFile): void;
   /** Offered again from `notBeforeMs` on. */
   tryLater(file: FoundFile, again: { readonly notBeforeMs: number; readonly trouble: Trouble | null }): void;
 }
@@ -35,6 +39,7 @@ export interface Look {
   readonly nextReadyInMs: number | null;
   /** Null while the folder is gone. */
   readonly root: { readonly folder: Buffer; readonly identity: string; readonly files: number } | null;
+  readonly files: readonly FoundFile[];
   readonly problems: readonly WatchProblem[];
 }
 
@@ -95,6 +100,11 @@ export function createFeedLook(feed: WatchedFeed, recall: Recall, settings: Look
       const entry = memory.waiting.get(path);
       if (entry !== undefined) entry.needsLong = true;
     },
+    isTaken({ path, stamp }) {
+      const settled = memory.settled.get(path);
+      return settled?.signature === stamp.signature && settled.refusal === null;
+    },
+    doubt: ({ path }) => void memory.settled.delete(path),
     tryLater({ path }, again) {
       const entry = memory.waiting.get(path);
       if (entry !== undefined) Object.assign(entry, again);
@@ -106,7 +116,7 @@ export function createFeedLook(feed: WatchedFeed, recall: Recall, settings: Look
 function gone(feed: WatchedFeed, memory: FeedMemory, reason: string): Look {
   const message = `the folder ${feed.folder} ${reason}; nothing can be read until it is back`;
   const problem: WatchProblem = { feed: feed.name, kind: 'root gone', path: null, message };
-  return { ready: [], moving: memory.waiting.size, nextReadyInMs: null, root: null, problems: [problem] };
+  return { ready: [], moving: memory.waiting.size, nextReadyInMs: null, root: null, files: [], problems: [problem] };
 }
 
 type Named = Pick<FoundFile, 'path' | 'pathBytes'>;
@@ -156,6 +166,7 @@ function sort(scan: Extract<Scan, { kind: 'listed' }>, looking: Looking): Look {
     moving: memory.waiting.size,
     nextReadyInMs: Number.isFinite(nextReadyInMs) ? nextReadyInMs : null,
     root: { folder: scan.root, identity: scan.rootIdentity, files: scan.files.length },
+    files: scan.files,
     problems,
   };
 }

@@ -1,6 +1,7 @@
 import type { Clock } from '../clock.ts';
 import type { Feed } from '../config/configuration.ts';
 import { reasonOf } from '../errors.ts';
+import { type Audit, createAudit } from './audit.ts';
 import { type Beat, createBeat } from './beat.ts';
 import {
   createFeedLook,
@@ -30,6 +31,8 @@ export interface WatcherOptions {
    * @param filesWaiting settled files of all feeds that come after it
    */
   onSettled(file: ReadyFile, bytes: Buffer, filesWaiting: number): Promise<'taken' | 'not yet whole'>;
+  /** Whether a path's bytes are those on record; absent: files that look the same are not read through again. */
+  isAsRecorded?(file: Pick<ReadyFile, 'feed' | 'path' | 'pathBytes'>, bytes: Buffer): boolean;
   /** Once when a problem begins; again at the next look where it throws. */
   onProblem(problem: WatchProblem): void;
   onProblemEnded?(problem: WatchProblem): void;
@@ -116,6 +119,7 @@ interface Loop extends Shared {
   readonly options: WatcherOptions;
   readonly watched: FeedLook;
   readonly beat: Beat;
+  readonly audit: Audit;
   /** Path → how often taking it in failed. */
   readonly failures: Map<string, number>;
 }
@@ -130,6 +134,7 @@ function startFeed(feed: Feed, options: WatcherOptions, shared: Shared): FeedLoo
     watched: createFeedLook(feed, options.recall, settings),
     ...shared,
     beat,
+    audit: createAudit(options.clock.monotonicMs()),
     failures: new Map(),
   };
   const ledger = createProblemLedger(options.onProblem, options.onProblemEnded ?? (() => {}));
@@ -152,6 +157,7 @@ function startFeed(feed: Feed, options: WatcherOptions, shared: Shared): FeedLoo
         problems: ledger.current(),
       };
       await handOver(look, loop, startMs);
+      if (look.ready.length === 0) await readThrough(look, loop, startMs);
       await beat.rest(restAfter(look, { lookMs, pollMs: feed.pollSeconds * 1000 }));
     }
   };
@@ -173,7 +179,7 @@ async function lookOnce({ feed, watched }: Loop, nowMs: number): Promise<Look> {
     return await watched.look(nowMs);
   } catch (error) {
     const problem: WatchProblem = { feed: feed.name, kind: 'look failed', path: null, message: reasonOf(error) };
-    return { ready: [], moving: 0, nextReadyInMs: FIRST_RETRY_MS, root: null, problems: [problem] };
+    return { ready: [], moving: 0, nextReadyInMs: FIRST_RETRY_MS, root: null, files: [], problems: [problem] };
   }
 }
 
@@ -191,6 +197,21 @@ async function handOver(look: Look, loop: Loop, startMs: number): Promise<void> 
     if (beat.stopped || options.clock.monotonicMs() - startMs > feed.pollSeconds * 1000) return;
     await handOverOne(file, loop);
     readyFiles.set(feed.name, look.ready.length - done - 1);
+  }
+}
+
+/** Files whose turn it is, against the record, while nothing new waits. */
+async function readThrough(look: Look, { audit, beat, feed, options, watched }: Loop, nowMs: number): Promise<void> {
+  if (look.root === null || options.isAsRecorded === undefined) return;
+  for (const { path, pathBytes, stamp } of audit.due(look.files, nowMs)) {
+    if (beat.stopped) return;
+    if (!watched.isTaken({ path, pathBytes, stamp })) continue;
+    const wanted = { root: look.root.folder, pathBytes, signature: stamp.signature };
+    const reading = await readStill(wanted, { largestBytes: options.largestBytes ?? LARGEST_FILE_BYTES });
+    // One that changed, or may not be read, is no business of ours.
+    if (reading.kind !== 'read') continue;
+    const file = { feed: feed.name, path, pathBytes };
+    if (!options.isAsRecorded(file, reading.bytes)) watched.doubt({ path, pathBytes, stamp });
   }
 }
 

@@ -5,7 +5,7 @@ import { logAddExp } from '../math/logSumExp.ts';
 import { median } from '../math/median.ts';
 import type { NoiseModel } from '../report.ts';
 import { KINDS, type Kind } from '../steps/births.ts';
-import { EXPLANATION_SHARE } from '../steps/decide.ts';
+import { EXPLANATION_SHARE, SHARE_OF_ROTATION } from '../steps/evidence.ts';
 import type { PulsarWatch } from '../steps/pulsarWatch.ts';
 import { logSignPrior } from '../steps/signPrior.ts';
 import type { Programme } from './programme.ts';
@@ -33,6 +33,7 @@ const LIKELY_GAPS = 3;
 /** Parts of the mixture of sizes that matter at a given size. */
 const PARTS = 2;
 const LOG_SHARE = Math.log(EXPLANATION_SHARE / (1 - EXPLANATION_SHARE));
+const LOG_SHARE_OF_ROTATION = Math.log(SHARE_OF_ROTATION / (1 - SHARE_OF_ROTATION));
 /** Strengths of a walk, in those that would move the rate by the step over the arrivals there are. */
 const WALK_LEVELS = [0.1, 0.4, 1.6, 6.4, 26, 100];
 

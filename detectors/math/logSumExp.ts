@@ -14,3 +14,8 @@ export function logAddExp(a: number, b: number): number {
   if (b === Number.NEGATIVE_INFINITY) return a;
   return a > b ? a + Math.log1p(Math.exp(b - a)) : b + Math.log1p(Math.exp(a - b));
 }
+
+/** ln(eᵃ / eᵇ); −Infinity where there is nothing above the line, be there something below it or not. */
+export function logRatio(a: number, b: number): number {
+  return a === Number.NEGATIVE_INFINITY ? a : a - b;
+}

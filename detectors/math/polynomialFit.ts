@@ -1,10 +1,13 @@
 import { leastSquares } from './orthogonalBasis.ts';
 
-/** A weighted polynomial through points: value, and the first coefficient's 1σ uncertainty from the stated weights. */
+/** A weighted polynomial through points: its value, and its derivatives at the mean of x with 1σ uncertainties from the stated weights. */
 export interface PolynomialFit {
   readonly valueAt: (x: number) => number;
   readonly slope: number;
   readonly slopeSigma: number;
+  /** Second derivative; 0 below degree 2. */
+  readonly curvature: number;
+  readonly curvatureSigma: number;
 }
 
 /** Least squares in powers of (x − centre), rows divided by sigma. Needs more points than `degree`. */
@@ -33,5 +36,7 @@ export function fitPolynomial(
     },
     slope: degree > 0 ? solution[1]! / reach : 0,
     slopeSigma: degree > 0 ? Math.sqrt(covariance[size + 1]!) / reach : 0,
+    curvature: degree > 1 ? (2 * solution[2]!) / reach ** 2 : 0,
+    curvatureSigma: degree > 1 ? (2 * Math.sqrt(covariance[2 * size + 2]!)) / reach ** 2 : 0,
   };
 }

@@ -15,7 +15,7 @@
 import type { NoiseModel } from '../report.ts';
 import type { Bank } from '../steps/bank.ts';
 import { born, KINDS, RATE_PER_YEAR } from '../steps/births.ts';
-import { sessionsUsed, spreadOf, weigh } from '../steps/evidence.ts';
+import { isExplained, sessionsUsed, spreadOf, weigh } from '../steps/evidence.ts';
 import { zeros } from '../steps/hypothesis.ts';
 import { birthPlace } from '../steps/places.ts';
 import type { PulsarWatch } from '../steps/pulsarWatch.ts';
@@ -32,7 +32,8 @@ const ARRIVALS = 60;
 
 /** What a step must pass besides the threshold. */
 export interface Demands {
-  readonly explanationShare: number;
+  /** The noise is well known: there is no second weighing. */
+  readonly noiseKnown: boolean;
   readonly sessions: number;
 }
 
@@ -117,14 +118,15 @@ function crossings(
   { knowing, deciding, next }: RehearsedPulsar,
   logPriorTrue: number,
   years: number,
-  { explanationShare, sessions }: Demands,
+  { noiseKnown, sessions }: Demands,
 ): readonly (number | null)[] {
   const found: (number | null)[] = LEVELS.map(() => null);
   for (let n = 1; n < ARRIVALS; n++) {
     next();
-    const first = confirmableOdds(deciding, explanationShare, sessions);
+    const first = confirmableOdds(deciding, sessions);
     if (first < LEVELS[0]!) continue;
-    const odds = Math.min(first, secondWeighing(deciding.bank!, knowing.bank!, logPriorTrue));
+    const second = noiseKnown ? first : secondWeighing(deciding.bank!, knowing.bank!, logPriorTrue);
+    const odds = Math.min(first, second);
     const { something, nothing } = weigh(knowing.bank!);
     const yearsLeft = years - deciding.line.seen.at(-1)!.tDays / DAYS_PER_YEAR;
     const ratio = (Math.exp(something - nothing) / TOTAL_RATE + yearsLeft) / years;
@@ -137,11 +139,11 @@ function crossings(
 }
 
 /** Natural-log odds of the strongest kind, where it passes everything but the threshold; −∞ where it does not. */
-function confirmableOdds({ bank, line }: PulsarWatch, explanationShare: number, sessions: number): number {
-  const { strongest, byKind, nothing } = weigh(bank!);
-  if (strongest === null) return -Infinity;
+function confirmableOdds({ bank, line }: PulsarWatch, sessions: number): number {
+  const evidence = weigh(bank!);
+  const { strongest, byKind, nothing } = evidence;
+  if (strongest === null || !isExplained(evidence, strongest)) return -Infinity;
   const weight = byKind.get(strongest)!;
-  if (weight < Math.log(explanationShare)) return -Infinity;
   const gap = spreadOf(bank!, strongest).bestGap;
   const { beam } = bank!.families.find((f) => f.kind === strongest && f.gap === gap)!;
   const holder = beam.reduce((a, b) => (b.logWeight > a.logWeight ? b : a));

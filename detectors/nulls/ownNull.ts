@@ -14,6 +14,7 @@ import { type Demands, levelFor, type NullTail, nullTail, rateAt } from './nullT
 export interface OwnNull {
   readonly noise: NoiseModel;
   readonly medianGapDays: number;
+  readonly noiseKnown: boolean;
   readonly tail: NullTail;
 }
 
@@ -41,9 +42,9 @@ function tailOf(watch: PulsarWatch, demands: Demands): NullTail {
   const medianGapDays = medianGap(watch);
   const known = watch.ownNull;
   const change = known === null ? Infinity : Math.abs(Math.log(medianGapDays / known.medianGapDays));
-  if (known !== null && known.noise === watch.noise && change < Math.log(CADENCE_CHANGE)) return known.tail;
+  if (known !== null && known.noise === watch.noise && known.noiseKnown === demands.noiseKnown && change < Math.log(CADENCE_CHANGE)) return known.tail;
   const tail = nullTail(watch, demands);
-  watch.ownNull = { noise: watch.noise, medianGapDays, tail };
+  watch.ownNull = { noise: watch.noise, medianGapDays, noiseKnown: demands.noiseKnown, tail };
   return tail;
 }
 

@@ -72,28 +72,10 @@ export function logDensityAt(
   return logSumExp(sizes.logShares, scales.length);
 }
 
-/** After `logDensityAt`: the rungs' Gaussians joined into one, moments kept. */
-export function joinedSizes(sizes: ConditionalSizes, scales: readonly SizeScale[], logDensity: number): Gaussian {
-  const { count, logShares, solution } = sizes;
-  const mean = new Float64Array(count);
-  const covariance = new Float64Array(count * count);
-  const solved: { share: number; solution: Float64Array }[] = [];
-  for (let k = 0; k < scales.length; k++) {
-    const share = Math.exp(logShares[k]! - logDensity);
-    if (share < 1e-9) continue;
-    solveRung(sizes, scales[k]!);
-    for (let i = 0; i < count; i++) mean[i] = mean[i]! + share * solution[i]!;
-    addCovariance(sizes, share, covariance);
-    solved.push({ share, solution: solution.slice() });
-  }
-  for (const { share, solution } of solved) {
-    for (let i = 0; i < count; i++) {
-      const away = share * (solution[i]! - mean[i]!);
-      for (let j = 0; j < count; j++)
-        covariance[i * count + j] = covariance[i * count + j]! + away * (solution[j]! - mean[j]!);
-    }
-  }
-  return { mean, covariance };
+/** After `logDensityAt`: the Gaussian of one rung. */
+export function rungSizes(sizes: ConditionalSizes, scale: SizeScale): Gaussian {
+  solveRung(sizes, scale);
+  return { mean: sizes.solution.slice(), covariance: covarianceOf(sizes) };
 }
 
 /**
@@ -170,8 +152,9 @@ function solveRung(sizes: ConditionalSizes, scale: SizeScale): number {
   return scale.logShare - 0.5 * misfit - logDeterminant;
 }
 
-/** Adds share × S L⁻ᵀ L⁻¹ S of the rung solved last. */
-function addCovariance({ count, widths, factor, inverse }: ConditionalSizes, share: number, into: Float64Array): void {
+/** S L⁻ᵀ L⁻¹ S of the rung solved last. */
+function covarianceOf({ count, widths, factor, inverse }: ConditionalSizes): Float64Array {
+  const covariance = new Float64Array(count * count);
   inverse.fill(0);
   for (let j = 0; j < count; j++) {
     inverse[j * count + j] = 1 / factor[j * count + j]!;
@@ -185,7 +168,8 @@ function addCovariance({ count, widths, factor, inverse }: ConditionalSizes, sha
     for (let j = 0; j < count; j++) {
       let sum = 0;
       for (let k = Math.max(i, j); k < count; k++) sum += inverse[k * count + i]! * inverse[k * count + j]!;
-      into[i * count + j] = into[i * count + j]! + share * widths[i]! * widths[j]! * sum;
+      covariance[i * count + j] = widths[i]! * widths[j]! * sum;
     }
   }
+  return covariance;
 }

@@ -1,6 +1,6 @@
 import { logSumExp } from '../math/logSumExp.ts';
 import { type EventData, eventFrame } from './eventFrame.ts';
-import { type GlitchModel, glitchModels, MOST_TERMS } from './glitchModels.ts';
+import { evidenceOf, type GlitchModel, glitchModels, MOST_TERMS } from './glitchModels.ts';
 import type { GlitchPoint } from './glitchPosterior.ts';
 import {
   addedDeviation,
@@ -54,6 +54,8 @@ export interface GlitchFit {
   readonly logEvidence: number;
   /** Most probable epoch, days from the pivot. */
   readonly bestEpochDays: number;
+  /** Those of the most probable glitch. */
+  readonly bestTimescalesDays: readonly number[];
   readonly epochDays: Estimate;
   /** The whole step at the epoch, Δν_p + Σ Δνⱼ over what decays; positive is a spin-up. */
   readonly deltaNuHz: Estimate;
@@ -84,7 +86,7 @@ export interface GlitchFit {
  */
 export function fitGlitch(input: GlitchFitInput): GlitchFit {
   const frame = eventFrame(input);
-  const prior = input.sizePrior ?? defaultSizePrior(input.frequencyHz, input.frequencyDerivativeHzPerS);
+  const prior = sizePriorOf(input);
   const models = glitchModels(frame, prior, input.mostTerms ?? MOST_TERMS);
   const all = models.flatMap(({ points }) => points);
   const terms = establishedTerms(models);
@@ -96,6 +98,7 @@ export function fitGlitch(input: GlitchFitInput): GlitchFit {
     logEvidenceByTerms: models.map(({ logEvidence }) => logEvidence),
     logEvidence: logSumExp(models.map(({ logWeight }) => logWeight)),
     bestEpochDays: best.epochDays,
+    bestTimescalesDays: best.timescalesDays,
     epochDays: gridMarginal(all, ({ epochDays }) => epochDays),
     deltaNuHz: marginal(all, total, HZ),
     deltaNuDotHzPerS,
@@ -109,6 +112,19 @@ export function fitGlitch(input: GlitchFitInput): GlitchFit {
     curve: (tDays) => addedDeviation(best, tDays),
     frequencyCurve: (tDays) => addedFrequency(best, tDays),
   };
+}
+
+/**
+ * ln evidence of a glitch with exponentials of these timescales and no others, on the scale of `fitGlitch` up to the prior of
+ * the timescales: a hundredth of the work, to compare counts by.
+ * @throws RangeError when no candidate gap lies between arrivals in use.
+ */
+export function logEvidenceAt(input: GlitchFitInput, timescalesDays: readonly number[]): number {
+  return evidenceOf(eventFrame(input), sizePriorOf(input), timescalesDays);
+}
+
+function sizePriorOf({ sizePrior, frequencyHz, frequencyDerivativeHzPerS }: GlitchFitInput): SizePrior {
+  return sizePrior ?? defaultSizePrior(frequencyHz, frequencyDerivativeHzPerS);
 }
 
 /** By the data: known better than the narrowest rung of the prior would have it, or away from 0 whatever the prior. */

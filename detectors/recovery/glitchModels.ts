@@ -3,7 +3,7 @@
 import { logSumExp } from '../math/logSumExp.ts';
 import type { CandidateGap, EventFrame } from './eventFrame.ts';
 import { type GapSystem, gapSystem, recoveryColumns } from './gapSystem.ts';
-import { type EpochPosterior, explore, type GlitchPoint, pointAt, type Spot } from './glitchPosterior.ts';
+import { type EpochPosterior, explore, type GlitchPoint, pointsAt } from './glitchPosterior.ts';
 import { type SizePrior, type SizeScale, sizeScales } from './sizePrior.ts';
 import { type TimescaleCell, type TimescaleRange, timescaleCells } from './timescaleCells.ts';
 
@@ -38,10 +38,10 @@ const RUNG_FAR_BEHIND = 20;
 const CELLS_ASKED = 12;
 /** Timescales that cannot come within so many nats of the best are not looked at closely. */
 const HOPELESS = 60;
-/** A model so many nats behind adds nothing to what is reported, nor does this part of a posterior. */
+/** A model so many nats behind adds nothing to what is reported. */
 const NEGLIGIBLE = 9;
-const LEFT_OUT = 2e-3;
-const LEAST_SHARE = 1e-6;
+/** Places of a posterior whose sizes are worked out, about. */
+const MOST_POINTS = 1500;
 
 export interface GlitchModel {
   readonly terms: number;
@@ -95,6 +95,17 @@ export function glitchModels(frame: EventFrame, prior: SizePrior, mostTerms: num
     const points = logWeight < best - NEGLIGIBLE ? [] : pointsOf(scans, Math.log(TERMS_PRIOR[terms]!));
     return { terms, logEvidence: logEvidenceOf(scans), logWeight, points };
   });
+}
+
+/** ln p(data | a glitch with exponentials of these timescales). */
+export function evidenceOf(frame: EventFrame, prior: SizePrior, timescalesDays: readonly number[]): number {
+  const scales = sizeScales(prior, timescalesDays.length);
+  return logSumExp(
+    frame.gaps.map((gap) => {
+      const system = gapSystem(frame, gap);
+      return explore(frame, system, recoveryColumns(frame, system, timescalesDays), scales).logEvidence;
+    }),
+  );
 }
 
 function logEvidenceOf(scans: readonly GapScan[]): number {
@@ -173,24 +184,23 @@ export function timescaleRange({ arrivals }: Pick<EventFrame, 'arrivals'>, gap: 
   return { lowDays, highDays: Math.max(Math.min(LONGEST_DAYS, LONGEST_OF_SPAN * span), 4 * lowDays) };
 }
 
-/** The heaviest points, which together hold nearly all of the posterior. */
+/**
+ * A few places stand for all: those that hold a share of their own, and of the others every so many, each for those it was
+ * taken from (systematic resampling, Kitagawa 1996, J. Comput. Graph. Stat. 5, 1; without chance, so that it can be repeated).
+ */
 function pointsOf(scans: readonly GapScan[], logPrior: number): GlitchPoint[] {
   const total = logEvidenceOf(scans);
-  const all: { cell: TimescaleCell<Explored>; spot: Spot; share: number }[] = [];
-  for (const cell of scans.flatMap(({ cells }) => cells)) {
-    for (const spot of cell.value.posterior.spots) {
-      const share = Math.exp(spot.logMass + cell.logWeight - total);
-      if (share > LEAST_SHARE) all.push({ cell, spot, share });
+  const points: GlitchPoint[] = [];
+  let passed = 0.5;
+  for (const { value, logWeight } of scans.flatMap(({ cells }) => cells)) {
+    for (const spot of value.posterior.spots) {
+      const count = MOST_POINTS * Math.exp(spot.logMass + logWeight - total);
+      passed += Math.min(1, count);
+      if (passed < 1) continue;
+      passed -= 1;
+      const logMass = total + Math.log(Math.max(1, count) / MOST_POINTS) + logPrior;
+      points.push(...pointsAt(value.posterior, spot, value.scales, logMass));
     }
   }
-  all.sort((a, b) => b.share - a.share);
-  let left = 1 - LEFT_OUT;
-  const count = all.findIndex(({ share }) => {
-    left -= share;
-    return left < 0;
-  });
-  const kept = count < 0 ? all : all.slice(0, count + 1);
-  return kept.map(({ cell: { value, logWeight }, spot }) =>
-    pointAt(value.posterior, spot, value.scales, logWeight + logPrior),
-  );
+  return points;
 }

@@ -1,13 +1,13 @@
 import { logAddExp } from '../math/logSumExp.ts';
-import { type ConditionalSizes, createSizes, type Gaussian, joinedSizes, logDensityAt } from './conditionalSizes.ts';
+import { type ConditionalSizes, createSizes, type Gaussian, logDensityAt, rungSizes } from './conditionalSizes.ts';
 import { backwardCurve, epochGrids } from './epochGrid.ts';
 import type { EventFrame } from './eventFrame.ts';
 import type { GapSystem, RecoveryColumns } from './gapSystem.ts';
 import { type SizeScale, widestOf } from './sizePrior.ts';
 
 /**
- * One point of the posterior: an epoch, timescales and a shift of the count, with the exact Gaussian of the sizes
- * (Δν_p, Δν̇_p, Δν₁, … in turns and days) given these.
+ * One point of the posterior: an epoch, timescales, a shift of the count and a rung of the size prior, with the exact
+ * Gaussian of the sizes (Δν_p, Δν̇_p, Δν₁, … in turns and days) given these.
  */
 export interface GlitchPoint extends Gaussian {
   readonly epochDays: number;
@@ -20,8 +20,9 @@ export interface GlitchPoint extends Gaussian {
   readonly logDensity: number;
 }
 
-/** Spots lighter than e⁻⁹ of the heaviest change nothing that is reported. */
+/** Spots lighter than e⁻⁹ of the heaviest change nothing that is reported, nor do rungs that hold less than e⁻⁶ of a spot. */
 const NEGLIGIBLE = 9;
+const LEAST_RUNG = -6;
 
 /** A place in the gap, before its sizes are worked out. */
 export interface Spot {
@@ -75,20 +76,25 @@ export function explore(
   return { system, recovery, sizes, spots, logEvidence, rungs: rungs.map((mass) => mass - heaviest) };
 }
 
-/** The point at one spot, with its sizes. `logWeight`: ln of the prior mass of these timescales. */
-export function pointAt(
+/** The points at one spot, one for each rung that counts. `logMass`: ln of the posterior mass that they share. */
+export function pointsAt(
   { system, recovery, sizes }: EpochPosterior,
-  { lead, countShift, logMass }: Spot,
+  { lead, countShift }: Spot,
   scales: readonly SizeScale[],
-  logWeight: number,
-): GlitchPoint {
+  logMass: number,
+): GlitchPoint[] {
   const logDensity = logDensityAt(system, recovery, lead, countShift, scales, sizes);
-  return {
-    epochDays: system.gap.endDays - lead,
-    timescalesDays: recovery.timescalesDays,
-    countShift,
-    logMass: logMass + logWeight,
-    logDensity,
-    ...joinedSizes(sizes, scales, logDensity),
-  };
+  const logShares = sizes.logShares.map((ofRung) => ofRung - logDensity);
+  return scales.flatMap((scale, k) =>
+    logShares[k]! < LEAST_RUNG
+      ? []
+      : {
+          epochDays: system.gap.endDays - lead,
+          timescalesDays: recovery.timescalesDays,
+          countShift,
+          logMass: logMass + logShares[k]!,
+          logDensity: logDensity + logShares[k]!,
+          ...rungSizes(sizes, scale),
+        },
+  );
 }

@@ -11,7 +11,7 @@ export const HZ_PER_S = HZ / SECONDS_PER_DAY;
 
 /**
  * An exponential of at most so many days that runs against the step, by so many standard deviations, is a part of the step
- * that arrives late: delayed rises took hours to two days (from memory: the Crab pulsar's of 1989, 1996 and 2017).
+ * that arrives late: delayed rises took hours to two days (from memory: those of PSR B0531+21 in 1989, 1996 and 2017).
  */
 const LONGEST_RISE_DAYS = 10;
 const SURE_OF_SIGN = 2;

@@ -25,7 +25,7 @@ export interface TimescaleRange {
 
 /** By number of timescales: cells along each axis at first, and cells evaluated at most. */
 const FIRST_CELLS = [1, 14, 8, 6] as const;
-const MOST_EVALUATIONS = [1, 120, 280, 420] as const;
+const MOST_EVALUATIONS = [1, 300, 900, 1200] as const;
 /** Halvings at most: the last cells are far narrower than any timescale is ever known. */
 const MOST_LEVELS = 24;
 /** Cells within so many nats of the highest are looked at; those within the second number must be smooth themselves. */

@@ -3,7 +3,7 @@
  * moved in no way is passed over at the cost of a few additions; the others are weighed.
  */
 
-import { type CommonStep, commonStep, type Witness } from './commonStep.ts';
+import { type CommonStep, commonStep, fitGain, type Witness } from './commonStep.ts';
 import { type GapEvidence, HORIZON_DAYS, type PhaseStep } from './gapEvidence.ts';
 
 /** A gap of the site that may hold a step of its clock. */
@@ -14,8 +14,19 @@ export interface Candidate {
   readonly logOdds: number;
   readonly logBayesFactor: number;
   readonly step: CommonStep;
+  /** ln of how well the phases fit with the step, times its chance: by it the gaps near each other are told apart. */
+  readonly logWeight: number;
   readonly evidence: readonly GapEvidence[];
   readonly phaseOf: (gap: GapEvidence) => PhaseStep;
+}
+
+/** A gap of the clock, not yet weighed. */
+export interface Gap {
+  readonly afterMjd: number;
+  readonly beforeMjd: number;
+  readonly isOnGrid: boolean;
+  /** Null: nothing moved in it. */
+  readonly weigh: (() => Candidate) | null;
 }
 
 /**
@@ -39,78 +50,146 @@ const QUICK_NATS = 4;
 const STRANGE_PULSARS = 2;
 const STRANGE_SHARE = 0.25;
 
-export function witnessOf({ pulsar, afterMjd, beforeMjd }: GapEvidence, phase: PhaseStep): Witness {
-  return { frequencyHz: pulsar.frequencyHz, gapDays: beforeMjd - afterMjd, ...phase };
+export function witnessOf({ frequencyHz, afterMjd, beforeMjd }: GapEvidence, phase: PhaseStep): Witness {
+  return { frequencyHz, gapDays: beforeMjd - afterMjd, ...phase };
 }
 
+/** The gaps between the sessions of one clock as its pulsars show them, handed out in order of time. */
+export interface GapSource {
+  /** From the session on with which the look begins, oldest first, MJD. */
+  readonly sessionsMjd: readonly number[];
+  /** Of all pulsars: those that end after one moment and not after another, MJD. */
+  readonly gaps: (fromMjd: number, toMjd: number) => readonly GapEvidence[];
+  /** `afterMjd` of the steps of this clock that are known. */
+  readonly known: ReadonlySet<number>;
+}
+
+/** Evidence is asked for so many days at a time. */
+const PORTION_DAYS = 32;
+
 /**
- * The gaps after `fromMjd` that may hold a step, in order of time, each weighed when it is asked for.
- * @param gaps of all pulsars of one clock
- * @param sessionsMjd of that clock, oldest first
+ * In a night of many sessions not every gap is weighed at once: the first that crosses a point of this grid stands for those around it,
+ * days.
  */
-export function* candidates(
-  gaps: readonly GapEvidence[],
-  sessionsMjd: readonly number[],
-  fromMjd: number,
-): Generator<Candidate> {
-  const hearings = HEARINGS.map(({ days, phaseOf }) => ({ phaseOf, ...sweepOf(gaps, days, phaseOf) }));
+export const GRID_DAYS = 1 / 16;
+
+/** Every gap in order of time. */
+export function* candidates({ sessionsMjd, gaps, known }: GapSource): Generator<Gap> {
+  const hearings = HEARINGS.map(({ days, phaseOf }) => ({ phaseOf, sweep: new Sweep(days, phaseOf) }));
+  let askedUntilMjd = sessionsMjd[0] ?? 0;
   for (let i = 1; i < sessionsMjd.length; i++) {
     const [afterMjd, beforeMjd] = [sessionsMjd[i - 1]!, sessionsMjd[i]!];
-    if (afterMjd < fromMjd) continue;
-    const heard = hearings.flatMap((hearing) => {
-      const evidence = hearing.advanceTo(beforeMjd);
-      if (evidence === null) return [];
-      const step = commonStep(evidence.map((gap) => witnessOf(gap, hearing.phaseOf(gap))));
-      return [{ evidence, step, phaseOf: hearing.phaseOf }];
-    });
-    if (heard.length === 0) continue;
-    const best = heard.reduce((a, b) => (b.step.logBayesFactor > a.step.logBayesFactor ? b : a));
-    const { logBayesFactor } = best.step;
-    const chance = (CLOCK_STEPS_PER_YEAR * (beforeMjd - afterMjd)) / DAYS_PER_YEAR;
-    const logOdds = logBayesFactor - Math.log(HEARINGS.length) + Math.log(chance);
-    yield { afterMjd, beforeMjd, logOdds, logBayesFactor, ...best };
+    if (beforeMjd + HORIZON_DAYS > askedUntilMjd) {
+      const portion = gaps(askedUntilMjd, beforeMjd + HORIZON_DAYS + PORTION_DAYS);
+      for (const { sweep } of hearings) sweep.add(portion);
+      askedUntilMjd = beforeMjd + HORIZON_DAYS + PORTION_DAYS;
+    }
+    const heard: Heard[] = [];
+    for (const { phaseOf, sweep } of hearings) {
+      const evidence = sweep.at(beforeMjd);
+      const last = heard.at(-1);
+      if (evidence !== null && !(last?.phaseOf === phaseOf && isSameList(last.evidence, evidence)))
+        heard.push({ evidence, phaseOf });
+    }
+    const isKnown = known.has(afterMjd);
+    const isOnGrid = isKnown || Math.floor(beforeMjd / GRID_DAYS) !== Math.floor(afterMjd / GRID_DAYS);
+    const weigh = heard.length === 0 ? null : () => weighed(heard, { afterMjd, beforeMjd, isKnown });
+    yield { afterMjd, beforeMjd, isOnGrid, weigh };
   }
 }
 
-/** The pulsars that speak of the moment, kept up to date as it moves on. */
-function sweepOf(gaps: readonly GapEvidence[], days: number, phaseOf: (gap: GapEvidence) => PhaseStep) {
-  const begins = gaps
-    .map((gap) => ({ gap, mjd: Math.max(gap.afterMjd, gap.beforeMjd - days) }))
-    .sort((a, b) => a.mjd - b.mjd);
-  const ends = [...gaps].sort((a, b) => a.beforeMjd - b.beforeMjd);
-  const active = new Set<GapEvidence>();
-  const sum = { information: 0, pull: 0, strange: 0 };
-  const add = (gap: GapEvidence, sign: number) => {
-    const { turns, variance } = phaseOf(gap);
-    const { frequencyHz: nu } = gap.pulsar;
-    if (turns * turns > STRANGE_SIGMAS ** 2 * variance) sum.strange += sign;
-    else {
-      sum.information += (sign * nu * nu) / variance;
-      sum.pull += (sign * nu * turns) / variance;
-    }
-  };
-  let begun = 0;
-  let ended = 0;
-  return {
-    /** To the last moment before a session. Null: nothing there that is worth weighing. */
-    advanceTo(mjd: number): GapEvidence[] | null {
-      for (; begun < begins.length && begins[begun]!.mjd < mjd; begun++) {
-        active.add(begins[begun]!.gap);
-        add(begins[begun]!.gap, 1);
-      }
-      for (; ended < ends.length && ends[ended]!.beforeMjd < mjd; ended++) {
-        active.delete(ends[ended]!);
-        add(ends[ended]!, -1);
-      }
-      return active.size >= 2 && isNoteworthy(sum, active.size) ? [...active] : null;
-    },
-  };
+type Heard = Pick<Candidate, 'evidence' | 'phaseOf'>;
+
+function weighed(
+  heard: readonly Heard[],
+  { isKnown, ...gap }: { readonly afterMjd: number; readonly beforeMjd: number; readonly isKnown: boolean },
+): Candidate {
+  const [best] = heard
+    .map(({ evidence, phaseOf }) => {
+      const witnesses = evidence.map((one) => witnessOf(one, phaseOf(one)));
+      return { evidence, phaseOf, witnesses, step: commonStep(witnesses) };
+    })
+    .sort((a, b) => b.step.logBayesFactor - a.step.logBayesFactor);
+  const { witnesses, ...what } = best!;
+  const { logBayesFactor, stepS } = what.step;
+  // A step that is known needs no chance to happen: what is left of it in its gap is an error of its size.
+  const chance = isKnown ? 1 : Math.min(1, (CLOCK_STEPS_PER_YEAR * (gap.beforeMjd - gap.afterMjd)) / DAYS_PER_YEAR);
+  const logOdds = logBayesFactor - Math.log(HEARINGS.length) + Math.log(chance);
+  const logWeight = fitGain(witnesses, stepS) + Math.log(chance);
+  return { ...gap, ...what, logOdds, logBayesFactor, logWeight };
 }
 
-function isNoteworthy(sum: { information: number; pull: number; strange: number }, pulsars: number): boolean {
-  if (sum.strange >= STRANGE_PULSARS && sum.strange >= STRANGE_SHARE * pulsars) return true;
+function isSameList(a: readonly GapEvidence[], b: readonly GapEvidence[]): boolean {
+  return a.length === b.length && a.every((gap, i) => gap === b[i]);
+}
+
+interface Spoken {
+  readonly gap: GapEvidence;
+  /** It speaks of moments after this one, MJD. */
+  readonly fromMjd: number;
+  readonly isStrange: boolean;
+  readonly information: number;
+  readonly pull: number;
+}
+
+/** The pulsars that speak of a moment which only moves on. */
+class Sweep {
+  readonly #days: number;
+  readonly #phaseOf: (gap: GapEvidence) => PhaseStep;
+  /** Last come first. */
+  #waiting: Spoken[] = [];
+  readonly #active: Spoken[] = [];
+
+  constructor(days: number, phaseOf: (gap: GapEvidence) => PhaseStep) {
+    this.#days = days;
+    this.#phaseOf = phaseOf;
+  }
+
+  add(gaps: readonly GapEvidence[]): void {
+    const more = gaps.map((gap) => spoken(gap, this.#days, this.#phaseOf(gap)));
+    this.#waiting = [...this.#waiting, ...more].sort(lastFirst);
+  }
+
+  /** Null: they say nothing that is worth weighing. */
+  at(mjd: number): GapEvidence[] | null {
+    const active = this.#active;
+    let kept = 0;
+    for (const one of active) if (one.gap.beforeMjd >= mjd) active[kept++] = one;
+    active.length = kept;
+    for (let next = this.#waiting.at(-1); next !== undefined && next.fromMjd < mjd; next = this.#waiting.at(-1)) {
+      this.#waiting.pop();
+      if (next.gap.beforeMjd >= mjd) active.push(next);
+    }
+    return active.length >= 2 && isNoteworthy(active) ? active.map(({ gap }) => gap) : null;
+  }
+}
+
+/** The order in which they are heard is always the same one. */
+function lastFirst(a: Spoken, b: Spoken): number {
+  return b.fromMjd - a.fromMjd || (a.gap.pulsar < b.gap.pulsar ? 1 : -1);
+}
+
+function spoken(gap: GapEvidence, days: number, { turns, variance }: PhaseStep): Spoken {
+  const nu = gap.frequencyHz;
+  const fromMjd = Math.max(gap.afterMjd, gap.beforeMjd - days);
+  const isStrange = turns * turns > STRANGE_SIGMAS ** 2 * variance;
+  return { gap, fromMjd, isStrange, information: (nu * nu) / variance, pull: (nu * turns) / variance };
+}
+
+function isNoteworthy(active: readonly Spoken[]): boolean {
+  let strange = 0;
+  let information = 0;
+  let pull = 0;
+  for (const one of active) {
+    if (one.isStrange) strange++;
+    else {
+      information += one.information;
+      pull += one.pull;
+    }
+  }
+  if (strange >= STRANGE_PULSARS && strange >= STRANGE_SHARE * active.length) return true;
   return QUICK_SIZES_S.some((sigma) => {
-    const gain = (0.5 * sum.pull ** 2) / (sum.information + 1 / sigma ** 2);
-    return gain - 0.5 * Math.log1p(Math.max(0, sum.information) * sigma ** 2) > QUICK_NATS;
+    const gain = (0.5 * pull ** 2) / (information + 1 / sigma ** 2);
+    return gain - 0.5 * Math.log1p(information * sigma ** 2) > QUICK_NATS;
   });
 }

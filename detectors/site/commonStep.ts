@@ -46,6 +46,8 @@ const WIDEST_SPREAD_TURNS = 0.3;
 const FLOOR_NATS = 20;
 const MOST_PARTS = 3000;
 const REACH_SIGMAS = 6;
+/** One pulsar alone does not say where the step was. */
+const MOST_MISFIT_NATS = 200;
 /** Parts whose means differ by less than this are one. */
 const ALIKE_SIGMAS = 0.3;
 
@@ -78,6 +80,21 @@ export function testimony(
     logRatio: withStep - logDensity(witness, 0, 0),
     agrees: Math.exp(Math.log(sharesOf(witness).plain * wrappedNormal(witness.turns - turns, variance)) - withStep),
   };
+}
+
+/**
+ * By how much better the step fits the phases than none does, as normal errors have it, nats. It does not level off where everybody is sure,
+ * and so it tells the gap that holds the step from those beside it, which show a part of it.
+ */
+export function fitGain(witnesses: readonly Witness[], stepS: number): number {
+  let gain = 0;
+  for (const { frequencyHz, turns, variance } of witnesses)
+    gain += misfit(turns, variance) - misfit(turns - stepS * frequencyHz, variance);
+  return gain;
+}
+
+function misfit(turns: number, variance: number): number {
+  return Math.min(MOST_MISFIT_NATS, (0.5 * (turns - Math.round(turns)) ** 2) / variance);
 }
 
 /** Probabilities of: nothing of its own, a bad session, an event of its own. */

@@ -24,7 +24,8 @@ export interface PhaseStep {
 }
 
 export interface GapEvidence {
-  readonly pulsar: PulsarTimes;
+  readonly pulsar: string;
+  readonly frequencyHz: number;
   /** Sessions of the same clock before and after the gap, MJD at the site. */
   readonly afterMjd: number;
   readonly beforeMjd: number;
@@ -44,7 +45,7 @@ const REACQUIRE_SESSIONS = 4;
 const FREE = [10, 1, 1e-3] as const;
 const RECEIVER_OFFSET_TURNS = 0.3;
 
-interface OpenGap {
+export interface OpenGap {
   readonly session: Session;
   readonly afterMjd: number;
   readonly first: Omit<PhaseStep, 'lasts'>;
@@ -58,57 +59,71 @@ interface OpenGap {
   closed: boolean;
 }
 
+/** A pulsar on the way through its sessions, as one clock sees it. */
+export interface GapWalk {
+  readonly filter: WhiteningFilter;
+  readonly open: readonly OpenGap[];
+  readonly setAside: number;
+  /** The last session of the clock, MJD. */
+  readonly before: number | null;
+  /** Index of the next session. */
+  readonly next: number;
+}
+
+export function startWalk({ places }: PulsarTimes): GapWalk {
+  const offsets = places.slice(1).map(() => RECEIVER_OFFSET_TURNS);
+  return { filter: createWhiteningFilter([...FREE, ...offsets]), open: [], setAside: 0, before: null, next: 0 };
+}
+
+/** Goes on with a copy: the walk itself stays where it is. */
+export function copyOfWalk({ filter, open, ...rest }: GapWalk): GapWalk {
+  return {
+    ...rest,
+    filter: { ...filter, means: filter.means.slice(), factor: filter.factor.slice() },
+    open: open.map((gap) => ({ ...gap, response: gap.response.slice() })),
+  };
+}
+
 /**
+ * Past the next session. The walk given is used up.
  * @param isMember by place: whether the clock in question is the one there
- * @param lateTurns what earlier steps of the site did to a session
+ * @param lateTurns what earlier steps of the site did to that session
+ * @param found gaps that no later session can speak of
  */
-export function gapEvidence(
+export function walkOn(
+  walk: GapWalk,
   times: PulsarTimes,
-  isMember: readonly boolean[],
-  lateTurns: (session: Session) => number,
-): GapEvidence[] {
-  const { sessions } = times;
-  const filter = startFilter(times);
+  { isMember, lateTurns, found }: { isMember: readonly boolean[]; lateTurns: number; found: GapEvidence[] },
+): GapWalk {
+  const { filter, next } = walk;
+  let { setAside, before } = walk;
+  const session = times.sessions[next]!;
+  predict(filter, next === 0 ? 0 : Math.max(0, session.tDays - times.sessions[next - 1]!.tDays), times.walks);
   const row = new Float64Array(filter.size);
-  const value = new Float64Array(1);
-  const found: GapEvidence[] = [];
-  let open: OpenGap[] = [];
-  let setAside = 0;
-  let before: number | null = null;
-  for (let i = 0; i < sessions.length; i++) {
-    const session = sessions[i]!;
-    predict(filter, i === 0 ? 0 : Math.max(0, session.tDays - sessions[i - 1]!.tDays), times.walks);
-    row.fill(0);
-    row[0] = 1;
-    if (session.place > 0) row[SPIN_STATES - 1 + session.place] = 1;
-    const deviation = session.deviationTurns - lateTurns(session);
-    const seen: Seen = {
-      row,
-      member: isMember[session.place]!,
-      ...compared(filter, row, deviation, session.varianceTurns2),
-    };
-    open = stillOpen(open, session.siteMjd, found, times);
-    for (const gap of open) observeGap(gap, seen);
-    if (seen.member) {
-      // After a session that was set aside, nobody knows on which side of it the phase stepped.
-      if (before !== null && !seen.wide && setAside === 0) open.push(opened(session, before, seen));
-      before = session.siteMjd;
-    }
-    if (session.freed || setAside >= REACQUIRE_SESSIONS) {
-      // What the gap shows against the rotation before it is noted; then the rotation is followed anew.
-      setFree(filter);
-      Object.assign(seen, compared(filter, row, deviation, session.varianceTurns2));
-      for (const gap of open) gap.closed = true;
-    }
-    if (seen.used) {
-      value[0] = filter.expected[0]! + seen.innovation;
-      absorbArrival(filter, value, session.varianceTurns2);
-      for (const gap of open) respond(gap, filter, seen);
-      setAside = 0;
-    } else setAside++;
+  row[0] = 1;
+  if (session.place > 0) row[SPIN_STATES - 1 + session.place] = 1;
+  const deviation = session.deviationTurns - lateTurns;
+  const member = isMember[session.place]!;
+  let seen: Seen = { row, member, ...compared(filter, row, deviation, session.varianceTurns2) };
+  const open = stillOpen(walk.open, session.siteMjd, { found, times });
+  for (const gap of open) observeGap(gap, seen);
+  if (member) {
+    // After a session that was set aside, nobody knows on which side of it the phase stepped.
+    if (before !== null && !seen.wide && setAside === 0) open.push(opened(session, before, seen));
+    before = session.siteMjd;
   }
-  stillOpen(open, Number.POSITIVE_INFINITY, found, times);
-  return found;
+  if (session.freed || setAside >= REACQUIRE_SESSIONS) {
+    // What the gap shows against the rotation before it is noted; then the rotation is followed anew.
+    setFree(filter);
+    seen = { row, member, ...compared(filter, row, deviation, session.varianceTurns2) };
+    for (const gap of open) gap.closed = true;
+  }
+  if (seen.used) {
+    absorbArrival(filter, [filter.expected[0]! + seen.innovation], session.varianceTurns2);
+    for (const gap of open) respond(gap, filter, seen);
+    setAside = 0;
+  } else setAside++;
+  return { filter, open, setAside, before, next: next + 1 };
 }
 
 interface Seen {
@@ -119,11 +134,6 @@ interface Seen {
   readonly variance: number;
   readonly wide: boolean;
   readonly used: boolean;
-}
-
-function startFilter({ places }: PulsarTimes): WhiteningFilter {
-  const offsets = places.slice(1).map(() => RECEIVER_OFFSET_TURNS);
-  return createWhiteningFilter([...FREE, ...offsets]);
 }
 
 function setFree(filter: WhiteningFilter): void {
@@ -198,14 +208,23 @@ function respond(gap: OpenGap, { gain }: WhiteningFilter, seen: Seen): void {
 }
 
 /** Lets the gaps go that lie too far back, with what was found of them. */
-function stillOpen(open: OpenGap[], nowMjd: number, found: GapEvidence[], pulsar: PulsarTimes): OpenGap[] {
+function stillOpen(
+  open: readonly OpenGap[],
+  nowMjd: number,
+  { found, times }: { readonly found: GapEvidence[]; readonly times: PulsarTimes },
+): OpenGap[] {
   return open.filter((gap) => {
     if (nowMjd <= gap.session.siteMjd + HORIZON_DAYS) return true;
-    const { afterMjd, information, pull } = gap;
-    const isSeenAgain = gap.isSeenAgain === true;
-    const first = { ...gap.first, lasts: isSeenAgain };
-    const all = { turns: pull / information, variance: 1 / information, lasts: isSeenAgain || gap.heard > 1 };
-    found.push({ pulsar, afterMjd, beforeMjd: gap.session.siteMjd, first, all });
+    found.push(evidenceOf(gap, times));
     return false;
   });
+}
+
+/** What an open gap shows so far. */
+export function evidenceOf(gap: OpenGap, { pulsar, frequencyHz }: PulsarTimes): GapEvidence {
+  const { afterMjd, information, pull, session } = gap;
+  const isSeenAgain = gap.isSeenAgain === true;
+  const first = { ...gap.first, lasts: isSeenAgain };
+  const all = { turns: pull / information, variance: 1 / information, lasts: isSeenAgain || gap.heard > 1 };
+  return { pulsar, frequencyHz, afterMjd, beforeMjd: session.siteMjd, first, all };
 }

@@ -6,6 +6,7 @@
 
 import { arrivalVariance, type Walks } from '../filter/stateSpace.ts';
 import { bestOf, countedArrivals } from '../steps/counts.ts';
+import type { Hypothesis } from '../steps/hypothesis.ts';
 import type { PulsarWatch } from '../steps/pulsarWatch.ts';
 import { dispersionWeight } from '../steps/timeline.ts';
 import { siteMjdOf } from './siteStep.ts';
@@ -47,11 +48,17 @@ export function pulsarTimes(watch: PulsarWatch): PulsarTimes {
   };
 }
 
+/** A state to within half its uncertainty: so that a new arrival that moves its last digit leaves the sessions of before as they were. */
+function settled({ mean, cov }: Hypothesis, state: number): number {
+  const unit = 2 ** (Math.floor(Math.log2(Math.sqrt(cov[state * mean.length + state]!))) - 1);
+  return unit > 0 && Number.isFinite(unit) ? Math.round(mean[state]! / unit) * unit : mean[state]!;
+}
+
 function sessionsOf(watch: PulsarWatch): Session[] {
   const { line, noise, states, tracks } = watch;
   const best = bestOf(watch);
   const counted = countedArrivals(watch, best);
-  const dispersion = states.dispersion === null ? 0 : best.mean[states.dispersion]!;
+  const dispersion = states.dispersion === null ? 0 : settled(best, states.dispersion);
   const own = new Set(tracks.filter((t) => t.state === 'confirmed' && t.kind !== 'clock step').map((t) => t.bestGap));
   const sessions: Session[] = [];
   const open = new Map<number, number[]>();

@@ -1,8 +1,8 @@
 /** A step of a site's clock as an event: its own, in place of what it would have looked like in each of the pulsars. */
 
 import type { Explanation, Interval, PulsarEvent } from '../steps/pulsarEvent.ts';
+import type { BelievedStep } from './belief.ts';
 import { CLOCK_STEPS_PER_YEAR } from './candidates.ts';
-import type { BelievedStep } from './siteClock.ts';
 
 /** A clock that is back within so long was off for one night. */
 const ONE_NIGHT_DAYS = 1.5;

@@ -6,7 +6,7 @@ import type { TimedArrival } from '../arrival.ts';
 import { newBank } from './bank.ts';
 import { decide } from './decide.ts';
 import { withoutOffset } from './declaredOffsets.ts';
-import { searchLargeStep } from './largeStep.ts';
+import { endTrial, searchLargeStep } from './largeStep.ts';
 import { watchCount } from './lostCount.ts';
 import type { PulsarWatch } from './pulsarWatch.ts';
 import { reacquire } from './reacquire.ts';
@@ -40,5 +40,6 @@ function follow(watch: PulsarWatch, index: number): void {
   } else if (canLock(watch, index)) {
     watch.locked = true;
     watch.oldestGap = index + 1;
+    endTrial(watch);
   }
 }

@@ -4,7 +4,8 @@
  */
 
 import type { CountedArrival } from '../filter/countedArrival.ts';
-import { fitGlitch, type GlitchFit, type GlitchFitInput } from '../recovery/glitchFit.ts';
+import { logSumExp } from '../math/logSumExp.ts';
+import { fitGlitch, type GlitchFit, type GlitchFitInput, logEvidenceAt } from '../recovery/glitchFit.ts';
 
 export interface Alias {
   readonly deltaNuHz: number;
@@ -21,6 +22,8 @@ const HIGHEST = 1e-4;
 /** An order is worth a fit while the arrivals lie this close (turns, rms) to whole turns of it. */
 const CLOSE_TURNS = 0.2;
 const LEAST_PROBABILITY = 1e-3;
+/** By a first look with the recovery of the counts as given, a size less probable than this is not fitted in full. */
+const LEAST_AT_SIGHT = 3e-3;
 
 export interface SizedGlitch {
   /** Of the most probable size. */
@@ -31,26 +34,17 @@ export interface SizedGlitch {
   readonly aliases: readonly Alias[];
 }
 
-/** `bestGap`: index of the first arrival after the most probable gap; the other counts begin there. */
-export function aliasesOf(input: GlitchFitInput, bestGap: number): SizedGlitch {
-  const asCounted = { fit: fitGlitch(input), counted: input.arrivals };
-  const candidates = [asCounted];
-  // With one exponential at most: which size it is shows without the finer points of the recovery.
-  const mostTerms = Math.min(1, input.mostTerms ?? 1);
-  for (const order of ORDERS) {
-    const sized = asCounted.fit.deltaNuHz.mean + order / SIDEREAL_DAY_S;
-    if (sized < LOWEST * input.frequencyHz || sized > HIGHEST * input.frequencyHz) continue;
-    const counted = recounted(input, order, bestGap);
-    if (counted === null) continue;
-    const there = { firstGapBeforeIndex: bestGap, lastGapBeforeIndex: bestGap };
-    candidates.push({ fit: fitGlitch({ ...input, ...there, arrivals: counted }), counted });
-  }
-  const logEvidence = candidates.map(({ fit }) => fit.logEvidence);
-  const highest = Math.max(...logEvidence);
-  const weights = logEvidence.map((e) => Math.exp(e - highest));
-  const total = weights.reduce((a, b) => a + b, 0);
+/**
+ * `fit`: of the input with its counts as given. `bestGap`: index of the first arrival after the most probable gap; the other
+ * counts begin there.
+ */
+export function aliasesOf(input: GlitchFitInput, fit: GlitchFit, bestGap: number): SizedGlitch {
+  const candidates = [{ fit, counted: input.arrivals }];
+  for (const counted of otherCounts(input, fit, bestGap))
+    candidates.push({ fit: fitGlitch(counted), counted: counted.arrivals });
+  const probabilities = shares(candidates.map(({ fit: { logEvidence } }) => logEvidence));
   const ranked = candidates
-    .map(({ fit, counted }, i) => ({ fit, counted, probability: weights[i]! / total }))
+    .map((candidate, i) => ({ ...candidate, probability: probabilities[i]! }))
     .sort((a, b) => b.probability - a.probability);
   const alive = ranked.filter((r) => r.probability > LEAST_PROBABILITY);
   return {
@@ -59,6 +53,26 @@ export function aliasesOf(input: GlitchFitInput, bestGap: number): SizedGlitch {
     aliases:
       alive.length < 2 ? [] : alive.map(({ fit, probability }) => ({ deltaNuHz: fit.deltaNuHz.mean, probability })),
   };
+}
+
+/** The other counts worth a fit in full. */
+function otherCounts(input: GlitchFitInput, fit: GlitchFit, bestGap: number): GlitchFitInput[] {
+  const possible: GlitchFitInput[] = [];
+  for (const order of ORDERS) {
+    const sized = fit.deltaNuHz.mean + order / SIDEREAL_DAY_S;
+    if (sized < LOWEST * input.frequencyHz || sized > HIGHEST * input.frequencyHz) continue;
+    const arrivals = recounted(input, order, bestGap);
+    if (arrivals === null) continue;
+    possible.push({ ...input, firstGapBeforeIndex: bestGap, lastGapBeforeIndex: bestGap, arrivals });
+  }
+  if (possible.length === 0) return [];
+  const atSight = shares([input, ...possible].map((one) => logEvidenceAt(one, fit.bestTimescalesDays)));
+  return possible.filter((_, i) => atSight[i + 1]! > LEAST_AT_SIGHT);
+}
+
+function shares(logEvidence: readonly number[]): number[] {
+  const total = logSumExp(logEvidence);
+  return logEvidence.map((e) => Math.exp(e - total));
 }
 
 /** The counts after the event for `order` more turns a sidereal day; null when the arrivals rule that out at sight. */

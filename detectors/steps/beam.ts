@@ -210,7 +210,7 @@ function byWeight(a: { readonly logWeight: number }, b: { readonly logWeight: nu
   return b.logWeight - a.logWeight;
 }
 
-/** The same events, and states that no further arrival will tell apart. */
+/** The same events, and states that no further arrival will tell apart: whole turns between them are seen by none. */
 function alike(a: Hypothesis, b: Hypothesis): boolean {
   if (a.lastSetAside !== b.lastSetAside || a.tracks.length !== b.tracks.length) return false;
   for (let i = 0; i < a.tracks.length; i++) if (a.tracks[i] !== b.tracks[i]) return false;
@@ -219,7 +219,9 @@ function alike(a: Hypothesis, b: Hypothesis): boolean {
     const va = a.cov[i * size + i]!;
     const vb = b.cov[i * size + i]!;
     if (va > 1.2 * vb || vb > 1.2 * va) return false;
-    if ((a.mean[i]! - b.mean[i]!) ** 2 > 0.01 * Math.min(va, vb)) return false;
+    const apart = a.mean[i]! - b.mean[i]!;
+    const turns = i === 0 && a.numbering === null && b.numbering === null ? Math.round(apart) : 0;
+    if ((apart - turns) ** 2 > 0.01 * Math.min(va, vb)) return false;
   }
   return true;
 }

@@ -31,10 +31,14 @@ export function countedArrivals(watch: PulsarWatch, h: Hypothesis): CountedArriv
 /** Natural-log odds from which a suspicion is kept out of the noise. */
 const WORTH_NAMING = 3;
 
-/** Events as free steps of their own, so that they are neither learned as noise nor found again. */
+/**
+ * Events as free steps of their own, so that they are neither learned as noise nor found again. `except` and its parts are
+ * not: but each switch between two spin-down rates stands for itself.
+ */
 export function disturbances(watch: PulsarWatch, except?: Track): Disturbance[] {
+  const isOf = (t: Track) => t.number === except?.number || (except?.modes === null && t.partOf === except.number);
   return watch.tracks
-    .filter((t) => except === undefined || (t.number !== except.number && t.partOf !== except.number))
+    .filter((t) => !isOf(t))
     .filter((t) => t.state === 'confirmed' || (t.state === 'suspected' && t.logOdds > WORTH_NAMING))
     .flatMap((t) => freed(watch, t).map((what) => ({ beforeIndex: t.bestGap, ...what })));
 }

@@ -1,23 +1,21 @@
 /** From weights to states: suspected at a low threshold, confirmed at the budget's, withdrawn when the evidence goes. */
 
-import { logAddExp } from '../math/logSumExp.ts';
+import { logAddExp, logRatio } from '../math/logSumExp.ts';
 import { requiredLogOdds } from '../nulls/ownNull.ts';
-import { mjdNumber } from '../time/mjd.ts';
 import { collapse } from './bank.ts';
-import { explanationsOf, sessionsUsed, spreadOf, weigh } from './evidence.ts';
+import { explanationsOf, isExplained, sessionsUsed, spreadOf, weigh } from './evidence.ts';
 import type { Hypothesis } from './hypothesis.ts';
-import { jointOdds } from './jointOdds.ts';
-import { judgeSwitching, switchingRecord } from './modeSwitching.ts';
+import { isNoiseKnown, jointOdds } from './jointOdds.ts';
+import { seekSwitching, switchingRecord } from './modeSwitching.ts';
+import { newTrack } from './newTrack.ts';
 import type { PulsarWatch } from './pulsarWatch.ts';
 import { expectRecovery, FRESH_RECOVERY_SHARE, looseRecovery } from './recoveryStates.ts';
-import { followRecovery } from './relearn.ts';
+import { followRecovery, relearn } from './relearn.ts';
 import { reshape, shape } from './reshape.ts';
 import { logSignWeight } from './signPrior.ts';
 import { overlaps, type Track } from './track.ts';
 
-/** A confirmed event's explanation must hold at least this share against the other explanations. */
-export const EXPLANATION_SHARE = 0.99;
-const LEAST_SESSIONS = 2;
+export const LEAST_SESSIONS = 2;
 /** The second weighing goes through the whole record: a long one is not asked again at each arrival. */
 const ARRIVALS_PER_QUESTION = 400;
 /** Where noise is the better explanation, the arrivals since the gap must grow by this share before it is asked again. */
@@ -45,7 +43,7 @@ function reconsider(watch: PulsarWatch, track: Track): void {
     track.settled = true;
     return;
   }
-  track.logOdds = holding - denying;
+  track.logOdds = logRatio(holding, denying);
   if (track.logOdds < 0) track.state = 'withdrawn';
   else if (track.state === 'withdrawn' && track.logOdds > watch.settings.confirmLogOdds) track.state = 'confirmed';
   if (holding === -Infinity) track.settled = true;
@@ -55,7 +53,7 @@ function suspect(watch: PulsarWatch, index: number): void {
   const bank = watch.bank!;
   const evidence = weigh(bank);
   const open = watch.tracks.find((t) => t.state === 'suspected');
-  const odds = evidence.something - evidence.nothing;
+  const odds = logRatio(evidence.something, evidence.nothing);
   if (evidence.strongest === null || odds < watch.settings.suspectLogOdds) {
     if (open !== undefined) {
       open.logOdds = odds;
@@ -79,7 +77,7 @@ function suspect(watch: PulsarWatch, index: number): void {
   track.partOf = (kind === 'spin-down-rate change' ? switchingRecord(watch)?.number : null) ?? null;
   const weight = evidence.byKind.get(kind)!;
   const gained = weight - evidence.nothing;
-  if (gained + Math.LN2 < watch.settings.confirmLogOdds || weight < Math.log(EXPLANATION_SHARE)) return;
+  if (gained + Math.LN2 < watch.settings.confirmLogOdds || !isExplained(evidence, kind)) return;
   const families = bank.families.filter((f) => f.kind === kind);
   const bestFamily = families.find((f) => f.gap === spread.bestGap)!;
   const holder = bestFamily.beam.reduce((a, b) => (b.logWeight > a.logWeight ? b : a));
@@ -89,9 +87,11 @@ function suspect(watch: PulsarWatch, index: number): void {
   if (index < track.askAgainAt || (watch.largeStep === null && followRecovery(watch, index))) return;
   const sign = logSignWeight(watch, track);
   if (gained + sign < watch.settings.confirmLogOdds) return;
-  const joint = jointOdds(watch, track, holder) + sign;
-  const demands = { explanationShare: EXPLANATION_SHARE, sessions: LEAST_SESSIONS };
-  if (joint < requiredLogOdds(watch, Math.min(joint, gained + sign), demands)) {
+  const noiseKnown = isNoiseKnown(track);
+  const joint = (noiseKnown ? gained : jointOdds(watch, track, holder)) + sign;
+  const demands = { sessions: LEAST_SESSIONS, noiseKnown };
+  // Not a number either: what cannot be weighed is not confirmed.
+  if (!(joint >= requiredLogOdds(watch, Math.min(joint, gained + sign), demands))) {
     refuse(watch, track, index, joint);
     return;
   }
@@ -100,13 +100,13 @@ function suspect(watch: PulsarWatch, index: number): void {
   track.confirmedAt ??= index;
   if (watch.largeStep !== null && kind === 'glitch') watch.largeStep.track = track.number;
   believe(watch, track);
-  if (kind === 'spin-down-rate change') judgeSwitching(watch, track);
   watch.oldestGap = index + 1;
+  if (watch.largeStep === null && seekSwitching(watch, index)) relearn(watch, index);
 }
 
 /** Noise explains it as well: no longer suspected, unless more arrivals speak for it. */
 function refuse(watch: PulsarWatch, track: Track, index: number, joint: number): void {
-  track.logOdds = Math.min(track.logOdds, joint);
+  if (joint < track.logOdds) track.logOdds = joint;
   track.askAgainAt = index + 1 + Math.floor(index / ARRIVALS_PER_QUESTION);
   if (joint >= watch.settings.suspectLogOdds) return;
   track.state = 'withdrawn';
@@ -137,31 +137,4 @@ function reopened(watch: PulsarWatch, spread: Parameters<typeof overlaps>[1]): T
   return last !== undefined && last.state === 'withdrawn' && last.confirmedAt === null && overlaps(last, spread)
     ? last
     : undefined;
-}
-
-export function newTrack(watch: PulsarWatch, index: number): Track {
-  const day = Math.floor(mjdNumber(watch.line.seen[index]!.arrival.tdb));
-  const stem = `${watch.model.name.replace(/\s+/g, '')}-${day}`;
-  const same = watch.tracks.filter((t) => t.id === stem || t.id.startsWith(`${stem}.`)).length;
-  const track: Track = {
-    number: watch.tracks.length,
-    id: same === 0 ? stem : `${stem}.${same + 1}`,
-    kind: 'glitch',
-    state: 'suspected',
-    bestGap: index,
-    firstGap: index,
-    lastGap: index,
-    suspectedAt: index,
-    confirmedAt: null,
-    rateStep: 0,
-    askAgainAt: 0,
-    logOdds: 0,
-    explanations: {},
-    shapes: null,
-    modes: null,
-    partOf: null,
-    settled: false,
-  };
-  watch.tracks.push(track);
-  return track;
 }

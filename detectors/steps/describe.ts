@@ -12,6 +12,7 @@ import type { Track } from './track.ts';
 
 const DAYS_PER_YEAR = 365.25;
 const LOG_ODDS_SHOWN = 700;
+const LEAST_GAP_DAYS = 1e-6;
 
 /** Everything about an event that is not its size. */
 type Outline = Pick<
@@ -32,7 +33,8 @@ type Outline = Pick<
 export function describe(watch: PulsarWatch, track: Track, measured: Measurement | null): PulsarEvent {
   const { seen } = watch.line;
   const mjdOf = (index: number) => mjdNumber(seen[index]!.arrival.tdb);
-  const gapDays = seen[track.bestGap]!.tDays - seen[track.bestGap - 1]!.tDays;
+  // Two receivers may record one pulse at the same time.
+  const gapDays = Math.max(LEAST_GAP_DAYS, seen[track.bestGap]!.tDays - seen[track.bestGap - 1]!.tDays);
   const logOdds = Math.max(-LOG_ODDS_SHOWN, Math.min(LOG_ODDS_SHOWN, track.logOdds));
   const outline: Outline = {
     id: track.id,

@@ -30,6 +30,23 @@ export function weigh(bank: Bank): Evidence {
   return { nothing: logWeightOf(bank.beam), byKind, strongest, something };
 }
 
+/** A confirmed event's explanation must hold at least this share against what is not of the same nature. */
+export const EXPLANATION_SHARE = 0.99;
+/**
+ * Against the other change of the rotation. The start of a ramp and that of a parabola differ by little, and a candidate is
+ * vetted either way: to be sure which it is would cost half as many arrivals again.
+ */
+export const SHARE_OF_ROTATION = 0.9;
+const ROTATION: readonly Kind[] = ['glitch', 'spin-down-rate change'];
+
+/** One explanation has won. */
+export function isExplained({ byKind }: Evidence, kind: Kind): boolean {
+  const own = byKind.get(kind)!;
+  if (!ROTATION.includes(kind)) return own >= Math.log(EXPLANATION_SHARE);
+  const rotation = ROTATION.reduce((sum, other) => logAddExp(sum, byKind.get(other) ?? -Infinity), -Infinity);
+  return rotation >= Math.log(EXPLANATION_SHARE) && own - rotation >= Math.log(SHARE_OF_ROTATION);
+}
+
 /** The gaps that hold 95 % of the weight of a kind. */
 export function spreadOf(bank: Bank, kind: Kind): GapSpread {
   const gaps = bank.families
@@ -64,7 +81,7 @@ export function explanationsOf(
     masses[name] = (masses[name] ?? 0) + Math.exp(h.logWeight);
   }
   const total = Object.values(masses).reduce((sum, mass) => sum + mass, 0);
-  for (const name of Object.keys(masses)) masses[name] = masses[name]! / total;
+  for (const name of Object.keys(masses)) masses[name] = total > 0 ? masses[name]! / total : 0;
   return masses;
 }
 

@@ -2,6 +2,9 @@
  * Event or noise: both sides get the noise that suits them best. The bank weighs an event under noise learned before it; noise
  * that was learned too quiet would make event after event, and each, once believed, would hide the noise. So before an
  * event is confirmed the whole record is gone through twice: as noise alone, and as noise with the event.
+ *
+ * The wide prior on the noise lets one step pass for noise that was never seen before, however clear the step. Where a
+ * record has shown its noise before a glitch, what it has shown stands (with its margin, `filter/noiseMargin.ts`).
  */
 
 import { learnNoise, logNoisePrior } from '../filter/noiseLearning.ts';
@@ -17,6 +20,14 @@ import { looseRecovery, RECOVERY_SHARE } from './recoveryStates.ts';
 import { decisionsOf, retrace, takeIn } from './retrace.ts';
 import { foundStartRate, startBeam } from './start.ts';
 import type { Track } from './track.ts';
+
+/** Arrivals before an event that show what the noise is. */
+const TELLING_ARRIVALS = 60;
+
+/** Changes of ν̇ are what noise in the torque looks like, at whatever length of record. */
+export function isNoiseKnown({ kind, bestGap }: Pick<Track, 'kind' | 'bestGap'>): boolean {
+  return kind === 'glitch' && bestGap >= TELLING_ARRIVALS;
+}
 
 /**
  * Natural log of (this event and noise) against (noise alone), prior rates included. `h`: the heaviest hypothesis that holds

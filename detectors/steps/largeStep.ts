@@ -38,18 +38,24 @@ const WON_RUN = 10;
 const WON_FITS = 5;
 const WON_SHARE = 0.999;
 
-/** Of a run, so many may have been taken for good by chance. */
-const LEAST_SHARE_SET_ASIDE = 0.7;
+/**
+ * Natural log of how much likelier an arrival is set aside, or taken for good, within a run that fits nothing than outside one:
+ * outliers are 2 in 100, and 15 in 100 arrivals anywhere within a turn are taken for good by chance.
+ */
+const LOG_ODDS_SET_ASIDE = Math.log(0.85 / 0.02);
+const LOG_ODDS_USED = Math.log(0.15 / 0.98);
 const LONGEST_RUN = 40;
 
-/** Where the run of arrivals that the hypothesis cannot explain began: most since then were set aside. */
+/** Where the run of arrivals that the hypothesis cannot explain most probably began; after the last arrival if there is none. */
 export function runStart(h: Hypothesis, index: number): number {
   let start = index + 1;
-  let setAside = 0;
+  let odds = 0;
+  let highest = 0;
   for (let s = h.story; s !== null && index - s.index < LONGEST_RUN; s = s.before) {
-    if (s.used) continue;
-    setAside++;
-    if (setAside >= LEAST_SHARE_SET_ASIDE * (index + 1 - s.index)) start = s.index;
+    odds += s.used ? LOG_ODDS_USED : LOG_ODDS_SET_ASIDE;
+    if (odds <= highest) continue;
+    highest = odds;
+    start = s.index;
   }
   return start;
 }

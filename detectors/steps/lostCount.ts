@@ -7,12 +7,13 @@ import { logAddExp } from '../math/logSumExp.ts';
 import type { Snapshot } from './bank.ts';
 import { logWeightOf } from './beam.ts';
 import { bestOf } from './counts.ts';
-import { newTrack } from './decide.ts';
 import { explanationsOf, weigh } from './evidence.ts';
 import { copyOf, gapOf, type Hypothesis, propagate } from './hypothesis.ts';
 import { endTrial, runStart } from './largeStep.ts';
+import { newTrack } from './newTrack.ts';
 import type { PulsarWatch } from './pulsarWatch.ts';
 import { newLoss, searchAnew } from './reacquire.ts';
+import { predictAlike } from './start.ts';
 
 /** A gap after which counts may be in doubt: the arrivals since it must settle them. */
 export interface Doubt {
@@ -41,7 +42,8 @@ const SAME_LOSS_ARRIVALS = 30;
 export function watchCount(watch: PulsarWatch, index: number): void {
   const { seen } = watch.line;
   const run = runStart(bestOf(watch), index);
-  if (index + 1 - run >= LOST_RUN && sessionsFrom(watch, run, index) >= LOST_RUN_SESSIONS) {
+  // What the start model did not fit before the lock is settled.
+  if (run >= watch.oldestGap && index + 1 - run >= LOST_RUN && sessionsFrom(watch, run, index) >= LOST_RUN_SESSIONS) {
     lose(watch, doubtFrom(watch, run), index);
     return;
   }
@@ -93,7 +95,7 @@ function shareOfBestCount(watch: PulsarWatch): number {
   let total = -Infinity;
   const weighed = (h: Hypothesis) => {
     total = logAddExp(total, h.logWeight);
-    if (Math.abs(h.mean[0]! - best.mean[0]!) < 0.5) agreeing = logAddExp(agreeing, h.logWeight);
+    if (predictAlike(watch.bank!, h, best)) agreeing = logAddExp(agreeing, h.logWeight);
   };
   watch.bank!.beam.forEach(weighed);
   for (const family of watch.bank!.families) family.beam.forEach(weighed);
@@ -101,12 +103,18 @@ function shareOfBestCount(watch: PulsarWatch): number {
 }
 
 /** The count is gone: one record says so, events that rest on it are taken back, and the search begins. */
-function lose(watch: PulsarWatch, { from, before }: Doubt, index: number): void {
+function lose(watch: PulsarWatch, doubt: Doubt, index: number): void {
+  // A large step whose size was never settled: nothing since it is known.
+  const { from, before } =
+    watch.largeStep === null ? doubt : { from: watch.largeStep.start, before: watch.largeStep.before };
   const explanations = explained(watch, from);
   const open = watch.tracks.find((t) => t.state === 'suspected');
   const own = open !== undefined && open.lastGap >= from ? open : undefined;
   for (const track of watch.tracks) {
-    const isVoid = track !== own && track.kind !== 'lost count' && (track === open || (track.state === 'confirmed' && track.bestGap >= from));
+    const isVoid =
+      track !== own &&
+      track.kind !== 'lost count' &&
+      (track === open || (track.state === 'confirmed' && track.bestGap >= from));
     if (isVoid) Object.assign(track, { state: 'withdrawn', settled: true });
   }
   const track = own ?? newTrack(watch, index);

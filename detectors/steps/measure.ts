@@ -2,7 +2,7 @@
 
 import type { CountedArrival, Disturbance } from '../filter/countedArrival.ts';
 import type { OtherRecovery } from '../recovery/eventFrame.ts';
-import { fitGlitch, type GlitchFit } from '../recovery/glitchFit.ts';
+import { fitGlitch, type GlitchFit, type GlitchFitInput } from '../recovery/glitchFit.ts';
 import type { Estimate } from '../recovery/mixture.ts';
 import { fitRamp } from '../recovery/rampFit.ts';
 import { fitStep, type StepFit } from '../recovery/stepFit.ts';
@@ -19,6 +19,8 @@ import type { Shapes, Track } from './track.ts';
 /** The fit of one event; `arrivals` are those it rests on, with `first` the index of the first of them. */
 export interface Measurement {
   readonly glitch: GlitchFit | null;
+  /** What the fit of a glitch started from. */
+  readonly glitchInput?: GlitchFitInput;
   readonly step: StepFit | null;
   /** Of a slow spin-up. */
   readonly ramp?: { readonly deltaNuHz: Estimate; readonly durationDays: Estimate };
@@ -42,6 +44,8 @@ interface Basis {
 interface Kept {
   readonly basis: Basis;
   readonly measurement: Measurement | null;
+  /** With the other sizes weighed; undefined before that is asked for. */
+  weighed?: Measurement;
 }
 
 /** Measurements of one track: jointly with all events near it, or with the recoveries of the earlier ones alone. */
@@ -52,15 +56,33 @@ type Scope = 'joint' | 'earlier';
 const REACH = 200;
 /** The fit looks at no more candidate gaps than this on each side of the best. */
 const MOST_GAPS = 4;
-/** Exponentials looked for: a mere suspicion needs no more than a hint of a recovery. */
-const MOST_TERMS = { suspected: 1, confirmed: 3, withdrawn: 1 } as const;
+/** Exponentials looked for. */
+const MOST_TERMS = { suspected: 0, confirmed: 3, withdrawn: 0 } as const;
 
-/** The event fitted jointly with those near it: their steps free, and their recoveries too, at their own timescales. */
+/**
+ * The event fitted jointly with those near it: their steps free, and their recoveries too, at their own timescales. The counts
+ * are those that the detector follows.
+ */
 export function measure(watch: PulsarWatch, track: Track): Measurement | null {
-  return measured(watch, track, 'joint');
+  return measured(watch, track, 'joint').measurement;
 }
 
-function measured(watch: PulsarWatch, track: Track, scope: Scope): Measurement | null {
+/** The same for the record: of a confirmed glitch, the sizes that go with other counts are weighed too, and the best is taken. */
+export function measureForRecord(watch: PulsarWatch, track: Track): Measurement | null {
+  const kept = measured(watch, track, 'joint');
+  const { measurement } = kept;
+  // Numbered pulses leave no other counts to try.
+  const numbered = watch.line.seen[track.bestGap]!.arrival.pulseNumber !== null;
+  if (track.state !== 'confirmed' || measurement?.glitchInput === undefined || numbered) return measurement;
+  const { glitch, glitchInput, first } = measurement;
+  if (kept.weighed === undefined) {
+    const { fit, counted, aliases } = aliasesOf(glitchInput, glitch!, track.bestGap - first);
+    kept.weighed = { ...measurement, ...asGlitch(fit), aliases, arrivals: counted };
+  }
+  return kept.weighed;
+}
+
+function measured(watch: PulsarWatch, track: Track, scope: Scope): Kept {
   const h = holderOf(watch, track);
   const from = Math.max(0, track.bestGap - REACH);
   const until = Math.min(watch.line.seen.length, track.bestGap + REACH);
@@ -82,13 +104,13 @@ function measured(watch: PulsarWatch, track: Track, scope: Scope): Measurement |
   // Without later recoveries both scopes are one and the same fit.
   for (const known of [all.joint, all.earlier]) {
     const basis = known?.basis;
-    if (basis?.noise === watch.noise && basis.arrivals === until && basis.marks === marks) return known!.measurement;
+    if (basis?.noise === watch.noise && basis.arrivals === until && basis.marks === marks) return known!;
   }
   const arrivals = countedArrivals(watch, h).slice(from, until);
   const measurement = fitted(watch, track, arrivals, from, others);
-  const basis = { noise: watch.noise, arrivals: until, marks };
-  watch.measured.set(track.number, { ...all, [scope]: { basis, measurement } });
-  return measurement;
+  const kept = { basis: { noise: watch.noise, arrivals: until, marks }, measurement };
+  watch.measured.set(track.number, { ...all, [scope]: kept });
+  return kept;
 }
 
 interface Others {
@@ -102,7 +124,7 @@ function otherRecoveries(watch: PulsarWatch, track: Track, scope: Scope): OtherR
     .filter((t) => t !== track && t.state === 'confirmed' && t.kind === 'glitch' && t.partOf === null)
     .filter((t) => Math.abs(t.bestGap - track.bestGap) < REACH && (scope === 'joint' || t.bestGap < track.bestGap))
     .flatMap((t) => {
-      const terms = measured(watch, t, 'earlier')?.glitch?.recovery?.terms ?? [];
+      const terms = measured(watch, t, 'earlier').measurement?.glitch?.recovery?.terms ?? [];
       return terms.map((term) => ({ beforeIndex: t.bestGap, timescaleDays: term.timescaleDays.median }));
     });
 }
@@ -143,21 +165,7 @@ function fitted(
   if (!arrivals.slice(input.lastGapBeforeIndex).some(used)) return null;
   if (track.shapes !== null && isSlow(track)) return asRamp(input, from, track.shapes);
   if (track.kind === 'glitch') {
-    // Numbered pulses leave no other counts to try.
-    const numbered = watch.line.seen[track.bestGap]!.arrival.pulseNumber !== null;
-    const { fit, counted, aliases } = numbered
-      ? { fit: fitGlitch(input), counted: arrivals, aliases: [] }
-      : aliasesOf(input, track.bestGap - from);
-    return {
-      glitch: fit,
-      step: null,
-      epochDays: fit.epochDays,
-      aliases,
-      arrivals: counted,
-      first: from,
-      curve: (a) => fit.curve(a.tDays),
-      frequencyCurve: fit.frequencyCurve,
-    };
+    return { ...asGlitch(fitGlitch(input)), glitchInput: input, aliases: [], arrivals, first: from };
   }
   const kinds = {
     'clock step': 'time',
@@ -177,6 +185,16 @@ function fitted(
     first: from,
     curve: step.curve,
     frequencyCurve: (t) => (t > epoch ? rate * (t - epoch) : 0),
+  };
+}
+
+function asGlitch(fit: GlitchFit) {
+  return {
+    glitch: fit,
+    step: null,
+    epochDays: fit.epochDays,
+    curve: (a: Pick<CountedArrival, 'tDays'>) => fit.curve(a.tDays),
+    frequencyCurve: fit.frequencyCurve,
   };
 }
 

@@ -1,11 +1,21 @@
 /**
- * Some pulsars switch between two spin-down rates (Lyne et al. 2010, Science 329, 408). A change of the rate that goes back to
- * where an earlier one came from, again and again, is that: said once, and later switches are expected.
+ * Some pulsars switch between two spin-down rates (Lyne et al. 2010, Science 329, 408). One switch looks like torque noise,
+ * and several look like several events: only the whole chain tells. So each time the noise is learned, a pulsar that
+ * wanders is gone through again as one that switches; if that explains the record better, it is said once, and the switches
+ * before and after are parts of that event.
  */
 
-import type { Estimate } from '../recovery/mixture.ts';
-import { measure } from './measure.ts';
-import type { PulsarWatch } from './pulsarWatch.ts';
+import type { CountedArrival } from '../filter/countedArrival.ts';
+import { learnNoise, logNoisePrior } from '../filter/noiseLearning.ts';
+import type { NoisePrior } from '../filter/noisePrior.ts';
+import type { NoiseModel } from '../report.ts';
+import { RATE_PER_YEAR } from './births.ts';
+import { bestOf, countedArrivals, disturbances } from './counts.ts';
+import { newTrack } from './newTrack.ts';
+import { asFixed, type PulsarWatch } from './pulsarWatch.ts';
+import { decisionsOf } from './retrace.ts';
+import { foundStartRate } from './start.ts';
+import { type Past, type SwitchChain, steadyEvidence, switchChain } from './switchChain.ts';
 import type { Track } from './track.ts';
 
 /** What is known of a switching pulsar. */
@@ -19,59 +29,167 @@ export interface Modes {
 
 /** Share of pulsars that switch (common practice, no source). */
 const PRIOR_SHARE = 0.01;
-const LEAST_SWITCHES = 3;
-/** Two rates agree no better than to this share of their difference: the modes drift. */
-const DRIFT = 0.1;
-/** Sizes of changes that do not belong together are spread over so many natural-log units. */
-const LOG_SIZE_RANGE = Math.log(1e3);
+/** Natural-log odds from which a pulsar is said to switch. */
+const LEAST_LOG_ODDS = 6;
+/** Events of a pulsar that may be switches. */
+const LEAST_CHANGES = 3;
+/** Only a pulsar whose walk over so long is so many times its uncertainties may hide switches in it. */
+const WALK_DAYS = 200;
+const LEAST_WALK = 8;
+/** Torque and frequency walks of a pulsar whose switches are known, in scatters of the population prior. */
+const QUIET_TORQUE = -1.5;
+const QUIET_FREQUENCY = [-1, 0];
+/** A suspicion so many arrivals from a switch is the switch. */
+const NEAR_GAPS = 3;
 const DAYS_PER_YEAR = 365.25;
-const SECONDS_PER_DAY = 86_400;
 
 /** The record that holds all switches of the pulsar, once it is known to switch. */
 export function switchingRecord(watch: PulsarWatch): Track | undefined {
   return watch.tracks.find((t) => t.modes !== null && t.state === 'confirmed');
 }
 
-/** After a change of the spin-down rate is confirmed: are the latest changes switches between two rates? */
-export function judgeSwitching(watch: PulsarWatch, latest: Track): void {
-  const changes = watch.tracks
-    .filter((t) => t.kind === 'spin-down-rate change' && t.state === 'confirmed')
-    .sort((a, b) => a.bestGap - b.bestGap);
-  const sizes = changes.map((t) => sizeOf(watch, t));
-  let first = changes.length - 1;
-  let logOdds = Math.log(PRIOR_SHARE);
-  for (; first > 0; first--) {
-    const gain = logMatch(sizes[first - 1] ?? null, sizes[first] ?? null);
-    if (gain < 0) break;
-    logOdds += gain;
+export function isSwitch(watch: PulsarWatch, track: Track): boolean {
+  const record = switchingRecord(watch);
+  return record !== undefined && (track === record || track.partOf === record.number);
+}
+
+/** Its walk may hide switches, or it is known to switch: worth looking at when its noise is learned. */
+export function wanders(watch: PulsarWatch): boolean {
+  const walk = walkOver(watch.likelyNoise);
+  return switchingRecord(watch) !== undefined || walk > LEAST_WALK * medianSigma(watch.line.seen);
+}
+
+/** Names the pulsar, or takes the name back; true where switches are known now that were not. */
+export function seekSwitching(watch: PulsarWatch, index: number): boolean {
+  const confirmed = watch.tracks.filter((t) => t.state === 'confirmed');
+  const known = switchingRecord(watch);
+  if (known === undefined && !wanders(watch) && !showsChanges(confirmed)) return false;
+  const best = bestOf(watch);
+  const counted = countedArrivals(watch, best);
+  const past = { decisions: decisionsOf(best), startRate: foundStartRate(counted) };
+  const others = confirmed.filter((t) => !isSwitch(watch, t));
+  const steady = steadyOdds(watch, { ...past, tracks: others }, counted);
+  const chain = bestChain(watch, past, others, medianSigma(counted));
+  const logOdds = Math.log(PRIOR_SHARE) + chain.logEvidence - Math.max(steady, chain.logEvidenceFewer);
+  if (logOdds >= LEAST_LOG_ODDS) {
+    adopt(watch, index, chain, logOdds);
+    return true;
   }
-  const chain = changes.slice(first);
-  const share = 1 / (1 + Math.exp(-logOdds));
-  if (chain.length < LEAST_SWITCHES || share < 0.5) {
-    if (latest.partOf === switchingRecord(watch)?.number) latest.partOf = null;
-    return;
-  }
-  const host = chain[0]!;
+  if (known !== undefined && logOdds < 0)
+    for (const t of confirmed) if (isSwitch(watch, t)) Object.assign(t, { state: 'withdrawn', logOdds, settled: true });
+  return false;
+}
+
+/** So many changes that they may be switches. */
+function showsChanges(confirmed: readonly Track[]): boolean {
+  return confirmed.filter(isMaybeSwitch).length >= LEAST_CHANGES;
+}
+
+function isMaybeSwitch(track: Track): boolean {
+  return track.kind === 'spin-down-rate change' || track.kind === 'glitch';
+}
+
+function medianSigma(arrivals: readonly { readonly sigmaTurns: number }[]): number {
+  const sigmas = arrivals.map((a) => a.sigmaTurns).sort((a, b) => a - b);
+  return sigmas[sigmas.length >> 1]!;
+}
+
+/** RMS in turns. */
+function walkOver({ torqueWalk, frequencyWalk }: NoiseModel): number {
+  return Math.sqrt((torqueWalk * WALK_DAYS ** 5) / 20 + (frequencyWalk * WALK_DAYS ** 3) / 3);
+}
+
+/** Noise as loud as it has to be, and the events believed so far, each at its prior rate. */
+function steadyOdds(watch: PulsarWatch, past: Past, counted: readonly CountedArrival[]): number {
   const { seen } = watch.line;
-  const years = (seen[latest.bestGap]!.tDays - seen[host.bestGap]!.tDays) / DAYS_PER_YEAR;
-  const steps = sizes.slice(first).map((s) => Math.abs(s!.mean) * SECONDS_PER_DAY ** 2);
-  const stepTurns = steps.reduce((a, b) => a + b, 0) / steps.length;
-  host.modes = { stepTurns, switchesPerYear: (chain.length - 1) / Math.max(years, 1 / DAYS_PER_YEAR), share };
-  host.shapes = null;
-  host.partOf = null;
-  for (const t of chain.slice(1)) Object.assign(t, { partOf: host.number, modes: null, shapes: null });
+  const known = disturbances({ ...watch, tracks: [...past.tracks] });
+  const noise = asFixed(watch.model, learnNoise(counted, known, watch.prior, watch.likelyNoise));
+  const rates = past.tracks.filter(isMaybeSwitch).map((t) => {
+    const gapDays = seen[t.bestGap]!.tDays - seen[t.bestGap - 1]!.tDays;
+    return Math.min(0, Math.log((RATE_PER_YEAR[t.kind] * gapDays) / DAYS_PER_YEAR));
+  });
+  return (
+    steadyEvidence(watch, noise, past) +
+    logNoisePrior(noise, watch.prior, medianSigma(counted)) +
+    rates.reduce((sum, rate) => sum + rate, 0)
+  );
 }
 
-/** The change itself, Hz/s, whatever shape it was given before. */
-function sizeOf(watch: PulsarWatch, track: Track): Estimate | null {
-  return measure(watch, { ...track, shapes: null })?.step?.size ?? null;
+/** With the glitches believed so far, or with switches in their stead. */
+function bestChain(
+  watch: PulsarWatch,
+  past: Omit<Past, 'tracks'>,
+  others: readonly Track[],
+  sigmaTurns: number,
+): SwitchChain & { readonly kept: readonly Track[] } {
+  const withGlitches = others.filter((t) => t.kind !== 'spin-down-rate change');
+  const without = withGlitches.filter((t) => t.kind !== 'glitch');
+  const kept = without.length === withGlitches.length ? [without] : [withGlitches, without];
+  const chains = kept.flatMap((tracks) =>
+    QUIET_FREQUENCY.map((z) => {
+      const noise = asFixed(watch.model, quiet(watch.likelyNoise, watch.prior, z));
+      const chain = switchChain(watch, noise, { ...past, tracks });
+      const prior = logNoisePrior(noise, watch.prior, sigmaTurns);
+      const logEvidence = chain.logEvidence + prior;
+      return { ...chain, kept: tracks, logEvidence, logEvidenceFewer: chain.logEvidenceFewer + prior };
+    }),
+  );
+  return chains.reduce((a, b) => (b.logEvidence > a.logEvidence ? b : a));
 }
 
-/** Natural log of how much better "back to the rate before" foretells the second size than "any size". */
-function logMatch(a: Estimate | null, b: Estimate | null): number {
-  if (a === null || b === null) return -Infinity;
-  const size = Math.max(Math.abs(a.mean), Math.abs(b.mean));
-  const sigma = Math.hypot(a.sd, b.sd, DRIFT * size);
-  const miss = (a.mean + b.mean) / sigma;
-  return -0.5 * miss * miss + Math.log((2 * size * LOG_SIZE_RANGE) / (Math.sqrt(2 * Math.PI) * sigma));
+function quiet(noise: NoiseModel, { frequencyWalk, torqueWalk }: NoisePrior, z: number): NoiseModel {
+  return {
+    ...noise,
+    frequencyWalk: frequencyWalk.median * Math.exp(z * frequencyWalk.lnScatter),
+    torqueWalk: torqueWalk.median * Math.exp(QUIET_TORQUE * torqueWalk.lnScatter),
+  };
+}
+
+/** One record, with a part for each switch; what was taken for other events is part of it. */
+function adopt(watch: PulsarWatch, index: number, chain: ReturnType<typeof bestChain>, logOdds: number): void {
+  const { seen } = watch.line;
+  const known = switchingRecord(watch);
+  const mistaken = watch.tracks.filter(
+    (t) => t.state === 'confirmed' && isMaybeSwitch(t) && !chain.kept.includes(t) && t !== known,
+  );
+  const host = known ?? mistaken.find((t) => t.partOf === null) ?? newTrack(watch, index);
+  const parts = mistaken.filter((t) => t !== host);
+  for (const t of watch.tracks)
+    if (
+      t.state === 'suspected' &&
+      isMaybeSwitch(t) &&
+      chain.switches.some((gap) => Math.abs(gap - t.bestGap) <= NEAR_GAPS)
+    )
+      Object.assign(t, { state: 'withdrawn', settled: true });
+  const [first, ...later] = chain.switches;
+  const days = seen[chain.switches.at(-1)!]!.tDays - seen[first!]!.tDays;
+  const modes: Modes = {
+    stepTurns: chain.stepTurns,
+    switchesPerYear: ((chain.switches.length - 1) * DAYS_PER_YEAR) / days,
+    share: 1 / (1 + Math.exp(-logOdds)),
+  };
+  settle(host, first!, index, logOdds);
+  Object.assign(host, { modes, partOf: null });
+  for (const gap of later) {
+    const part = parts.shift() ?? newTrack(watch, index);
+    settle(part, gap, index, logOdds);
+    Object.assign(part, { modes: null, partOf: host.number });
+  }
+  for (const t of parts) Object.assign(t, { state: 'withdrawn', partOf: host.number, modes: null, settled: true });
+  watch.oldestGap = Math.max(watch.oldestGap, chain.switches.at(-1)! + 1);
+}
+
+function settle(track: Track, gap: number, index: number, logOdds: number): void {
+  Object.assign(track, {
+    kind: 'spin-down-rate change',
+    state: 'confirmed',
+    bestGap: gap,
+    firstGap: Math.max(1, gap - 1),
+    lastGap: Math.min(index, gap + 1),
+    confirmedAt: track.confirmedAt ?? index,
+    logOdds,
+    explanations: { 'spin-down-rate change': 1 },
+    shapes: null,
+    settled: true,
+  } satisfies Partial<Track>);
 }

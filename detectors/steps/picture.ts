@@ -1,7 +1,7 @@
-/** What a plot of an event shows: deviations against the spin-down before it, the fit, and ν from short local fits. */
+/** What a plot of an event shows: deviations against the spin-down before it, the fit, and ν and ν̇ from short local fits. */
 
 import { arrivalVariance } from '../filter/stateSpace.ts';
-import { fitPolynomial } from '../math/polynomialFit.ts';
+import { fitPolynomial, type PolynomialFit } from '../math/polynomialFit.ts';
 import { mjdNumber } from '../time/mjd.ts';
 import type { Measurement } from './measure.ts';
 import type { EventPicture, PulsarEvent } from './pulsarEvent.ts';
@@ -10,9 +10,9 @@ import type { PulsarWatch } from './pulsarWatch.ts';
 const BEFORE = 40;
 const AFTER = 60;
 const CURVE_POINTS = 240;
-/** Arrivals in one local fit of ν, and how far its window moves on. */
-const LOCAL = 5;
-const STEP = 2;
+/** Arrivals in one local fit, of a line for ν and of a parabola for ν̇, and how far its window moves on. */
+const LOCAL = { line: 5, parabola: 9 } as const;
+const STEP = { line: 2, parabola: 3 } as const;
 const KINK_DAYS = 1e-4;
 const SECONDS_PER_DAY = 86_400;
 
@@ -58,8 +58,18 @@ export function pictureOf(
       mjd: zero + t,
       deviationTurns: measured.curve({ tDays: t, frequencyMhz: at.frequencyMhz, group }),
     })),
-    frequencyTrack: frequencyTrack(used, base.valueAt, measured.epochDays.median, zero),
+    frequencyTrack: localFits(used, base.valueAt, measured.epochDays.median, 'line').map(({ tDays, fit }) => ({
+      mjd: zero + tDays,
+      deltaNuHz: -fit.slope / SECONDS_PER_DAY,
+      uncertaintyHz: fit.slopeSigma / SECONDS_PER_DAY,
+    })),
     frequencyFit: grid.map((t) => ({ mjd: zero + t, deltaNuHz: measured.frequencyCurve(t) })),
+    spinDownTrack: localFits(used, base.valueAt, measured.epochDays.median, 'parabola').map(({ tDays, fit }) => ({
+      mjd: zero + tDays,
+      deltaNuDot: -fit.curvature / SECONDS_PER_DAY ** 2,
+      uncertainty: fit.curvatureSigma / SECONDS_PER_DAY ** 2,
+    })),
+    spinDownFit: grid.map((t) => ({ mjd: zero + t, deltaNuDot: spinDownAdded(measured, t) })),
     epochMjd: event.epochMjd,
     epochInterval68: event.epochInterval68,
     frequencyHz: watch.model.spin.frequencyHz.hi,
@@ -91,30 +101,38 @@ function pointsAround(watch: PulsarWatch, gapIndex: number, measured: Measuremen
   return points;
 }
 
-/** ν of a few arrivals at a time, never across the event, minus the spin-down before it. */
-function frequencyTrack(
+interface LocalFit {
+  readonly tDays: number;
+  readonly fit: PolynomialFit;
+}
+
+/** Fits to a few arrivals at a time, never across the event, after the spin-down before it. */
+function localFits(
   used: readonly Point[],
   base: (tDays: number) => number,
   epochDays: number,
-  zero: number,
-): EventPicture['frequencyTrack'] {
-  const track: { mjd: number; deltaNuHz: number; uncertaintyHz: number }[] = [];
+  shape: keyof typeof LOCAL,
+): LocalFit[] {
+  const fits: LocalFit[] = [];
   for (const side of [used.filter((p) => p.tDays < epochDays), used.filter((p) => p.tDays >= epochDays)])
-    for (let i = 0; i + LOCAL <= side.length; i += STEP) {
-      const local = side.slice(i, i + LOCAL);
+    for (let i = 0; i + LOCAL[shape] <= side.length; i += STEP[shape]) {
+      const local = side.slice(i, i + LOCAL[shape]);
       const t = local.map((p) => p.tDays);
-      const line = fitPolynomial(
+      const fit = fitPolynomial(
         t,
         local.map((p) => p.deviation - base(p.tDays)),
         local.map((p) => p.sigma),
-        1,
+        shape === 'line' ? 1 : 2,
       );
-      if (!Number.isFinite(line.slopeSigma) || line.slopeSigma === 0) continue;
-      track.push({
-        mjd: zero + t.reduce((a, b) => a + b, 0) / t.length,
-        deltaNuHz: -line.slope / SECONDS_PER_DAY,
-        uncertaintyHz: line.slopeSigma / SECONDS_PER_DAY,
-      });
+      const sigma = shape === 'line' ? fit.slopeSigma : fit.curvatureSigma;
+      if (!Number.isFinite(sigma) || sigma === 0) continue;
+      fits.push({ tDays: t.reduce((a, b) => a + b, 0) / t.length, fit });
     }
-  return track;
+  return fits;
+}
+
+/** What the event adds to ν̇, Hz/s: the slope of what it adds to ν, taken away from the epoch so as never to cross the step. */
+function spinDownAdded({ frequencyCurve, epochDays }: Measurement, tDays: number): number {
+  const aside = tDays < epochDays.median ? -KINK_DAYS / 2 : KINK_DAYS / 2;
+  return (frequencyCurve(tDays + aside) - frequencyCurve(tDays)) / (aside * SECONDS_PER_DAY);
 }

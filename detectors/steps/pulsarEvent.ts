@@ -113,6 +113,13 @@ export interface EventPicture {
     readonly uncertaintyHz: number;
   }[];
   readonly frequencyFit: readonly { readonly mjd: number; readonly deltaNuHz: number }[];
+  /** ν̇ from short local fits, minus the spin-down before the event, Hz/s. This and its fit are missing from records of older versions. */
+  readonly spinDownTrack?: readonly {
+    readonly mjd: number;
+    readonly deltaNuDot: number;
+    readonly uncertainty: number;
+  }[];
+  readonly spinDownFit?: readonly { readonly mjd: number; readonly deltaNuDot: number }[];
   readonly epochMjd: number;
   readonly epochInterval68: Interval;
   readonly frequencyHz: number;

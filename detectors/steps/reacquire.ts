@@ -6,7 +6,16 @@
 import { arrivalVariance } from '../filter/stateSpace.ts';
 import { newBank, type Snapshot } from './bank.ts';
 import { logWeightOf, observe, pruned } from './beam.ts';
-import { HIGHEST_STEP, LOG_SIZE_RANGE, LOWEST_STEP, STRAIGHT, searchStep } from './circularSearch.ts';
+import { freeSecond } from './births.ts';
+import {
+  BEND_STEP_TURNS,
+  BENDS,
+  HIGHEST_STEP,
+  LOG_SIZE_RANGE,
+  LOWEST_STEP,
+  logBendPrior,
+  searchStep,
+} from './circularSearch.ts';
 import { copyOf, gapOf, type Hypothesis, propagate } from './hypothesis.ts';
 import { expectedDeviation, grownTo } from './largeStepSizes.ts';
 import type { PulsarWatch } from './pulsarWatch.ts';
@@ -35,6 +44,8 @@ const LOCK_SPREAD_TURNS = 0.1;
 const LOCK_SHARE = 0.98;
 /** Share of losses that hide a step in frequency (common practice, no source). */
 const HIDDEN_STEP_SHARE = 0.05;
+/** σ of a step of ν̇ that may go with it, relative. */
+const HIDDEN_RATE_STEP = 0.03;
 const START_SPREAD_TURNS = 0.05;
 const SEARCH_SPREAD_TURNS = 0.1;
 const KEEP = 12;
@@ -82,6 +93,7 @@ function released(watch: PulsarWatch, { from, before }: Loss): Hypothesis {
     h.cov[i] = 0;
     h.cov[i * size] = 0;
   }
+  freeSecond(h, HIDDEN_RATE_STEP * Math.abs(watch.model.spin.frequencyDerivativeHzPerS) * SECONDS_PER_DAY ** 2);
   h.mean[0] = seen.deviation;
   h.cov[0] = arrivalVariance(seen.sigmaTurns, watch.noise);
   let { story } = before.hypothesis;
@@ -104,7 +116,7 @@ function searched(watch: PulsarWatch, { from }: Loss, start: Hypothesis, index: 
   const turnsPerDay = watch.model.spin.frequencyHz.hi * SECONDS_PER_DAY;
   const lowest = Math.min(LOWEST_STEP * turnsPerDay, -5 * sigma);
   const highest = Math.max(HIGHEST_STEP * turnsPerDay, 5 * sigma);
-  return searchStep(points, lowest, highest, SEARCH_SPREAD_TURNS, STRAIGHT).map((peak) => {
+  return searchStep(points, lowest, highest, SEARCH_SPREAD_TURNS, BENDS).map((peak) => {
     const h = copyOf(start);
     const width = 2 * peak.width;
     const step = Math.max(Math.abs(peak.frequencyStep), width);
@@ -114,6 +126,10 @@ function searched(watch: PulsarWatch, { from }: Loss, start: Hypothesis, index: 
     h.mean[0]! += peak.phase;
     h.cov[0] = START_SPREAD_TURNS ** 2;
     h.mean[1]! -= peak.frequencyStep;
+    h.mean[2]! += peak.curvature;
+    const span = points.at(-1)!.days;
+    h.cov[2 * size + 2]! += ((2 * BEND_STEP_TURNS) / (span * span)) ** 2;
+    h.logWeight += logBendPrior(0.5 * peak.curvature * span * span) + Math.log(BEND_STEP_TURNS);
     for (let i = 0; i < size; i++) {
       h.cov[size + i] = 0;
       h.cov[i * size + 1] = 0;

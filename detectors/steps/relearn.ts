@@ -1,13 +1,16 @@
 /** Learning the noise anew, and going through the past again with what was learned. */
 
+import type { Disturbance } from '../filter/countedArrival.ts';
 import { learnNoise } from '../filter/noiseLearning.ts';
 import { withMargin } from '../filter/noiseMargin.ts';
 import { newBank } from './bank.ts';
 import { logWeightOf, pruned } from './beam.ts';
 import { bestOf, countedArrivals, disturbances } from './counts.ts';
 import { withoutRecoveries } from './establishedRecoveries.ts';
+import { spreadOf, weigh } from './evidence.ts';
 import type { Hypothesis } from './hypothesis.ts';
-import { jointOdds } from './jointOdds.ts';
+import { isNoiseKnown, jointOdds } from './jointOdds.ts';
+import { isSwitch, seekSwitching, wanders } from './modeSwitching.ts';
 import { asFixed, type PulsarWatch } from './pulsarWatch.ts';
 import { retimeRecovery } from './recoveryTimescales.ts';
 import { decisionsOf, retrace } from './retrace.ts';
@@ -22,6 +25,8 @@ const PATIENCE = 1.4;
 const SURE_SHARE = 0.95;
 /** So many of the latest events are asked again whether they are events. */
 const LAST_EVENTS = 4;
+/** Natural-log odds from which a step is kept out of the noise. */
+const POSSIBLE = -3;
 
 export function learningDue(watch: PulsarWatch, index: number): boolean {
   const count = index + 1;
@@ -34,15 +39,23 @@ export function learningDue(watch: PulsarWatch, index: number): boolean {
 
 export function relearn(watch: PulsarWatch, index: number): void {
   watch.nextLearning = Math.ceil((index + 1) * LEARNING_GROWTH);
+  if (wanders(watch)) seekSwitching(watch, index);
   const best = bestOf(watch);
   takeBack(watch, best);
   const counted = withoutRecoveries(watch, countedArrivals(watch, best));
-  const known = disturbances(watch);
+  const known = [...disturbances(watch), ...candidate(watch)];
   const learned = learnNoise(counted, known, watch.prior, watch.noise);
   watch.likelyNoise = asFixed(watch.model, learned);
   watch.noise = asFixed(watch.model, withMargin(learned, counted, known, watch.prior));
   retimeRecovery(watch);
   rebuild(watch, index, best, foundStartRate(counted));
+}
+
+/** A step that may be under way, though not yet worth a suspicion: it is not learned as noise. */
+function candidate(watch: PulsarWatch): Disturbance[] {
+  const { strongest, something, nothing } = weigh(watch.bank!);
+  if (strongest !== 'glitch' || something - nothing < POSSIBLE) return [];
+  return [{ kind: 'spin', beforeIndex: spreadOf(watch.bank!, strongest).bestGap }];
 }
 
 /** The recovery followed with a timescale that suits it better: the past gone through again, with the noise as it is. */
@@ -55,10 +68,13 @@ export function followRecovery(watch: PulsarWatch, index: number): boolean {
 
 /** A confirmed event that more arrivals have shown to be noise is withdrawn, and what it hid is learned. */
 function takeBack(watch: PulsarWatch, best: Hypothesis): void {
-  const confirmed = watch.tracks.filter((t) => t.state === 'confirmed' && t.kind !== 'lost count').slice(-LAST_EVENTS);
+  const confirmed = watch.tracks
+    .filter((t) => t.state === 'confirmed' && t.kind !== 'lost count' && !isSwitch(watch, t))
+    .slice(-LAST_EVENTS);
   for (const track of confirmed) {
     const logOdds = jointOdds(watch, track, best);
-    if (logOdds < 0) Object.assign(track, { state: 'withdrawn', logOdds, settled: true } satisfies Partial<Track>);
+    if (logOdds < (isNoiseKnown(track) ? -watch.settings.confirmLogOdds : 0))
+      Object.assign(track, { state: 'withdrawn', logOdds, settled: true } satisfies Partial<Track>);
   }
 }
 

@@ -5,10 +5,11 @@ import type { PulsarReport } from '../report.ts';
 import { mjdNumber } from '../time/mjd.ts';
 import { contextOf, type EarlierGlitch } from './context.ts';
 import { describe, describeBadSession } from './describe.ts';
-import { measure } from './measure.ts';
+import { measureForRecord } from './measure.ts';
 import { pictureOf } from './picture.ts';
 import type { EventPicture, PulsarEvent } from './pulsarEvent.ts';
 import type { PulsarWatch } from './pulsarWatch.ts';
+import { recentArrivals } from './recentArrivals.ts';
 import { badSessions, verdictsOf } from './verdicts.ts';
 
 export function report(watch: PulsarWatch): PulsarReport {
@@ -17,7 +18,7 @@ export function report(watch: PulsarWatch): PulsarReport {
   const pictures = new Map<string, EventPicture>();
   for (const track of watch.tracks) {
     if (track.partOf !== null) continue;
-    const measured = measure(watch, track);
+    const measured = measureForRecord(watch, track);
     const described = describe(watch, track, measured);
     const earlier = glitches.filter((g) => g.event.epochMjd < described.epochMjd);
     const event =
@@ -33,14 +34,16 @@ export function report(watch: PulsarWatch): PulsarReport {
   for (const session of badSessions(watch)) events.push(describeBadSession(watch, session));
   events.sort((a, b) => a.epochMjd - b.epochMjd || (a.id < b.id ? -1 : 1));
   const last = watch.line.seen.at(-1);
+  const arrivals = verdictsOf(watch);
   return {
     pulsar: watch.model.name,
     events,
     pictures,
-    arrivals: verdictsOf(watch),
+    arrivals,
     noise: watch.noise,
     locked: watch.locked,
     lastArrivalMjd: last === undefined ? null : mjdNumber(last.arrival.tdb),
     limit: detectionLimit(watch),
+    recent: recentArrivals(watch, arrivals),
   };
 }

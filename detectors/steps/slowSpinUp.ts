@@ -30,6 +30,7 @@ export function earlierHalf(watch: PulsarWatch, track: Track): Track | undefined
       t.number < track.number &&
       t.state === 'confirmed' &&
       t.partOf === null &&
+      t.modes === null &&
       isShaped(t) &&
       days(t) >= 0 &&
       days(t) < LONGEST_RISE_DAYS,

@@ -32,7 +32,8 @@ const QUIET: MorningReview = {
     suspectedSteps: { up: 9, down: 3 },
     confirmedSteps: { up: 4, down: 0 },
   },
-  mail: { waiting: 0, refused: 0, oldestWaitingHours: null },
+  heldBack: [],
+  mail: { waiting: 0, oldestWaitingHours: null, undelivered: [] },
   warnings: [],
 };
 
@@ -60,7 +61,16 @@ const BUSY: MorningReview = {
   silentFeeds: [{ feed: 'ridge', hoursSilent: 31, expectedHours: 24 }],
   silentPulsars: [{ pulsar: 'KR 2231+44', lastArrivalMjd: 60_100, daysSilent: 27.2 }],
   unlockedPulsars: ['KR 0001+00'],
-  mail: { waiting: 1, refused: 2, oldestWaitingHours: 3 },
+  heldBack: [
+    { event: GLITCH, why: 'held in the quiet hours until 07:00: first confirmation', at: '2023-07-02T00:10:00Z' },
+  ],
+  mail: {
+    waiting: 1,
+    oldestWaitingHours: 3,
+    undelivered: [
+      { subject: 'Kestrel Ridge · KR 0417+31', recipient: 'gone@kestrel-ridge.example', why: '550 unknown' },
+    ],
+  },
   warnings: ['the leap-second table ended on 2023-06-28'],
 };
 

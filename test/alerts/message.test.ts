@@ -48,7 +48,7 @@ function headerNames(mail: ParsedMail): string[] {
 }
 
 describe('the mail about an event, parsed from its bytes', () => {
-  it('has the right headers, each once', async () => {
+  it('D16: has the right headers, each once', async () => {
     const mail = await simpleParser((await composeEventMail(mailOf(GLITCH), SETTING)).mime);
     expect(mail.subject).toBe('Kestrel Ridge · KR 0417+31: candidate glitch · Δν/ν = (3.20 ± 0.21) × 10⁻⁹');
     expect(mail.messageId).toBe(planned(GLITCH).messageId);

@@ -115,7 +115,7 @@ describe('the table', () => {
     expect(csv.endsWith('\r\n')).toBe(true);
   });
 
-  it('no text cell can run as a formula', () => {
+  it('F-5: no text cell can run as a formula', () => {
     for (const name of ['=1+1', '+SUM(A1)', '-2', '@x', '\t=1', ' =1', '＝1', '\r=1']) {
       const [row] = parse(eventsCsv([{ ...GLITCH, pulsar: name }]), { columns: true }) as Row[];
       expect(row?.pulsar).toMatch(/^['\ufffd]/);
@@ -124,7 +124,7 @@ describe('the table', () => {
 });
 
 describe('the event as JSON', () => {
-  it('is the event, and ends with a line feed', () => {
+  it('F-6: is the event, and ends with a line feed', () => {
     expect(JSON.parse(eventJson(SITE_STEP))).toEqual(SITE_STEP);
     expect(eventJson(GLITCH).endsWith('}\n')).toBe(true);
   });

@@ -19,6 +19,7 @@ const POLICY: AlertPolicy = {
   historicalDays: 30,
   sharperBy: 2,
 };
+const HEARD = ['duty@kestrel-ridge.example', 'gone@kestrel-ridge.example'];
 const FIRST_ID = '<first@kestrel-ridge.example>';
 
 const suspected: PulsarEvent = { ...GLITCH, state: 'suspected', confirmedAtMjd: null };
@@ -59,7 +60,8 @@ function decide(
   toldAs: PulsarEvent | null,
   policy: Partial<AlertPolicy> = {},
 ) {
-  const told: EventChanged['told'] = toldAs === null ? null : { firstMessageId: FIRST_ID, as: toldAs };
+  const told: EventChanged['told'] =
+    toldAs === null ? null : { firstMessageId: FIRST_ID, as: toldAs, recipients: HEARD };
   return messagesFor({ before, after, told, revision: 3 }, { ...POLICY, ...policy });
 }
 
@@ -152,6 +154,45 @@ describe('whom to tell, and why', () => {
       'x@kestrel-ridge.example',
     ]);
     expect(decide(suspected, GLITCH, null, { to: [] }).messages).toEqual([]);
+  });
+});
+
+describe('suspected events, where the operator asked for them', () => {
+  const asked = { mailSuspected: true };
+
+  it.each([
+    ['the suspicion', null, suspected, null, 'first suspicion', 'first'],
+    ['more of the same', suspected, suspected, suspected, 'suspected only', null],
+    ['the confirmation', suspected, GLITCH, suspected, 'confirmed after suspicion', 'update'],
+    ['what came to nothing', suspected, withdrawn, suspected, 'withdrawn after it was told', 'withdrawal'],
+    ['confirmed at once', null, GLITCH, null, 'first confirmation', 'first'],
+    ['a bad arrival', null, { ...suspected, explanation: 'bad arrival' }, null, 'in the digest only', null],
+  ] as const)('%s', (_name, before, after, told, reason, kind) => {
+    const decision = decide(before, after, told, asked);
+    expect([decision.reason, ...decision.messages.map((m) => m.kind)]).toEqual(
+      kind === null ? [reason] : [reason, kind],
+    );
+  });
+
+  it('A21: of long ago wakes nobody', () => {
+    expect(decide(null, suspected, null, { ...asked, nowMjd: GLITCH.suspectedAtMjd + 31 }).reason).toBe('historical');
+  });
+});
+
+describe('D18: a recipient who was taken out of the configuration, or added', () => {
+  const newcomer = { to: ['new@kestrel-ridge.example'] };
+  const to = (after: PulsarEvent) => decide(GLITCH, after, GLITCH, newcomer).messages[0]?.recipients;
+
+  it('a withdrawal goes to those who heard of the event, and to nobody else', () => {
+    expect(to(withdrawn)).toEqual(HEARD);
+  });
+
+  it('another explanation takes back what was said: it goes to those who heard it too', () => {
+    expect(to(clock)).toEqual([...newcomer.to, ...HEARD]);
+  });
+
+  it('other updates go to those of today', () => {
+    expect(to(recovering)).toEqual(newcomer.to);
   });
 });
 

@@ -64,7 +64,7 @@ describe('the backlog of decisions', () => {
     expect(decided).toEqual(['A']);
   });
 
-  test('leaves most of the time to the files, however long a decision takes', async () => {
+  test('A33: leaves most of the time to the files, however long a decision takes', async () => {
     decidingTakesMs = 10_000;
     for (let second = 0; second < 600; second++) {
       backlog.add(['A'], FRESH);

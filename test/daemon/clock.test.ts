@@ -39,7 +39,7 @@ test('MJD: 2000-01-01 12:00 is 51544.5 (IAU, the epoch J2000.0)', () => {
   expect(mjdOf(new Date('2000-01-01T12:00:00Z'))).toBe(51_544.5);
 });
 
-test('a wall clock that is set shows, one that runs does not', () => {
+test('B6: a wall clock that is set shows, one that runs does not', () => {
   let wall = Date.parse('2026-06-10T08:00:00Z');
   let monotonic = 0;
   const step = clockStepWatch({ now: () => new Date(wall), monotonicMs: () => monotonic });

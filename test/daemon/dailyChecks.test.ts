@@ -23,7 +23,7 @@ async function rig() {
 }
 
 describe('the daily checks', () => {
-  test('are made once a day, across restarts, and also after the wall clock was set back', async () => {
+  test('B6: are made once a day, across restarts, and also after the wall clock was set back', async () => {
     const { at, run, asked, warnings, verified } = await rig();
     await at.deliver('a.csv', arrivalFile(arrivals));
     expect(await run()).toBe(0);

@@ -75,7 +75,7 @@ describe('the delivery loop', () => {
     expect(await within(10, () => states().every((state) => state.endsWith('delivered')))).toBe(true);
   });
 
-  test('one recipient in trouble holds up no other', async () => {
+  test('D1, D7: one recipient in trouble holds up no other', async () => {
     const { queue, states, at } = await rig(({ recipient }) =>
       recipient.startsWith('a') ? { state: 'later', detail: '451 try later' } : delivered,
     );
@@ -87,7 +87,24 @@ describe('the delivery loop', () => {
     expect(Date.parse(waiting!.dueAt) - Date.parse(NOW)).toBeGreaterThan(50_000);
   });
 
-  test('a refusal is final, and told', async () => {
+  test('D4: a server that greylists gets the same mail again from the same sender, and takes it', async () => {
+    const { at, loop, queue, states, sent } = await rig((_, nth) =>
+      nth < 3 ? { state: 'later', detail: '451 greylisted' } : delivered,
+    );
+    queue('first', ['a@x.example']);
+    for (const [tries, now] of [
+      [1, '2026-06-01T09:00:00.000Z'],
+      [2, '2026-06-01T10:00:00.000Z'],
+    ] as const) {
+      expect(await within(10, () => sent.length === tries && states()[0] === 'a@x.example queued')).toBe(true);
+      at.setNow(now);
+      loop.wake();
+    }
+    expect(await within(10, () => states()[0] === 'a@x.example delivered')).toBe(true);
+    for (const again of sent) expect(again).toEqual(sent[0]);
+  });
+
+  test('D3: a refusal is final, and told', async () => {
     const { queue, givenUp, sent } = await rig(() => ({ state: 'refused', detail: '550 unknown' }));
     queue('first', ['a@x.example']);
     expect(await within(10, () => givenUp.length === 1)).toBe(true);
@@ -95,7 +112,7 @@ describe('the delivery loop', () => {
     expect(sent).toHaveLength(1);
   });
 
-  test('an answer that never came leads to one more copy, marked', async () => {
+  test('D9: an answer that never came leads to one more copy, marked', async () => {
     const { queue, at, sent, loop } = await rig((_, nth) =>
       nth === 1 ? { state: 'unknown', detail: 'no answer' } : delivered,
     );
@@ -131,7 +148,7 @@ describe('the delivery loop', () => {
     expect(givenUp).toEqual(['a@x.example refused: 552 too large']);
   });
 
-  test('a refused login stops the attempts of everybody, so that the account is not locked', async () => {
+  test('D10: a refused login stops the attempts of everybody, so that the account is not locked', async () => {
     const { queue, sent, loop, states } = await rig(() => ({ state: 'later', detail: '535', loginRefused: true }));
     queue('first', ['a@x.example', 'b@x.example', 'c@x.example']);
     expect(await within(10, () => sent.length === 1)).toBe(true);
@@ -152,7 +169,7 @@ describe('the delivery loop', () => {
     expect(at.store.outbox()[0]).toMatchObject({ state: 'expired' });
   });
 
-  test('no mail is given up because somebody set the wall clock', async () => {
+  test('B6: no mail is given up because somebody set the wall clock', async () => {
     const { queue, at, givenUp, sent, loop } = await rig(() => ({ state: 'later', detail: 'connection refused' }));
     queue('first', ['a@x.example']);
     expect(await within(10, () => at.store.outbox()[0]?.attempts === 1)).toBe(true);

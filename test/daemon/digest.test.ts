@@ -76,7 +76,7 @@ describe('the schedule on a fake clock', () => {
     },
   );
 
-  test('restarts neither repeat nor lose one', async () => {
+  test('B6: restarts neither repeat nor lose one', async () => {
     const restarts = ['2026-10-25T00:29:00Z', '2026-10-25T00:31:00Z', '2026-10-25T01:31:00Z', '2026-10-25T01:32:00Z'];
     expect(await run('30 2 * * *', '2026-10-24T12:00:00Z', '2026-10-25T12:00:00Z', restarts)).toEqual([
       '2026-10-24',

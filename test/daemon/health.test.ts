@@ -49,7 +49,7 @@ describe('the health of the watch', () => {
     expect((await rig({ feed: { problems: [gone] } })).problems()).toEqual(['Feed nightly: root gone.']);
   });
 
-  test('names a disk that is full', async () => {
+  test('A39: names a disk that is full', async () => {
     expect((await rig({ storage: 'database or disk is full' })).problems().join()).toMatch(/Nothing can be written/);
   });
 

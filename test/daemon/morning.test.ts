@@ -38,7 +38,7 @@ describe('the morning review', () => {
     expect(review.intake).toEqual({ files: 1, arrivals: arrivals.length, pulsars: 1 });
     expect(review.quarantined).toHaveLength(1);
     expect(review.warnings).toContain('a table ends soon');
-    expect(review.mail).toEqual({ waiting: 0, refused: 0, oldestWaitingHours: null });
+    expect(review.mail).toEqual({ waiting: 0, oldestWaitingHours: null, undelivered: [] });
   });
 
   test('covers the time from the digest before, also after the one of today was made', async () => {

@@ -3,7 +3,7 @@ import { join } from 'node:path';
 import { asyncProperty, assert as checkProperty, constantFrom, shuffledSubarray } from 'fast-check';
 import { afterEach, describe, expect, test } from 'vitest';
 import { STAGES } from '../../daemon/pipeline.ts';
-import { recall } from '../../daemon/stages/intake.ts';
+import { isAsRecorded, recall } from '../../daemon/stages/intake.ts';
 import { ROOT } from '../support/sourceTree.ts';
 import { createTestStation, type TestStation } from '../support/station.ts';
 import { arrivalFile, syntheticArrivals, syntheticPulsar } from '../support/syntheticPulsar.ts';
@@ -60,7 +60,7 @@ describe('the pipeline', () => {
     expect(at.store.verify()).toEqual([]);
   });
 
-  test('says the same whatever the order of the files, and however often it was restarted', async () => {
+  test('A20: says the same whatever the order of the files, and however often it was restarted', async () => {
     const reference = await station();
     await reference.deliver('all.csv', ALL);
     const names = [...FILES.keys()];
@@ -99,7 +99,28 @@ describe('the pipeline', () => {
     expect(eventsOf(at)).toEqual(before);
   });
 
-  test('decides again when rows are corrected or taken back, and as if the corrected ones had been the first', async () => {
+  test('A4: takes in a silent edit, of which only the bytes tell, and says so', async () => {
+    const at = await station();
+    const content = arrivalFile(quietArrivals);
+    await at.deliver('a.csv', content);
+    const pathBytes = Buffer.from('a.csv');
+    const look = () => recall(at.station, 'nightly', pathBytes)!;
+    const { signature, bytes } = look();
+    const file = { feed: 'nightly', path: 'a.csv', pathBytes, signature };
+    const edited = Buffer.from(content.replace(',50.000,', ',60.000,'));
+    const options = { decide: 'now', mail: false, acceptUnterminated: true } as const;
+    expect(edited).toHaveLength(bytes);
+    expect((await at.pipeline.takeIn({ ...file, bytes: edited }, options)).kind).toBe('known');
+
+    expect(isAsRecorded(at.station, file, Buffer.from(content))).toBe(true);
+    expect(isAsRecorded(at.station, file, edited)).toBe(false);
+    expect(look().signature).not.toBe(signature);
+    expect(await at.pipeline.takeIn({ ...file, bytes: edited }, options)).toMatchObject({ kind: 'taken in' });
+    expect(at.store.liveArrivals(quiet.name).filter(({ uncertaintyUs }) => uncertaintyUs === 60)).toHaveLength(1);
+    expect(at.store.verify()).toEqual([]);
+  });
+
+  test('A5, A6: decides again when rows are corrected or taken back, and as if the corrected ones had been the first', async () => {
     const at = await station();
     const wrong = glitchingArrivals.map((a, i) => (i === 20 ? { ...a, uncertaintyUs: 5000 } : a));
     await at.deliver('a.csv', arrivalFile(wrong));
@@ -124,7 +145,7 @@ describe('the pipeline', () => {
     expect(await at.deliver('cut.csv', cut)).toMatchObject({ kind: 'taken in', newArrivals: 5 });
   });
 
-  test('quarantines what it has no model or site for, and says what to add', async () => {
+  test('A24, A25: quarantines what it has no model or site for, and says what to add', async () => {
     const at = await station();
     const rows = [
       'pulsar,mjd_utc,mjd_tdb,uncertainty_us,frequency_mhz,site',
@@ -142,7 +163,7 @@ describe('the pipeline', () => {
     expect(reasons[1]).toMatch(/^3: site "ridge" is not known: add a \[\[site\]\]/);
   });
 
-  test('reads a waiting file again once the configuration knows more, and only then', async () => {
+  test('A25: reads a waiting file again once the configuration knows more, and only then', async () => {
     const at = await station();
     const { configuration } = at.station;
     const poorer = { ...configuration, models: new Map([...configuration.models].slice(0, 1)) };
@@ -256,7 +277,7 @@ describe('the pipeline', () => {
     expect(at.store.verify()).toEqual([]);
   });
 
-  test('sets a file aside whose reading takes the program down again and again', async () => {
+  test('A41: sets a file aside whose reading takes the program down again and again', async () => {
     const at = await station();
     const path = { bytesHex: Buffer.from('poison.csv').toString('hex') };
     const { createHash } = await import('node:crypto');

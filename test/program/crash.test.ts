@@ -139,7 +139,7 @@ async function whatIsOnRecord(folder: string) {
 
 describe('kill -9', () => {
   // Composing a mail takes a second, so that the steps which come before it are tried without.
-  test('at every step of taking a file in: the next start ends up where an undisturbed run does', async () => {
+  test('B1: at every step of taking a file in: the next start ends up where an undisturbed run does', async () => {
     const quietly = await killedReplays({ from: 1, options: [] });
     expect(quietly.expected.events).toHaveLength(1);
     console.info(`taking a file in: killed at ${quietly.killed} steps`);
@@ -151,7 +151,7 @@ describe('kill -9', () => {
     expect(mailing.killed).toBeGreaterThan(RECIPIENTS.length);
   }, 240_000);
 
-  test('at every step of delivering mail: nothing is lost, at most one copy comes twice, and says so', async () => {
+  test('B1, D8: at every step of delivering mail: nothing is lost, at most one copy comes twice, and says so', async () => {
     const queued = await copyOf(observatory.folder, 'queued');
     expect((await runSpinvigil(replayIn(queued, '--mail'))).code).toBe(0);
     let marked = 0;

@@ -83,7 +83,7 @@ describe('a replay of the sample feeds', () => {
     expect(Math.abs(found[0]!.epochMjd - step.epochMjd)).toBeLessThanOrEqual(step.epochWithinDays);
   });
 
-  test.each(expected.siteEvents)('blames the clock at $site, not the pulsars seen there', (step) => {
+  test.each(expected.siteEvents)('A42: blames the clock at $site, not the pulsars seen there', (step) => {
     const found = events.filter(({ pulsars, state }) => pulsars.length > 1 && state === 'confirmed');
     expect(found.map(({ site, explanation }) => ({ site, explanation }))).toEqual([
       { site: step.site, explanation: 'clock step' },

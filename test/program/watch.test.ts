@@ -92,7 +92,7 @@ describe.concurrent('the watch', () => {
     expect(await (await fetch(url)).text()).toContain('KR 0417+31');
   });
 
-  test('lets nobody else into its state folder, and frees it when it is killed', async ({
+  test('B3: lets nobody else into its state folder, and frees it when it is killed', async ({
     expect,
     onTestFinished: finished,
   }) => {
@@ -111,7 +111,7 @@ describe.concurrent('the watch', () => {
     expect(third.stdout()).toContain('watching nightly');
   });
 
-  test('ends well on SIGTERM in the middle of a file, and takes it up at the next start', async ({
+  test('B5: ends well on SIGTERM in the middle of a file, and takes it up at the next start', async ({
     expect,
     onTestFinished: finished,
   }) => {
@@ -136,7 +136,7 @@ describe.concurrent('the watch', () => {
     expect(await program.ended, program.stderr()).toBe('0');
   });
 
-  test('is not kept from ending by a mail server that hangs', async ({ expect, onTestFinished: finished }) => {
+  test('B5: is not kept from ending by a mail server that hangs', async ({ expect, onTestFinished: finished }) => {
     const sockets: Socket[] = [];
     const silent = createServer((socket) => void sockets.push(socket.on('error', () => {})));
     await new Promise<void>((resolve) => silent.listen(0, '127.0.0.1', resolve));

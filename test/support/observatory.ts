@@ -24,6 +24,8 @@ export interface ObservatoryOptions {
   readonly to?: readonly string[];
   readonly timezone?: string;
   readonly digestCron?: string;
+  /** Further lines of `[mail]`. */
+  readonly mailKeys?: readonly string[];
 }
 
 /**
@@ -82,6 +84,7 @@ from = "spinvigil@kestrel-ridge.example"
 to = ${JSON.stringify(options.to ?? ['duty@kestrel-ridge.example'])}
 timezone = "${options.timezone ?? 'Europe/Berlin'}"
 digest_cron = "${options.digestCron ?? '0 8 * * *'}"
+${(options.mailKeys ?? []).join('\n')}
 [review]
 listen = "127.0.0.1:0"
 reviewers = ["duty"]

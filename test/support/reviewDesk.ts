@@ -1,7 +1,15 @@
 import { uniformFloat64 } from 'pure-rand/distribution/uniformFloat64';
 import { xoroshiro128plus } from 'pure-rand/generator/xoroshiro128plus';
-import type { EventRecord, FileRecord, OutboxRecord } from '../../daemon/records.ts';
-import type { ReviewDesk, VerdictOrder, VerdictOutcome, VitalSigns } from '../../daemon/review/desk.ts';
+import type { ArrivalOrigin, EventRecord, FileRecord } from '../../daemon/records.ts';
+import type {
+  OutboxLine,
+  PulsarOverview,
+  ReviewDesk,
+  VerdictOrder,
+  VerdictOutcome,
+  VitalSigns,
+} from '../../daemon/review/desk.ts';
+import type { RecentArrivals } from '../../detectors/report.ts';
 import type { EventPicture, EventState, PulsarEvent } from '../../detectors/steps/pulsarEvent.ts';
 
 /** A desk in memory with one evening of an invented observatory; every text of it can be replaced by a hostile one. */
@@ -73,6 +81,11 @@ export function samplePicture(): EventPicture {
       return { mjd, deltaNuHz: (mjd < EPOCH ? 0 : step) + 8e-9 * noise(), uncertaintyHz: 8e-9 };
     }),
     frequencyFit: [-135, -0.001, 0, 60].map((day) => ({ mjd: EPOCH + day, deltaNuHz: day < 0 ? 0 : step })),
+    spinDownTrack: Array.from({ length: 12 }, (_, i) => {
+      const mjd = EPOCH - 130 + 16 * i;
+      return { mjd, deltaNuDot: (mjd < EPOCH ? 0 : -1.1e-15) + 9e-16 * noise(), uncertainty: 9e-16 };
+    }),
+    spinDownFit: [-135, -0.001, 0, 60].map((day) => ({ mjd: EPOCH + day, deltaNuDot: day < 0 ? 0 : -1.1e-15 })),
     epochMjd: EPOCH,
     epochInterval68: [EPOCH - 0.31, EPOCH + 0.39],
     frequencyHz: 6.3417701123349,
@@ -106,6 +119,15 @@ export interface MemoryDesk extends ReviewDesk {
   verdictCount(): number;
 }
 
+/** Two candidates, the more credible first, and one that is suspected. */
+export function oneEvening(): MemoryDesk {
+  return memoryDesk([
+    sampleRecord(),
+    sampleRecord({ id: 'weaker', pulsar: 'KR 1118+62', logBayesFactor: 14.2 }),
+    sampleRecord({ id: 'faint', pulsar: 'KR 2210-05', state: 'suspected', logBayesFactor: 3.1 }),
+  ]);
+}
+
 export interface DeskTexts {
   readonly file?: string;
   readonly reason?: string;
@@ -128,12 +150,19 @@ export function memoryDesk(records: readonly EventRecord[] = [sampleRecord()], t
   ];
   return {
     version: () => JSON.stringify(all().map(({ event, revision }) => [event.id, revision])),
+    marks: () => ({
+      events: JSON.stringify(all().map(({ event, revision }) => [event.id, revision])),
+      files: '',
+      mail: '',
+      health: '',
+    }),
     events: all,
     decisions: (most) =>
       inState('accepted', 'rejected', 'withdrawn')
         .map(({ event, changedAt, verdicts }) => ({ event, at: changedAt, verdict: verdicts.at(-1) ?? null }))
         .slice(0, most),
     event: (id) => byId.get(id) ?? null,
+    origins: ({ picture }) => sampleOrigins(picture, texts),
     notice: (id) => (byId.has(id) ? '<?xml version="1.0"?><notice/>\n' : null),
     morning: () => ({
       observatory: 'Kestrel Ridge',
@@ -159,17 +188,26 @@ export function memoryDesk(records: readonly EventRecord[] = [sampleRecord()], t
         suspectedSteps: { up: 9, down: 3 },
         confirmedSteps: { up: 4, down: 0 },
       },
-      mail: { waiting: 1, refused: 0, oldestWaitingHours: 0.3 },
+      heldBack: [],
+      mail: { waiting: 1, oldestWaitingHours: 0.3, undelivered: [] },
       warnings: ['The leap-second table ends on 2027-06-28.'],
     }),
-    pulsars: () => [
-      { pulsar: 'KR 0417+31', lastArrivalMjd: EPOCH + 3.4, locked: true, deltaNuOverNu90: 2.1e-9, delayDays90: 6.5 },
-      { pulsar: 'KR 1118+62', lastArrivalMjd: EPOCH + 3.3, locked: true, deltaNuOverNu90: 7.4e-10, delayDays90: 9 },
-      { pulsar: 'KR 2210-05', lastArrivalMjd: null, locked: false, deltaNuOverNu90: null, delayDays90: null },
-    ],
+    pulsars: () => samplePulsars(),
     feeds: () => [
-      { feed: 'north dish', lastFileAt: '2026-12-01T03:57:00.000Z', expectEveryHours: 24, silent: false },
-      { feed: 'south dish', lastFileAt: '2026-11-29T11:20:00.000Z', expectEveryHours: 24, silent: true },
+      {
+        feed: 'north dish',
+        lastFileAt: '2026-12-01T03:57:00.000Z',
+        hoursSince: 0.42,
+        expectEveryHours: 24,
+        silent: false,
+      },
+      {
+        feed: 'south dish',
+        lastFileAt: '2026-11-29T11:20:00.000Z',
+        hoursSince: 41,
+        expectEveryHours: 24,
+        silent: true,
+      },
     ],
     files: () => [sampleFile(texts.file ?? '2026-11/night-30.csv')],
     quarantine: () => quarantine,
@@ -181,6 +219,72 @@ export function memoryDesk(records: readonly EventRecord[] = [sampleRecord()], t
     put: (record) => void byId.set(record.event.id, record),
     verdictCount: () => all().reduce((sum, { verdicts }) => sum + verdicts.length, 0),
   };
+}
+
+/** As the store has them: the file's text in every field that a file can fill. */
+function sampleOrigins(picture: EventPicture | null, { file, reason }: DeskTexts): ArrivalOrigin[] {
+  return (picture?.points ?? []).map(({ key, mjd }, i) => ({
+    key,
+    timeText: `${mjd.toFixed(8)}0417`,
+    timeScale: 'UTC',
+    site: 'north',
+    receiver: reason ?? 'wide',
+    frequencyMhz: 1400,
+    uncertaintyUs: 950,
+    status: 'live',
+    feed: 'north dish',
+    file: file ?? `2026/night-${i}.csv`,
+    line: 2 + i,
+    takenInAt: '2026-12-01T03:57:00.000Z',
+  }));
+}
+
+/** Thirty arrivals that wander a little, a week apart. */
+export function sampleRecent(seed: number): RecentArrivals {
+  const random = xoroshiro128plus(seed);
+  const points = Array.from({ length: 30 }, (_, i) => {
+    const turns = 4e-3 * Math.sin(i / 5 + seed) + 3e-3 * (uniformFloat64(random) - 0.5);
+    return [7 * (i - 29), turns, 1e-3, i !== 11] as const;
+  });
+  return { points, everyDays: 7 };
+}
+
+export function samplePulsar(change: Partial<PulsarOverview> = {}): PulsarOverview {
+  const pulsar = change.pulsar ?? 'KR 0417+31';
+  return {
+    pulsar,
+    lastArrivalMjd: EPOCH + 3.4,
+    locked: true,
+    deltaNuOverNu90: 2.1e-9,
+    delayDays90: 6.5,
+    limitReason: null,
+    state: 'watched',
+    eventId: null,
+    arrivals: 142,
+    noise: { phaseWalk: 0, frequencyWalk: 1e-12, torqueWalk: 0, uncertaintyScale: 1.12, floorTurns: 0 },
+    frequencyHz: 6.3417701123349,
+    recent: sampleRecent(pulsar.length),
+    ...change,
+  };
+}
+
+function samplePulsars(): PulsarOverview[] {
+  return [
+    samplePulsar({ state: 'candidate', eventId: 'kr-0417-61370' }),
+    samplePulsar({ pulsar: 'KR 1118+62', lastArrivalMjd: EPOCH + 3.3, deltaNuOverNu90: 7.4e-10, delayDays90: 9 }),
+    samplePulsar({
+      pulsar: 'KR 2210-05',
+      lastArrivalMjd: null,
+      locked: false,
+      deltaNuOverNu90: null,
+      delayDays90: null,
+      limitReason: 'no arrivals yet',
+      state: 'nothing yet',
+      arrivals: null,
+      noise: null,
+      recent: null,
+    }),
+  ];
 }
 
 function sampleSigns(): VitalSigns {
@@ -247,7 +351,7 @@ function sampleFile(path: string): FileRecord {
   };
 }
 
-function sampleMail(subject: string): OutboxRecord {
+function sampleMail(subject: string): OutboxLine {
   return {
     id: 4,
     messageId: '<kr-0417-61370.2@kestrel.example>',
@@ -259,8 +363,13 @@ function sampleMail(subject: string): OutboxRecord {
     attempts: 1,
     dueAt: '2026-12-01T04:30:00.000Z',
     lastError: 'the server answered 451 try later',
+    tries: [
+      { begunAt: '2026-12-01T03:58:02.000Z', outcome: `put off: the server answered 451 ${subject}` },
+      { begunAt: '2026-12-01T04:22:02.000Z', outcome: null },
+    ],
     possibleDuplicate: false,
     createdAt: '2026-12-01T03:58:00.000Z',
+    mayLeaveAt: '2026-12-01T03:58:00.000Z',
     deliveredAt: null,
   };
 }

@@ -25,6 +25,7 @@ small, .quiet, .lead, .asof, .foot { color: var(--quiet); font-size: 0.93em; }
   padding: 0.6rem 1.25rem; border-bottom: 1px solid var(--line); background: var(--panel);
 }
 .top p { margin: 0; }
+.tools { display: flex; gap: 0.35rem; }
 .observatory { font-weight: 650; }
 .top nav { display: flex; gap: 0.15rem; flex: 1; }
 .top nav a { padding: 0.2rem 0.7rem; border-radius: 4px; text-decoration: none; color: var(--ink); }
@@ -35,14 +36,14 @@ small, .quiet, .lead, .asof, .foot { color: var(--quiet); font-size: 0.93em; }
 .live[data-kind="lost"] { color: var(--rejected); font-weight: 650; }
 .live[data-kind="changed"] { color: var(--waiting); }
 .alarm { border-bottom: 2px solid var(--rejected); background: var(--panel); padding: 0.6rem 1.25rem; }
-.alarm h2 { margin: 0; color: var(--rejected); }
+.alarm strong { color: var(--rejected); }
 .alarm ul, .caution ul { margin: 0.1rem 0; padding: 0; list-style: none; }
 .caution { border-left: 3px solid var(--waiting); background: var(--panel); padding: 0.45rem 0.8rem; margin: 0.9rem 0 0; }
 .foot { max-width: 78rem; margin: 0 auto; padding: 0.75rem 1.25rem 2rem; border-top: 1px solid var(--line); }
 kbd { font: inherit; border: 1px solid var(--line); border-radius: 3px; padding: 0 0.3em; background: var(--panel); }
 .plain { max-width: 36rem; padding-top: 3rem; }
 
-.glance { display: grid; grid-template-columns: repeat(auto-fit, minmax(11rem, 1fr)); gap: 0.6rem; margin-top: 1rem; }
+.glance { display: grid; grid-template-columns: repeat(auto-fit, minmax(15rem, 1fr)); gap: 0.6rem; margin-top: 1rem; }
 .tile {
   display: flex; flex-direction: column; gap: 0.05rem; padding: 0.55rem 0.75rem; text-decoration: none; color: var(--ink);
   background: var(--panel); border: 1px solid var(--line); border-left-width: 3px; border-radius: 4px;
@@ -64,7 +65,7 @@ td small, td.whole { white-space: nowrap; }
 .path, .note, td bdi { overflow-wrap: anywhere; }
 .path { display: inline-block; min-width: 7.5rem; }
 .note { white-space: pre-wrap; }
-td .note { display: -webkit-box; -webkit-box-orient: vertical; -webkit-line-clamp: 3; overflow: hidden; min-width: 9rem; }
+td .note { display: -webkit-box; -webkit-box-orient: vertical; -webkit-line-clamp: 3; overflow: hidden; min-width: 7rem; }
 .empty { color: var(--quiet); padding: 0.45rem 0; }
 a.event { font-weight: 600; text-decoration: none; white-space: nowrap; }
 a.event bdi { text-decoration: underline; overflow-wrap: normal; }
@@ -80,12 +81,6 @@ a.event bdi { text-decoration: underline; overflow-wrap: normal; }
 .numbers div { display: flex; justify-content: space-between; gap: 1rem; padding: 0.28rem 0; border-bottom: 1px solid var(--line); }
 .numbers dt { color: var(--quiet); flex: none; max-width: 50%; }
 .numbers dd { margin: 0; text-align: right; }
-.plot { margin: 0.5rem 0 0; background: var(--panel); border: 1px solid var(--line); border-radius: 4px; padding: 0.5rem; }
-/* The page has the title above already: the picture's own lines of title are cut off (130 of its 1080 px width). */
-.crop { overflow: hidden; max-width: 42rem; margin: 0 auto; }
-.crop > svg { display: block; width: 100%; height: auto; margin-top: -11.8%; }
-.plot text { font-family: inherit; }
-.plot figcaption { color: var(--quiet); font-size: 0.87rem; padding: 0.35rem 0.25rem 0; }
 .bars { list-style: none; padding: 0; margin: 0.5rem 0 0; display: grid; gap: 0.3rem; }
 .bars li { display: grid; grid-template-columns: 9.5rem 1fr 4rem; gap: 0.6rem; align-items: center; }
 .bar { width: 100%; height: 0.6rem; } .bar .track { fill: var(--track); } .bar .fill { fill: var(--fill); }
@@ -123,7 +118,7 @@ blockquote { margin: 0.2rem 0; }
   .top nav { order: 3; flex-basis: 100%; margin-left: -0.4rem; }
   .glance { grid-template-columns: 1fr 1fr; }
   .numbers { grid-template-columns: 1fr; }
-  .keys { display: none; }
+  .hint { display: none; }
   table, tbody, tr, td { display: block; }
   thead { display: none; }
   table { border: 0; background: none; }
@@ -140,11 +135,10 @@ blockquote { margin: 0.2rem 0; }
   html { font-size: 9.5pt; }
   th, td { padding: 0.25rem 0.45rem; }
   td.whole, td small { white-space: normal; }
-  td .note { min-width: 0; }
-  .crop { max-width: 13cm; }
+  td .note { min-width: 5.5rem; }
   .bars { max-width: 13cm; }
   .numbers { grid-template-columns: 1fr 1fr; }
-  nav, .skip, .live, .verdict, .downloads, .keys { display: none !important; }
+  nav, .skip, .live, .verdict, .downloads, .hint { display: none !important; }
   main, .top, .foot { max-width: none; padding-left: 0; padding-right: 0; }
   a { color: inherit; text-decoration: none; }
   .spread { display: block; }

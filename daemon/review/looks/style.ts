@@ -1,3 +1,4 @@
+import { CHART_STYLE } from './chartStyle.ts';
 import { LAYOUT_STYLE } from './layoutStyle.ts';
 
 /**
@@ -48,6 +49,9 @@ function custom(colours: Readonly<Record<string, string>>): string {
     .join(' ');
 }
 
+/** The system's light, unless the reader chose one. Paper is always by day. */
 export const STYLE = `:root { color-scheme: light dark; ${custom(DAY)} }
-@media screen and (prefers-color-scheme: dark) { :root { ${custom(NIGHT)} } }
-${LAYOUT_STYLE}`;
+:root[data-light="day"] { color-scheme: light; }
+@media screen and (prefers-color-scheme: dark) { :root:not([data-light="day"]) { ${custom(NIGHT)} } }
+@media screen { :root[data-light="night"] { color-scheme: dark; ${custom(NIGHT)} } }
+${LAYOUT_STYLE}${CHART_STYLE}`;

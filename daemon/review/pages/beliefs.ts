@@ -18,9 +18,13 @@ import {
 export function explanationBars(event: PulsarEvent): Html {
   const ranked = Object.entries(event.explanations).toSorted(([, a], [, b]) => b - a);
   if (ranked.length === 0) return html`<p class="empty">No probabilities are on record.</p>`;
-  return html`<ul class="bars">${ranked.map(
-    ([name, probability]) => html`<li>
-      <span class="what">${explanationName(name)}</span>
+  return bars(ranked.map(([name, probability]) => ({ name: explanationName(name), probability })));
+}
+
+function bars(rows: readonly { readonly name: string; readonly probability: number }[]): Html {
+  return html`<ul class="bars">${rows.map(
+    ({ name, probability }) => html`<li>
+      <span class="what">${name}</span>
       <svg class="bar" viewBox="0 0 100 4" preserveAspectRatio="none" aria-hidden="true" focusable="false"><rect class="track" width="100" height="4"/><rect class="fill" width="${(100 * probability).toFixed(2)}" height="4"/></svg>
       <span class="how">${percent(probability)}</span>
     </li>`,
@@ -30,9 +34,13 @@ export function explanationBars(event: PulsarEvent): Html {
 /** Between sparse arrivals a whole number of turns can hide: the other step sizes that fit. */
 export function sizeTable(event: PulsarEvent): Html {
   if (event.aliases.length === 0) return html``;
-  return html`<section aria-labelledby="sizes"><h2 id="sizes">Step sizes that fit</h2>
+  const sizes = event.aliases.map(({ deltaNuHz, probability }) => ({
+    name: quantity({ value: deltaNuHz, interval68: [deltaNuHz, deltaNuHz], unit: 'Hz', scale: 'prefix' }),
+    probability,
+  }));
+  return html`<section aria-labelledby="sizes"><h2 id="sizes">Sizes Δν that fit</h2>
     <p class="lead">Whole turns may have been lost between arrivals; more arrivals settle it.</p>
-    ${table({ caption: 'Step sizes that fit', columns: SIZES, rows: event.aliases, empty: '' })}</section>`;
+    ${bars(sizes)}</section>`;
 }
 
 /** Every revision of the event, newest first. */
@@ -44,15 +52,6 @@ export function beliefTable(history: readonly EventChange[]): Html {
     empty: 'No earlier belief is on record.',
   });
 }
-
-const SIZES: readonly Column<PulsarEvent['aliases'][number]>[] = [
-  {
-    head: 'Δν',
-    cell: ({ deltaNuHz }) =>
-      quantity({ value: deltaNuHz, interval68: [deltaNuHz, deltaNuHz], unit: 'Hz', scale: 'prefix' }),
-  },
-  { head: 'Probability', cell: (alias) => percent(alias.probability), numeric: true },
-];
 
 function fractionText({ fraction, fractionInterval68 }: PulsarEvent['recovery']['terms'][number]): string {
   return quantity({ value: fraction, interval68: fractionInterval68, unit: '', scale: 'power' });
@@ -68,17 +67,15 @@ const BELIEFS: readonly Column<EventChange>[] = [
     cell: ({ event }) => html`${event.explanation} <small>${ownProbability(event)}</small>`,
   },
   { head: 'Epoch', cell: ({ event }) => mjdAndDay(event.epochMjd)[0] },
-  { head: 'Size', cell: ({ event }) => sizeText(event) || ABSENT, whole: true },
+  { head: 'Size', cell: ({ event }) => sizeText(event) || ABSENT },
   {
     head: 'Δν̇/ν̇',
     cell: ({ event: { deltaNuDotOverNuDot: value, deltaNuDotOverNuDotInterval68: interval68 } }) =>
       value === null ? ABSENT : quantity({ value, interval68, unit: '', scale: 'power' }),
-    whole: true,
   },
   {
     head: 'Q',
     cell: ({ event }) => event.recovery.terms.map(fractionText).join(', ') || ABSENT,
-    whole: true,
   },
   { head: 'Arrivals', cell: ({ event }) => String(event.arrivalsUsed), numeric: true },
   { head: 'Mail', cell: ({ alert }) => alert ?? ABSENT },

@@ -1,8 +1,11 @@
 import { html } from 'hono/html';
-import type { EventRecord } from '../../records.ts';
+import type { PulsarEvent } from '../../../detectors/steps/pulsarEvent.ts';
+import type { ArrivalOrigin, EventRecord } from '../../records.ts';
 import { beliefTable, explanationBars, sizeTable } from './beliefs.ts';
+import { intervalTable } from './intervals.ts';
 import type { Html } from './layout.ts';
-import { eventPlot } from './plots.ts';
+import { originsTable } from './origins.ts';
+import { eventPlots } from './plots.ts';
 import { conflictView, type VerdictSection, verdictForm } from './verdict.ts';
 import {
   eventName,
@@ -16,36 +19,63 @@ import {
   visible,
 } from './wording.ts';
 
-/** One event: what is believed and how surely, the picture, and the place to judge it. */
-export function eventPage(record: EventRecord, verdict: VerdictSection): Html {
+export interface EventContent {
+  readonly record: EventRecord;
+  readonly origins: readonly ArrivalOrigin[];
+  /** In the order of the queue; null at its ends. */
+  readonly neighbours: { readonly previous: PulsarEvent | null; readonly next: PulsarEvent | null };
+}
+
+/** One event: what is believed and how surely, the pictures, what they rest on, and the place to judge it. */
+export function eventPage(content: EventContent, verdict: VerdictSection): Html {
+  const { record, origins } = content;
   const { event } = record;
   const sheet = eventSheet(event, record.picture, 'UTC');
   return html`
-    <header class="subject">
+    ${siblings(content)}
+    <div data-fresh="subject"><header class="subject">
       <h1><bdi>${subjectOf(event)}</bdi>: ${eventName(event)}</h1>
       <p class="state"><span class="mark ${event.state}" aria-hidden="true">${STATE_MARK[event.state]}</span> ${stateText(event.state)} <small>revision ${record.revision}</small></p>
     </header>
     <p>${sheet.meaning}</p>
-    ${sheet.caution === '' ? '' : html`<p class="caution">${sheet.caution}</p>`}
+    ${sheet.caution === '' ? '' : html`<p class="caution">${sheet.caution}</p>`}</div>
     ${conflictView(record, verdict)}
     <div class="spread">
       <div class="evidence">
-        <section aria-labelledby="numbers"><h2 id="numbers">Numbers</h2>
+        <section data-fresh="numbers" aria-labelledby="numbers"><h2 id="numbers">In short</h2>
           <dl class="numbers">${sheet.rows.map(({ label, value }) => html`<div><dt>${label}</dt><dd>${value}</dd></div>`)}</dl>
         </section>
-        <section aria-labelledby="picture"><h2 id="picture">Phase deviation and ν</h2>${figure(record)}</section>
-        ${sizeTable(event)}
+        <section data-fresh="plots" aria-labelledby="picture"><h2 id="picture">Phase, ν and ν̇</h2>${figures(record)}</section>
+        <section data-fresh="intervals" aria-labelledby="intervals"><h2 id="intervals">Measured values</h2>${intervalTable(event)}</section>
+        <div data-fresh="sizes">${sizeTable(event)}</div>
       </div>
       <div class="judgement">
-        ${verdictForm(record, verdict)}
-        ${todo('What to check', sheet.check)}
-        ${todo('What to observe', sheet.observe)}
-        <section aria-labelledby="explanations"><h2 id="explanations">Explanations</h2>${explanationBars(event)}</section>
+        <div data-fresh="verdict-form">${verdictForm(record, verdict)}</div>
+        <div data-fresh="todo">${todo('What to check', sheet.check)}
+        ${todo('What to observe', [...sheet.observe, ...planHint(event)])}</div>
+        <section data-fresh="explanations" aria-labelledby="explanations"><h2 id="explanations">Explanations</h2>${explanationBars(event)}</section>
         ${downloads(record)}
       </div>
     </div>
-    <section aria-labelledby="verdicts"><h2 id="verdicts">Verdicts</h2>${verdictList(record)}</section>
-    <section aria-labelledby="history"><h2 id="history">How the belief changed</h2>${beliefTable(record.history)}</section>`;
+    <section data-fresh="verdicts" aria-labelledby="verdicts"><h2 id="verdicts">Verdicts</h2>${verdictList(record)}</section>
+    <section data-fresh="history" aria-labelledby="history"><h2 id="history">How the belief changed</h2>${beliefTable(record.history)}</section>
+    <section data-fresh="origins" aria-labelledby="origins"><h2 id="origins">What it rests on</h2>${originsTable(origins, record.picture)}</section>`;
+}
+
+function siblings({ neighbours: { previous, next } }: EventContent): Html {
+  const link = (event: PulsarEvent | null, rel: 'prev' | 'next', words: string) =>
+    event === null
+      ? ''
+      : html`<a rel="${rel}" href="${eventPath(event.id)}">${words}: <bdi>${subjectOf(event)}</bdi></a>`;
+  return html`<nav class="siblings" data-fresh="siblings" aria-label="Queue"><a href="/">Tonight</a> ${link(previous, 'prev', 'Previous')} ${link(next, 'next', 'Next')} <a href="#verdict">Verdict</a></nav>`;
+}
+
+/** Working out nights takes longer than a page may. */
+function planHint(event: PulsarEvent): string[] {
+  const isOver = event.state === 'rejected' || event.state === 'withdrawn';
+  return isOver || event.site !== null
+    ? []
+    : [`Nights, hours and what each would settle: spinvigil plan "${visible(event.pulsar)}"`];
 }
 
 function todo(heading: string, lines: readonly string[]): Html {
@@ -53,15 +83,8 @@ function todo(heading: string, lines: readonly string[]): Html {
   return html`<section><h2>${heading}</h2><ul class="todo">${lines.map((line) => html`<li>${line}</li>`)}</ul></section>`;
 }
 
-function figure(record: EventRecord): Html {
-  const { event, picture } = record;
-  const plot = eventPlot(record, `${subjectOf(event)}: ${eventName(event)}`);
-  if (picture === null || plot === null) return html`<p class="empty">There is no picture of this event.</p>`;
-  const aside = picture.points.filter((point) => !point.used).length;
-  return html`<figure class="plot">
-    <div class="crop">${plot}</div>
-    <figcaption>Against the spin-down before the event. ${picture.points.length} arrivals, ${aside} of them set aside.</figcaption>
-  </figure>`;
+function figures({ picture }: EventRecord): Html {
+  return picture === null ? html`<p class="empty">There is no picture of this event.</p>` : eventPlots(picture);
 }
 
 function downloads({ event }: EventRecord): Html {

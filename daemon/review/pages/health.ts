@@ -9,6 +9,7 @@ export function healthPage(signs: VitalSigns, now: Date): Html {
   const upHours = (now.getTime() - Date.parse(signs.startedAt)) / HOUR_MS;
   return html`
     <h1>Health</h1>
+    <div data-fresh="vital">
     <dl class="numbers">
       <div><dt>Version</dt><dd>${program}</dd></div>
       <div><dt>Node</dt><dd>${node}</dd></div>
@@ -29,7 +30,8 @@ export function healthPage(signs: VitalSigns, now: Date): Html {
     <section aria-labelledby="heartbeats">
       <h2 id="heartbeats">Heartbeat</h2>
       ${table({ caption: 'Heartbeat', columns: HEARTBEATS, rows: signs.heartbeats, empty: 'None is configured: if the machine dies, nobody is told.' })}
-    </section>`;
+    </section>
+    </div>`;
 }
 
 const HOUR_MS = 3_600_000;

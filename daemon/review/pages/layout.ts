@@ -45,14 +45,16 @@ export function page(frame: Frame, content: PageContent): Html {
               html`<a href="${section.path}"${section.name === content.section ? html` aria-current="page"` : ''}>${section.name}</a>`,
           )}
         </nav>
-        <p class="asof">as of <time datetime="${frame.now.toISOString()}">${utc(frame.now.toISOString())} UTC</time>${frame.reviewer === null ? '' : html` · <a href="/account"><bdi>${visible(frame.reviewer)}</bdi></a>`}</p>
+        <p class="asof" data-fresh="as-of">as of <time datetime="${frame.now.toISOString()}">${utc(frame.now.toISOString())} UTC</time>${frame.reviewer === null ? '' : html` · <a href="/account"><bdi>${visible(frame.reviewer)}</bdi></a>`}</p>
+        <p class="tools"><button type="button" id="light" hidden>Light</button> <button type="button" data-opens="keys" hidden>Keys</button></p>
       </header>
       <p id="live" class="live" role="status"></p>
-      ${healthBar(frame.health)}
+      <div data-fresh="trouble">${healthBar(frame.health)}</div>
       <main id="main">${content.main}</main>
       <footer class="foot">
-        <p>Intervals are 68 %. Times are UTC; epochs are MJD (TDB) at the barycentre. Positive Δν is a spin-up.</p>
-      </footer>`,
+        <p>Intervals are 68 % where nothing else is said. Times are UTC; epochs are MJD (TDB) at the barycentre. Positive Δν is a spin-up.</p>
+      </footer>
+      ${keyHelp()}`,
   });
 }
 
@@ -88,6 +90,7 @@ function document(parts: { title: string; version: string; live: boolean; body: 
     <meta name="color-scheme" content="light dark">
     <title>${parts.title}</title>
     ${parts.head ?? ''}
+    <script src="/assets/theme.js"></script>
     <link rel="icon" href="/assets/mark.svg" type="image/svg+xml">
     <link rel="stylesheet" href="/assets/review.css">
     <script src="/assets/review.js" defer></script>
@@ -99,9 +102,35 @@ function document(parts: { title: string; version: string; live: boolean; body: 
 function healthBar(health: WatchHealth): Html {
   if (health.ok) return html``;
   return html`<section class="alarm" aria-label="Trouble with the watch">
-    <h2>The watch needs attention</h2>
+    <p><strong>The watch needs attention</strong></p>
     <ul>${health.problems.map((problem) => html`<li>${visible(problem)}</li>`)}</ul>
   </section>`;
+}
+
+const KEYS: readonly (readonly [keys: readonly string[], does: string])[] = [
+  [['j', 'k'], 'next and previous event, in a list and on an event’s page'],
+  [['Enter'], 'opens the event that has the focus'],
+  [['a', 'r'], 'on an event: accept or reject, and on to the note; nothing is signed yet'],
+  [['o'], 'on a decided event: reopen'],
+  [['Esc'], 'out of the note, and out of this help'],
+  [['/'], 'on Pulsars: into the filter'],
+  [['1', '5'], 'Tonight, Pulsars, Feeds, Mail, Health'],
+  [['+', '−'], 'in a plot: zoom'],
+  [['←', '→'], 'in a plot: earlier and later'],
+  [['↑', '↓'], 'in a plot: the value before and after, in words'],
+  [['0'], 'in a plot: all of it again'],
+  [['?'], 'this help'],
+];
+
+function keyHelp(): Html {
+  return html`<dialog id="keys" aria-labelledby="keys-heading">
+        <h2 id="keys-heading">Keys</h2>
+        <dl class="key-list">${KEYS.map(
+          ([keys, does]) => html`<div><dt>${keys.map((key) => html`<kbd>${key}</kbd> `)}</dt><dd>${does}</dd></div>`,
+        )}</dl>
+        <p id="chart-keys">In a plot: plus and minus zoom, left and right move, up and down tell the values one by one, 0 shows all.</p>
+        <form method="dialog"><button>Close</button></form>
+      </dialog>`;
 }
 
 export interface Column<Row> {

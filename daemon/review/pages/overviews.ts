@@ -1,20 +1,11 @@
 import { html } from 'hono/html';
 import type { QuarantinedRow } from '../../../alerts/morningReview.ts';
-import type { FileRecord, OutboxRecord } from '../../records.ts';
-import type { FeedOverview, PulsarOverview } from '../desk.ts';
+import type { FileRecord } from '../../records.ts';
+import type { FeedOverview, OutboxLine } from '../desk.ts';
 import { type Column, type Html, table } from './layout.ts';
-import { ABSENT, eventPath, mjdAndDay, quantity, span, utc, visible } from './wording.ts';
+import { ABSENT, eventPath, span, utc, visible } from './wording.ts';
 
-/** The pages that only report: pulsars, feeds, mail. */
-
-export function pulsarsPage(pulsars: readonly PulsarOverview[]): Html {
-  const limited = pulsars.some(({ deltaNuOverNu90 }) => deltaNuOverNu90 !== null);
-  const columns = limited ? [...PULSARS, ...LIMITS] : PULSARS;
-  return html`
-    <h1>Pulsars</h1>
-    ${limited ? html`<p class="lead">What silence is worth: the smallest glitch that would have been confirmed with 90 % probability, and how long that would have taken.</p>` : ''}
-    ${table({ caption: 'Pulsars', columns, rows: pulsars, empty: 'No pulsar is configured.' })}`;
-}
+/** The pages that only report: feeds and mail. */
 
 export interface FeedsContent {
   readonly feeds: readonly FeedOverview[];
@@ -27,64 +18,38 @@ export interface FeedsContent {
 export function feedsPage(content: FeedsContent): Html {
   return html`
     <h1>Feeds</h1>
-    ${table({ caption: 'Feeds', columns: FEEDS, rows: content.feeds, empty: 'No feed is configured.' })}
-    <section aria-labelledby="quarantine">
+    <div data-fresh="feeds">${table({ caption: 'Feeds', columns: FEEDS, rows: content.feeds, empty: 'No feed is configured.' })}</div>
+    <section data-fresh="quarantine" aria-labelledby="quarantine">
       <h2 id="quarantine">Quarantine</h2>
       <p class="lead">Rows and files that could not be used, newest first${cutAt(content.quarantine, content.most)}. Deliver the file again at the same path to replace what it said.</p>
       ${table({ caption: 'Quarantine', columns: QUARANTINE, rows: content.quarantine, empty: 'Nothing is quarantined.' })}
     </section>
-    <section aria-labelledby="files">
+    <section data-fresh="files" aria-labelledby="files">
       <h2 id="files">Files taken in</h2>
       <p class="lead">Newest first${cutAt(content.files, content.most)}.</p>
       ${table({ caption: 'Files taken in', columns: FILES, rows: content.files, empty: 'No file has been taken in yet.' })}
     </section>`;
 }
 
-export function mailPage(outbox: readonly OutboxRecord[], most: number): Html {
+export function mailPage(outbox: readonly OutboxLine[], most: number): Html {
   return html`
     <h1>Mail</h1>
     <p class="lead">Every message and what became of it, newest first${cutAt(outbox, most)}.</p>
-    ${table({ caption: 'Mail', columns: MAIL, rows: outbox, empty: 'No mail has been written yet.' })}`;
+    <div data-fresh="mail">${table({ caption: 'Mail', columns: MAIL, rows: outbox, empty: 'No mail has been written yet.' })}</div>`;
 }
 
 function cutAt(rows: readonly unknown[], most: number): string {
   return rows.length < most ? '' : `, the last ${most}`;
 }
 
-const PULSARS: readonly Column<PulsarOverview>[] = [
-  { head: 'Pulsar', cell: (row) => html`<bdi>${visible(row.pulsar)}</bdi>` },
-  { head: 'Last arrival', cell: lastArrival },
-  {
-    head: 'Pulse count',
-    cell: (row) => (row.locked ? 'settled' : html`<strong class="attention">open: alerts are held</strong>`),
-  },
-];
-
-/** Shown once limits are known. */
-const LIMITS: readonly Column<PulsarOverview>[] = [
-  { head: 'Smallest Δν/ν', cell: (row) => smallest(row.deltaNuOverNu90), numeric: true },
-  {
-    head: 'Confirmed after',
-    cell: (row) => (row.delayDays90 === null ? ABSENT : span(row.delayDays90 * 24)),
-    numeric: true,
-  },
-];
-
-function lastArrival({ lastArrivalMjd }: PulsarOverview): Html | string {
-  if (lastArrivalMjd === null) return ABSENT;
-  const [mjd, day] = mjdAndDay(lastArrivalMjd);
-  return html`${mjd} <small>${day}</small>`;
-}
-
-function smallest(size: number | null): string {
-  return size === null
-    ? 'not yet known'
-    : quantity({ value: size, interval68: [size, size], unit: '', scale: 'power' });
-}
-
 const FEEDS: readonly Column<FeedOverview>[] = [
   { head: 'Feed', cell: (row) => html`<bdi>${visible(row.feed)}</bdi>` },
   { head: 'Last file, UTC', cell: (row) => (row.lastFileAt === null ? ABSENT : utc(row.lastFileAt)), whole: true },
+  {
+    head: 'How long ago',
+    cell: (row) => (row.hoursSince === null ? 'nothing yet' : span(Math.max(0, row.hoursSince))),
+    numeric: true,
+  },
   {
     head: 'Expected every',
     cell: (row) => (row.expectEveryHours === null ? ABSENT : span(row.expectEveryHours)),
@@ -121,7 +86,7 @@ const FILES: readonly Column<FileRecord>[] = [
   },
 ];
 
-const MAIL: readonly Column<OutboxRecord>[] = [
+const MAIL: readonly Column<OutboxLine>[] = [
   { head: 'Written, UTC', cell: (row) => utc(row.createdAt), whole: true },
   { head: 'To', cell: (row) => html`<bdi>${visible(row.recipient)}</bdi>`, whole: true },
   {
@@ -133,11 +98,22 @@ const MAIL: readonly Column<OutboxRecord>[] = [
   },
   { head: 'Kind', cell: (row) => row.kind },
   { head: 'State', cell: mailState },
-  { head: 'Attempts', cell: (row) => String(row.attempts), numeric: true },
-  { head: 'Last error', cell: (row) => (row.lastError === null ? ABSENT : html`<bdi>${visible(row.lastError)}</bdi>`) },
+  { head: 'Attempts', cell: attempts },
 ];
 
-function mailState(row: OutboxRecord): Html | string {
+/** Each with its end; of those from before they were kept, the number and the last error. */
+function attempts({ attempts: number, tries, lastError }: OutboxLine): Html | string {
+  if (tries.length === 0) {
+    if (number === 0) return lastError === null ? 'none yet' : html`<bdi>${visible(lastError)}</bdi>`;
+    return html`${number}${lastError === null ? '' : html`, the last: <bdi>${visible(lastError)}</bdi>`}`;
+  }
+  return html`<ol class="tries">${tries.map(
+    ({ begunAt, outcome }) =>
+      html`<li><small>${utc(begunAt)}</small> <bdi>${outcome === null ? 'under way' : visible(outcome)}</bdi></li>`,
+  )}</ol>`;
+}
+
+function mailState(row: OutboxLine): Html | string {
   switch (row.state) {
     case 'delivered':
       return row.deliveredAt === null ? 'delivered' : html`delivered <small>${utc(row.deliveredAt)}</small>`;

@@ -2,7 +2,7 @@ import { html } from 'hono/html';
 import type { MorningReview } from '../../../alerts/morningReview.ts';
 import { falseAlertLines } from '../../../alerts/wording/falseAlerts.ts';
 import type { PulsarEvent } from '../../../detectors/steps/pulsarEvent.ts';
-import type { Decision, PulsarOverview } from '../desk.ts';
+import type { Decision, PulsarOverview, WatchHealth } from '../desk.ts';
 import { type Column, type Html, table } from './layout.ts';
 import {
   ABSENT,
@@ -26,26 +26,27 @@ export interface TonightContent {
   readonly morning: MorningReview;
   readonly decisions: readonly Decision[];
   readonly pulsars: readonly PulsarOverview[];
+  readonly health: WatchHealth;
 }
 
 /** The first page: is anything waiting, is the watch well, what was decided lately. */
 export function tonightPage(content: TonightContent): Html {
   const { morning } = content;
   return html`
-    <h1 class="headline">${headline(content)}</h1>
-    ${glance(content)}
-    ${warnings(morning)}
-    <section aria-labelledby="waiting">
+    <h1 class="headline" data-fresh="headline">${headline(content)}</h1>
+    <div data-fresh="glance">${glance(content)}
+    ${warnings(morning)}</div>
+    <section data-fresh="waiting" aria-labelledby="waiting">
       <h2 id="waiting">Waiting for a verdict</h2>
       <p class="lead">Most credible first. A candidate must be vetted before it is announced.</p>
       ${table({ caption: 'Waiting for a verdict', columns: QUEUE, rows: morning.waiting, empty: 'No candidate waits.' })}
     </section>
-    <section aria-labelledby="suspected">
+    <section data-fresh="suspected" aria-labelledby="suspected">
       <h2 id="suspected">Suspected</h2>
       <p class="lead">Not yet credible enough to call; the next arrivals decide.</p>
       ${table({ caption: 'Suspected', columns: QUEUE, rows: morning.suspected, empty: 'Nothing is suspected.' })}
     </section>
-    <section aria-labelledby="decided">
+    <section data-fresh="decided" aria-labelledby="decided">
       <h2 id="decided">Recently decided</h2>
       ${table({
         caption: 'Recently decided',
@@ -54,11 +55,11 @@ export function tonightPage(content: TonightContent): Html {
         empty: 'Nothing has been decided yet.',
       })}
     </section>
-    <section aria-labelledby="false-alerts">
+    <section data-fresh="false-alerts" aria-labelledby="false-alerts">
       <h2 id="false-alerts">False alerts</h2>
       ${falseAlertLines(morning.falseAlerts).map((line) => html`<p class="lead">${line}</p>`)}
     </section>
-    <p class="keys quiet">Keys: <kbd>j</kbd> next event, <kbd>k</kbd> previous, <kbd>Enter</kbd> opens it.</p>`;
+    <p class="hint quiet">Keys: <kbd>j</kbd> next event, <kbd>k</kbd> previous, <kbd>Enter</kbd> opens it, <kbd>?</kbd> all keys.</p>`;
 }
 
 function headline({ morning, pulsars }: TonightContent): string {
@@ -71,16 +72,18 @@ function headline({ morning, pulsars }: TonightContent): string {
   return `Quiet: no candidate waits, nothing is suspected; ${watched}.`;
 }
 
-function glance({ morning, pulsars }: TonightContent): Html {
+function glance(content: TonightContent): Html {
+  const { morning, health, pulsars } = content;
   const silentFeeds = morning.silentFeeds.map((feed) => `${feed.feed}: ${span(feed.hoursSilent)}`);
   const tiles: Tile[] = [
     {
-      label: 'Taken in',
-      value: count(morning.intake.arrivals, 'arrival', 'arrivals'),
-      detail: `${count(morning.intake.files, 'file', 'files')} since ${utc(morning.since)} UTC`,
-      link: '/feeds',
-      alert: false,
+      label: 'The watch',
+      value: health.ok ? 'well' : 'needs attention',
+      detail: health.ok ? 'every part makes progress' : (health.problems[0] ?? ''),
+      link: '/health',
+      alert: !health.ok,
     },
+    lastArrivalTile(content),
     {
       label: 'Silent feeds',
       value: String(morning.silentFeeds.length),
@@ -92,7 +95,7 @@ function glance({ morning, pulsars }: TonightContent): Html {
       label: 'Silent pulsars',
       value: String(morning.silentPulsars.length),
       detail: longestSilence(morning),
-      link: '/pulsars',
+      link: '/pulsars?sort=last',
       alert: morning.silentPulsars.length > 0,
     },
     {
@@ -101,8 +104,8 @@ function glance({ morning, pulsars }: TonightContent): Html {
       detail:
         morning.unlockedPulsars.length === 0
           ? `all ${pulsars.length} pulsars are settled`
-          : `alerts held: ${morning.unlockedPulsars.join(', ')}`,
-      link: '/pulsars',
+          : `alerts held: ${someOf(morning.unlockedPulsars)}`,
+      link: '/pulsars?state=count+open',
       alert: morning.unlockedPulsars.length > 0,
     },
     {
@@ -117,10 +120,44 @@ function glance({ morning, pulsars }: TonightContent): Html {
       value: String(morning.mail.waiting),
       detail: mailDetail(morning),
       link: '/mail',
-      alert: morning.mail.waiting > 0 || morning.mail.refused > 0,
+      alert: morning.mail.waiting > 0 || morning.mail.undelivered.length > 0,
     },
+    falseAlertTile(morning),
   ];
   return html`<section class="glance" aria-label="The watch at a glance">${tiles.map(tile)}</section>`;
+}
+
+function lastArrivalTile({ morning, pulsars }: TonightContent): Tile {
+  const last = Math.max(...pulsars.map(({ lastArrivalMjd }) => lastArrivalMjd ?? 0), 0);
+  const { arrivals, files } = morning.intake;
+  const lately = `${count(arrivals, 'arrival', 'arrivals')} in ${count(files, 'file', 'files')} since ${utc(morning.since)}`;
+  const [mjd, day] = mjdAndDay(last);
+  return {
+    label: 'Last arrival',
+    value: last === 0 ? 'none yet' : mjd,
+    detail: last === 0 ? lately : `${day}; ${lately}`,
+    link: '/feeds',
+    alert: false,
+  };
+}
+
+/** The operator's budget, and what came of the alerts so far. */
+function falseAlertTile({ falseAlerts }: MorningReview): Tile {
+  const { budgetPerYear, falseInLastYear, accepted, rejected, withdrawn } = falseAlerts;
+  return {
+    label: 'False in the last year',
+    value: `${falseInLastYear} of ${plain(budgetPerYear, 2)} allowed`,
+    detail: `ever: ${accepted} accepted, ${rejected} rejected, ${withdrawn} withdrawn`,
+    link: '#false-alerts',
+    alert: falseInLastYear > budgetPerYear,
+  };
+}
+
+const MOST_NAMED = 3;
+
+function someOf(names: readonly string[]): string {
+  const more = names.length - MOST_NAMED;
+  return `${names.slice(0, MOST_NAMED).join(', ')}${more > 0 ? ` and ${more} more` : ''}`;
 }
 
 interface Tile {
@@ -149,7 +186,7 @@ function longestSilence(morning: MorningReview): string {
 function mailDetail({ mail }: MorningReview): string {
   const parts: string[] = [];
   if (mail.oldestWaitingHours !== null) parts.push(`oldest for ${span(mail.oldestWaitingHours)}`);
-  if (mail.refused > 0) parts.push(`${mail.refused} refused`);
+  if (mail.undelivered.length > 0) parts.push(`${mail.undelivered.length} not delivered`);
   return parts.length === 0 ? 'all delivered' : parts.join(', ');
 }
 
@@ -184,7 +221,7 @@ const DECIDED: readonly Column<Decision>[] = [
 ];
 
 function eventLink(event: PulsarEvent): Html {
-  return html`<a class="event" href="${eventPath(event.id)}"><span class="mark ${event.state}" aria-hidden="true">${STATE_MARK[event.state]}</span><bdi>${subjectOf(event)}</bdi></a>`;
+  return html`<a class="event" href="${eventPath(event.id)}" data-says="${subjectOf(event)}, ${eventName(event)}"><span class="mark ${event.state}" aria-hidden="true">${STATE_MARK[event.state]}</span><bdi>${subjectOf(event)}</bdi></a>`;
 }
 
 function epoch(event: PulsarEvent): Html {

@@ -60,6 +60,10 @@ describe('a configuration', () => {
         digestCron: '0 8 * * *',
         historicalAfterDays: 30,
         updateWhenSharperBy: 2,
+        mailSuspected: false,
+        quietHours: null,
+        mostPerHour: 10,
+        alsoTo: [],
       },
       review: {
         host: '127.0.0.1',

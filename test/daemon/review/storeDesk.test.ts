@@ -57,7 +57,8 @@ test('shows what is on record', () => {
   expect(desk.files(10).map(({ path, rows, stored }) => [path, rows, stored])).toEqual([['night-1.csv', 3, 3]]);
   expect(desk.outbox(10).map(({ state, eventId }) => [state, eventId])).toContainEqual(['queued', ID]);
   expect(desk.pulsars().map(({ pulsar }) => pulsar)).toEqual(['KR 0417+31', 'KR 1118+62']);
-  expect(desk.feeds()).toEqual([{ feed: 'nightly', lastFileAt: AT, expectEveryHours: 24, silent: false }]);
+  const nightly = { feed: 'nightly', lastFileAt: AT, hoursSince: 1, expectEveryHours: 24, silent: false };
+  expect(desk.feeds()).toEqual([nightly]);
   nowMs += 3 * 86_400_000;
   expect(desk.feeds()[0]?.silent).toBe(true);
   expect(desk.notice(ID, new Date(nowMs))).toContain('VOEvent');

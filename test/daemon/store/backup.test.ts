@@ -17,7 +17,7 @@ beforeEach(() => {
 afterEach(() => folder.remove());
 
 describe('a backup', () => {
-  test('taken while files come in is whole, a single file, and stands at some commit', async () => {
+  test('C12: taken while files come in is whole, a single file, and stands at some commit', async () => {
     const store = open(state);
     for (let n = 0; n < 10; n += 1) store.commitIntake(fileBatch(100 * n, 100, { path: `${n}.csv` }));
     const running = store.backup(copy);
@@ -51,7 +51,7 @@ describe('a backup', () => {
     db.close();
   });
 
-  test('that cannot be made leaves the older copy and no remains', async () => {
+  test('C6, C12: that cannot be made leaves the older copy and no remains', async () => {
     const store = open(state);
     await expect(store.backup(join(folder.path, 'no such folder', 'copy.db'))).rejects.toThrow();
     for (const own of ['record.db', 'record.db-wal', 'lock.db', '../state/record.db']) {
@@ -80,7 +80,7 @@ describe('a restore', () => {
     restored.close();
   });
 
-  test('keeps the present record aside, and repeats no mail that left since', async () => {
+  test('C11: keeps the present record aside, and repeats no mail that left since', async () => {
     const store = open(state);
     store.commitIntake({ ...fileBatch(0, 1), events: [upsert()], messages: [sampleMessage()] });
     store.commitNotice(notice(1), AT);

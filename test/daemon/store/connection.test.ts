@@ -36,7 +36,7 @@ describe('the settings that the promises rest on', () => {
     expect(statSync(file).mode & 0o777).toBe(0o600);
   });
 
-  test('a weaker one is refused', () => {
+  test('C13: a weaker one is refused', () => {
     const db = connect(join(folder.path, 'record.db'), { mustExist: false });
     db.pragma('synchronous = NORMAL');
     expect(() => requireFullSynchronisation(db)).toThrow(UnsuitableLibrary);
@@ -46,7 +46,7 @@ describe('the settings that the promises rest on', () => {
     db.close();
   });
 
-  test.each(['3.51.2', '3.50.9', '2.99.99', '3.7.0', '3'])('SQLite %s is too old', (version) => {
+  test.each(['3.51.2', '3.50.9', '2.99.99', '3.7.0', '3'])('C13: SQLite %s is too old', (version) => {
     expect(() => requireLibrary(version)).toThrow(UnsuitableLibrary);
   });
   test.each(['3.51.3', '3.51.10', '3.53.2', '4.0.0'])('SQLite %s will do', (version) => {
@@ -70,7 +70,7 @@ describe('numbers that are none', () => {
     db.close();
   });
 
-  test.each(bad)('an arrival with %s anywhere leaves no trace', (value) => {
+  test.each(bad)('C16: an arrival with %s anywhere leaves no trace', (value) => {
     const store = open(folder.path);
     const arrival = sampleArrival(0);
     const spoilt = [
@@ -96,7 +96,7 @@ describe('numbers that are none', () => {
     store.close();
   });
 
-  test('zero and negative uncertainties and frequencies are refused', () => {
+  test('C16: zero and negative uncertainties and frequencies are refused', () => {
     const store = open(folder.path);
     for (const received of [{ uncertaintyUs: 0 }, { uncertaintyUs: -1 }, { frequencyMhz: 0 }, { frequencyMhz: -1 }]) {
       expect(() => store.commitIntake({ ...fileBatch(0, 1), arrivals: [sampleArrival(0, received)] })).toThrow(/CHECK/);

@@ -24,7 +24,7 @@ afterAll(() => folder.remove());
 const runWithKillAt = (state: string, n: number): Promise<Ended> =>
   start(program, [state], { SPINVIGIL_TEST_KILL_AT: String(n) }).ended;
 
-test('killed at any step, the record is whole, keeps what was acknowledged, and the work goes on', {
+test('B1, B2, C8: killed at any step, the record is whole, keeps what was acknowledged, and the work goes on', {
   timeout: PATIENCE_MS,
 }, async () => {
   const unharmed = await runWithKillAt(join(folder.path, 'unharmed'), 0);
@@ -46,7 +46,7 @@ test('killed at any step, the record is whole, keeps what was acknowledged, and 
   expect(killed).toBeGreaterThan(30);
 });
 
-test('a restore that is killed leaves the old record or the new one, and can be done again', {
+test('C12: a restore that is killed leaves the old record or the new one, and can be done again', {
   timeout: PATIENCE_MS,
 }, async () => {
   const restoring = await bundle('restoreScenario.ts', join(folder.path, 'bundle'));

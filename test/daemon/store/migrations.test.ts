@@ -19,7 +19,7 @@ const SECOND: Migration = {
   sql: "ALTER TABLE files ADD COLUMN origin TEXT NOT NULL DEFAULT 'unknown'",
 };
 
-test('a record with data goes to the next schema, and a checked copy of the old one stays', () => {
+test('C10: a record with data goes to the next schema, and a checked copy of the old one stays', () => {
   const store = open(folder.path);
   store.commitIntake(fileBatch(0, 3));
   store.close();
@@ -38,7 +38,7 @@ test('a record with data goes to the next schema, and a checked copy of the old 
   copy.close();
 });
 
-test('a step that fails half-way leaves the old schema', () => {
+test('C8: a step that fails half-way leaves the old schema', () => {
   open(folder.path).close();
   const db = connect(file(), { mustExist: true });
   const broken: Migration = { name: 'broken', sql: `${SECOND.sql}; CREATE TABLE files (x INTEGER) STRICT;` };
@@ -70,7 +70,7 @@ test('a record of an older schema is not opened by a reader', async () => {
   expect(openStore(folder.path, { mode: 'reader' })).toMatchObject({ ok: false, failure: { kind: 'older schema' } });
 });
 
-test('quarantined rows of the first schema stay, and those to come can name their pulsar', () => {
+test('C10: quarantined rows of the first schema stay, and those to come can name their pulsar', () => {
   const db = connect(file(), { mustExist: false });
   migrate(db, MIGRATIONS.slice(0, 1));
   db.exec(`INSERT INTO files VALUES (1, 'nightly', 'a.csv', '61', 1, 1, 'x', 1, 'x', '2026-03-01T06:00:00.000Z', 1, 0, 0, 0, 1, NULL);

@@ -76,14 +76,16 @@ test('the last live arrival of each pulsar', () => {
   expect(last.get('KR 0417+31')).toBeCloseTo(60_000.1278901, 6);
 });
 
-test('changes of events, newest first, without their first entry', () => {
+test('changes of events, newest first', () => {
   store.commitIntake({ ...emptyBatch(AT), events: [upsert()] });
   store.commitIntake({ ...emptyBatch(LATER), events: [upsert({ revision: 2, change: 'narrower' })] });
   store.recordVerdict('KR0417-60003', { verdict: 'reject', by: 'duty', note: 'session', at: NEXT_DAY });
   expect(store.eventChangesSince(AT).map(({ what, at, event }) => [what, at, event.state])).toEqual([
     ['rejected by duty: session', NEXT_DAY, 'rejected'],
     ['narrower', LATER, 'rejected'],
+    [upsert().change, AT, 'rejected'],
   ]);
+  expect(store.eventChangesSince(AT).map(({ isFirst }) => isFirst)).toEqual([false, false, true]);
   expect(store.eventChangesSince(NEXT_DAY)).toHaveLength(1);
 });
 

@@ -46,7 +46,7 @@ describe('one instance', () => {
   });
   afterAll(() => programs.remove());
 
-  test('a second process is refused, a reader is not, and kill -9 frees the folder at once', async () => {
+  test('B3: a second process is refused, a reader is not, and kill -9 frees the folder at once', async () => {
     const first = start(holder, [state]);
     await first.printed('held');
     expect(failureOf('daemon').kind).toBe('held by another instance');
@@ -103,7 +103,7 @@ describe('the folder', () => {
     expect(failureOf('daemon').kind).toBe('unsafe folder');
   });
 
-  test('network file systems are known by their number', () => {
+  test('C14: network file systems are known by their number', () => {
     expect(networkFileSystem(0x6969)).toBe('NFS');
     expect(networkFileSystem(0xff534d42 | 0)).toBe('CIFS');
     expect(networkFileSystem(0xef53)).toBeNull();
@@ -122,7 +122,7 @@ describe('a record that is not in order is refused and left as it is', () => {
     open(state).close();
   });
 
-  test('gone or emptied after it was made', () => {
+  test('C5: gone or emptied after it was made', () => {
     open(state).close();
     renameSync(join(state, 'record.db'), join(state, 'elsewhere.db'));
     expect(failureOf('daemon')).toMatchObject({
@@ -136,7 +136,7 @@ describe('a record that is not in order is refused and left as it is', () => {
     open(state).close();
   });
 
-  test.each(['text', 'another database'])('%s in its place', (what) => {
+  test.each(['text', 'another database'])('C5: %s in its place', (what) => {
     mkdirSync(state, { mode: 0o700 });
     const file = join(state, 'record.db');
     if (what === 'text') writeFileSync(file, 'not a database. '.repeat(400));
@@ -146,7 +146,7 @@ describe('a record that is not in order is refused and left as it is', () => {
     expect(readFileSync(file).equals(before)).toBe(true);
   });
 
-  test('of a newer schema', () => {
+  test('C9: of a newer schema', () => {
     open(state).close();
     const db = new Database(join(state, 'record.db'));
     db.pragma('user_version = 99');
@@ -159,7 +159,7 @@ describe('a record that is not in order is refused and left as it is', () => {
   test.each([
     ['every tenth page', 10],
     ['one page, that no start would read but for the check', 1_000_000],
-  ])('with %s overwritten', (_, every) => {
+  ])('C3: with %s overwritten', (_, every) => {
     const store = open(state);
     store.commitIntake(fileBatch(0, 500));
     store.close();
@@ -174,7 +174,7 @@ describe('a record that is not in order is refused and left as it is', () => {
   });
 });
 
-test('a record moved away under the running program is noticed', () => {
+test('C4: a record moved away under the running program is noticed', () => {
   const store = open(state);
   expect(store.isInPlace()).toBe(true);
   renameSync(join(state, 'record.db'), join(state, 'moved.db'));

@@ -40,7 +40,7 @@ describe('a message', () => {
     ]);
   });
 
-  test('of several recipients: each has an end of its own', () => {
+  test('D7: of several recipients: each has an end of its own', () => {
     store.commitIntake({
       ...emptyBatch(AT),
       events: [upsert()],
@@ -48,7 +48,7 @@ describe('a message', () => {
     });
     const [a, b, c] = [store.claimDue(AT)!, store.claimDue(AT)!, store.claimDue(AT)!];
     store.settle(a.id, { kind: 'delivered', at: LATER });
-    store.settle(b.id, { kind: 'refused', error: '550 no such user' });
+    store.settle(b.id, { kind: 'refused', error: '550 no such user', at: LATER });
     store.settle(c.id, { kind: 'later', dueAt: LATER, error: '451 greylisted' });
     expect(
       store
@@ -102,24 +102,38 @@ describe('a message', () => {
 describe('an end', () => {
   test('that is unknown is tried once more, marked, and then given up', () => {
     store.commitNotice(notice(1), AT);
-    store.settle(store.claimDue(AT)!.id, { kind: 'unknown', dueAt: LATER, error: 'lost after the final dot' });
+    store.settle(store.claimDue(AT)!.id, {
+      kind: 'unknown',
+      dueAt: LATER,
+      error: 'lost after the final dot',
+      at: LATER,
+    });
     const again = store.claimDue(LATER)!;
     expect(again).toMatchObject({ possibleDuplicate: true, attempts: 2 });
-    store.settle(again.id, { kind: 'unknown', dueAt: NEXT_DAY, error: 'lost again' });
+    store.settle(again.id, { kind: 'unknown', dueAt: NEXT_DAY, error: 'lost again', at: LATER });
     expect(store.outbox()).toMatchObject([{ state: 'expired', lastError: expect.stringContaining('lost again') }]);
     expect(store.claimDue(NEXT_DAY)).toBeNull();
+  });
+
+  test('that is held leaves when it may, and does not count as waiting before', () => {
+    store.commitNotice({ ...notice(1), dueAt: NEXT_DAY }, AT);
+    expect(store.claimDue(LATER)).toBeNull();
+    expect(store.outboxCounts()).toMatchObject({ queued: 1, oldestWaitingSince: NEXT_DAY });
+    expect(store.outbox({ mayLeaveSince: LATER })).toMatchObject([{ createdAt: AT, mayLeaveAt: NEXT_DAY }]);
+    store.settle(store.claimDue(NEXT_DAY)!.id, { kind: 'later', dueAt: '2100-01-01T00:00:00.000Z', error: '451' });
+    expect(store.outboxCounts().oldestWaitingSince).toBe(NEXT_DAY);
   });
 
   test('is final, and only an attempt can be settled', () => {
     store.commitNotice(notice(1), AT);
     expect(() => store.settle(1, { kind: 'delivered', at: AT })).toThrow(/queued/);
     store.claimDue(AT);
-    store.settle(1, { kind: 'expired', error: 'too old' });
+    store.settle(1, { kind: 'expired', error: 'too old', at: AT });
     expect(() => store.settle(1, { kind: 'delivered', at: AT })).toThrow(/expired/);
     expect(() => store.settle(99, { kind: 'delivered', at: AT })).toThrow(/not on record/);
   });
 
-  test('cut off by a crash: queued again, marked', () => {
+  test('D8: cut off by a crash: queued again, marked', () => {
     store.commitNotice(notice(1), AT);
     store.claimDue(AT);
     store.close();
@@ -140,11 +154,14 @@ describe('an end', () => {
     store.commitNotice(notice(2), AT);
     store.commitNotice(notice(3), LATER);
     store.claimDue(AT);
-    expect(store.expireOlderThan(LATER, 'not delivered in five days')).toMatchObject([
+    expect(store.expireOlderThan(LATER, { error: 'not delivered in five days', at: NEXT_DAY })).toMatchObject([
       { id: 2, state: 'expired', lastError: 'not delivered in five days' },
     ]);
     store.commitIntake({ ...emptyBatch(LATER), supersededMessages: [notice(1).messageId, notice(3).messageId] });
     expect(store.outbox().map(({ state }) => state)).toEqual(['attempting', 'expired', 'expired']);
+    // What was replaced was not given up.
+    expect(store.outbox({ givenUpSince: AT }).map(({ id }) => id)).toEqual([2]);
+    expect(store.outbox({ givenUpSince: '2100-01-01T00:00:00.000Z' })).toEqual([]);
   });
 });
 

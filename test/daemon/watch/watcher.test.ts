@@ -77,6 +77,28 @@ describe('the watcher', () => {
     expect(watcher.status()).toMatchObject([{ feed: 'feed', files: 1 }]);
   });
 
+  it('A4 reads a file through once a day, and hands it over again when its bytes are not those on record', async () => {
+    const folder = newFolder();
+    writeFileSync(join(folder, 'a.csv'), 'one');
+    let passedMs = 0;
+    const clock = { now: () => new Date(), monotonicMs: () => performance.now() + passedMs };
+    const read: string[] = [];
+    const isAsRecorded: WatcherOptions['isAsRecorded'] = (file, bytes) => read.push(`${file.path}: ${bytes}`) > 1;
+    const forgotten = new Map<string, TakenFile>();
+    const recall = () => forgotten.get('a.csv') ?? null;
+    const { watcher, handed } = start(folder, { clock, isAsRecorded, recall }, { pollSeconds: 0.1 });
+    await until(() => expect(handed).toEqual(['a.csv: one']));
+    expect(read).toEqual([]);
+    passedMs = 86_400_000;
+    watcher.lookNow();
+    await until(() => expect(handed).toEqual(['a.csv: one', 'a.csv: one']));
+    expect(read).toEqual(['a.csv: one']);
+    passedMs *= 2;
+    watcher.lookNow();
+    await until(() => expect(read).toHaveLength(2));
+    expect(handed).toHaveLength(2);
+  });
+
   it('A34 finds every file although the notices of all but one were lost', async () => {
     const folder = newFolder();
     const emitter = Object.assign(new EventEmitter(), { close: async () => {} });

@@ -2,7 +2,7 @@ import { describe, expect, it } from 'vitest';
 import type { CountedArrival, Disturbance } from '../../../detectors/filter/countedArrival.ts';
 import { eventFrame } from '../../../detectors/recovery/eventFrame.ts';
 import { gapSystem, recoveryColumns } from '../../../detectors/recovery/gapSystem.ts';
-import { explore, type GlitchPoint, pointAt } from '../../../detectors/recovery/glitchPosterior.ts';
+import { explore, type GlitchPoint, pointsAt } from '../../../detectors/recovery/glitchPosterior.ts';
 import { type DenseFit, denseFit } from '../../support/denseLeastSquares.ts';
 import { dice, observingDays, simulateArrivals } from '../../support/simulatedPulsar.ts';
 
@@ -37,7 +37,7 @@ describe('the posterior at one epoch and timescale', () => {
 
   function points(timescalesDays: readonly number[]): GlitchPoint[] {
     const posterior = explore(frame, system, recoveryColumns(frame, system, timescalesDays), [scale]);
-    return posterior.spots.map((spot) => pointAt(posterior, spot, [scale], 0));
+    return posterior.spots.flatMap((spot) => pointsAt(posterior, spot, [scale], spot.logMass));
   }
 
   /** Dense generalised least squares with every column written out. */
@@ -139,7 +139,7 @@ describe('how well a size can be known at best', () => {
     const system = gapSystem(frame, frame.gaps[0]!);
     const wide = { rate: 1e3, second: derivative ? 1e3 : 1e-12, decay: 0, logShare: 0 };
     const posterior = explore(frame, system, recoveryColumns(frame, system, []), [wide]);
-    const points = posterior.spots.map((spot) => pointAt(posterior, spot, [wide], 0));
+    const points = posterior.spots.flatMap((spot) => pointsAt(posterior, spot, [wide], spot.logMass));
     const middle = points.find(({ epochDays }) => Math.abs(epochDays - (before - 0.5)) < 1e-9)!;
     expect(Math.sqrt(middle.covariance[0]!) / 1e-3 / factor).toBeCloseTo(1, 2);
   });

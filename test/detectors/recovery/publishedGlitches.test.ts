@@ -156,7 +156,7 @@ describe('published glitches, re-enacted', () => {
     });
   });
 
-  it('a delayed rise: part of the step of the Crab pulsar in 2017 arrived within days (from memory: 7 %, 1.7 d)', () => {
+  it('a delayed rise: part of the step of PSR B0531+21 in 2017 arrived within days (from memory: 7 %, 1.7 d)', () => {
     const random = dice(72);
     const days = observingDays(160, 0.25, 0.5, random);
     const walks = { phaseWalk: 1e-10, frequencyWalk: 1e-14, torqueWalk: 0 };
