@@ -15,6 +15,7 @@ const MOST_AT_ONCE = 100;
 
 export function createAudit(startMs: number): Audit {
   let round: readonly FoundFile[] = [];
+  let next = 0;
   let lastMs = startMs;
   /** Files that have come due, with a fraction. */
   let owed = 0;
@@ -25,9 +26,12 @@ export function createAudit(startMs: number): Audit {
       const count = Math.floor(owed);
       if (count === 0) return [];
       owed -= count;
-      if (round.length === 0) round = files;
-      const due = round.slice(0, count);
-      round = round.slice(count);
+      if (next >= round.length) {
+        round = files;
+        next = 0;
+      }
+      const due = round.slice(next, next + count);
+      next += count;
       return due;
     },
   };

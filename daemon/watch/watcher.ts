@@ -156,7 +156,7 @@ function startFeed(feed: Feed, options: WatcherOptions, shared: Shared): FeedLoo
         moving,
         problems: ledger.current(),
       };
-      await handOver(look, loop, startMs);
+      await handOver(look, loop, lookMs);
       if (look.ready.length === 0) await readThrough(look, loop, startMs);
       await beat.rest(restAfter(look, { lookMs, pollMs: feed.pollSeconds * 1000 }));
     }
@@ -189,12 +189,17 @@ function restAfter(look: Look, { lookMs, pollMs }: { readonly lookMs: number; re
   return { atLeastMs, atMostMs: Math.max(atLeastMs, wantedMs) };
 }
 
-/** Breaks off for the next look after a while, so that what the backlog hides is seen. */
-async function handOver(look: Look, loop: Loop, startMs: number): Promise<void> {
+/**
+ * Breaks off for the next look after a while, so that what the backlog hides is seen; but not before it took longer than the looks do: a folder that is
+ * slow to look through would otherwise never have a file handed over.
+ */
+async function handOver(look: Look, loop: Loop, lookMs: number): Promise<void> {
   const { beat, feed, options, readyFiles } = loop;
+  const startMs = options.clock.monotonicMs();
+  const atMostMs = Math.max(feed.pollSeconds * 1000, lookMs * BREAK_PER_LOOK);
   readyFiles.set(feed.name, look.ready.length);
   for (const [done, file] of look.ready.entries()) {
-    if (beat.stopped || options.clock.monotonicMs() - startMs > feed.pollSeconds * 1000) return;
+    if (beat.stopped || options.clock.monotonicMs() - startMs > atMostMs) return;
     await handOverOne(file, loop);
     readyFiles.set(feed.name, look.ready.length - done - 1);
   }

@@ -2,6 +2,7 @@
 
 import { nuisanceLayout } from '../filter/nuisance.ts';
 import { normalQuantile } from '../math/normal.ts';
+import { isNoiseKnown } from '../steps/jointOdds.ts';
 import { turnsPerDispersion } from '../steps/places.ts';
 import type { PulsarWatch } from '../steps/pulsarWatch.ts';
 import { SESSION_DAYS } from '../steps/timeline.ts';
@@ -51,8 +52,10 @@ export function limitCurve(watch: PulsarWatch, programme: Programme): LimitAfter
   const lags = Float64Array.from([...half, ...half]);
   const decided = rehearse(stage, watch.noise);
   const bank = bankExcess(watch, stage, decided, lags);
+  const next = { kind: 'glitch', bestGap: watch.line.seen.length } as const;
   const guesses = decided.map((sums) => withoutNoise(watch, sums, gapDays));
   const trials = trialsOf(watch, stage, guesses.at(-1)!);
+  const eased = isNoiseKnown(next) ? watch.settings.confirmLogOdds : 0;
   const least = new Float64Array(DRAWS).fill(Number.POSITIVE_INFINITY);
   let smallest = Number.POSITIVE_INFINITY;
   return looks.map((look, i) => {
@@ -61,7 +64,7 @@ export function limitCurve(watch: PulsarWatch, programme: Programme): LimitAfter
     const ofBank = bank(l, about);
     const ofJoint = jointExcess(watch, stage, trials, l, lags, about);
     const excess: Excess = (m, delta) => {
-      const joint = ofJoint(m, delta);
+      const joint = ofJoint(m, delta) + eased;
       return joint < 0 ? joint : ofBank(m, delta);
     };
     for (let m = 0; m < DRAWS; m++) least[m] = Math.min(least[m]!, crossing(excess, m, about));

@@ -52,9 +52,10 @@ export function bankExcess(watch: PulsarWatch, stage: Stage, sums: readonly Sums
         .filter(({ covariance }) => covariance.some((v) => v > 0))
         .map((p) => something(at, g, { ...p, logWeight: p.logWeight + spread }, lags));
     });
-  const otherKinds = KINDS.filter((kind) => kind !== 'glitch');
+  const ofInstruments = KINDS.filter((kind) => kind !== 'glitch' && kind !== 'spin-down-rate change');
   const spinUp = logSignPrior(watch.model, 0);
-  const others = sums.map((at) => otherKinds.flatMap((kind) => terms(kind, at, 0)));
+  const changes = sums.map((at) => terms('spin-down-rate change', at, 0));
+  const others = sums.map((at) => ofInstruments.flatMap((kind) => terms(kind, at, 0)));
   const quiet = sums.map((at) => nothing(at, lags));
   return (look, rateStep) => {
     const now = sums[look]!;
@@ -64,11 +65,11 @@ export function bankExcess(watch: PulsarWatch, stage: Stage, sums: readonly Sums
       const own = total(glitch, m, delta);
       const enough = own - total(aside, m, delta) + spinUp - watch.settings.confirmLogOdds;
       if (enough < 0) return enough;
-      let rivals = -Infinity;
-      aside.forEach((rest, l) => {
-        rivals = logAddExp(rivals, total(others[l]!, m, delta) + at(rest, m, delta));
-      });
-      return Math.min(enough, own - rivals - LOG_SHARE);
+      const rival = (byLook: readonly (typeof glitch)[]) =>
+        aside.reduce((sum, rest, l) => logAddExp(sum, total(byLook[l]!, m, delta) + at(rest, m, delta)), -Infinity);
+      const change = rival(changes);
+      const share = logAddExp(own, change) - rival(others) - LOG_SHARE;
+      return Math.min(enough, share, own - change - LOG_SHARE_OF_ROTATION);
     };
   };
 }

@@ -32,7 +32,7 @@ const ARRIVALS = 60;
 
 /** What a step must pass besides the threshold. */
 export interface Demands {
-  /** The noise is well known: there is no second weighing. */
+  /** The second weighing need only not speak for noise. */
   readonly noiseKnown: boolean;
   readonly sessions: number;
 }
@@ -125,8 +125,8 @@ function crossings(
     next();
     const first = confirmableOdds(deciding, sessions);
     if (first < LEVELS[0]!) continue;
-    const second = noiseKnown ? first : secondWeighing(deciding.bank!, knowing.bank!, logPriorTrue);
-    const odds = Math.min(first, second);
+    const second = secondWeighing(deciding.bank!, knowing.bank!, logPriorTrue);
+    const odds = noiseKnown && second >= 0 ? first : Math.min(first, second);
     const { something, nothing } = weigh(knowing.bank!);
     const yearsLeft = years - deciding.line.seen.at(-1)!.tDays / DAYS_PER_YEAR;
     const ratio = (Math.exp(something - nothing) / TOTAL_RATE + yearsLeft) / years;

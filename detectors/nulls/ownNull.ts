@@ -42,7 +42,13 @@ function tailOf(watch: PulsarWatch, demands: Demands): NullTail {
   const medianGapDays = medianGap(watch);
   const known = watch.ownNull;
   const change = known === null ? Infinity : Math.abs(Math.log(medianGapDays / known.medianGapDays));
-  if (known !== null && known.noise === watch.noise && known.noiseKnown === demands.noiseKnown && change < Math.log(CADENCE_CHANGE)) return known.tail;
+  if (
+    known !== null &&
+    known.noise === watch.noise &&
+    known.noiseKnown === demands.noiseKnown &&
+    change < Math.log(CADENCE_CHANGE)
+  )
+    return known.tail;
   const tail = nullTail(watch, demands);
   watch.ownNull = { noise: watch.noise, medianGapDays, noiseKnown: demands.noiseKnown, tail };
   return tail;

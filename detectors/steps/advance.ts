@@ -39,6 +39,7 @@ function follow(watch: PulsarWatch, index: number): void {
     watchCount(watch, index);
   } else if (canLock(watch, index)) {
     watch.locked = true;
+    watch.lockedFrom = index + 1;
     watch.oldestGap = index + 1;
     endTrial(watch);
   }

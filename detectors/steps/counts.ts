@@ -4,7 +4,7 @@ import type { CountedArrival, Disturbance } from '../filter/countedArrival.ts';
 import type { Hypothesis, Story } from './hypothesis.ts';
 import type { PulsarWatch } from './pulsarWatch.ts';
 import { groupsOfSite } from './timeline.ts';
-import type { Track } from './track.ts';
+import { gapsOfEvent, type Track } from './track.ts';
 
 /** The heaviest hypothesis of all, event or not. */
 export function bestOf(watch: PulsarWatch): Hypothesis {
@@ -40,11 +40,15 @@ export function disturbances(watch: PulsarWatch, except?: Track): Disturbance[] 
   return watch.tracks
     .filter((t) => !isOf(t))
     .filter((t) => t.state === 'confirmed' || (t.state === 'suspected' && t.logOdds > WORTH_NAMING))
-    .flatMap((t) => freed(watch, t).map((what) => ({ beforeIndex: t.bestGap, ...what })));
+    .flatMap((t) => freedGaps(watch, t));
 }
 
-/** The states that an event sets free. */
-export function freed(watch: PulsarWatch, track: Track): Omit<Disturbance, 'beforeIndex'>[] {
+/** What an event sets free, and where. */
+export function freedGaps(watch: PulsarWatch, track: Track): Disturbance[] {
+  return gapsOfEvent(track).flatMap((beforeIndex) => freed(watch, track).map((what) => ({ beforeIndex, ...what })));
+}
+
+function freed(watch: PulsarWatch, track: Track): Omit<Disturbance, 'beforeIndex'>[] {
   if (track.kind === 'dispersion step' && watch.states.dispersion !== null) return [{ kind: 'dispersion' }];
   if (track.kind !== 'clock step') return [{ kind: 'spin' }];
   const groups = groupsOfSite(watch.line, track.bestGap);

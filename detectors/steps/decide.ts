@@ -25,7 +25,7 @@ export function decide(watch: PulsarWatch, index: number): void {
   for (const track of watch.tracks) if (track.confirmedAt !== null && !track.settled) reconsider(watch, track);
   // While the size of a large step is open, what does not fit speaks for another size, not for another event.
   if ((watch.largeStep?.track ?? null) === null) suspect(watch, index);
-  reshape(watch, index);
+  if (reshape(watch, index) && watch.largeStep === null) relearn(watch, index);
 }
 
 /** An event that was confirmed stays under trial for as long as a hypothesis without it is alive. */
@@ -87,11 +87,12 @@ function suspect(watch: PulsarWatch, index: number): void {
   if (index < track.askAgainAt || (watch.largeStep === null && followRecovery(watch, index))) return;
   const sign = logSignWeight(watch, track);
   if (gained + sign < watch.settings.confirmLogOdds) return;
+  const joint = jointOdds(watch, track, holder) + sign;
   const noiseKnown = isNoiseKnown(track);
-  const joint = (noiseKnown ? gained : jointOdds(watch, track, holder)) + sign;
+  const decisive = noiseKnown && joint >= 0 ? gained + sign : joint;
   const demands = { sessions: LEAST_SESSIONS, noiseKnown };
   // Not a number either: what cannot be weighed is not confirmed.
-  if (!(joint >= requiredLogOdds(watch, Math.min(joint, gained + sign), demands))) {
+  if (!(decisive >= requiredLogOdds(watch, Math.min(decisive, gained + sign), demands))) {
     refuse(watch, track, index, joint);
     return;
   }

@@ -4,22 +4,23 @@
  * event is confirmed the whole record is gone through twice: as noise alone, and as noise with the event.
  *
  * The wide prior on the noise lets one step pass for noise that was never seen before, however clear the step. Where a
- * record has shown its noise before a glitch, what it has shown stands (with its margin, `filter/noiseMargin.ts`).
+ * record has shown its noise before a glitch, noise need only not be the better explanation.
  */
 
 import { learnNoise, logNoisePrior } from '../filter/noiseLearning.ts';
 import type { NoiseModel } from '../report.ts';
 import { logWeightOf } from './beam.ts';
 import { born } from './births.ts';
-import { countedArrivals, disturbances, freed } from './counts.ts';
+import { countedArrivals, disturbances, freedGaps } from './counts.ts';
 import { withoutRecoveries } from './establishedRecoveries.ts';
 import { gapOf, type Hypothesis, propagate, type Story } from './hypothesis.ts';
 import { birthPlace, clockVariance } from './places.ts';
 import { asFixed, type PulsarWatch } from './pulsarWatch.ts';
 import { looseRecovery, RECOVERY_SHARE } from './recoveryStates.ts';
-import { decisionsOf, retrace, takeIn } from './retrace.ts';
+import { decisionsOf, freeRise, retrace, takeIn } from './retrace.ts';
+import { LOG_RISE_PRIOR } from './slowSpinUp.ts';
 import { foundStartRate, startBeam } from './start.ts';
-import type { Track } from './track.ts';
+import { gapsOfEvent, type Rise, slowRise, type Track } from './track.ts';
 
 /** Arrivals before an event that show what the noise is. */
 const TELLING_ARRIVALS = 60;
@@ -36,7 +37,7 @@ export function isNoiseKnown({ kind, bestGap }: Pick<Track, 'kind' | 'bestGap'>)
 export function jointOdds(watch: PulsarWatch, track: Track, h: Hypothesis): number {
   const counted = withoutRecoveries(watch, countedArrivals(watch, h));
   const others = disturbances(watch, track);
-  const own = freed(watch, track).map((what) => ({ beforeIndex: track.bestGap, ...what }));
+  const own = freedGaps(watch, track);
   const learn = (known: typeof others) => asFixed(watch.model, learnNoise(counted, known, watch.prior, watch.noise));
   const sigmas = counted
     .filter((a) => a.used)
@@ -65,7 +66,7 @@ function logEvidence(
   let beam = startBeam(watch, given.startRate);
   for (let i = 1; i < watch.line.seen.length; i++) {
     const decision = decisions[i]!;
-    if (given.event?.bestGap !== i) {
+    if (given.event === null || !gapsOfEvent(given.event).includes(i)) {
       for (const h of beam) retrace(watch, h, decision, belief);
       continue;
     }
@@ -74,9 +75,18 @@ function logEvidence(
     const gap = gapOf(gapDays, noise, watch.states.decays, clockVariance(watch, i));
     for (const h of beam) propagate(h, gap);
     const { kind, rateStep } = given.event;
-    beam = beam.flatMap((h) => born(kind, h, place));
-    if (kind === 'glitch') for (const h of beam) looseRecovery(h, watch.states.decays, RECOVERY_SHARE * rateStep);
+    const rise = slowRise(given.event);
+    if (rise !== null) for (const h of beam) riseBegins(h, rise, i, gapDays);
+    else beam = beam.flatMap((h) => born(kind, h, place));
+    if (kind === 'glitch' && rise === null)
+      for (const h of beam) looseRecovery(h, watch.states.decays, RECOVERY_SHARE * rateStep);
     for (const h of beam) takeIn(watch, h, decision, noise);
   }
   return logWeightOf(beam);
+}
+
+/** The begin of a slow rise at its prior rate; its end, of which the size is known, at none. */
+function riseBegins(h: Hypothesis, rise: Rise, index: number, gapDays: number): void {
+  if (index === rise.firstGap) h.logWeight += LOG_RISE_PRIOR;
+  freeRise(h, rise, gapDays);
 }

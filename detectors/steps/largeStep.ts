@@ -45,14 +45,20 @@ const WON_SHARE = 0.999;
 const LOG_ODDS_SET_ASIDE = Math.log(0.85 / 0.02);
 const LOG_ODDS_USED = Math.log(0.15 / 0.98);
 const LONGEST_RUN = 40;
+/** The latest arrivals were taken for good so often that a run before them is over: five of them by chance, 0.15⁵. */
+const LOG_ODDS_OVER = 4.5 * LOG_ODDS_USED;
 
-/** Where the run of arrivals that the hypothesis cannot explain most probably began; after the last arrival if there is none. */
-export function runStart(h: Hypothesis, index: number): number {
+/**
+ * Where the run of arrivals that the hypothesis cannot explain most probably began, not before `from`; after the last arrival
+ * if there is none.
+ */
+export function runStart(h: Hypothesis, index: number, from: number): number {
   let start = index + 1;
   let odds = 0;
   let highest = 0;
-  for (let s = h.story; s !== null && index - s.index < LONGEST_RUN; s = s.before) {
+  for (let s = h.story; s !== null && s.index >= from && index - s.index < LONGEST_RUN; s = s.before) {
     odds += s.used ? LOG_ODDS_USED : LOG_ODDS_SET_ASIDE;
+    if (highest === 0 && odds < LOG_ODDS_OVER) break;
     if (odds <= highest) continue;
     highest = odds;
     start = s.index;
@@ -97,7 +103,7 @@ export function endTrial(watch: PulsarWatch): void {
 function newTrial(watch: PulsarWatch, index: number): LargeStep | null {
   const bank = watch.bank!;
   const { seen } = watch.line;
-  const start = runStart(bank.beam[0]!, index);
+  const start = runStart(bank.beam[0]!, index, watch.lockedFrom);
   if (index + 1 - start < LEAST_RUN || seen[index]!.tDays - seen[start]!.tDays < LEAST_RUN_DAYS) return null;
   const before = bank.snapshots.find((s) => s.index === start - 1);
   return before === undefined ? null : { start, before, nextSearch: 0, track: null };
@@ -108,7 +114,8 @@ function isOver(watch: PulsarWatch, step: LargeStep, index: number): boolean {
   const run = index + 1 - step.start;
   if (run > LONGEST_TRIAL) return true;
   const best = watch.bank!.beam[0]!;
-  if (step.track === null) return runStart(best, index) > index && watch.tracks.every((t) => t.state !== 'suspected');
+  if (step.track === null)
+    return runStart(best, index, watch.lockedFrom) > index && watch.tracks.every((t) => t.state !== 'suspected');
   if (watch.tracks[step.track]!.settled && watch.tracks[step.track]!.state === 'withdrawn') return true;
   if (run < WON_RUN || !best.tracks.includes(step.track)) return false;
   let fits = 0;

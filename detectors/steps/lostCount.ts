@@ -41,9 +41,8 @@ const SAME_LOSS_ARRIVALS = 30;
 /** After each arrival of a locked pulsar. */
 export function watchCount(watch: PulsarWatch, index: number): void {
   const { seen } = watch.line;
-  const run = runStart(bestOf(watch), index);
-  // What the start model did not fit before the lock is settled.
-  if (run >= watch.oldestGap && index + 1 - run >= LOST_RUN && sessionsFrom(watch, run, index) >= LOST_RUN_SESSIONS) {
+  const run = runStart(bestOf(watch), index, watch.lockedFrom);
+  if (index + 1 - run >= LOST_RUN && sessionsFrom(watch, run, index) >= LOST_RUN_SESSIONS) {
     lose(watch, doubtFrom(watch, run), index);
     return;
   }
@@ -119,7 +118,7 @@ function lose(watch: PulsarWatch, doubt: Doubt, index: number): void {
   }
   const track = own ?? newTrack(watch, index);
   const former = watch.tracks.findLast((t) => t !== track && t.kind === 'lost count');
-  const share = Math.min(explanations['lost count']!, 1 - 1e-9);
+  const share = Math.max(1e-9, Math.min(explanations['lost count']!, 1 - 1e-9));
   Object.assign(track, {
     kind: 'lost count',
     state: 'confirmed',

@@ -53,8 +53,8 @@ export function isSwitch(watch: PulsarWatch, track: Track): boolean {
   return record !== undefined && (track === record || track.partOf === record.number);
 }
 
-/** Its walk may hide switches, or it is known to switch: worth looking at when its noise is learned. */
-export function wanders(watch: PulsarWatch): boolean {
+/** Its walk may hide switches, or it is known to switch. */
+function wanders(watch: PulsarWatch): boolean {
   const walk = walkOver(watch.likelyNoise);
   return switchingRecord(watch) !== undefined || walk > LEAST_WALK * medianSigma(watch.line.seen);
 }
@@ -63,7 +63,7 @@ export function wanders(watch: PulsarWatch): boolean {
 export function seekSwitching(watch: PulsarWatch, index: number): boolean {
   const confirmed = watch.tracks.filter((t) => t.state === 'confirmed');
   const known = switchingRecord(watch);
-  if (known === undefined && !wanders(watch) && !showsChanges(confirmed)) return false;
+  if (known === undefined && !wanders(watch) && !showsChanges(watch)) return false;
   const best = bestOf(watch);
   const counted = countedArrivals(watch, best);
   const past = { decisions: decisionsOf(best), startRate: foundStartRate(counted) };
@@ -80,9 +80,9 @@ export function seekSwitching(watch: PulsarWatch, index: number): boolean {
   return false;
 }
 
-/** So many changes that they may be switches. */
-function showsChanges(confirmed: readonly Track[]): boolean {
-  return confirmed.filter(isMaybeSwitch).length >= LEAST_CHANGES;
+/** So many changes that they may be switches, also where noise was thought the better explanation later. */
+function showsChanges({ tracks }: PulsarWatch): boolean {
+  return tracks.filter((t) => t.confirmedAt !== null && isMaybeSwitch(t)).length >= LEAST_CHANGES;
 }
 
 function isMaybeSwitch(track: Track): boolean {

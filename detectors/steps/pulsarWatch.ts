@@ -29,6 +29,8 @@ export interface PulsarWatch {
   readonly tracks: Track[];
   /** One pulse count has won; nothing is born, and nothing decided, before. */
   locked: boolean;
+  /** Index of the first arrival after it was last locked: what did not fit before is settled. */
+  lockedFrom: number;
   /** A gap after which the counts are in doubt: nothing is confirmed until they are settled. */
   doubt: Doubt | null;
   /** The count is lost since; it is being sought. */
@@ -63,6 +65,7 @@ export function startWatch(model: PulsarModel, settings: DetectorSettings): Puls
     likelyNoise: asFixed(model, firstNoise(prior)),
     tracks: [],
     locked: false,
+    lockedFrom: 0,
     doubt: null,
     lost: null,
     carriesAll: false,

@@ -68,6 +68,7 @@ export function reacquire(watch: PulsarWatch, index: number): void {
   if (!hasWon(watch, loss.from, index)) return;
   watch.lost = null;
   watch.locked = true;
+  watch.lockedFrom = index + 1;
   watch.oldestGap = index + 1;
 }
 

@@ -8,9 +8,10 @@ import { logWeightOf, pruned } from './beam.ts';
 import { bestOf, countedArrivals, disturbances } from './counts.ts';
 import { withoutRecoveries } from './establishedRecoveries.ts';
 import { spreadOf, weigh } from './evidence.ts';
-import type { Hypothesis } from './hypothesis.ts';
+import type { Hypothesis, Story } from './hypothesis.ts';
 import { isNoiseKnown, jointOdds } from './jointOdds.ts';
-import { isSwitch, seekSwitching, wanders } from './modeSwitching.ts';
+import { runStart } from './largeStep.ts';
+import { isSwitch, seekSwitching } from './modeSwitching.ts';
 import { asFixed, type PulsarWatch } from './pulsarWatch.ts';
 import { retimeRecovery } from './recoveryTimescales.ts';
 import { decisionsOf, retrace } from './retrace.ts';
@@ -39,7 +40,7 @@ export function learningDue(watch: PulsarWatch, index: number): boolean {
 
 export function relearn(watch: PulsarWatch, index: number): void {
   watch.nextLearning = Math.ceil((index + 1) * LEARNING_GROWTH);
-  if (wanders(watch)) seekSwitching(watch, index);
+  seekSwitching(watch, index);
   const best = bestOf(watch);
   takeBack(watch, best);
   const counted = withoutRecoveries(watch, countedArrivals(watch, best));
@@ -66,6 +67,16 @@ export function followRecovery(watch: PulsarWatch, index: number): boolean {
   return true;
 }
 
+/** A step has turned out to be a slow rise: the arrivals that did not fit the step are taken in again. */
+export function followRise(watch: PulsarWatch, index: number, track: Track): void {
+  const best = bestOf(watch);
+  const run = Math.max(track.bestGap, runStart(best, index, watch.lockedFrom));
+  let story: Story | null = null;
+  for (const s of decisionsOf(best)) story = { ...s, used: s.used || s.index >= run, before: story };
+  watch.oldestGap = index + 1;
+  rebuild(watch, index, { ...best, story }, foundStartRate(countedArrivals(watch, best)));
+}
+
 /** A confirmed event that more arrivals have shown to be noise is withdrawn, and what it hid is learned. */
 function takeBack(watch: PulsarWatch, best: Hypothesis): void {
   const confirmed = watch.tracks
@@ -73,7 +84,7 @@ function takeBack(watch: PulsarWatch, best: Hypothesis): void {
     .slice(-LAST_EVENTS);
   for (const track of confirmed) {
     const logOdds = jointOdds(watch, track, best);
-    if (logOdds < (isNoiseKnown(track) ? -watch.settings.confirmLogOdds : 0))
+    if (logOdds < (isNoiseKnown(track) ? -watch.settings.suspectLogOdds : 0))
       Object.assign(track, { state: 'withdrawn', logOdds, settled: true } satisfies Partial<Track>);
   }
 }

@@ -7,13 +7,15 @@ import { birthPlace, clockVariance } from './places.ts';
 import type { PulsarWatch } from './pulsarWatch.ts';
 import { looseRecovery, RECOVERY_SHARE } from './recoveryStates.ts';
 import { observationOf } from './timeline.ts';
-import type { Track } from './track.ts';
+import { gapsOfEvent, type Rise, slowRise, type Track } from './track.ts';
 
 /** σ of a believed glitch when the past is gone through again: wide, its size is known from the arrivals. */
 const BELIEVED_GLITCH_SIZE = 2e-5;
 const BELIEVED_RATE_CHANGE = 0.2;
 /** The same of an event that is nothing else. */
 const BELIEVED_RATE_CHANGE_ALONE = 1;
+/** Share of its duration to which the begin and end of a slow rise are known. */
+const RISE_DAYS_KNOWN_TO = 0.15;
 const SECONDS_PER_DAY = 86_400;
 
 /** The noise, and the events held for true, under which the past is gone through. */
@@ -36,9 +38,9 @@ export function retrace(watch: PulsarWatch, h: Hypothesis, decision: Story, { no
   const gapDays = line.seen[i]!.tDays - line.seen[i - 1]!.tDays;
   propagate(h, gapOf(gapDays, noise, states.decays, clockVariance(watch, i)));
   for (const track of tracks) {
-    if (track.bestGap !== i) continue;
+    if (!gapsOfEvent(track).includes(i)) continue;
     setFree(watch, h, track, gapDays);
-    h.tracks = [...h.tracks, track.number];
+    if (!h.tracks.includes(track.number)) h.tracks = [...h.tracks, track.number];
   }
   takeIn(watch, h, decision, noise);
 }
@@ -60,7 +62,25 @@ export function takeIn(watch: PulsarWatch, h: Hypothesis, decision: Story, noise
   h.logWeight -= 0.5 * ((innovation * innovation) / variance + Math.log(2 * Math.PI * variance));
 }
 
+/** The begin or the end of a slow rise: ν̇ changes, some days sooner or later. */
+export function freeRise(h: Hypothesis, { stepTurns, days }: Rise, gapDays: number): void {
+  changeSecond(h, stepTurns, Math.max(gapDays, RISE_DAYS_KNOWN_TO * days));
+}
+
+/** σ of a change of the second derivative, up to `days` sooner or later: what that did to ν and phase is free too. */
+function changeSecond(h: Hypothesis, second: number, days: number): void {
+  const size = h.mean.length;
+  h.cov[2 * size + 2]! += second ** 2;
+  h.cov[size + 1]! += (second * days) ** 2;
+  h.cov[0]! += (second * days * days) ** 2 / 4;
+}
+
 function setFree(watch: PulsarWatch, h: Hypothesis, track: Track, gapDays: number): void {
+  const rise = slowRise(track);
+  if (rise !== null) {
+    freeRise(h, rise, gapDays);
+    return;
+  }
   const place = birthPlace(watch, track.bestGap, gapDays);
   const nu = place.frequencyHz;
   if (track.kind === 'glitch') {
@@ -75,11 +95,7 @@ function setFree(watch: PulsarWatch, h: Hypothesis, track: Track, gapDays: numbe
   }
   const share = track.kind === 'spin-down-rate change' ? BELIEVED_RATE_CHANGE_ALONE : BELIEVED_RATE_CHANGE;
   const second = share * Math.abs(place.frequencyDerivativeHzPerS) * SECONDS_PER_DAY ** 2;
-  const size = h.mean.length;
-  h.cov[2 * size + 2]! += second ** 2;
-  if (track.kind !== 'spin-down-rate change') return;
-  // The change came up to so many days sooner or later than in this gap: what it did to ν and phase is free too.
-  const days = watch.line.seen[track.lastGap]!.tDays - watch.line.seen[track.firstGap - 1]!.tDays;
-  h.cov[size + 1]! += (second * days) ** 2;
-  h.cov[0]! += (second * days * days) ** 2 / 4;
+  const { seen } = watch.line;
+  const isChange = track.kind === 'spin-down-rate change';
+  changeSecond(h, second, isChange ? seen[track.lastGap]!.tDays - seen[track.firstGap - 1]!.tDays : 0);
 }

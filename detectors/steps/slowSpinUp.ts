@@ -4,13 +4,14 @@
  */
 
 import { fitGlitch } from '../recovery/glitchFit.ts';
-import { fitRamp } from '../recovery/rampFit.ts';
+import { fitRamp, RAMP_DURATIONS_DAYS, type RampFit } from '../recovery/rampFit.ts';
 import { fitStep } from '../recovery/stepFit.ts';
 import { RATE_PER_YEAR } from './births.ts';
 import { countedArrivals, disturbances } from './counts.ts';
 import type { Hypothesis } from './hypothesis.ts';
+import { runStart } from './largeStep.ts';
 import type { PulsarWatch } from './pulsarWatch.ts';
-import type { Shapes, Track } from './track.ts';
+import { type Rise, type Shapes, slowRise, type Track } from './track.ts';
 
 /** Rises over weeks in one pulsar (common practice, no source: a handful of pulsars have shown any). */
 const SLOW_RATE_PER_YEAR = 0.005;
@@ -20,6 +21,10 @@ const LONGEST_RISE_DAYS = 120;
 const MOST_GAPS = 2;
 const REACH = 200;
 const DAYS_PER_YEAR = 365.25;
+/** Natural log of the prior of one rise: its rate, one of six decades of sizes, one of the durations. */
+export const LOG_RISE_PRIOR =
+  Math.log((SLOW_RATE_PER_YEAR * LONGEST_RISE_DAYS) / DAYS_PER_YEAR) - Math.log(6 * RAMP_DURATIONS_DAYS.length);
+const SECONDS_PER_DAY = 86_400;
 
 /** The event before `track` that may be the begin of the rise of which `track` is the end. */
 export function earlierHalf(watch: PulsarWatch, track: Track): Track | undefined {
@@ -53,7 +58,11 @@ export function weighShapes(
 ): Shapes | null {
   const from = Math.max(0, track.bestGap - REACH);
   const until = Math.min(watch.line.seen.length, track.bestGap + REACH);
-  const arrivals = countedArrivals(watch, h).slice(from, until);
+  // A rise that was taken for a step leaves the arrivals after it set aside: they tell the shapes apart.
+  const run = runStart(h, watch.line.seen.length - 1, watch.lockedFrom);
+  const arrivals = countedArrivals(watch, h)
+    .map((a, i) => (i >= Math.max(run, track.bestGap) ? { ...a, used: true } : a))
+    .slice(from, until);
   const others = disturbances(watch, track)
     .filter((d) => d.beforeIndex !== second?.track.bestGap && d.beforeIndex > from && d.beforeIndex < until)
     .map((d) => ({ ...d, beforeIndex: d.beforeIndex - from }));
@@ -100,9 +109,22 @@ export function weighShapes(
     shares: Object.fromEntries(masses.map(([name, mass]) => [name, mass / total])),
     firstGap: wide.firstGapBeforeIndex + from,
     lastGap: wide.lastGapBeforeIndex + from,
+    rise: ramp.step.size.mean > 0 ? riseOf(watch, ramp) : null,
+  };
+}
+
+function riseOf({ line: { seen } }: PulsarWatch, { step, durationDays }: RampFit): Rise {
+  const gapAfter = (tDays: number) => seen.findIndex((s) => s.tDays > tDays);
+  const days = durationDays.median;
+  const lastGap = gapAfter(step.bestEpochDays + days);
+  return {
+    firstGap: gapAfter(step.bestEpochDays),
+    lastGap: lastGap < 0 ? null : lastGap,
+    days,
+    stepTurns: (step.size.mean * SECONDS_PER_DAY) / days,
   };
 }
 
 export function isSlow(track: Track): boolean {
-  return track.shapes !== null && (track.shapes.shares['slow spin-up'] ?? 0) > 0.5;
+  return slowRise(track) !== null;
 }

@@ -38,6 +38,30 @@ export interface Shapes {
   readonly shares: Readonly<Record<string, number>>;
   readonly firstGap: number;
   readonly lastGap: number;
+  /** The most probable rise; null where ν does not rise. */
+  readonly rise: Rise | null;
+}
+
+/** ν rises evenly from one gap to another: |Δν̇| for that time. */
+export interface Rise {
+  readonly firstGap: number;
+  /** Null while it goes on. */
+  readonly lastGap: number | null;
+  readonly days: number;
+  /** turns/day² */
+  readonly stepTurns: number;
+}
+
+/** The rise of an event that is more probably slow than sudden. */
+export function slowRise({ shapes }: Track): Rise | null {
+  return shapes !== null && (shapes.shares['slow spin-up'] ?? 0) > 0.5 ? shapes.rise : null;
+}
+
+/** The gaps in which an event sets the rotation free. */
+export function gapsOfEvent(track: Track): readonly number[] {
+  const rise = slowRise(track);
+  if (rise === null) return [track.bestGap];
+  return rise.lastGap === null ? [rise.firstGap] : [rise.firstGap, rise.lastGap];
 }
 
 /** Where the weight of one kind lies among the gaps. */

@@ -11,7 +11,7 @@ if (!hasSystemd)
   console.warn('SKIPPED: systemd-analyze is not installed, so that the exposure of the service unit is not measured');
 
 describe('the systemd unit', () => {
-  test('leaves the JavaScript engine able to run', () => {
+  test('F-10: leaves the JavaScript engine able to run', () => {
     // V8 writes the code it runs: https://github.com/nodejs/node/issues/55509.
     expect(unit).not.toMatch(/^MemoryDenyWriteExecute=/m);
   });
@@ -20,7 +20,7 @@ describe('the systemd unit', () => {
     expect(unit).toMatch(/^RestartPreventExitStatus=2 3$/m);
   });
 
-  test.skipIf(!hasSystemd)('has an exposure of 2.0 at most, as systemd rates it', () => {
+  test.skipIf(!hasSystemd)('F-10: has an exposure of 2.0 at most, as systemd rates it', () => {
     // The threshold is in tenths.
     const rated = spawnSync('systemd-analyze', ['security', '--offline=yes', '--threshold=20', UNIT], {
       encoding: 'utf8',

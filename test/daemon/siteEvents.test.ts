@@ -64,7 +64,6 @@ describe('a step of the clock of a site with three pulsars, of which one glitche
     await at.deliver('all.csv', arrivalFile(ARRIVALS), { mail: true });
     const step = eventsOf(at).find(({ site }) => site !== null)!;
     const mails = at.store.outbox({ kind: 'event' });
-    console.log('WHY', JSON.stringify(at.store.event(step.id)?.history.map((h) => (h as any).alert)), step.pulsars, step.epochMjd, eventsOf(at).length);
     expect(new Set(mails.filter(({ eventId }) => eventId === step.id).map(({ messageId }) => messageId)).size).toBe(1);
     const texts: string[] = [];
     for (let mail = at.store.claimDue(LATER); mail !== null; mail = at.store.claimDue(LATER))

@@ -18,7 +18,6 @@ const PHONE = { width: 390, height: 844 };
 /** A4 at 96 pixels an inch. */
 const PAPER = { width: 794, height: 1123 };
 
-
 describe.skipIf(!hasBrowser())('the review page in a browser', () => {
   const { open: openPage, complaints, hosts: requested } = browserPages();
   const pictures = KEPT_PICTURES ?? mkdtempSync(join(tmpdir(), 'spinvigil-pictures-'));

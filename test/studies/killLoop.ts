@@ -138,17 +138,10 @@ for (let killAt = from; killAt <= to && !isClean; killAt++) {
   if (one.wasKilled) steps += 1;
   kills += one.kills;
   copies += one.copies;
-  console.log(`step ${killAt}: ${one.wasKilled ? 'killed' : 'clean'}, ${one.copies} marked copies`);
+  const result = { from, steps, kills, markedCopies: copies, endedClean: isClean };
+  const dated = { date: new Date().toISOString().slice(0, 10), ...result };
+  writeFileSync(new URL('killLoop.json', import.meta.url), `${JSON.stringify(dated, null, 2)}\n`);
+  console.log(`step ${killAt}: ${one.wasKilled ? 'killed' : 'clean'}; so far`, result);
 }
 await observatory.remove();
 await rm(template, { recursive: true });
-const result = {
-  date: new Date().toISOString().slice(0, 10),
-  from,
-  steps,
-  kills,
-  markedCopies: copies,
-  endedClean: isClean,
-};
-writeFileSync(new URL('killLoop.json', import.meta.url), `${JSON.stringify(result, null, 2)}\n`);
-console.log(result);

@@ -34,7 +34,8 @@ function follow(random: Dice): { years: number; confirmed: string[] } {
   const days = observingDays(cadenceDays <= 3 ? 180 : 100, cadenceDays, 0.6, random);
   const watch = startWatch(model, detectorSettings(1, 100));
   for (const arrival of simulateTimedArrivals(model, { days, walks, uncertaintyUs }, random)) advance(watch, arrival);
-  const confirmed = report(watch).events.filter((e) => e.state === 'confirmed');
+  // Whatever was ever confirmed was mailed, though it may have been withdrawn since.
+  const confirmed = report(watch).events.filter((e) => e.confirmedAtMjd !== null);
   return { years: (days.at(-1)! - days[0]!) / 365.25, confirmed: confirmed.map((e) => e.explanation) };
 }
 

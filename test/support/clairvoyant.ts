@@ -157,7 +157,7 @@ export function arrivalsUntil(law: Whitening, index: number, deltaNuHz: number, 
     if (expected + gained >= nats) return n + (nats - expected) / gained;
     expected += gained;
   }
-  return Infinity;
+  return Number.POSITIVE_INFINITY;
 }
 
 const LEVELS = Array.from({ length: 69 }, (_, k) => 3 + k / 4);

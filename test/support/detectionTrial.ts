@@ -40,6 +40,8 @@ const WARM_UP = 20;
 const ROUNDS = 2;
 const CLAIRVOYANT_PROGRAMMES = 60;
 const FIRST_NATS = 12;
+/** A walk hides a step again: where all arrivals together are expected to tell no more than so many thresholds, there is no delay. */
+const SURE = 2;
 /** Where noise spreads the next arrival further than this, turns, the count of turns is lost: another study. */
 const MOST_SPREAD_TURNS = 0.05;
 
@@ -141,7 +143,8 @@ function clairvoyantTest(
       expected,
       model.spin.frequencyHz.hi,
     );
-    if (deltaNuHz === null) return null;
+    if (deltaNuHz === null || arrivalsUntil(law, before, deltaNuHz, SURE * threshold) === Number.POSITIVE_INFINITY)
+      return null;
     threshold = thresholdFor(law, { from, perYear, programmes: CLAIRVOYANT_PROGRAMMES, deltaNuHz }, random);
     if (round === ROUNDS) return { from, deltaNuHz, threshold };
   }

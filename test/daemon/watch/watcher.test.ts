@@ -99,6 +99,19 @@ describe('the watcher', () => {
     expect(handed).toHaveLength(2);
   });
 
+  it('A33 hands files over although looking through the folder takes longer than its beat', async () => {
+    const folder = newFolder();
+    for (const name of ['a', 'b', 'c']) writeFileSync(join(folder, `${name}.csv`), name);
+    let slowMs = 0;
+    const monotonicMs = () => {
+      slowMs += 2000;
+      return performance.now() + slowMs;
+    };
+    const clock = { now: () => new Date(), monotonicMs };
+    const { handed } = start(folder, { clock }, { pollSeconds: 0.1 });
+    await until(() => expect(handed.sort()).toEqual(['a.csv: a', 'b.csv: b', 'c.csv: c']));
+  });
+
   it('A34 finds every file although the notices of all but one were lost', async () => {
     const folder = newFolder();
     const emitter = Object.assign(new EventEmitter(), { close: async () => {} });
