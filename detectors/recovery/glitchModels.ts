@@ -5,7 +5,7 @@ import type { CandidateGap, EventFrame } from './eventFrame.ts';
 import { type GapSystem, gapSystem, recoveryColumns } from './gapSystem.ts';
 import { type EpochPosterior, explore, type GlitchPoint, pointsAt } from './glitchPosterior.ts';
 import { type SizePrior, type SizeScale, sizeScales } from './sizePrior.ts';
-import { type TimescaleCell, type TimescaleRange, timescaleCells } from './timescaleCells.ts';
+import { type TimescaleCell, type TimescaleRange, timescaleLattice } from './timescaleLattice.ts';
 
 export const MOST_TERMS = 3;
 
@@ -126,43 +126,26 @@ function scanGap(
 ): GapScan {
   const first: EpochPosterior[] = [];
   let live: readonly SizeScale[] | null = null;
+  let atMaximum: readonly SizeScale[] | null = null;
   let best = known;
-  const cells = timescaleCells(terms, timescaleRange(frame, system.gap), (timescales, refined) => {
-    if (refined) live ??= liveRungs(first, scales, RUNG_BEHIND);
-    const hopeless = best - HOPELESS;
-    const posterior = explore(frame, system, recoveryColumns(frame, system, timescales), live ?? scales, hopeless);
+  const cells = timescaleLattice<Explored>(terms, timescaleRange(frame, system.gap), (timescales, stage) => {
+    const recovery = recoveryColumns(frame, system, timescales);
+    const looked = (rungs: readonly SizeScale[]) => explore(frame, system, recovery, rungs, best - HOPELESS);
+    if (stage === 'uphill') live ??= liveRungs(first, scales, RUNG_BEHIND);
+    if (stage === 'lattice') atMaximum ??= liveRungs([looked(scales)], scales, RUNG_BEHIND);
+    const rungs = atMaximum ?? live ?? scales;
+    const posterior = looked(rungs);
     if (posterior.spots.length > 0) best = Math.max(best, posterior.logEvidence);
-    if (!refined) first.push(posterior);
-    return { logLikelihood: posterior.logEvidence, value: { posterior, scales: live ?? scales } };
+    if (stage === 'coarse') first.push(posterior);
+    return { height: posterior.logEvidence, value: { posterior, scales: rungs } };
   });
-  const settled = settle(cells, (timescales) =>
-    explore(frame, system, recoveryColumns(frame, system, timescales), live ?? scales),
-  );
-  const peak = highest(settled).value;
+  const peak = highest(cells).value;
   return {
     system,
-    cells: settled,
-    logEvidence: logSumExp(settled.map(({ value, logWeight }) => value.posterior.logEvidence + logWeight)),
+    cells,
+    logEvidence: logSumExp(cells.map(({ value, logWeight }) => value.posterior.logEvidence + logWeight)),
     rungs: liveRungs([peak.posterior], peak.scales, RUNG_FAR_BEHIND),
   };
-}
-
-/**
- * A very narrow peak at the middle of a cell is lost from sight when the cell is halved, and hopeless neighbours may then
- * stand highest, at the most they could be: they are looked at after all.
- */
-function settle(
-  cells: readonly TimescaleCell<Explored>[],
-  explored: (timescalesDays: readonly number[]) => EpochPosterior,
-): TimescaleCell<Explored>[] {
-  const settled = [...cells];
-  for (let looked = 0; looked < cells.length; looked++) {
-    const top = highest(settled);
-    if (top.value.posterior.spots.length > 0) break;
-    const value = { ...top.value, posterior: explored(top.timescalesDays) };
-    settled[settled.indexOf(top)] = { ...top, value };
-  }
-  return settled;
 }
 
 function highest(cells: readonly TimescaleCell<Explored>[]): TimescaleCell<Explored> {

@@ -23,14 +23,14 @@ export interface SizeScale {
 }
 
 /**
- * Δν/ν from 1e-10 to 3e-5; Δν̇/ν̇ of 1 per cent, where most are published, or of any size up to its own; recovery
+ * Δν/ν from 1e-10 to 3e-5; Δν̇/ν̇ of 1 per cent, where most are published, or of any size up to about its own; recovery
  * fractions of a few per cent, as after most large glitches, or of any size (Yu et al. 2013, table 4: 0.001 to 0.8).
  */
 export function defaultSizePrior(frequencyHz: number, frequencyDerivativeHzPerS: number): SizePrior {
   const spinDown = Math.max(Math.abs(frequencyDerivativeHzPerS), 1e-18);
   return {
     frequencyStepsHz: [2e-10, 2e-9, 2e-8, 2e-7, 2e-6, 1.5e-5].map((part) => part * frequencyHz),
-    derivativeStepsHzPerS: [0.01, 0.3].map((part) => part * spinDown),
+    derivativeStepsHzPerS: [0.01, 0.06, 0.3].map((part) => part * spinDown),
     decayingParts: [0.05, 0.7],
   };
 }

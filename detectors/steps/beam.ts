@@ -23,7 +23,7 @@ export interface Observation {
 /** Share of arrivals that are bad in ways no error bar covers (common practice, no source). */
 export const OUTLIER_SHARE = 0.02;
 /** A bad session is paid for once: the next arrival of a session that began badly is likely bad too. */
-const OUTLIER_SHARE_AFTER_OUTLIER = 0.8;
+export const OUTLIER_SHARE_AFTER_OUTLIER = 0.8;
 /** A turn, or the outlier branch, is followed while it is within e^-9 of the best branch. */
 const BRANCH_NATS = 9;
 /** Above this spread (turns) of the prediction more than the nearest turn is looked at. */

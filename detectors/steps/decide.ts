@@ -5,13 +5,13 @@ import { requiredLogOdds } from '../nulls/ownNull.ts';
 import { collapse } from './bank.ts';
 import { explanationsOf, isExplained, sessionsUsed, spreadOf, weigh } from './evidence.ts';
 import type { Hypothesis } from './hypothesis.ts';
-import { isNoiseKnown, jointOdds } from './jointOdds.ts';
+import { isNoiseKnown } from './jointOdds.ts';
 import { seekSwitching, switchingRecord } from './modeSwitching.ts';
 import { newTrack } from './newTrack.ts';
 import type { PulsarWatch } from './pulsarWatch.ts';
 import { expectRecovery, FRESH_RECOVERY_SHARE, looseRecovery } from './recoveryStates.ts';
 import { followRecovery, relearn } from './relearn.ts';
-import { reshape, shape } from './reshape.ts';
+import { oddsInBestShape, reshape, shape } from './reshape.ts';
 import { logSignWeight } from './signPrior.ts';
 import { overlaps, type Track } from './track.ts';
 
@@ -87,7 +87,7 @@ function suspect(watch: PulsarWatch, index: number): void {
   if (index < track.askAgainAt || (watch.largeStep === null && followRecovery(watch, index))) return;
   const sign = logSignWeight(watch, track);
   if (gained + sign < watch.settings.confirmLogOdds) return;
-  const joint = jointOdds(watch, track, holder) + sign;
+  const joint = oddsInBestShape(watch, track, holder) + sign;
   const noiseKnown = isNoiseKnown(track);
   const decisive = noiseKnown && joint >= 0 ? gained + sign : joint;
   const demands = { sessions: LEAST_SESSIONS, noiseKnown };

@@ -8,6 +8,7 @@ import { explained } from './explained.ts';
 import type { Measurement } from './measure.ts';
 import type { Explanation, Interval, PulsarEvent } from './pulsarEvent.ts';
 import type { PulsarWatch } from './pulsarWatch.ts';
+import type { SessionShares, SessionSpan } from './sessionShares.ts';
 import type { Track } from './track.ts';
 
 const DAYS_PER_YEAR = 365.25;
@@ -79,7 +80,8 @@ function epochs(
 /** A session that was set aside whole while its neighbours were used. */
 export function describeBadSession(
   watch: PulsarWatch,
-  session: { readonly first: number; readonly last: number; readonly confirmedAt: number },
+  session: SessionSpan & { readonly confirmedAt: number },
+  { explanations, logBayesFactor }: SessionShares,
 ): PulsarEvent {
   const { seen } = watch.line;
   const mjdOf = (index: number) => mjdNumber(seen[index]!.arrival.tdb);
@@ -90,7 +92,7 @@ export function describeBadSession(
     pulsar: watch.model.name,
     state: 'confirmed',
     explanation,
-    explanations: { [explanation]: 1 },
+    explanations,
     epochMjd: interval[0],
     epochInterval68: interval,
     epochInterval95: interval,
@@ -98,7 +100,7 @@ export function describeBadSession(
     suspectedAtMjd: interval[1],
     confirmedAtMjd: mjdOf(session.confirmedAt),
     arrivalsUsed: session.last - session.first + 1,
-    logBayesFactor: 0,
+    logBayesFactor: Math.max(-LOG_ODDS_SHOWN, Math.min(LOG_ODDS_SHOWN, logBayesFactor)),
     falseAlertsPerYearAtThisLevel: 0,
     pulsars: [watch.model.name],
     site: seen[session.first]!.arrival.site,

@@ -14,9 +14,10 @@ import { bestOf, countedArrivals, disturbances } from './counts.ts';
 import { newTrack } from './newTrack.ts';
 import { asFixed, type PulsarWatch } from './pulsarWatch.ts';
 import { decisionsOf } from './retrace.ts';
+import { LOG_RISE_PRIOR, LONGEST_RISE_DAYS } from './slowSpinUp.ts';
 import { foundStartRate } from './start.ts';
-import { type Past, type SwitchChain, steadyEvidence, switchChain } from './switchChain.ts';
-import type { Track } from './track.ts';
+import { type Past, SWITCHES_PER_YEAR, type SwitchChains, steadyEvidence, switchChains } from './switchChain.ts';
+import { slowRise, type Track } from './track.ts';
 
 /** What is known of a switching pulsar. */
 export interface Modes {
@@ -69,12 +70,13 @@ export function seekSwitching(watch: PulsarWatch, index: number): boolean {
   const past = { decisions: decisionsOf(best), startRate: foundStartRate(counted) };
   const others = confirmed.filter((t) => !isSwitch(watch, t));
   const steady = steadyOdds(watch, { ...past, tracks: others }, counted);
-  const chain = bestChain(watch, past, others, medianSigma(counted));
-  const logOdds = Math.log(PRIOR_SHARE) + chain.logEvidence - Math.max(steady, chain.logEvidenceFewer);
+  const { many, few } = bestChains(watch, past, others, medianSigma(counted));
+  const logOdds = Math.log(PRIOR_SHARE) + many.logEvidence - Math.max(steady, few.logEvidence);
   if (logOdds >= LEAST_LOG_ODDS) {
-    adopt(watch, index, chain, logOdds);
+    adopt(watch, index, many, logOdds);
     return true;
   }
+  if (known === undefined && few.logEvidence > many.logEvidence && seeRise(watch, index, few, steady)) return true;
   if (known !== undefined && logOdds < 0)
     for (const t of confirmed) if (isSwitch(watch, t)) Object.assign(t, { state: 'withdrawn', logOdds, settled: true });
   return false;
@@ -115,26 +117,65 @@ function steadyOdds(watch: PulsarWatch, past: Past, counted: readonly CountedArr
   );
 }
 
-/** With the glitches believed so far, or with switches in their stead. */
-function bestChain(
+type BelievedChains = SwitchChains & { readonly kept: readonly Track[] };
+
+/** With the glitches believed so far, or with switches in their stead; with the count lost, or kept after all. */
+function bestChains(
   watch: PulsarWatch,
   past: Omit<Past, 'tracks'>,
   others: readonly Track[],
   sigmaTurns: number,
-): SwitchChain & { readonly kept: readonly Track[] } {
+): { readonly many: BelievedChains; readonly few: BelievedChains } {
   const withGlitches = others.filter((t) => t.kind !== 'spin-down-rate change');
   const without = withGlitches.filter((t) => t.kind !== 'glitch');
-  const kept = without.length === withGlitches.length ? [without] : [withGlitches, without];
-  const chains = kept.flatMap((tracks) =>
+  const counted = without.filter((t) => t.kind !== 'lost count');
+  const kept = [withGlitches, without, counted].filter((some, i, all) => some.length !== all[i - 1]?.length);
+  const found = kept.flatMap((tracks) =>
     QUIET_FREQUENCY.map((z) => {
       const noise = asFixed(watch.model, quiet(watch.likelyNoise, watch.prior, z));
-      const chain = switchChain(watch, noise, { ...past, tracks });
       const prior = logNoisePrior(noise, watch.prior, sigmaTurns);
-      const logEvidence = chain.logEvidence + prior;
-      return { ...chain, kept: tracks, logEvidence, logEvidenceFewer: chain.logEvidenceFewer + prior };
+      const weighed = (chains: SwitchChains): BelievedChains => ({
+        ...chains,
+        kept: tracks,
+        logEvidence: chains.logEvidence + prior,
+      });
+      const { many, few } = switchChains(watch, noise, { ...past, tracks });
+      return { many: weighed(many), few: weighed(few) };
     }),
   );
-  return chains.reduce((a, b) => (b.logEvidence > a.logEvidence ? b : a));
+  const best = (a: BelievedChains, b: BelievedChains) => (b.logEvidence > a.logEvidence ? b : a);
+  return { many: found.map(({ many }) => many).reduce(best), few: found.map(({ few }) => few).reduce(best) };
+}
+
+/** Two switches within weeks, to a quicker rotation and back to the old rate: ν has risen slowly. */
+function seeRise(watch: PulsarWatch, index: number, few: BelievedChains, steady: number): boolean {
+  const [first, last] = few.switches;
+  if (few.switches.length !== 2 || few.stepTurns >= 0) return false;
+  const { seen } = watch.line;
+  const days = seen[last!]!.tDays - seen[first!]!.tDays;
+  const gaps = few.switches.map(
+    (gap) => ((seen[gap]!.tDays - seen[gap - 1]!.tDays) * SWITCHES_PER_YEAR) / DAYS_PER_YEAR,
+  );
+  const logOdds = few.logEvidence - steady + LOG_RISE_PRIOR - gaps.reduce((sum, rate) => sum + Math.log(rate), 0);
+  if (days > LONGEST_RISE_DAYS || logOdds < watch.settings.confirmLogOdds) return false;
+  const near = (t: Track) => t.bestGap >= first! - NEAR_GAPS && t.bestGap <= last! + NEAR_GAPS;
+  const taken = watch.tracks.filter(
+    (t) => near(t) && isMaybeSwitch(t) && t.state !== 'withdrawn' && !few.kept.includes(t),
+  );
+  if (taken.some((t) => slowRise(t) !== null)) return false;
+  const host = taken.find((t) => t.state === 'confirmed' && t.partOf === null) ?? newTrack(watch, index);
+  for (const t of taken) if (t !== host) Object.assign(t, { state: 'withdrawn', settled: true });
+  findCount(watch, few);
+  settle(host, first!, index, logOdds);
+  host.kind = 'glitch';
+  host.shapes = {
+    shares: { 'slow spin-up': 1 / (1 + Math.exp(-logOdds)) },
+    firstGap: Math.max(2, first! - NEAR_GAPS),
+    lastGap: Math.min(index, first! + NEAR_GAPS),
+    rise: { firstGap: first!, lastGap: last!, days, stepTurns: -few.stepTurns },
+  };
+  watch.oldestGap = Math.max(watch.oldestGap, last! + 1);
+  return true;
 }
 
 function quiet(noise: NoiseModel, { frequencyWalk, torqueWalk }: NoisePrior, z: number): NoiseModel {
@@ -146,7 +187,7 @@ function quiet(noise: NoiseModel, { frequencyWalk, torqueWalk }: NoisePrior, z: 
 }
 
 /** One record, with a part for each switch; what was taken for other events is part of it. */
-function adopt(watch: PulsarWatch, index: number, chain: ReturnType<typeof bestChain>, logOdds: number): void {
+function adopt(watch: PulsarWatch, index: number, chain: BelievedChains, logOdds: number): void {
   const { seen } = watch.line;
   const known = switchingRecord(watch);
   const mistaken = watch.tracks.filter(
@@ -164,7 +205,7 @@ function adopt(watch: PulsarWatch, index: number, chain: ReturnType<typeof bestC
   const [first, ...later] = chain.switches;
   const days = seen[chain.switches.at(-1)!]!.tDays - seen[first!]!.tDays;
   const modes: Modes = {
-    stepTurns: chain.stepTurns,
+    stepTurns: Math.abs(chain.stepTurns),
     switchesPerYear: ((chain.switches.length - 1) * DAYS_PER_YEAR) / days,
     share: 1 / (1 + Math.exp(-logOdds)),
   };
@@ -175,8 +216,15 @@ function adopt(watch: PulsarWatch, index: number, chain: ReturnType<typeof bestC
     settle(part, gap, index, logOdds);
     Object.assign(part, { modes: null, partOf: host.number });
   }
+  findCount(watch, chain);
   for (const t of parts) Object.assign(t, { state: 'withdrawn', partOf: host.number, modes: null, settled: true });
   watch.oldestGap = Math.max(watch.oldestGap, chain.switches.at(-1)! + 1);
+}
+
+/** The count that was thought lost fits what is believed now. */
+function findCount(watch: PulsarWatch, { kept }: BelievedChains): void {
+  for (const t of watch.tracks)
+    if (t.kind === 'lost count' && t.state === 'confirmed' && !kept.includes(t)) t.state = 'withdrawn';
 }
 
 function settle(track: Track, gap: number, index: number, logOdds: number): void {

@@ -9,11 +9,12 @@ import { bestOf, countedArrivals, disturbances } from './counts.ts';
 import { withoutRecoveries } from './establishedRecoveries.ts';
 import { spreadOf, weigh } from './evidence.ts';
 import type { Hypothesis, Story } from './hypothesis.ts';
-import { isNoiseKnown, jointOdds } from './jointOdds.ts';
+import { isNoiseKnown } from './jointOdds.ts';
 import { runStart } from './largeStep.ts';
 import { isSwitch, seekSwitching } from './modeSwitching.ts';
 import { asFixed, type PulsarWatch } from './pulsarWatch.ts';
 import { retimeRecovery } from './recoveryTimescales.ts';
+import { oddsInBestShape } from './reshape.ts';
 import { decisionsOf, retrace } from './retrace.ts';
 import { foundStartRate, shareOfCount, startBeam } from './start.ts';
 import { stepAt } from './stepAt.ts';
@@ -83,7 +84,7 @@ function takeBack(watch: PulsarWatch, best: Hypothesis): void {
     .filter((t) => t.state === 'confirmed' && t.kind !== 'lost count' && !isSwitch(watch, t))
     .slice(-LAST_EVENTS);
   for (const track of confirmed) {
-    const logOdds = jointOdds(watch, track, best);
+    const logOdds = oddsInBestShape(watch, track, best);
     if (logOdds < (isNoiseKnown(track) ? -watch.settings.suspectLogOdds : 0))
       Object.assign(track, { state: 'withdrawn', logOdds, settled: true } satisfies Partial<Track>);
   }

@@ -10,6 +10,7 @@ import { pictureOf } from './picture.ts';
 import type { EventPicture, PulsarEvent } from './pulsarEvent.ts';
 import type { PulsarWatch } from './pulsarWatch.ts';
 import { recentArrivals } from './recentArrivals.ts';
+import { sessionShares } from './sessionShares.ts';
 import { badSessions, verdictsOf } from './verdicts.ts';
 
 export function report(watch: PulsarWatch): PulsarReport {
@@ -31,7 +32,11 @@ export function report(watch: PulsarWatch): PulsarReport {
     const picture = measured === null ? null : pictureOf(watch, event, track.bestGap, measured);
     if (picture !== null) pictures.set(event.id, picture);
   }
-  for (const session of badSessions(watch)) events.push(describeBadSession(watch, session));
+  const sessions = badSessions(watch);
+  const shares = sessionShares(watch, sessions);
+  sessions.forEach((session, i) => {
+    events.push(describeBadSession(watch, session, shares[i]!));
+  });
   events.sort((a, b) => a.epochMjd - b.epochMjd || (a.id < b.id ? -1 : 1));
   const last = watch.line.seen.at(-1);
   const arrivals = verdictsOf(watch);

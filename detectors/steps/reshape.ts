@@ -40,3 +40,14 @@ export function reshape(watch: PulsarWatch, index: number): boolean {
   }
   return again && seekSwitching(watch, index);
 }
+
+/** Event against noise; where a step is no better than noise, as a slow rise if it is one. */
+export function oddsInBestShape(watch: PulsarWatch, track: Track, h: Hypothesis): number {
+  const sudden = jointOdds(watch, track, h);
+  if (sudden > 0 || !isShaped(track) || track.partOf !== null || track.modes !== null) return sudden;
+  const { shapes } = track;
+  track.shapes = weighShapes(watch, track, h);
+  const slow = isSlow(track) ? jointOdds(watch, track, h) : sudden;
+  if (slow <= sudden) track.shapes = shapes;
+  return Math.max(slow, sudden);
+}

@@ -16,7 +16,7 @@ import { type Rise, type Shapes, slowRise, type Track } from './track.ts';
 /** Rises over weeks in one pulsar (common practice, no source: a handful of pulsars have shown any). */
 const SLOW_RATE_PER_YEAR = 0.005;
 /** A rise may have begun so long before it was taken for a step, and its end be taken for a second step. */
-const LONGEST_RISE_DAYS = 120;
+export const LONGEST_RISE_DAYS = 120;
 /** Gaps on each side of the most probable one that the step may lie in. */
 const MOST_GAPS = 2;
 const REACH = 200;

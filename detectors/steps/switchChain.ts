@@ -20,20 +20,20 @@ export interface Past {
   readonly tracks: readonly Track[];
 }
 
-export interface SwitchChain {
-  /** ln P(arrivals | noise) over the chains of at least `LEAST_SWITCHES`, and over those of fewer. */
+/** Chains that agree in how many switches they have. */
+export interface SwitchChains {
+  /** ln P(arrivals | noise) over them. */
   readonly logEvidence: number;
-  readonly logEvidenceFewer: number;
-  /** Arrivals (index) after the gaps in which the most probable chain switches. */
+  /** Arrivals (index) after the gaps in which the most probable one switches. */
   readonly switches: readonly number[];
-  /** |Δν̇| between the two rates, turns/day². */
+  /** What its first switch adds to the second derivative of the deviation, turns/day²; negative as for a spin-up. */
   readonly stepTurns: number;
 }
 
 /** The second brings the rate back, as the end of a slow rise would; the third goes where the first went. */
 const LEAST_SWITCHES = 3;
 /** Switches come every few months to years (Lyne et al. 2010, Science 329, 408). */
-const SWITCHES_PER_YEAR = 1.5;
+export const SWITCHES_PER_YEAR = 1.5;
 /** σ of Δν̇/ν̇ between the rates: 0.3 % to 45 % are published (Lyne et al. 2010, Table 1; from memory). */
 const SIZES = [0.02, 0.2];
 /** The rates themselves vary from one switch to the next by about this share of their difference. */
@@ -64,11 +64,12 @@ interface Chain {
   readonly origin: number;
 }
 
-export function switchChain(
+/** The chains of at least `LEAST_SWITCHES`, and those of fewer. */
+export function switchChains(
   watch: PulsarWatch,
   noise: NoiseModel,
   { decisions, startRate, tracks }: Past,
-): SwitchChain {
+): { readonly many: SwitchChains; readonly few: SwitchChains } {
   const { seen } = watch.line;
   const belief = { noise, tracks };
   const eventful = new Set(tracks.map((t) => t.bestGap));
@@ -86,16 +87,16 @@ export function switchChain(
     chains = followed([...chains, ...born], i);
   }
   const isEnough = ({ switches }: Chain) => switches !== null && switches.count >= LEAST_SWITCHES;
-  const total = (some: readonly Chain[]) => some.reduce((sum, { h }) => logAddExp(sum, h.logWeight), -Infinity);
+  return { many: summed(chains.filter(isEnough)), few: summed(chains.filter((chain) => !isEnough(chain))) };
+}
+
+function summed(chains: readonly Chain[]): SwitchChains {
+  if (chains.length === 0) return { logEvidence: -Infinity, switches: [], stepTurns: 0 };
   const best = chains.reduce((a, b) => (b.h.logWeight > a.h.logWeight ? b : a));
   const switches: number[] = [];
   for (let s = best.switches; s !== null; s = s.before) switches.unshift(s.gap);
-  return {
-    logEvidence: total(chains.filter(isEnough)),
-    logEvidenceFewer: total(chains.filter((chain) => !isEnough(chain))),
-    switches,
-    stepTurns: Math.abs(best.h.mean.at(-1)!),
-  };
+  const logEvidence = chains.reduce((sum, { h }) => logAddExp(sum, h.logWeight), -Infinity);
+  return { logEvidence, switches, stepTurns: best.h.mean.at(-1)! };
 }
 
 /** ln P(arrivals | noise) without any switch. */
