@@ -5,7 +5,7 @@
 
 import { SPIN_STATES } from '../filter/stateSpace.ts';
 import { copyOf, type Hypothesis, loosen } from './hypothesis.ts';
-import type { Modes } from './modeSwitching.ts';
+import type { Modes } from './switchingRecord.ts';
 
 export const KINDS = ['glitch', 'spin-down-rate change', 'clock step', 'dispersion step'] as const;
 export type Kind = (typeof KINDS)[number];

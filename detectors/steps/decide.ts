@@ -3,16 +3,18 @@
 import { logAddExp, logRatio } from '../math/logSumExp.ts';
 import { requiredLogOdds } from '../nulls/ownNull.ts';
 import { collapse } from './bank.ts';
+import { oddsInBestShape } from './bestShape.ts';
 import { explanationsOf, isExplained, sessionsUsed, spreadOf, weigh } from './evidence.ts';
 import type { Hypothesis } from './hypothesis.ts';
 import { isNoiseKnown } from './jointOdds.ts';
-import { seekSwitching, switchingRecord } from './modeSwitching.ts';
+import { seekSwitching } from './modeSwitching.ts';
 import { newTrack } from './newTrack.ts';
 import type { PulsarWatch } from './pulsarWatch.ts';
 import { expectRecovery, FRESH_RECOVERY_SHARE, looseRecovery } from './recoveryStates.ts';
 import { followRecovery, relearn } from './relearn.ts';
-import { oddsInBestShape, reshape, shape } from './reshape.ts';
+import { reshape, shape } from './reshape.ts';
 import { logSignWeight } from './signPrior.ts';
+import { switchingRecord } from './switchingRecord.ts';
 import { overlaps, type Track } from './track.ts';
 
 export const LEAST_SESSIONS = 2;
@@ -94,6 +96,7 @@ function suspect(watch: PulsarWatch, index: number): void {
   // Not a number either: what cannot be weighed is not confirmed.
   if (!(decisive >= requiredLogOdds(watch, Math.min(decisive, gained + sign), demands))) {
     refuse(watch, track, index, joint);
+    if (watch.largeStep === null && seekSwitching(watch, index)) relearn(watch, index);
     return;
   }
   shape(watch, track, holder, joint);

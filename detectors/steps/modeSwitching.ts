@@ -17,16 +17,8 @@ import { decisionsOf } from './retrace.ts';
 import { LOG_RISE_PRIOR, LONGEST_RISE_DAYS } from './slowSpinUp.ts';
 import { foundStartRate } from './start.ts';
 import { type Past, SWITCHES_PER_YEAR, type SwitchChains, steadyEvidence, switchChains } from './switchChain.ts';
+import { isSwitch, type Modes, switchingRecord } from './switchingRecord.ts';
 import { slowRise, type Track } from './track.ts';
-
-/** What is known of a switching pulsar. */
-export interface Modes {
-  /** |Δν̇| between the two, turns/day². */
-  readonly stepTurns: number;
-  readonly switchesPerYear: number;
-  /** Posterior probability that the changes are switches, not changes that happen to agree. */
-  readonly share: number;
-}
 
 /** Share of pulsars that switch (common practice, no source). */
 const PRIOR_SHARE = 0.01;
@@ -43,16 +35,6 @@ const QUIET_FREQUENCY = [-1, 0];
 /** A suspicion so many arrivals from a switch is the switch. */
 const NEAR_GAPS = 3;
 const DAYS_PER_YEAR = 365.25;
-
-/** The record that holds all switches of the pulsar, once it is known to switch. */
-export function switchingRecord(watch: PulsarWatch): Track | undefined {
-  return watch.tracks.find((t) => t.modes !== null && t.state === 'confirmed');
-}
-
-export function isSwitch(watch: PulsarWatch, track: Track): boolean {
-  const record = switchingRecord(watch);
-  return record !== undefined && (track === record || track.partOf === record.number);
-}
 
 /** Its walk may hide switches, or it is known to switch. */
 function wanders(watch: PulsarWatch): boolean {

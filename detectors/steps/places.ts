@@ -3,8 +3,8 @@
 import { isFelt, isOfClock, type SiteStep } from '../site/siteStep.ts';
 import type { BirthPlace } from './births.ts';
 import { zeros } from './hypothesis.ts';
-import { switchingRecord } from './modeSwitching.ts';
 import type { PulsarWatch } from './pulsarWatch.ts';
+import { switchingRecord } from './switchingRecord.ts';
 import { dispersionWeight, type Seen } from './timeline.ts';
 
 /** K of the cold-plasma law, s MHz² pc⁻¹ cm³: 1/2.41e-4. */

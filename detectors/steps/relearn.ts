@@ -5,19 +5,20 @@ import { learnNoise } from '../filter/noiseLearning.ts';
 import { withMargin } from '../filter/noiseMargin.ts';
 import { newBank } from './bank.ts';
 import { logWeightOf, pruned } from './beam.ts';
+import { oddsInBestShape } from './bestShape.ts';
 import { bestOf, countedArrivals, disturbances } from './counts.ts';
 import { withoutRecoveries } from './establishedRecoveries.ts';
 import { spreadOf, weigh } from './evidence.ts';
 import type { Hypothesis, Story } from './hypothesis.ts';
 import { isNoiseKnown } from './jointOdds.ts';
-import { runStart } from './largeStep.ts';
-import { isSwitch, seekSwitching } from './modeSwitching.ts';
+import { endTrial, runStart } from './largeStep.ts';
+import { seekSwitching } from './modeSwitching.ts';
 import { asFixed, type PulsarWatch } from './pulsarWatch.ts';
 import { retimeRecovery } from './recoveryTimescales.ts';
-import { oddsInBestShape } from './reshape.ts';
 import { decisionsOf, retrace } from './retrace.ts';
 import { foundStartRate, shareOfCount, startBeam } from './start.ts';
 import { stepAt } from './stepAt.ts';
+import { isSwitch } from './switchingRecord.ts';
 import type { Track } from './track.ts';
 
 /** The noise is learned when the arrivals have grown by this factor. */
@@ -75,6 +76,7 @@ export function followRise(watch: PulsarWatch, index: number, track: Track): voi
   let story: Story | null = null;
   for (const s of decisionsOf(best)) story = { ...s, used: s.used || s.index >= run, before: story };
   watch.oldestGap = index + 1;
+  endTrial(watch);
   rebuild(watch, index, { ...best, story }, foundStartRate(countedArrivals(watch, best)));
 }
 

@@ -29,25 +29,15 @@ export function reshape(watch: PulsarWatch, index: number): boolean {
   for (const track of watch.tracks) {
     if (track.state !== 'confirmed' || track.confirmedAt === null || !AGAIN.has(index - track.confirmedAt)) continue;
     const isWhole = track.modes !== null || watch.tracks.some((t) => t.partOf === track.number);
+    // While its size is open, what does not fit speaks for another size, not for another shape.
+    if (watch.largeStep !== null && watch.largeStep.track !== null) continue;
     if (isWhole || track.partOf !== null || !isShaped(track)) continue;
     again = true;
     const best = bestOf(watch);
     const before = gapsOfEvent(track).join();
     shape(watch, track, best, earlierHalf(watch, track) ? jointOdds(watch, track, best) : 0);
     const whole = track.partOf === null ? track : watch.tracks[track.partOf]!;
-    if (watch.largeStep === null && isSlow(whole) && gapsOfEvent(whole).join() !== before)
-      followRise(watch, index, whole);
+    if (isSlow(whole) && gapsOfEvent(whole).join() !== before) followRise(watch, index, whole);
   }
   return again && seekSwitching(watch, index);
-}
-
-/** Event against noise; where a step is no better than noise, as a slow rise if it is one. */
-export function oddsInBestShape(watch: PulsarWatch, track: Track, h: Hypothesis): number {
-  const sudden = jointOdds(watch, track, h);
-  if (sudden > 0 || !isShaped(track) || track.partOf !== null || track.modes !== null) return sudden;
-  const { shapes } = track;
-  track.shapes = weighShapes(watch, track, h);
-  const slow = isSlow(track) ? jointOdds(watch, track, h) : sudden;
-  if (slow <= sudden) track.shapes = shapes;
-  return Math.max(slow, sudden);
 }

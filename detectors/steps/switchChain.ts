@@ -45,6 +45,8 @@ const MOST_CHAINS = 50;
 const REACH_NATS = 14;
 /** The pulsar stays in one rate for so long at least (Lyne et al. 2010: months to years). */
 const SHORTEST_STAY_DAYS = 30;
+/** The same of a pulsar that has switched once: a slow rise looks like that too. */
+const SHORTEST_RISE_DAYS = 10;
 const DAYS_PER_YEAR = 365.25;
 const SECONDS_PER_DAY = 86_400;
 
@@ -122,7 +124,8 @@ function firstChains(watch: PulsarWatch, startRate: number): Chain[] {
 function switched(chains: readonly Chain[], gap: number, tDays: number, gapDays: number): Chain[] {
   const probability = Math.min(0.5, (SWITCHES_PER_YEAR * gapDays) / DAYS_PER_YEAR);
   return chains.flatMap(({ h, switches, second, origin }) => {
-    if (switches !== null && tDays - switches.tDays < SHORTEST_STAY_DAYS) return [];
+    const shortestDays = switches?.count === 1 ? SHORTEST_RISE_DAYS : SHORTEST_STAY_DAYS;
+    if (switches !== null && tDays - switches.tDays < shortestDays) return [];
     const child = copyOf(h);
     child.logWeight += Math.log(probability);
     h.logWeight += Math.log1p(-probability);

@@ -1,7 +1,7 @@
 /** An event on the way to a decision: suspected, confirmed or withdrawn, with its weight of evidence. */
 
 import type { Cause } from './births.ts';
-import type { Modes } from './modeSwitching.ts';
+import type { Modes } from './switchingRecord.ts';
 
 export interface Track {
   /** Tags the hypotheses that hold the event for true. */

@@ -10,21 +10,22 @@ import { arrivalFile, syntheticArrivals, syntheticPulsar } from '../support/synt
 // Every command as a person types it: what it prints, and what the shell learns.
 
 const COMMANDS = [
-  ...[
-    'watch',
-    'check',
-    'replay',
-    'events',
-    'show',
-    'review',
-    'morning',
-    'limits',
-    'plan',
-    'arrivals',
-    'export',
-    'backup',
-    'restore',
-  ],
+  'watch',
+  'check',
+  'replay',
+  'events',
+  'show',
+  'review',
+  'reviewer',
+  'morning',
+  'limits',
+  'plan',
+  'arrivals',
+  'model',
+  'drill',
+  'export',
+  'backup',
+  'restore',
 ];
 const START = 61_000;
 const glitching = syntheticPulsar({

@@ -86,6 +86,12 @@ describe('what the detector says of one pulsar', () => {
     const bad = new Set([120, 121, 122]);
     const events = confirmed(watched(62, { days, happening: (_t, { index }) => (bad.has(index) ? 0.06 : 0) }));
     expect(events.map((e) => e.explanation)).toEqual(['bad session']);
+    // Three outliers of their own, two in a hundred each, or one bad session of which each further arrival is bad by four in five.
+    expect(events[0]!.explanations['bad arrival']! / events[0]!.explanations['bad session']!).toBeCloseTo(
+      0.025 ** 2,
+      6,
+    );
+    expect(Object.values(events[0]!.explanations).reduce((sum, share) => sum + share, 0)).toBeCloseTo(1, 9);
   });
 
   it('follows a wandering pulsar without an alert', () => {

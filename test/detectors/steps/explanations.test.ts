@@ -25,7 +25,7 @@ function recovering(atDays: number, relativeSize: number, q: number, timescaleDa
   };
 }
 
-function weekly(seed: number, happening: Happening, count = 100) {
+function weekly(seed: number, happening: Happening, count = 80) {
   const days = observingDays(count, 7, 0.6, dice(seed));
   return watched(MODEL, seed, { days, walks: QUIET, uncertaintyUs: 50, happening });
 }
