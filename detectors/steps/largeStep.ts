@@ -12,6 +12,7 @@ import { bestFollowed, expectedDeviation, expectedSpread } from './largeStepSize
 import type { PulsarWatch } from './pulsarWatch.ts';
 import { expectRecovery } from './recoveryStates.ts';
 import { shareOfCount } from './start.ts';
+import type { Track } from './track.ts';
 
 /** A large step on trial. */
 export interface LargeStep {
@@ -115,12 +116,16 @@ function isOver(watch: PulsarWatch, step: LargeStep, index: number): boolean {
   if (run > LONGEST_TRIAL) return true;
   const best = watch.bank!.beam[0]!;
   if (step.track === null)
-    return runStart(best, index, watch.lockedFrom) > index && watch.tracks.every((t) => t.state !== 'suspected');
-  if (watch.tracks[step.track]!.settled && watch.tracks[step.track]!.state === 'withdrawn') return true;
-  if (run < WON_RUN || !best.tracks.includes(step.track)) return false;
+    return runStart(best, index, watch.lockedFrom) > index && !watch.tracks.some((t) => isOpenAt(t, step.start));
+  if (watch.tracks[step.track]!.state === 'withdrawn') return true;
+  if (run < WON_RUN) return false;
   let fits = 0;
-  for (let s = best.story; s !== null && s.used; s = s.before) fits++;
+  for (let s = best.story; s?.used; s = s.before) fits++;
   return fits >= WON_FITS && shareOfCount(watch.bank!, best) > WON_SHARE;
+}
+
+function isOpenAt(track: Track, gap: number): boolean {
+  return track.state === 'suspected' && track.firstGap <= gap && gap <= track.lastGap;
 }
 
 function handOver(watch: PulsarWatch, step: LargeStep, found: Hypothesis[]): void {

@@ -36,6 +36,10 @@ const RECOVERIES: readonly (readonly [chance: number, share: number])[] = [
   [0.2, 0.2],
 ];
 const TIMESCALES_DAYS = [5, 10, 20, 40, 80, 160];
+/** Closer timescales: ratios from the first down to the last, for so many sizes. */
+const FIRST_RATIO = Math.SQRT2;
+const LAST_RATIO = 1.01;
+const HEAVIEST = 6;
 /** Counts followed for each size, and kept of it. */
 const FOLLOWED = 10;
 const KEPT = 3;
@@ -51,21 +55,54 @@ export function bestFollowed(
   const { decays } = watch.states;
   if (peaks.length === 0) return [];
   if (!watch.locked || decays.length < 2) return peaks.flatMap((peak) => followed(watch, peak, step, index, decays));
-  let best: Hypothesis[] = [];
-  let chosen = decays;
-  for (const timescaleDays of TIMESCALES_DAYS) {
-    const tried = [
-      { ...decays[0]!, timescaleDays },
-      { ...decays[1]!, timescaleDays: secondTimescale(timescaleDays) },
-    ];
-    const found = peaks.flatMap((peak) => followed(watch, peak, step, index, tried));
-    if (best.length > 0 && !(logWeightOf(found) > logWeightOf(best))) continue;
-    best = found;
-    chosen = tried;
+  const tried = TIMESCALES_DAYS.map((timescaleDays) => trialOf(watch, peaks, step, index, timescaleDays));
+  let best = tried.reduce((a, b) => (b.logWeight > a.logWeight ? b : a));
+  // A recovery that is seen precisely asks for its own timescale: the sizes that matter are followed with closer ones.
+  for (let ratio = FIRST_RATIO; ratio > LAST_RATIO; ratio = Math.sqrt(ratio)) {
+    const middle = best.decays[0]!.timescaleDays;
+    for (const timescaleDays of [middle / ratio, middle * ratio]) {
+      const closer = trialOf(watch, best.heaviest, step, index, timescaleDays);
+      if (closer.logWeight > best.logWeight) best = closer;
+    }
   }
-  watch.states.decays = chosen;
-  watch.bank = { ...watch.bank!, decays: chosen };
-  return best;
+  watch.states.decays = best.decays;
+  watch.bank = { ...watch.bank!, decays: best.decays };
+  return best.found;
+}
+
+/** The sizes followed with one timescale. */
+interface TimescaleTrial {
+  readonly decays: readonly Decay[];
+  readonly found: Hypothesis[];
+  readonly logWeight: number;
+  /** The peaks of most weight. */
+  readonly heaviest: readonly SearchPeak[];
+}
+
+function trialOf(
+  watch: PulsarWatch,
+  peaks: readonly SearchPeak[],
+  step: LargeStep,
+  index: number,
+  timescaleDays: number,
+): TimescaleTrial {
+  const [first, second] = watch.states.decays as [Decay, Decay];
+  const decays = [
+    { ...first, timescaleDays },
+    { ...second, timescaleDays: secondTimescale(timescaleDays) },
+  ];
+  const each = peaks.map((peak) => {
+    const beam = followed(watch, peak, step, index, decays);
+    return { peak, beam, logWeight: logWeightOf(beam) };
+  });
+  each.sort((a, b) => b.logWeight - a.logWeight);
+  const found = each.flatMap(({ beam }) => beam);
+  return {
+    decays,
+    found,
+    logWeight: logWeightOf(found),
+    heaviest: each.slice(0, HEAVIEST).map(({ peak }) => peak),
+  };
 }
 
 /** What a hypothesis of day `tDays` makes of arrival `index`: deviation, turns, receiver and dispersion included. */

@@ -104,8 +104,8 @@ function shareOfBestCount(watch: PulsarWatch): number {
 /** The count is gone: one record says so, events that rest on it are taken back, and the search begins. */
 function lose(watch: PulsarWatch, doubt: Doubt, index: number): void {
   // A large step whose size was never settled: nothing since it is known.
-  const { from, before } =
-    watch.largeStep === null ? doubt : { from: watch.largeStep.start, before: watch.largeStep.before };
+  const unsettled = (watch.largeStep?.track ?? null) === null ? null : watch.largeStep;
+  const { from, before } = unsettled === null ? doubt : { from: unsettled.start, before: unsettled.before };
   const explanations = explained(watch, from);
   const open = watch.tracks.find((t) => t.state === 'suspected');
   const own = open !== undefined && open.lastGap >= from ? open : undefined;

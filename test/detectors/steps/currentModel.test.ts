@@ -43,7 +43,9 @@ describe('the current model', () => {
     const current = modelAfter(start, arrivals.slice(0, 80));
     expect(current.events).toEqual([]);
     expect(current.model.spin.epochTdb).toEqual({ day: arrivals[79]!.tdb.day, fraction: 0 });
-    expect(largest(deviations(current.model, arrivals.slice(80)))).toBeLessThan(6 * SIGMA + 3 * current.ahead[3]!.turns);
+    expect(largest(deviations(current.model, arrivals.slice(80)))).toBeLessThan(
+      6 * SIGMA + 3 * current.ahead[3]!.turns,
+    );
     expect(largest(deviations(current.model, arrivals.slice(0, 80)))).toBeLessThan(0.02);
     expect(current.startModel.reached).toBe(false);
     expect(current.validFromMjd).toBeCloseTo(mjdNumber(arrivals[0]!.tdb), 6);
