@@ -19,7 +19,7 @@ export function vitalSigns(sources: {
 }): VitalSigns {
   const { configuration, store, clock, progress, sky } = sources;
   return {
-    versions: { program: programVersion(), node: process.versions.node, sqlite: store.libraryVersion() },
+    versions: { program: programVersion(), node: process.versions.node, sqlite: store.sqliteVersion() },
     startedAt: sources.startedAt.toISOString(),
     recordBytes: store.counts().bytes,
     residentBytes: process.memoryUsage.rss(),

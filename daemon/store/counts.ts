@@ -29,6 +29,6 @@ export function recordCounts(db: Db): RecordCounts {
   };
 }
 
-export function libraryVersion(db: Db): string {
+export function sqliteVersion(db: Db): string {
   return row<{ version: string }>(db, 'SELECT sqlite_version() AS version')?.version ?? 'unknown';
 }

@@ -15,7 +15,7 @@ import * as arrivals from './arrivals.ts';
 import { writeBackup } from './backup.ts';
 import { commitIntake } from './commitIntake.ts';
 import type { Db } from './connection.ts';
-import { libraryVersion, type RecordCounts, recordCounts } from './counts.ts';
+import { type RecordCounts, recordCounts, sqliteVersion } from './counts.ts';
 import * as events from './events.ts';
 import * as files from './files.ts';
 import type { InstanceLock } from './instanceLock.ts';
@@ -286,8 +286,8 @@ export class Store {
     return recordCounts(this.#db);
   }
 
-  libraryVersion(): string {
-    return libraryVersion(this.#db);
+  sqliteVersion(): string {
+    return sqliteVersion(this.#db);
   }
 
   meta(key: string): string | null {
