@@ -83,7 +83,9 @@ describe.skipIf(!mayRun('strace', ['-qq', '-o', '/dev/null', 'true'], 'a call th
     },
   );
 
-  test('A40: the file system became read-only: a transaction is gone whole, and the work goes on later', { timeout: 120_000 }, async () => {
+  test('A40: the file system became read-only: a transaction is gone whole, and the work goes on later', {
+    timeout: 120_000,
+  }, async () => {
     const state = join(folder.path, 'read-only');
     const run = await startUnder('strace', failing('pwrite64', 'EROFS', '20+'), night, state);
     expect(run.lines).not.toContain('done');
