@@ -31,6 +31,7 @@ export function detectionPicture({ date, seed }: Head, rows: readonly Row[]): st
     (_, k) => highest < 4 || k % 2 === 0,
   );
   return `<svg xmlns="http://www.w3.org/2000/svg" viewBox="0 0 ${WIDTH} ${HEIGHT}" font-family="sans-serif" font-size="12">
+<title>Delay of confirmation over that of the clairvoyant, by cadence</title>
 <rect width="${WIDTH}" height="${HEIGHT}" fill="#fff"/>
 <text x="${LEFT}" y="20" font-size="15">Delay of confirmation over that of the clairvoyant test (${date}, seed ${seed})</text>
 <text x="${LEFT}" y="38">Bars of a group: glitches that the test needs about ${EXPECTED.join(', ')} arrivals for; whiskers: one standard error</text>
