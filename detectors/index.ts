@@ -2,7 +2,7 @@
 
 export type { BarycentredArrival, Delays, Quality, ReceivedArrival, TimedArrival } from './arrival.ts';
 export type { DetectionLimit } from './limits/detectionLimit.ts';
-export { type Plan, planFor } from './plan/plan.ts';
+export { type EventPlan, openPlan, type Plan, planFor } from './plan/plan.ts';
 export type {
   ArrivalVerdict,
   DetectorSettings,

@@ -1,4 +1,5 @@
 import type { MorningReview, QuarantinedRow } from '../../alerts/morningReview.ts';
+import type { EventPlan } from '../../detectors/index.ts';
 import type { NoiseModel, RecentArrivals } from '../../detectors/report.ts';
 import type {
   ArrivalOrigin,
@@ -28,6 +29,8 @@ export interface ReviewDesk {
   event(id: string): EventRecord | null;
   /** Where the arrivals of an event's picture came from, in time order. */
   origins(record: EventRecord): readonly ArrivalOrigin[];
+  /** As of its pulsar's last arrival: what more of them would settle about its events; null: nothing is open. */
+  plan(record: EventRecord): EventPlan | null;
   /** The event as a notice for others, VOEvent 2.0 XML; null: no event has this id. */
   notice(id: string, issuedAt: Date): string | null;
   morning(): MorningReview;

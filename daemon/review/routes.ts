@@ -122,7 +122,7 @@ function contentOf(desk: ReviewDesk, record: EventRecord): EventContent {
   const queue = [...waiting, ...suspected];
   const at = queue.findIndex(({ id }) => id === record.event.id);
   const neighbours = { previous: at < 0 ? null : (queue[at - 1] ?? null), next: queue[at + 1] ?? null };
-  return { record, origins: desk.origins(record), neighbours };
+  return { record, origins: desk.origins(record), plan: desk.plan(record), neighbours };
 }
 
 type Show = (

@@ -47,6 +47,7 @@ export function createStoreDesk(parts: StoreDeskParts): ReviewDesk {
     decisions: (most) => decisions(store, most),
     event: (id) => store.event(id),
     origins: ({ picture }) => store.origins(picture?.points.map(({ key }) => key) ?? []),
+    plan: ({ event }) => (event.site === null ? (store.pulsarReport(event.pulsar)?.plan ?? null) : null),
     notice(id, issuedAt) {
       const record = store.event(id);
       return record === null ? null : noticeOf(store, record, configuration, issuedAt);

@@ -2,6 +2,7 @@ import {
   type BelievedStep,
   type CurrentModel,
   knownSteps,
+  openPlan,
   type PulsarTimes,
   type PulsarWatch,
   pulsarTimes,
@@ -90,10 +91,13 @@ export class SiteWatches {
       await pause();
       guarded(pulsar, () => {
         const watches = known.length === 0 ? this.#alone : this.#withSteps;
-        const reported = report(this.#watch(watches, station, { pulsar, changes, steps: known }));
+        const watch = this.#watch(watches, station, { pulsar, changes, steps: known });
+        const reported = report(watch);
+        const plan = openPlan(watch, reported.events);
         reports.push(reported);
         const sessions = changed.has(pulsar) ? { times: own } : {};
-        rows.set(pulsar, { ...reportRow(station, reported), ...sessions, siteSteps: known });
+        const row = { ...reportRow(station, reported), ...sessions, siteSteps: known };
+        rows.set(pulsar, plan === null ? row : { ...row, plan });
       });
     }
     return { reports, rows: [...rows.values()], steps };

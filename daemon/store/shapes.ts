@@ -1,5 +1,6 @@
 import type { BarycentredArrival, Quality, ReceivedArrival } from '../../detectors/arrival.ts';
 import type { DetectionLimit } from '../../detectors/limits/detectionLimit.ts';
+import type { EventPlan } from '../../detectors/plan/plan.ts';
 import type { NoiseModel, RecentArrivals } from '../../detectors/report.ts';
 import type { PulsarTimes } from '../../detectors/site/pulsarTimes.ts';
 import type { SiteStep } from '../../detectors/site/siteStep.ts';
@@ -129,6 +130,8 @@ export interface PulsarReportRow {
   readonly arrivals?: number;
   /** Absent in records of before it was kept. */
   readonly recent?: RecentArrivals;
+  /** What observations after the last arrival would settle about its events; absent: nothing is open. */
+  readonly plan?: EventPlan;
 }
 
 export interface EventUpsert {

@@ -10,7 +10,7 @@ import type { VerdictInput, VerdictOutcome } from './shapes.ts';
 const DONE = { accept: 'accepted', reject: 'rejected', reopen: 'reopened' } as const;
 
 export function recordVerdict(db: Db, idOrFormerId: string, input: VerdictInput): VerdictOutcome {
-  return inTransaction(db, () => {
+  const outcome = inTransaction(db, (): VerdictOutcome => {
     const record = eventRecord(db, idOrFormerId);
     if (record === null) return { kind: 'unknown event' };
     if (isRepetition(record, input)) return { kind: 'repeated', record };
@@ -19,6 +19,8 @@ export function recordVerdict(db: Db, idOrFormerId: string, input: VerdictInput)
     write(db, record, input);
     return { kind: 'recorded', record: eventRecord(db, record.event.id)! };
   });
+  step('verdict on record');
+  return outcome;
 }
 
 /** A form sent twice, or again because the answer to the first was lost. */

@@ -5,6 +5,9 @@ import type { NoisePrior } from './noisePrior.ts';
 
 /** Natural-log units of posterior given up on the way to stronger noise: about one standard deviation. */
 const GIVEN_UP = 0.5;
+/** Up to the first number of sessions that much is given up, from the second on nothing. */
+const FEW_SESSIONS = 100;
+const MANY_SESSIONS = 200;
 const STEP = 0.2;
 /** e^6: no margin grows beyond this. */
 const MOST_STEPS = 30;
@@ -12,14 +15,18 @@ const MOST_STEPS = 30;
 /**
  * The most probable noise of few arrivals is too quiet as often as too loud, and too quiet makes false events. This is
  * the loudest noise that is still within one standard deviation: first of the walks in frequency and torque together,
- * then of scale and floor together. With hundreds of arrivals it differs little from what was learned.
+ * then of scale and floor together. A walk that never showed would be made as loud as could have been overlooked, which hides small
+ * glitches for months; with hundreds of sessions the noise is therefore taken as it was learned.
  */
 export function withMargin(
   learned: NoiseModel,
   arrivals: readonly CountedArrival[],
   disturbances: readonly Disturbance[],
   prior: NoisePrior,
+  sessions: number,
 ): NoiseModel {
+  const nats = GIVEN_UP * Math.min(1, (MANY_SESSIONS - sessions) / (MANY_SESSIONS - FEW_SESSIONS));
+  if (nats <= 0) return learned;
   const problem = learningProblem(arrivals, disturbances);
   const posterior = (noise: NoiseModel): number => {
     const walks =
@@ -39,7 +46,7 @@ export function withMargin(
     uncertaintyScale: noise.uncertaintyScale * factor,
     floorTurns: noise.floorTurns * factor,
   });
-  const level = posterior(learned) - GIVEN_UP;
+  const level = posterior(learned) - nats;
   const walks = walksLouder(learned, loudest(learned, walksLouder, posterior, level, STEP));
   return errorsLouder(walks, loudest(learned, errorsLouder, posterior, level, STEP / 4));
 }

@@ -2,7 +2,7 @@
 
 import { nuisanceLayout } from '../filter/nuisance.ts';
 import { normalQuantile } from '../math/normal.ts';
-import { isNoiseKnown } from '../steps/jointOdds.ts';
+import { leastJointOdds } from '../steps/jointOdds.ts';
 import { turnsPerDispersion } from '../steps/places.ts';
 import type { PulsarWatch } from '../steps/pulsarWatch.ts';
 import { SESSION_DAYS } from '../steps/timeline.ts';
@@ -55,7 +55,8 @@ export function limitCurve(watch: PulsarWatch, programme: Programme): LimitAfter
   const next = { kind: 'glitch', bestGap: watch.line.seen.length } as const;
   const guesses = decided.map((sums) => withoutNoise(watch, sums, gapDays));
   const trials = trialsOf(watch, stage, guesses.at(-1)!);
-  const eased = isNoiseKnown(next) ? watch.settings.confirmLogOdds : 0;
+  const leastJoint = leastJointOdds(watch, next);
+  const eased = Number.isFinite(leastJoint) ? watch.settings.confirmLogOdds - leastJoint : 0;
   const least = new Float64Array(DRAWS).fill(Number.POSITIVE_INFINITY);
   let smallest = Number.POSITIVE_INFINITY;
   return looks.map((look, i) => {

@@ -32,8 +32,8 @@ const ARRIVALS = 60;
 
 /** What a step must pass besides the threshold. */
 export interface Demands {
-  /** The second weighing need only not speak for noise. */
-  readonly noiseKnown: boolean;
+  /** Of the second weighing, to leave the decision to the first; infinite where both must pass. */
+  readonly leastJointOdds: number;
   readonly sessions: number;
 }
 
@@ -118,7 +118,7 @@ function crossings(
   { knowing, deciding, next }: RehearsedPulsar,
   logPriorTrue: number,
   years: number,
-  { noiseKnown, sessions }: Demands,
+  { leastJointOdds, sessions }: Demands,
 ): readonly (number | null)[] {
   const found: (number | null)[] = LEVELS.map(() => null);
   for (let n = 1; n < ARRIVALS; n++) {
@@ -126,7 +126,7 @@ function crossings(
     const first = confirmableOdds(deciding, sessions);
     if (first < LEVELS[0]!) continue;
     const second = secondWeighing(deciding.bank!, knowing.bank!, logPriorTrue);
-    const odds = noiseKnown && second >= 0 ? first : Math.min(first, second);
+    const odds = second >= leastJointOdds ? first : Math.min(first, second);
     const { something, nothing } = weigh(knowing.bank!);
     const yearsLeft = years - deciding.line.seen.at(-1)!.tDays / DAYS_PER_YEAR;
     const ratio = (Math.exp(something - nothing) / TOTAL_RATE + yearsLeft) / years;

@@ -14,7 +14,7 @@ import { type Demands, levelFor, type NullTail, nullTail, rateAt } from './nullT
 export interface OwnNull {
   readonly noise: NoiseModel;
   readonly medianGapDays: number;
-  readonly noiseKnown: boolean;
+  readonly leastJointOdds: number;
   readonly tail: NullTail;
 }
 
@@ -45,12 +45,12 @@ function tailOf(watch: PulsarWatch, demands: Demands): NullTail {
   if (
     known !== null &&
     known.noise === watch.noise &&
-    known.noiseKnown === demands.noiseKnown &&
+    known.leastJointOdds === demands.leastJointOdds &&
     change < Math.log(CADENCE_CHANGE)
   )
     return known.tail;
   const tail = nullTail(watch, demands);
-  watch.ownNull = { noise: watch.noise, medianGapDays, noiseKnown: demands.noiseKnown, tail };
+  watch.ownNull = { noise: watch.noise, medianGapDays, leastJointOdds: demands.leastJointOdds, tail };
   return tail;
 }
 

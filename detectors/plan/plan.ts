@@ -13,7 +13,8 @@ import { type CountSafety, countSafety } from './countSafety.ts';
 import { planForRecovery, type RecoveryPlan } from './recoveryPlan.ts';
 import { planForSuspicion, type SuspicionPlan } from './suspicionPlan.ts';
 
-export interface Plan {
+/** What observations would settle about a pulsar's events. */
+export interface EventPlan {
   readonly pulsar: string;
   readonly asOfMjd: number;
   readonly lastArrivalMjd: number | null;
@@ -26,6 +27,9 @@ export interface Plan {
   readonly suspicion: SuspicionPlan | null;
   /** For the latest glitch of the last year. */
   readonly recovery: RecoveryPlan | null;
+}
+
+export interface Plan extends EventPlan {
   /** What silence would be worth at other cadences. */
   readonly cadences: readonly CadenceLimit[];
 }
@@ -43,6 +47,22 @@ const RECOVERY_DAYS = 365;
 
 /** @param events this pulsar's, as published, with reviewers' verdicts. */
 export function planFor(watch: PulsarWatch, events: readonly PulsarEvent[], nowMjd: number): Plan {
+  return { ...eventPlan(watch, events, nowMjd), cadences: watch.locked ? CADENCES_DAYS.map(limitEvery) : [] };
+
+  function limitEvery(everyDays: number): CadenceLimit {
+    const { curve, ...limit } = limitAtCadence(watch, everyDays);
+    const soon = curve.findLast(({ delayDays }) => delayDays <= MONTH_DAYS);
+    return { everyDays, ...limit, deltaNuOverNu90WithinMonth: soon?.deltaNuOverNu90 ?? null };
+  }
+}
+
+/** As of the last arrival, for the record; null: no event leaves anything to settle. */
+export function openPlan(watch: PulsarWatch, events: readonly PulsarEvent[]): EventPlan | null {
+  const plan = eventPlan(watch, events, Number.NEGATIVE_INFINITY);
+  return plan.aliases === null && plan.suspicion === null && plan.recovery === null ? null : plan;
+}
+
+function eventPlan(watch: PulsarWatch, events: readonly PulsarEvent[], nowMjd: number): EventPlan {
   const last = watch.line.seen.at(-1);
   const lastArrivalMjd = last === undefined ? null : mjdNumber(last.arrival.tdb);
   const asOfMjd = Math.max(nowMjd, lastArrivalMjd ?? nowMjd);
@@ -63,12 +83,5 @@ export function planFor(watch: PulsarWatch, events: readonly PulsarEvent[], nowM
     aliases: ready && open !== null ? planForAliases(watch, open, asOfMjd) : null,
     suspicion: ready && suspected !== null ? planForSuspicion(watch, suspected, asOfMjd) : null,
     recovery: ready && glitch !== null ? planForRecovery(watch, glitch, asOfMjd) : null,
-    cadences: watch.locked
-      ? CADENCES_DAYS.map((everyDays) => {
-          const { curve, ...limit } = limitAtCadence(watch, everyDays);
-          const soon = curve.findLast(({ delayDays }) => delayDays <= MONTH_DAYS);
-          return { everyDays, ...limit, deltaNuOverNu90WithinMonth: soon?.deltaNuOverNu90 ?? null };
-        })
-      : [],
   };
 }

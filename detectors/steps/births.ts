@@ -28,13 +28,17 @@ export const RATE_PER_YEAR: Readonly<Record<Cause, number>> = {
 const DAYS_PER_YEAR = 365.25;
 const SECONDS_PER_DAY = 86_400;
 
-/** Of a glitch: share of each size, σ of Δν/ν; the published sizes peak at 1e-9 and 1e-6 (Yu et al. 2013). */
+/**
+ * Of a glitch: share of each size, σ of Δν/ν; the published sizes peak at 1e-9 and 1e-6 (Yu et al. 2013), and the smallest are
+ * what could just be seen.
+ */
 const GLITCH_SIZES: readonly (readonly [share: number, size: number])[] = [
+  [0.1, 6e-11],
   [0.2, 5e-10],
-  [0.25, 4e-9],
+  [0.2, 4e-9],
   [0.2, 4e-8],
-  [0.15, 4e-7],
-  [0.15, 3e-6],
+  [0.12, 4e-7],
+  [0.13, 3e-6],
   [0.05, 2e-5],
 ];
 /** σ of Δν̇/ν̇ at a glitch (from memory of published tables: 1e-4 to a few 1e-2). */

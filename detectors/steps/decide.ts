@@ -6,7 +6,7 @@ import { collapse } from './bank.ts';
 import { oddsInBestShape } from './bestShape.ts';
 import { explanationsOf, isExplained, sessionsUsed, spreadOf, weigh } from './evidence.ts';
 import type { Hypothesis } from './hypothesis.ts';
-import { isNoiseKnown } from './jointOdds.ts';
+import { leastJointOdds } from './jointOdds.ts';
 import { seekSwitching } from './modeSwitching.ts';
 import { newTrack } from './newTrack.ts';
 import type { PulsarWatch } from './pulsarWatch.ts';
@@ -90,9 +90,8 @@ function suspect(watch: PulsarWatch, index: number): void {
   const sign = logSignWeight(watch, track);
   if (gained + sign < watch.settings.confirmLogOdds) return;
   const joint = oddsInBestShape(watch, track, holder) + sign;
-  const noiseKnown = isNoiseKnown(track);
-  const decisive = noiseKnown && joint >= 0 ? gained + sign : joint;
-  const demands = { sessions: LEAST_SESSIONS, noiseKnown };
+  const demands = { sessions: LEAST_SESSIONS, leastJointOdds: leastJointOdds(watch, track) };
+  const decisive = joint >= demands.leastJointOdds ? gained + sign : joint;
   // Not a number either: what cannot be weighed is not confirmed.
   if (!(decisive >= requiredLogOdds(watch, Math.min(decisive, gained + sign), demands))) {
     refuse(watch, track, index, joint);

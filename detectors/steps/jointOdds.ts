@@ -3,8 +3,9 @@
  * that was learned too quiet would make event after event, and each, once believed, would hide the noise. So before an
  * event is confirmed the whole record is gone through twice: as noise alone, and as noise with the event.
  *
- * The wide prior on the noise lets one step pass for noise that was never seen before, however clear the step. Where a
- * record has shown its noise before a glitch, noise need only not be the better explanation.
+ * The wide prior on the noise lets one step pass for noise that was never seen before, however clear the step: the stretches of
+ * the record that are as long as the step has been seen are few, and their scatter is known no better than a handful of
+ * numbers tells it. The longer the record before a glitch, the less that excuse is worth.
  */
 
 import { learnNoise, logNoisePrior } from '../filter/noiseLearning.ts';
@@ -20,14 +21,26 @@ import { looseRecovery, RECOVERY_SHARE } from './recoveryStates.ts';
 import { decisionsOf, freeRise, retrace, takeIn } from './retrace.ts';
 import { LOG_RISE_PRIOR } from './slowSpinUp.ts';
 import { foundStartRate, startBeam } from './start.ts';
+import { sessionsUntil } from './timeline.ts';
 import { gapsOfEvent, type Rise, slowRise, type Track } from './track.ts';
 
-/** Arrivals before an event that show what the noise is. */
-const TELLING_ARRIVALS = 60;
+/** Sessions before an event from which on they tell what the noise is. */
+const TELLING_SESSIONS = 60;
+/** With so many, noise must not be the better explanation; with every doubling it may be so by some nats more. */
+const EVEN_SESSIONS = 75;
+const NATS_PER_DOUBLING = 2;
+const MOST_NATS = 8;
 
-/** Changes of ν̇ are what noise in the torque looks like, at whatever length of record. */
-export function isNoiseKnown({ kind, bestGap }: Pick<Track, 'kind' | 'bestGap'>): boolean {
-  return kind === 'glitch' && bestGap >= TELLING_ARRIVALS;
+/**
+ * Natural-log joint odds that leave the decision to the bank's own; infinite where both must pass the threshold. Found on simulated
+ * pulsars of the population (`test/studies/secondWeighing.ts`). Changes of ν̇ are what noise in the torque looks like, at
+ * whatever length of record.
+ */
+export function leastJointOdds({ line }: PulsarWatch, { kind, bestGap }: Pick<Track, 'kind' | 'bestGap'>): number {
+  const sessions = sessionsUntil(line, bestGap - 1);
+  if (kind !== 'glitch' || sessions < TELLING_SESSIONS) return Number.POSITIVE_INFINITY;
+  const nats = Math.floor(NATS_PER_DOUBLING * Math.log2(sessions / EVEN_SESSIONS));
+  return -Math.min(MOST_NATS, Math.max(0, nats));
 }
 
 /**

@@ -10,7 +10,7 @@ import { bestOf, countedArrivals, disturbances } from './counts.ts';
 import { withoutRecoveries } from './establishedRecoveries.ts';
 import { spreadOf, weigh } from './evidence.ts';
 import type { Hypothesis, Story } from './hypothesis.ts';
-import { isNoiseKnown } from './jointOdds.ts';
+import { leastJointOdds } from './jointOdds.ts';
 import { endTrial, runStart } from './largeStep.ts';
 import { seekSwitching } from './modeSwitching.ts';
 import { asFixed, type PulsarWatch } from './pulsarWatch.ts';
@@ -19,6 +19,7 @@ import { decisionsOf, retrace } from './retrace.ts';
 import { foundStartRate, shareOfCount, startBeam } from './start.ts';
 import { stepAt } from './stepAt.ts';
 import { isSwitch } from './switchingRecord.ts';
+import { sessionsUntil } from './timeline.ts';
 import type { Track } from './track.ts';
 
 /** The noise is learned when the arrivals have grown by this factor. */
@@ -49,7 +50,10 @@ export function relearn(watch: PulsarWatch, index: number): void {
   const known = [...disturbances(watch), ...candidate(watch)];
   const learned = learnNoise(counted, known, watch.prior, watch.noise);
   watch.likelyNoise = asFixed(watch.model, learned);
-  watch.noise = asFixed(watch.model, withMargin(learned, counted, known, watch.prior));
+  watch.noise = asFixed(
+    watch.model,
+    withMargin(learned, counted, known, watch.prior, sessionsUntil(watch.line, index)),
+  );
   retimeRecovery(watch);
   rebuild(watch, index, best, foundStartRate(counted));
 }
@@ -87,7 +91,8 @@ function takeBack(watch: PulsarWatch, best: Hypothesis): void {
     .slice(-LAST_EVENTS);
   for (const track of confirmed) {
     const logOdds = oddsInBestShape(watch, track, best);
-    if (logOdds < (isNoiseKnown(track) ? -watch.settings.suspectLogOdds : 0))
+    const least = leastJointOdds(watch, track);
+    if (logOdds < (Number.isFinite(least) ? least - watch.settings.suspectLogOdds : 0))
       Object.assign(track, { state: 'withdrawn', logOdds, settled: true } satisfies Partial<Track>);
   }
 }

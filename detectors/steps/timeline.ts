@@ -33,6 +33,11 @@ export interface Timeline {
 
 /** Arrivals closer than this at one site are one session, not independent evidence (common practice, no source). */
 export const SESSION_DAYS = 0.1;
+
+/** Sessions up to an arrival, its own among them. */
+export function sessionsUntil({ seen }: Pick<Timeline, 'seen'>, index: number): number {
+  return seen[index]!.session - seen[0]!.session + 1;
+}
 const BAND_RATIO = 1.1;
 
 export function newTimeline(epoch: Mjd): Timeline {

@@ -3,6 +3,7 @@ import { join } from 'node:path';
 import { describe, expect, it } from 'vitest';
 import { check } from '../../daemon/commands/check.ts';
 import { CONFIGURATION, writeConfiguration } from '../support/configurationFolder.ts';
+import { keptTerminal } from '../support/keptTerminal.ts';
 import { useTemporaryFolders } from '../support/temporaryFolder.ts';
 
 const newFolder = useTemporaryFolders();
@@ -25,15 +26,9 @@ async function checked(options: { readonly feed?: string; readonly json?: boolea
   const config = writeConfiguration(folder, { configuration: CONFIGURATION.replace('layout = "csv"', COLUMNS) });
   const file = join(folder, options.feed === undefined ? 'arrivals' : '.', 'night.txt');
   writeFileSync(file, text);
-  let out = '';
-  const terminal = {
-    out(line: string) {
-      out += `${line}\n`;
-    },
-    err: { isTTY: false, write: () => true },
-  };
+  const terminal = keptTerminal();
   const failure = await check(terminal, { config, file, ...options }).catch((error: Error) => error.message);
-  return { out, failure };
+  return { out: terminal.stdout(), failure };
 }
 
 describe('check --file', () => {

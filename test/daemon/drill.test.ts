@@ -16,6 +16,7 @@ import { connect } from '../../daemon/store/connection.ts';
 import { loadTables } from '../../daemon/tables/loadTables.ts';
 import { find, parseXml } from '../alerts/wellFormed.ts';
 import { complaints, type Schema } from '../support/jsonSchema.ts';
+import { keptTerminal } from '../support/keptTerminal.ts';
 import { createObservatory, type TestObservatory } from '../support/observatory.ts';
 import { ROOT } from '../support/sourceTree.ts';
 import { arrivalFile, syntheticArrivals, syntheticPulsar } from '../support/syntheticPulsar.ts';
@@ -46,18 +47,12 @@ afterAll(() => at.remove());
 async function run(
   command: (terminal: Terminal) => Promise<void>,
 ): Promise<{ readonly out: string; readonly error: OperatorError | null }> {
-  let out = '';
-  const terminal: Terminal = {
-    out(text) {
-      out += `${text}\n`;
-    },
-    err: { write: () => true },
-  };
+  const terminal = keptTerminal();
   try {
     await command(terminal);
-    return { out, error: null };
+    return { out: terminal.stdout(), error: null };
   } catch (error) {
-    if (error instanceof OperatorError) return { out, error };
+    if (error instanceof OperatorError) return { out: terminal.stdout(), error };
     throw error;
   }
 }
@@ -171,7 +166,7 @@ describe('the commands beside it', () => {
     expect(parsed.ahead).toHaveLength(4);
     const to = join(at.folder, 'now.toml');
     const written = await run((terminal) => model(terminal, pulsar.name, { config: at.configFile, to }));
-    expect([written.out, `${await readFile(to, 'utf8')}\n`]).toEqual(['', asFile.out]);
+    expect([written.out, await readFile(to, 'utf8')]).toEqual(['', asFile.out]);
     const none = await run((terminal) => model(terminal, pulsar.name, { config: at.configFile, at: '60000' }));
     expect(none.error?.message).toContain('no arrivals on record by MJD 60000.00');
     const mistyped = await run((terminal) => model(terminal, 'KR 0417+13', { config: at.configFile }));

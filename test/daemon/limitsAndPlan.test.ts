@@ -2,14 +2,13 @@ import { join } from 'node:path';
 import { afterAll, beforeAll, describe, expect, test } from 'vitest';
 import { digestText } from '../../alerts/index.ts';
 import { mjdOf, systemClock } from '../../daemon/clock.ts';
-import { type LimitLine, limits } from '../../daemon/commands/limits.ts';
-import { plan } from '../../daemon/commands/plan.ts';
-import { replay } from '../../daemon/commands/replay.ts';
+import type { LimitLine } from '../../daemon/commands/limits.ts';
 import { morningReview } from '../../daemon/morning.ts';
 import { loadOrders, openRecord } from '../../daemon/opening.ts';
 import { emptyBatch } from '../../daemon/store/index.ts';
 import type { Plan } from '../../detectors/index.ts';
 import { createObservatory, type TestObservatory } from '../support/observatory.ts';
+import { runSpinvigil, spinvigilJson } from '../support/spinvigil.ts';
 import { arrivalFile, syntheticArrivals, syntheticPulsar } from '../support/syntheticPulsar.ts';
 
 // The commands run by the machine's clock: the arrivals end yesterday.
@@ -27,19 +26,9 @@ const span = { fromMjd: START + 1, toMjd: YESTERDAY, everyDays: 4 };
 
 let at: TestObservatory;
 
-async function printed(run: (terminal: Parameters<typeof limits>[0]) => Promise<void>): Promise<string> {
-  const said: string[] = [];
-  await run({ out: (text) => void said.push(text), err: { write: () => true } });
-  return said.join('\n');
-}
-
-async function limitsJson(): Promise<LimitLine[]> {
-  return JSON.parse(await printed((terminal) => limits(terminal, { config: at.configFile, json: true })));
-}
-
-async function planOf(pulsar: string): Promise<Plan> {
-  return JSON.parse(await printed((terminal) => plan(terminal, pulsar, { config: at.configFile, json: true })));
-}
+const printed = async (...args: string[]) => (await runSpinvigil([...args, '--config', at.configFile])).stdout;
+const limitsJson = () => spinvigilJson<LimitLine[]>(['limits', '--config', at.configFile]);
+const planOf = (pulsar: string) => spinvigilJson<Plan>(['plan', pulsar, '--config', at.configFile]);
 
 beforeAll(async () => {
   at = await createObservatory({ pulsars: [quiet, coarse, glitching, young] });
@@ -47,7 +36,7 @@ beforeAll(async () => {
   arrivals.push(syntheticArrivals(young, { ...span, fromMjd: YESTERDAY - 12, seed: 9 }));
   for (const [i, some] of arrivals.entries()) await at.drop(`${i}.csv`, arrivalFile(some));
   const files = arrivals.map((_, i) => join(at.feedFolder, `${i}.csv`));
-  await printed((terminal) => replay(terminal, files, { config: at.configFile }));
+  await printed('replay', ...files);
 }, 120_000);
 afterAll(() => at.remove());
 
@@ -70,7 +59,7 @@ describe('limits', () => {
   });
 
   test('as text states units and the meaning', async () => {
-    const text = await printed((terminal) => limits(terminal, { config: at.configFile, pulsar: 'KR 0417+31' }));
+    const text = await printed('limits', '--pulsar', 'KR 0417+31');
     expect(text).toContain('smallest Δν/ν');
     expect(text).toContain('after (d)');
     expect(text).toContain('90 %');
@@ -78,8 +67,9 @@ describe('limits', () => {
   });
 
   test('of a pulsar that is not known says so', async () => {
-    const run = printed((terminal) => limits(terminal, { config: at.configFile, pulsar: 'KR 0417+3' }));
-    await expect(run).rejects.toThrow(/did you mean KR 0417\+31/);
+    const { code, stderr } = await runSpinvigil(['limits', '--pulsar', 'KR 0417+3', '--config', at.configFile]);
+    expect(code).toBe(2);
+    expect(stderr).toContain('did you mean KR 0417+31?');
   });
 
   test('are worked out where an older record holds none', async () => {
@@ -121,7 +111,7 @@ describe('plan', () => {
     expect(made).toMatchObject({ pulsar: 'KR 0417+31', locked: true, aliases: null, suspicion: null, recovery: null });
     expect(made.count!.safeUntilMjd!).toBeGreaterThan(YESTERDAY);
     expect(made.cadences).toHaveLength(5);
-    const text = await printed((terminal) => plan(terminal, 'KR 0417+31', { config: at.configFile }));
+    const text = await printed('plan', 'KR 0417+31');
     expect(text).toContain('cannot be numbered without doubt');
     expect(text).toContain('every 14 d');
   });
@@ -130,7 +120,7 @@ describe('plan', () => {
     const { recovery } = await planOf('KR 2210-05');
     expect(recovery!.schedules.map((s) => s.name)).toContain('front-loaded');
     expect(recovery!.nights[0]!.mjd).toBeGreaterThan(YESTERDAY);
-    const text = await printed((terminal) => plan(terminal, 'KR 2210-05', { config: at.configFile }));
+    const text = await printed('plan', 'KR 2210-05');
     expect(text).toContain('To pin the recovery of');
     expect(text).toContain('front-loaded');
   });
@@ -138,7 +128,7 @@ describe('plan', () => {
   test('of a pulsar whose count is open asks for what settles it, and states no limit', async () => {
     const made = await planOf('KR 1733+15');
     expect(made).toMatchObject({ locked: false, cadences: [] });
-    const text = await printed((terminal) => plan(terminal, 'KR 1733+15', { config: at.configFile }));
+    const text = await printed('plan', 'KR 1733+15');
     expect(text).toContain('pulse count is not settled');
   });
 });

@@ -2,13 +2,11 @@ import { cp, mkdtemp, readFile, rm, writeFile } from 'node:fs/promises';
 import { tmpdir } from 'node:os';
 import { join } from 'node:path';
 import { afterAll, beforeAll, describe, expect, test } from 'vitest';
-import { systemClock } from '../../daemon/clock.ts';
+import { runWatch } from '../../daemon/lifecycle.ts';
 import { silentLog } from '../../daemon/log.ts';
-import { loadOrders, openRecord } from '../../daemon/opening.ts';
-import { replay } from '../../daemon/replay.ts';
-import { createStation } from '../../daemon/station.ts';
+import { createServiceManager } from '../../daemon/serviceManager.ts';
 import { openStore } from '../../daemon/store/index.ts';
-import { loadTables } from '../../daemon/tables/loadTables.ts';
+import { createSummons } from '../../daemon/summons.ts';
 import { startSpinvigil, within } from '../support/daemon.ts';
 import { type AcceptedMail, type MailServer, startMailServer } from '../support/mailServer.ts';
 import { createObservatory, digestFarAway, type TestObservatory } from '../support/observatory.ts';
@@ -21,10 +19,10 @@ import { arrivalFile, syntheticArrivals, syntheticPulsar } from '../support/synt
 const TODAY_MJD = Math.floor(40_587 + Date.now() / 86_400_000);
 const pulsar = syntheticPulsar({
   name: 'KR 0417+31',
-  epochMjd: TODAY_MJD - 130,
+  epochMjd: TODAY_MJD - 80,
   glitches: [{ mjd: TODAY_MJD - 12, deltaNuOverNu: 2e-7 }],
 });
-const arrivals = syntheticArrivals(pulsar, { fromMjd: TODAY_MJD - 129, toMjd: TODAY_MJD - 2, everyDays: 3, seed: 7 });
+const arrivals = syntheticArrivals(pulsar, { fromMjd: TODAY_MJD - 79, toMjd: TODAY_MJD - 2, everyDays: 3, seed: 7 });
 const RECIPIENTS = ['duty@kestrel-ridge.example', 'timing@kestrel-ridge.example'];
 const MOST_STEPS = 100;
 const LANES = 3;
@@ -79,27 +77,13 @@ async function killedReplays({ from, options }: { readonly from: number; readonl
     const run = startSpinvigil(replayIn(folder, ...options), { SPINVIGIL_TEST_KILL_AT: String(step) });
     const end = await run.ended;
     expect(['SIGKILL', '0'], run.stderr()).toContain(end);
-    await replayHere(folder, { mail: options.includes('--mail') });
+    // The start after the crash is made in this process: the same code, and a second less.
+    expect((await runSpinvigil(replayIn(folder, ...options))).code).toBe(0);
     expect(await whatIsOnRecord(folder), `killed at step ${step}`).toEqual(expected);
     await rm(folder, { recursive: true });
     return end === 'SIGKILL' ? 'killed' : 'clean';
   });
   return { expected, killed };
-}
-
-/** The start after the crash, in this process: the same code, and a process less. */
-async function replayHere(folder: string, { mail }: { readonly mail: boolean }): Promise<void> {
-  const { configuration } = loadOrders(configIn(folder));
-  const store = openRecord(configuration, 'daemon');
-  try {
-    const { tables } = loadTables();
-    const log = silentLog();
-    const station = createStation({ configuration, store, tables, clock: systemClock, log, reviewUrl: () => null });
-    const files = [join(folder, 'arrivals', 'after.csv')];
-    expect(await replay(station, { files, feed: null, mail, onProgress: () => {} })).toMatchObject({ unreadable: [] });
-  } finally {
-    store.close();
-  }
 }
 
 /** Runs `attempt` with a fault at every `stride`th step, a few side by side, until one answers that it met no fault. */
@@ -164,19 +148,14 @@ describe('kill -9', () => {
       const own = await startMailServer();
       const folder = await copyOf(queued, `mail-${step}`);
       await pointAt(configIn(folder), own.port);
-      const watch = ['watch', '--config', configIn(folder)];
-      const first = startSpinvigil(watch, { SPINVIGIL_TEST_KILL_AT: String(step) });
+      const first = startSpinvigil(['watch', '--config', configIn(folder)], { SPINVIGIL_TEST_KILL_AT: String(step) });
       const started = () => first.stdout().includes('\n');
-      await within(60, async () => first.hasEnded() || (started() && (await isDelivered(folder))));
+      await within(60, () => first.hasEnded() || (started() && isDelivered(folder)));
       const wasKilled = first.hasEnded();
       if (!wasKilled) first.signal('SIGTERM');
       expect(await first.ended, first.stderr()).toBe(wasKilled ? 'SIGKILL' : '0');
 
-      const second = startSpinvigil(watch);
-      await within(60, () => second.hasEnded() || second.stdout().includes('\n'));
-      expect(await within(60, () => isDelivered(folder)), second.stderr()).toBe(true);
-      second.signal('SIGTERM');
-      expect(await second.ended, second.stderr()).toBe('0');
+      await watchHere(folder, () => isDelivered(folder));
       marked += checkCopies(own.accepted, `killed at step ${step}`);
       await own.close();
       await rm(folder, { recursive: true });
@@ -194,7 +173,22 @@ async function pointAt(configFile: string, port: number): Promise<void> {
   await writeFile(configFile, text.replace(/^port = \d+$/m, `port = ${port}`));
 }
 
-async function isDelivered(folder: string): Promise<boolean> {
+/** The start after the crash, in this process, until `what` holds. */
+async function watchHere(folder: string, what: () => boolean): Promise<void> {
+  const stop = new AbortController();
+  const log = silentLog();
+  const manager = createServiceManager({ environment: {}, log });
+  const parts = { log, manager, stop: stop.signal, reload: createSummons(), say: () => {} };
+  const watch = runWatch({ configFile: configIn(folder), ...parts });
+  try {
+    expect(await within(60, what)).toBe(true);
+  } finally {
+    stop.abort('SIGTERM');
+    await watch;
+  }
+}
+
+function isDelivered(folder: string): boolean {
   const opened = openStore(join(folder, 'state'), { mode: 'reader' });
   if (!opened.ok) return false;
   try {

@@ -7,7 +7,7 @@ import type { ExpectedOfKinds } from '../../sample-feeds/kinds/expected.ts';
 import { filesOfKinds } from '../../sample-feeds/kinds/generate.ts';
 import { sameButForTheLastDigit } from '../support/madeFiles.ts';
 import { ROOT } from '../support/sourceTree.ts';
-import { runSpinvigil, spinvigilJson } from '../support/spinvigil.ts';
+import { runInstalled, spinvigilJson } from '../support/spinvigil.ts';
 
 // The five kinds of neutron star, from files to decisions.
 
@@ -46,7 +46,7 @@ describe('a replay of the five kinds', () => {
     cpSync(KINDS, kinds, { recursive: true });
     const files = FEEDS.flatMap((feed) => readdirSync(join(kinds, feed)).map((name) => join(kinds, feed, name)));
     const began = performance.now();
-    const replay = await runSpinvigil(['replay', ...files, '--config', config]);
+    const replay = await runInstalled(['replay', ...files, '--config', config]);
     expect(replay.code, replay.stderr).toBe(0);
     console.log(`replay of the five kinds: ${((performance.now() - began) / 1000).toFixed(1)} s`);
     events = await spinvigilJson<PulsarEvent[]>(['events', '--config', config]);

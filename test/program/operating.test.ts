@@ -1,4 +1,4 @@
-import { execFile, spawn, spawnSync } from 'node:child_process';
+import { spawn, spawnSync } from 'node:child_process';
 import { once } from 'node:events';
 import { readdirSync, readFileSync, writeFileSync } from 'node:fs';
 import { join } from 'node:path';
@@ -7,7 +7,7 @@ import { describe, test } from 'vitest';
 import { type RunningProgram, startSpinvigil, within } from '../support/daemon.ts';
 import { openNotifySocket, whyNoNotifySocket } from '../support/notifySocket.ts';
 import { createObservatory, digestFarAway, type TestObservatory } from '../support/observatory.ts';
-import { CLI, type Finished, runSpinvigil } from '../support/spinvigil.ts';
+import { CLI, runInstalled, runSpinvigil } from '../support/spinvigil.ts';
 import { arrivalFile, syntheticArrivals, syntheticPulsar } from '../support/syntheticPulsar.ts';
 
 // How the daemon is kept: signals, the service manager, the monitoring system, and a world that is not as it should be.
@@ -46,20 +46,6 @@ const edit = (at: TestObservatory, change: (text: string) => string) =>
 const planted = (code: string) => ({ NODE_OPTIONS: `--import data:text/javascript,${encodeURIComponent(code)}` });
 const mailIn = (at: TestObservatory) =>
   readdirSync(at.mailFolder).map((name) => readFileSync(join(at.mailFolder, name), 'utf8'));
-
-/** Runs a command to its end, with what is typed into it and in what surroundings. */
-function finish(
-  args: readonly string[],
-  { input = '', environment = {} }: { readonly input?: string; readonly environment?: NodeJS.ProcessEnv },
-): Promise<Finished> {
-  return new Promise((resolve) => {
-    const options = { env: { ...process.env, ...environment }, maxBuffer: 64 * 1024 * 1024 };
-    const child = execFile(process.execPath, [CLI, ...args], options, (_error, stdout, stderr) =>
-      resolve({ code: child.exitCode ?? -1, stdout, stderr }),
-    );
-    child.stdin?.end(input);
-  });
-}
 
 const missing = whyNoNotifySocket();
 if (missing !== null) console.warn(`SKIPPED: ${missing}, so that nothing is said to a service manager`);
@@ -112,7 +98,7 @@ describe.concurrent('the daemon', { timeout: 180_000 }, () => {
       const block = `import { writeSync } from 'node:fs';
         process.on('SIGUSR2', () => {
           writeSync(2, 'BLOCKED\\n');
-          for (const until = Date.now() + 6000; Date.now() < until; );
+          Atomics.wait(new Int32Array(new SharedArrayBuffer(4)), 0, 0, 3000);
           writeSync(2, 'FREE\\n');
         });`;
       const program = await watch(finished, at, {
@@ -126,7 +112,7 @@ describe.concurrent('the daemon', { timeout: 180_000 }, () => {
 
       program.signal('SIGUSR2');
       await within(PATIENCE_S, () => program.stderr().includes('BLOCKED'));
-      await pause(1000);
+      await pause(500);
       const [first, counts] = [alive(), [] as number[]];
       while (!program.stderr().includes('FREE')) {
         counts.push(alive());
@@ -208,17 +194,17 @@ describe.concurrent('the daemon', { timeout: 180_000 }, () => {
     expect,
     onTestFinished: finished,
   }) => {
+    const strange = { LANG: 'tr_TR.UTF-8', LC_ALL: 'tr_TR.UTF-8', TZ: 'Pacific/Kiritimati', NODE_ENV: 'x' };
+    const elsewhere = (args: readonly string[]) => runInstalled(args, { environment: strange });
     const outputs = [];
-    for (const environment of [
-      {},
-      { LANG: 'tr_TR.UTF-8', LC_ALL: 'tr_TR.UTF-8', TZ: 'Pacific/Kiritimati', NODE_ENV: 'x' },
-    ]) {
+    for (const run of [runSpinvigil, elsewhere]) {
       const at = await observatory(finished);
       const file = join(at.folder, 'archive.csv');
       writeFileSync(file, arrivals);
-      const run = (...args: string[]) => finish([...args, '--config', at.configFile], { environment });
-      expect((await run('replay', file, '--feed', 'nightly')).code).toBe(0);
-      outputs.push([await run('arrivals', pulsar.name, '--json'), await run('arrivals', pulsar.name, '--csv')]);
+      const config = ['--config', at.configFile];
+      expect((await run(['replay', file, '--feed', 'nightly', ...config])).code).toBe(0);
+      const arrivalsAs = (form: string) => run(['arrivals', pulsar.name, form, ...config]);
+      outputs.push([await arrivalsAs('--json'), await arrivalsAs('--csv')]);
     }
     expect(outputs[0]?.[0]?.stdout.length).toBeGreaterThan(1000);
     expect(outputs[1]).toEqual(outputs[0]);
@@ -259,7 +245,7 @@ describe.concurrent('the daemon', { timeout: 180_000 }, () => {
     expect(await (await metrics()).text()).toContain('spinvigil_stage_late{stage="feed nightly"} 0');
 
     const set = (name: string, password: string) =>
-      finish(['reviewer', name, '--config', at.configFile], { input: `${password}\n` });
+      runInstalled(['reviewer', name, '--config', at.configFile], { input: `${password}\n` });
     const misspelt = { code: 2, stderr: expect.stringContaining('did you mean duty?') };
     expect(await set('dutty', 'correct horse battery')).toMatchObject(misspelt);
     const tooShort = { code: 2, stderr: expect.stringContaining('give 12 at least') };

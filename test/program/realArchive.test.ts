@@ -8,7 +8,7 @@ import { join } from 'node:path';
 import { afterAll, beforeAll, describe, expect, test } from 'vitest';
 import type { PulsarEvent } from '../../detectors/index.ts';
 import { ROOT } from '../support/sourceTree.ts';
-import { runSpinvigil, spinvigilJson } from '../support/spinvigil.ts';
+import { runInstalled, spinvigilJson } from '../support/spinvigil.ts';
 
 const ARCHIVE = join(ROOT, 'test', 'data', 'molonglo');
 const DAYS_PER_YEAR = 365.25;
@@ -36,7 +36,7 @@ describe('a replay of the archive', () => {
     const arrivals = join(ARCHIVE, 'arrivals');
     const files = readdirSync(arrivals).map((name) => join(arrivals, name));
     const began = performance.now();
-    const { code, stderr } = await runSpinvigil(['replay', '--config', config, ...files]);
+    const { code, stderr } = await runInstalled(['replay', '--config', config, ...files]);
     expect(code, stderr).toBe(0);
     console.log(`replay of ${files.length} pulsars: ${((performance.now() - began) / 1000).toFixed(1)} s`);
     events = await spinvigilJson<PulsarEvent[]>(['events', '--config', config]);

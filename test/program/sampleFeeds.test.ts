@@ -8,7 +8,7 @@ import { madeFiles } from '../../sample-feeds/generate.ts';
 import type { Expected } from '../../sample-feeds/making/expected.ts';
 import { sameButForTheLastDigit } from '../support/madeFiles.ts';
 import { ROOT } from '../support/sourceTree.ts';
-import { runSpinvigil, spinvigilJson } from '../support/spinvigil.ts';
+import { runInstalled, spinvigilJson } from '../support/spinvigil.ts';
 
 const SAMPLE_FEEDS = join(ROOT, 'sample-feeds');
 const expected: Expected = JSON.parse(readFileSync(join(SAMPLE_FEEDS, 'expected.json'), 'utf8'));
@@ -54,7 +54,7 @@ describe('a replay of the sample feeds', () => {
   beforeAll(async () => {
     cpSync(SAMPLE_FEEDS, join(folder, 'sample-feeds'), { recursive: true });
     const files = arrivalFiles(join(folder, 'sample-feeds'));
-    const replay = await runSpinvigil(['replay', ...files, '--config', config]);
+    const replay = await runInstalled(['replay', ...files, '--config', config]);
     expect(replay.code, replay.stderr).toBe(0);
     events = await spinvigilJson<PulsarEvent[]>(['events', '--config', config]);
     morning = await spinvigilJson<MorningReview>(['morning', '--config', config]);

@@ -9,7 +9,7 @@ import {
   type ObservatoryOptions,
   type TestObservatory,
 } from '../support/observatory.ts';
-import { runSpinvigil, spinvigilJson } from '../support/spinvigil.ts';
+import { runInstalled, runSpinvigil, spinvigilJson } from '../support/spinvigil.ts';
 import { arrivalFile, syntheticArrivals, syntheticPulsar } from '../support/syntheticPulsar.ts';
 
 // The daemon as it is installed, with real files, a real record, a real mail server and real signals.
@@ -19,10 +19,10 @@ const TODAY_MJD = Math.floor(40_587 + Date.now() / 86_400_000);
 const GLITCH_MJD = TODAY_MJD - 12;
 const pulsar = syntheticPulsar({
   name: 'KR 0417+31',
-  epochMjd: TODAY_MJD - 220,
+  epochMjd: TODAY_MJD - 80,
   glitches: [{ mjd: GLITCH_MJD, deltaNuOverNu: 2e-7 }],
 });
-const arrivals = syntheticArrivals(pulsar, { fromMjd: TODAY_MJD - 219, toMjd: TODAY_MJD - 2, everyDays: 3, seed: 7 });
+const arrivals = syntheticArrivals(pulsar, { fromMjd: TODAY_MJD - 79, toMjd: TODAY_MJD - 2, everyDays: 3, seed: 7 });
 const before = arrivals.filter(({ mjdText }) => Number(mjdText) < GLITCH_MJD);
 const after = arrivals.filter(({ mjdText }) => Number(mjdText) >= GLITCH_MJD);
 
@@ -98,12 +98,11 @@ describe.concurrent('the watch', () => {
   }) => {
     const at = await observatory(finished);
     const first = await watch(finished, at);
-    const second = await runSpinvigil(['watch', '--config', at.configFile]);
+    const second = await runInstalled(['watch', '--config', at.configFile]);
     expect(second.code).toBe(3);
     expect(second.stderr).toMatch(/another instance holds this state folder/);
-    expect((await runSpinvigil(['replay', at.configFile, '--feed', 'nightly', '--config', at.configFile])).code).toBe(
-      3,
-    );
+    const replay = await runSpinvigil(['replay', at.configFile, '--feed', 'nightly', '--config', at.configFile]);
+    expect(replay.code).toBe(3);
     expect(first.hasEnded()).toBe(false);
     first.signal('SIGKILL');
     await first.ended;

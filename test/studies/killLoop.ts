@@ -1,8 +1,9 @@
 // kill -9 at the first step of the whole way, at the second, at the third … until a run ends without meeting it:  npx tsx test/studies/killLoop.ts [FROM] [TO]
 // The way: a file is taken in, its event decided and mailed over SMTP, judged on the page, taken up again and judged by the command
 // (test/support/fullScenario.ts). After each kill the same is started once more; at every fifth, that start is killed too. What must hold: the record is
-// whole, what was told to anybody is on it, all ends as an undisturbed run does, and no more than one copy of a mail comes twice, marked. Writes what
-// it found beside itself.
+// whole, what was told to anybody is on it, all ends as an undisturbed run does, and no more than one copy of a mail comes twice, marked. A reviewer
+// whose verdict was cut off before the answer sends the form again: the page says what stands, and no verdict is there twice or lost (E12). Writes
+// what it found beside itself.
 import assert from 'node:assert/strict';
 import { spawn } from 'node:child_process';
 import { writeFileSync } from 'node:fs';

@@ -91,7 +91,7 @@ export function falseAlarmRate(seed: number, cell: Cell, simulated: number): num
   const random = seeded(seed);
   const pulsar = drawn(cell, random);
   const watch = watchedUntil(pulsar, quietArrivals(pulsar, random));
-  const tail = nullTail(watch, { noiseKnown: true, sessions: LEAST_SESSIONS }, simulated);
+  const tail = nullTail(watch, { leastJointOdds: 0, sessions: LEAST_SESSIONS }, simulated);
   return rateAt(tail, watch.settings.confirmLogOdds);
 }
 

@@ -9,6 +9,7 @@ import type {
   VerdictOutcome,
   VitalSigns,
 } from '../../daemon/review/desk.ts';
+import type { EventPlan } from '../../detectors/plan/plan.ts';
 import type { RecentArrivals } from '../../detectors/report.ts';
 import type { EventPicture, EventState, PulsarEvent } from '../../detectors/steps/pulsarEvent.ts';
 
@@ -163,6 +164,7 @@ export function memoryDesk(records: readonly EventRecord[] = [sampleRecord()], t
         .slice(0, most),
     event: (id) => byId.get(id) ?? null,
     origins: ({ picture }) => sampleOrigins(picture, texts),
+    plan: ({ event }) => samplePlan(event),
     notice: (id) => (byId.has(id) ? '<?xml version="1.0"?><notice/>\n' : null),
     morning: () => ({
       observatory: 'Kestrel Ridge',
@@ -218,6 +220,34 @@ export function memoryDesk(records: readonly EventRecord[] = [sampleRecord()], t
     recordVerdict: (order) => judge(byId, order),
     put: (record) => void byId.set(record.event.id, record),
     verdictCount: () => all().reduce((sum, { verdicts }) => sum + verdicts.length, 0),
+  };
+}
+
+/** The night after the last arrival, and the ninth one, of a recovery that is established. */
+export function samplePlan({ id, pulsar }: Pick<PulsarEvent, 'id' | 'pulsar'>): EventPlan {
+  const widths = { deltaNuHz: 2e-9, deltaNuDotHzPerS: 4e-16, q: 0.004, timescaleDays: 3 };
+  const asOfMjd = EPOCH + 60;
+  return {
+    pulsar,
+    asOfMjd,
+    lastArrivalMjd: asOfMjd,
+    locked: true,
+    count: { safeUntilMjd: asOfMjd + 90, safeDays: 90 },
+    aliases: null,
+    suspicion: null,
+    recovery: {
+      event: id,
+      q: 0.021,
+      timescaleDays: 18,
+      assumed: false,
+      now: { ...widths, q: 0.008, timescaleDays: 7 },
+      schedules: [{ name: 'front-loaded', nights: 9, widths }],
+      recommended: 'front-loaded',
+      nights: [
+        { mjd: asOfMjd + 0.9, widths: { ...widths, q: 0.007 } },
+        { mjd: asOfMjd + 27.8, widths },
+      ],
+    },
   };
 }
 

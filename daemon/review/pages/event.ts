@@ -1,10 +1,12 @@
 import { html } from 'hono/html';
+import type { EventPlan } from '../../../detectors/index.ts';
 import type { PulsarEvent } from '../../../detectors/steps/pulsarEvent.ts';
 import type { ArrivalOrigin, EventRecord } from '../../records.ts';
 import { beliefTable, explanationBars, sizeTable } from './beliefs.ts';
 import { intervalTable } from './intervals.ts';
 import type { Html } from './layout.ts';
 import { originsTable } from './origins.ts';
+import { planSection } from './plan.ts';
 import { eventPlots } from './plots.ts';
 import { conflictView, type VerdictSection, verdictForm } from './verdict.ts';
 import {
@@ -22,6 +24,7 @@ import {
 export interface EventContent {
   readonly record: EventRecord;
   readonly origins: readonly ArrivalOrigin[];
+  readonly plan: EventPlan | null;
   /** In the order of the queue; null at its ends. */
   readonly neighbours: { readonly previous: PulsarEvent | null; readonly next: PulsarEvent | null };
 }
@@ -52,11 +55,12 @@ export function eventPage(content: EventContent, verdict: VerdictSection): Html 
       <div class="judgement">
         <div data-fresh="verdict-form">${verdictForm(record, verdict)}</div>
         <div data-fresh="todo">${todo('What to check', sheet.check)}
-        ${todo('What to observe', [...sheet.observe, ...planHint(event)])}</div>
+        ${todo('What to observe', sheet.observe)}</div>
         <section data-fresh="explanations" aria-labelledby="explanations"><h2 id="explanations">Explanations</h2>${explanationBars(event)}</section>
         ${downloads(record)}
       </div>
     </div>
+    <div data-fresh="plan">${planSection(event, content.plan)}</div>
     <section data-fresh="verdicts" aria-labelledby="verdicts"><h2 id="verdicts">Verdicts</h2>${verdictList(record)}</section>
     <section data-fresh="history" aria-labelledby="history"><h2 id="history">How the belief changed</h2>${beliefTable(record.history)}</section>
     <section data-fresh="origins" aria-labelledby="origins"><h2 id="origins">What it rests on</h2>${originsTable(origins, record.picture)}</section>`;
@@ -68,14 +72,6 @@ function siblings({ neighbours: { previous, next } }: EventContent): Html {
       ? ''
       : html`<a rel="${rel}" href="${eventPath(event.id)}">${words}: <bdi>${subjectOf(event)}</bdi></a>`;
   return html`<nav class="siblings" data-fresh="siblings" aria-label="Queue"><a href="/">Tonight</a> ${link(previous, 'prev', 'Previous')} ${link(next, 'next', 'Next')} <a href="#verdict">Verdict</a></nav>`;
-}
-
-/** Working out nights takes longer than a page may. */
-function planHint(event: PulsarEvent): string[] {
-  const isOver = event.state === 'rejected' || event.state === 'withdrawn';
-  return isOver || event.site !== null
-    ? []
-    : [`Nights, hours and what each would settle: spinvigil plan "${visible(event.pulsar)}"`];
 }
 
 function todo(heading: string, lines: readonly string[]): Html {

@@ -1,6 +1,7 @@
 import { beforeAll, describe, expect, test } from 'vitest';
+import { planText } from '../../../alerts/wording/plan.ts';
 import { DAY, NIGHT } from '../../../daemon/review/looks/style.ts';
-import { memoryDesk, sampleEvent, sampleRecord } from '../../support/reviewDesk.ts';
+import { memoryDesk, sampleEvent, samplePlan, sampleRecord } from '../../support/reviewDesk.ts';
 import { hostileRecord, hostileTexts, PAYLOADS } from './hostileTexts.ts';
 import { fillForm, postVerdict, startSampleSite, startSite } from './reviewSite.ts';
 
@@ -101,6 +102,26 @@ describe('pages', () => {
     const after = await pageText(url, 'events/kr-0417-61370');
     expect(after).not.toContain('must be vetted by a person');
     expect(after).toContain('accepted by a reviewer');
+  });
+
+  test('an event says what more observations would settle, in the words of the command plan', async () => {
+    const records = [sampleRecord(), sampleRecord({ id: 'other' }), sampleRecord({ id: 'over', state: 'withdrawn' })];
+    const desk = memoryDesk(records);
+    const plan = samplePlan(sampleEvent());
+    const { url } = await startSite({ desk: { ...desk, plan: () => plan } });
+    const section = async (id: string) =>
+      /<section class="plan".*?<\/section>/s
+        .exec(await pageText(url, `events/${id}`))?.[0]
+        .replace(/&[#a-z0-9]+;/g, "'");
+    const own = (await section('kr-0417-61370'))!;
+    const said = planText({ ...plan, cadences: [] }, 'UTC')
+      .split('\n')
+      .slice(2);
+    expect(said.length).toBeGreaterThan(6);
+    for (const line of said) expect(own).toContain(line.trim());
+    // What is planned for one event is no plan for another, and one that is over needs none.
+    expect(await section('other')).toContain('Nothing is open here');
+    expect(await section('over')).toBeUndefined();
   });
 
   test('programs get the event as JSON and CSV, and the health', async () => {

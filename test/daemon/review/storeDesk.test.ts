@@ -6,6 +6,7 @@ import type { ReviewDesk } from '../../../daemon/review/desk.ts';
 import { createStoreDesk } from '../../../daemon/review/storeDesk.ts';
 import { emptyBatch, type Store } from '../../../daemon/store/index.ts';
 import { createObservatory, type TestObservatory } from '../../support/observatory.ts';
+import { samplePlan } from '../../support/reviewDesk.ts';
 import { syntheticPulsar } from '../../support/syntheticPulsar.ts';
 import { AT, fileBatch, LATER, open, sampleEvent, sampleFile, sampleMessage, upsert } from '../store/sample.ts';
 import { fillForm, postVerdict, startSite } from './reviewSite.ts';
@@ -63,6 +64,19 @@ test('shows what is on record', () => {
   expect(desk.feeds()[0]?.silent).toBe(true);
   expect(desk.notice(ID, new Date(nowMs))).toContain('VOEvent');
   expect([desk.event('none'), desk.notice('none', new Date(nowMs))]).toEqual([null, null]);
+});
+
+test('the plan of an event is the one kept with the last decision about its pulsar', () => {
+  const plan = samplePlan(sampleEvent());
+  const noise = { phaseWalk: 0, frequencyWalk: 0, torqueWalk: 0, uncertaintyScale: 1, floorTurns: 0 };
+  const report = { pulsar: plan.pulsar, basis: '', events: [], locked: true, noise, lastArrivalMjd: null };
+  store.commitIntake({ ...fileBatch(0, 3), events: [upsert()], reports: [report] });
+  const record = store.event(ID)!;
+  expect(desk.plan(record)).toBeNull();
+  store.commitIntake({ ...emptyBatch(LATER), reports: [{ ...report, plan }] });
+  expect(desk.plan(record)).toEqual(plan);
+  // A clock that stepped is planned for by nobody.
+  expect(desk.plan({ ...record, event: { ...record.event, site: 'north' } })).toBeNull();
 });
 
 test('lists files and quarantine newest first, and drops what a later delivery put right', () => {

@@ -6,7 +6,7 @@ import { TOTAL_RATE } from '../../../detectors/steps/threshold.ts';
 import { dice, observingDays } from '../../support/simulatedPulsar.ts';
 import { modelOf, simulateTimedArrivals } from '../../support/simulatedWatch.ts';
 
-const DEMANDS = { noiseKnown: false, sessions: 2 };
+const DEMANDS = { leastJointOdds: Number.POSITIVE_INFINITY, sessions: 2 };
 const MODEL = modelOf({ frequencyHz: '3.123456789', frequencyDerivativeHzPerS: -2e-14, epochMjd: 60_000 });
 
 function quietWatch(pulsars: number) {
