@@ -26,7 +26,7 @@ export async function replay(
   const { tables } = loadTables();
   const store = openRecord(configuration, 'daemon');
   try {
-    const log = createLog({ level: 'error' });
+    const log = createLog({ level: 'error', write: (line) => void terminal.err.write(line) });
     const station = createStation({ configuration, store, tables, clock: systemClock, log, reviewUrl: () => null });
     const bars = new Map<string, (done: number) => void>();
     const replayed = await replayArchive(station, {

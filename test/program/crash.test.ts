@@ -19,10 +19,10 @@ import { arrivalFile, syntheticArrivals, syntheticPulsar } from '../support/synt
 const TODAY_MJD = Math.floor(40_587 + Date.now() / 86_400_000);
 const pulsar = syntheticPulsar({
   name: 'KR 0417+31',
-  epochMjd: TODAY_MJD - 80,
+  epochMjd: TODAY_MJD - 60,
   glitches: [{ mjd: TODAY_MJD - 12, deltaNuOverNu: 2e-7 }],
 });
-const arrivals = syntheticArrivals(pulsar, { fromMjd: TODAY_MJD - 79, toMjd: TODAY_MJD - 2, everyDays: 3, seed: 7 });
+const arrivals = syntheticArrivals(pulsar, { fromMjd: TODAY_MJD - 57, toMjd: TODAY_MJD - 2, everyDays: 3, seed: 7 });
 const RECIPIENTS = ['duty@kestrel-ridge.example', 'timing@kestrel-ridge.example'];
 const MOST_STEPS = 100;
 const LANES = 3;

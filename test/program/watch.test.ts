@@ -19,10 +19,10 @@ const TODAY_MJD = Math.floor(40_587 + Date.now() / 86_400_000);
 const GLITCH_MJD = TODAY_MJD - 12;
 const pulsar = syntheticPulsar({
   name: 'KR 0417+31',
-  epochMjd: TODAY_MJD - 80,
+  epochMjd: TODAY_MJD - 60,
   glitches: [{ mjd: GLITCH_MJD, deltaNuOverNu: 2e-7 }],
 });
-const arrivals = syntheticArrivals(pulsar, { fromMjd: TODAY_MJD - 79, toMjd: TODAY_MJD - 2, everyDays: 3, seed: 7 });
+const arrivals = syntheticArrivals(pulsar, { fromMjd: TODAY_MJD - 57, toMjd: TODAY_MJD - 2, everyDays: 3, seed: 7 });
 const before = arrivals.filter(({ mjdText }) => Number(mjdText) < GLITCH_MJD);
 const after = arrivals.filter(({ mjdText }) => Number(mjdText) >= GLITCH_MJD);
 

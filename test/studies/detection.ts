@@ -1,17 +1,18 @@
 // Delay of confirmation against the smallest that is possible:  npm run study:detection -- [SEED] [TRIALS PER CELL] [THREADS]
-// Programmes by cadence, noise and size; the detector learns the noise from 80 to 150 arrivals before the glitch, the clairvoyant
+// Programmes by history, cadence, noise and size; the detector learns the noise from the arrivals before the glitch, the clairvoyant
 // test (test/support/clairvoyant.ts) is told everything but the epoch. Both get the same arrivals, at the same rate of false alarms.
 // Writes a table and a picture beside itself.
 import { writeFileSync } from 'node:fs';
 import { isMainThread, parentPort, Worker } from 'node:worker_threads';
 import { detectionPicture } from '../support/detectionPicture.ts';
-import { detectionMarkdown, detectionRows } from '../support/detectionTable.ts';
+import { detectionMarkdown, detectionResult } from '../support/detectionTable.ts';
 import {
   CADENCES,
   type Cell,
   detectionTrial,
   EXPECTED,
   falseAlarmRate,
+  HISTORIES,
   NOISES,
   type Trial,
 } from '../support/detectionTrial.ts';
@@ -32,7 +33,9 @@ function work(task: Task): Trial | number {
 }
 
 async function study(seed: number, perCell: number, threads: number): Promise<void> {
-  const places = CADENCES.flatMap((cadence) => NOISES.map((noise) => ({ cadence, noise, expected: EXPECTED[0] })));
+  const places = HISTORIES.flatMap((history) =>
+    CADENCES.flatMap((cadence) => NOISES.map((noise) => ({ history, cadence, noise, expected: EXPECTED[0] }))),
+  );
   const rates = await inThreads<number>(
     threads,
     places.map((cell, k) => ({ kind: 'rate', seed: seed + k * STRIDE, cell })),
@@ -46,14 +49,14 @@ async function study(seed: number, perCell: number, threads: number): Promise<vo
   );
   const numbered = tasks.map((task, n) => ({ ...task, seed: seed + (n + places.length) * STRIDE }));
   const trials = await inThreads<Trial>(threads, numbered);
-  const falseAlarmsPerYear = places.map(({ cadence, noise }, k) => ({ cadence, noise, perYear: rates[k]! }));
-  const head = { date: new Date().toISOString().slice(0, 10), seed, perCell, falseAlarmsPerYear };
-  const rows = detectionRows(trials);
+  const falseAlarms = places.map(({ history, cadence, noise }, k) => ({ history, cadence, noise, perYear: rates[k]! }));
+  const head = { date: new Date().toISOString().slice(0, 10), seed, perCell };
+  const result = detectionResult(head, trials, falseAlarms);
   const write = (name: string, text: string) => writeFileSync(new URL(name, import.meta.url), text);
-  write('detection.json', `${JSON.stringify({ ...head, rows, trials }, null, 1)}\n`);
-  write('detection.md', detectionMarkdown(head, rows));
-  write('detection.svg', detectionPicture(head, rows));
-  console.log(detectionMarkdown(head, rows));
+  write('detection.json', `${JSON.stringify({ ...result, trials }, null, 1)}\n`);
+  write('detection.md', detectionMarkdown(result));
+  write('detection.svg', detectionPicture(result));
+  console.log(detectionMarkdown(result));
 }
 
 /** A thread reads TypeScript only once it has been told how. */

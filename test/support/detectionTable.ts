@@ -1,14 +1,20 @@
 /** The delays of many trials as rows of a table. */
-import { AHEAD, CADENCES, EXPECTED, NOISES, type Trial } from './detectionTrial.ts';
+import { AHEAD, CADENCES, type Cell, EXPECTED, HISTORIES, NOISES, type Trial } from './detectionTrial.ts';
 
 export interface Head {
   readonly date: string;
   readonly seed: number;
   readonly perCell: number;
-  readonly falseAlarmsPerYear: readonly {
-    readonly cadence: string;
-    readonly noise: string;
-    readonly perYear: number;
+}
+
+/** At the detector's threshold. */
+type FalseAlarms = Pick<Cell, 'history' | 'cadence' | 'noise'> & { readonly perYear: number };
+
+export interface Result extends Head {
+  readonly histories: readonly {
+    readonly history: Cell['history'];
+    readonly rows: readonly Row[];
+    readonly falseAlarms: readonly FalseAlarms[];
   }[];
 }
 
@@ -32,7 +38,16 @@ export interface Row {
   readonly early: number;
 }
 
-export function detectionRows(trials: readonly Trial[]): Row[] {
+export function detectionResult(head: Head, trials: readonly Trial[], falseAlarms: readonly FalseAlarms[]): Result {
+  const histories = HISTORIES.map((history) => ({
+    history,
+    rows: rowsOf(trials.filter((t) => t.history === history)),
+    falseAlarms: falseAlarms.filter((f) => f.history === history),
+  }));
+  return { ...head, histories };
+}
+
+function rowsOf(trials: readonly Trial[]): Row[] {
   const row = (what: string, cadence: string | null, expected: number | null, of: (t: Trial) => boolean) =>
     rowOf({ what, cadence, expected }, trials.filter(of));
   return [
@@ -68,37 +83,41 @@ function rowOf(name: Pick<Row, 'what' | 'cadence' | 'expected'>, all: readonly T
   };
 }
 
-export function detectionMarkdown({ date, seed, perCell, falseAlarmsPerYear }: Head, rows: readonly Row[]): string {
-  const cells = rows.map((r) =>
-    [
-      r.what,
-      r.trials,
-      r.clairvoyant.toFixed(1),
-      r.odds.toFixed(2),
-      r.explained.toFixed(2),
-      `${r.confirmed.toFixed(2)} ± ${r.standardError.toFixed(2)}`,
-      r.medianOfRatios.toFixed(2),
-      r.missed,
-      r.early,
-    ].join(' | '),
-  );
-  const rates = falseAlarmsPerYear.map((r) => `| ${r.cadence} | ${r.noise} | ${r.perYear.toExponential(1)} |`);
+export function detectionMarkdown({ date, seed, perCell, histories }: Result): string {
   return `# Delay of confirmation over the smallest possible
 
-${date}, seed ${seed}, ${perCell} trials per cadence, noise and size. The noise is learned from 80 to 150 arrivals before the glitch; the
+${date}, seed ${seed}, ${perCell} trials per history, cadence, noise and size. The noise is learned from the arrivals before the glitch; the
 clairvoyant test (Page 1954) is told size, sign and noise. Delays count arrivals from the first after the glitch. A glitch that is not
 confirmed within ${AHEAD} arrivals counts with ${AHEAD}. Ratios are of means; "odds" and "explained": when the odds alone, and the share of the
-explanation as well, had passed.
+explanation as well, had passed. False alarms: at the detector's threshold, a year and pulsar, on simulated pulsars of the noise that it
+has learned (detectors/nulls); the threshold of the clairvoyant test was set to the same, by importance sampling.
 
-| | trials | clairvoyant | odds | explained | confirmed | median ratio | missed | early |
-|---|---|---|---|---|---|---|---|---|
-${cells.map((line) => `| ${line} |`).join('\n')}
+${histories.map(section).join('\n')}`;
+}
 
-False alarms a year at the detector's threshold, on simulated pulsars of the noise that it has learned (detectors/nulls); the threshold of
-the clairvoyant test was set to the same, by importance sampling.
+function section({ history, rows, falseAlarms }: Result['histories'][number]): string {
+  const cells = rows.map((r) => [
+    r.what,
+    r.trials,
+    r.clairvoyant.toFixed(1),
+    r.odds.toFixed(2),
+    r.explained.toFixed(2),
+    `${r.confirmed.toFixed(2)} ± ${r.standardError.toFixed(2)}`,
+    r.medianOfRatios.toFixed(2),
+    r.missed,
+    r.early,
+  ]);
+  const rates = falseAlarms.map((f) => [f.cadence, f.noise, f.perYear.toExponential(1)]);
+  const names = ['', 'trials', 'clairvoyant', 'odds', 'explained', 'confirmed', 'median ratio', 'missed', 'early'];
+  return `## About ${history} arrivals before the glitch
 
-| cadence | noise | a year and pulsar |
-|---|---|---|
-${rates.join('\n')}
+${table(names, cells)}
+
+${table(['cadence', 'noise', 'false alarms a year and pulsar'], rates)}
 `;
+}
+
+function table(names: readonly string[], rows: readonly (readonly (string | number)[])[]): string {
+  const line = (cells: readonly (string | number)[]) => `| ${cells.join(' | ')} |`;
+  return [line(names), line(names.map(() => '---')), ...rows.map(line)].join('\n');
 }

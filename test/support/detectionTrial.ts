@@ -6,6 +6,7 @@ import { nullTail, rateAt } from '../../detectors/nulls/nullTail.ts';
 import type { PulsarModel } from '../../detectors/spin/pulsarModel.ts';
 import { LEAST_SESSIONS } from '../../detectors/steps/decide.ts';
 import { isExplained, weigh } from '../../detectors/steps/evidence.ts';
+import { leastJointOdds } from '../../detectors/steps/jointOdds.ts';
 import type { PulsarWatch } from '../../detectors/steps/pulsarWatch.ts';
 import { addSeconds } from '../../detectors/time/mjd.ts';
 import { alarmAt, arrivalsUntil, innovationsOf, thresholdFor, type Whitening, whitening } from './clairvoyant.ts';
@@ -28,8 +29,11 @@ export const NOISES = ['white', 'frequency walk', 'torque walk'] as const;
 /** Arrivals that the clairvoyant test is expected to need: this sets the size of the glitch. */
 export const EXPECTED = [3, 8, 20] as const;
 
-const FEWEST_BEFORE = 80;
-const MOST_BEFORE = 150;
+/** Arrivals before the glitch, about: a new pulsar, and one followed for years. The noise is learned from them. */
+export const HISTORIES = [100, 400] as const;
+const HISTORY_SPREAD = 0.2;
+/** Alarms of the clairvoyant test count from so many arrivals before the glitch on. */
+const ARRIVALS_ON_GUARD = 50;
 /** Arrivals after the glitch; one that is not confirmed by then counts with as many. */
 export const AHEAD = 100;
 /** Sizes of published glitches, relative; beyond the largest the count of turns is lost, which is another study. */
@@ -47,6 +51,7 @@ const MOST_SPREAD_TURNS = 0.05;
 
 /** The size is that of the glitch: how many arrivals the clairvoyant test is expected to need. */
 export interface Cell {
+  readonly history: (typeof HISTORIES)[number];
   readonly cadence: string;
   readonly noise: (typeof NOISES)[number];
   readonly expected: number;
@@ -91,7 +96,8 @@ export function falseAlarmRate(seed: number, cell: Cell, simulated: number): num
   const random = seeded(seed);
   const pulsar = drawn(cell, random);
   const watch = watchedUntil(pulsar, quietArrivals(pulsar, random));
-  const tail = nullTail(watch, { leastJointOdds: 0, sessions: LEAST_SESSIONS }, simulated);
+  const least = leastJointOdds(watch, { kind: 'glitch', bestGap: pulsar.before });
+  const tail = nullTail(watch, { leastJointOdds: least, sessions: LEAST_SESSIONS }, simulated);
   return rateAt(tail, watch.settings.confirmLogOdds);
 }
 
@@ -102,7 +108,7 @@ function seeded(seed: number): Dice {
 }
 
 /** As strong a walk as the population law draws it. */
-function drawn({ cadence, noise }: Cell, random: Dice): Pulsar {
+function drawn({ history, cadence, noise }: Cell, random: Dice): Pulsar {
   const frequencyHz = 10 ** (-0.5 + 1.8 * random.uniform());
   const uncertaintyUs = 10 ** (1.3 + 1.7 * random.uniform());
   const frequencyDerivativeHzPerS = -(10 ** (-15.5 + 3 * random.uniform()));
@@ -113,7 +119,7 @@ function drawn({ cadence, noise }: Cell, random: Dice): Pulsar {
     frequencyWalk: noise === 'frequency walk' ? strength(prior.frequencyWalk) : 0,
     torqueWalk: noise === 'torque walk' ? strength(prior.torqueWalk) : 0,
   };
-  const before = FEWEST_BEFORE + Math.floor((MOST_BEFORE - FEWEST_BEFORE) * random.uniform());
+  const before = Math.round(history * (1 + HISTORY_SPREAD * (random.uniform() - 0.5)));
   const days = [0];
   while (days.length < before + AHEAD) days.push(days.at(-1)! + GAPS[cadence]!(random));
   const law = whitening({ days, walks, sigmaTurns: uncertaintyUs * 1e-6 * frequencyHz });
@@ -134,7 +140,7 @@ function clairvoyantTest(
   perYear: number,
   random: Dice,
 ): KnownStep | null {
-  const from = FEWEST_BEFORE / 2;
+  const from = before - ARRIVALS_ON_GUARD;
   if (law.variances.slice(from).some((variance) => variance > MOST_SPREAD_TURNS ** 2)) return null;
   let threshold = FIRST_NATS;
   for (let round = 0; ; round++) {
