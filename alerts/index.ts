@@ -1,6 +1,6 @@
 /** What the daemon may call, in the order of its use: decide, compose, send. */
 
-export { EXPIRES_AFTER_MS, hasExpired, type PauseCause, pauseMs } from './backoff.ts';
+export { EXPIRES_AFTER_MS, hasExpired, pauseMs } from './backoff.ts';
 export type { ComposedMessage, MailSetting } from './composed.ts';
 export { composeDigest, digestHtml, digestText } from './digest.ts';
 export {
@@ -8,7 +8,6 @@ export {
   type Delivery,
   type DeliveryOutcome,
   type Mailer,
-  type MailerDependencies,
   type MailTransport,
   markPossibleDuplicate,
   safeFileName,
@@ -22,13 +21,11 @@ export { eventsCsv } from './notice/csv.ts';
 export { type CsvColumns, csvTable } from './notice/csvTable.ts';
 export { eventJson } from './notice/json.ts';
 export { type NoticeContext, voevent } from './notice/voevent.ts';
-export { composeOperatorNotice, composeStormNotice, composeTestMail, type OperatorNotice } from './operatorNotice.ts';
+export { composeOperatorNotice, composeStormNotice, composeTestMail } from './operatorNotice.ts';
 export { prepareRenderer, renderPng } from './picture.ts';
-export { DARK_PALETTE, eventSvg, LIGHT_PALETTE, type PlotPalette, type PlotWords } from './plot/index.ts';
+export { DARK_PALETTE, eventSvg, LIGHT_PALETTE, type PlotPalette } from './plot/index.ts';
 export {
-  type AlertDecision,
   type AlertPolicy,
-  type AlertReason,
   DEFAULT_HISTORICAL_DAYS,
   DEFAULT_SHARPER_BY,
   type EventChanged,
@@ -37,8 +34,7 @@ export {
   type ToldBefore,
 } from './policy.ts';
 export { DEFAULT_HOURLY_CAP, isQuiet, mailOrSummary, mayWake, type QuietHours } from './restraint.ts';
-export { type Belief, beliefText, historyLines } from './wording/beliefs.ts';
-export { dateOfMjd, isoDay, mjdText, momentText, timeInWords } from './wording/dates.ts';
-export { percent, quantity } from './wording/numbers.ts';
+export { type Belief, historyLines } from './wording/beliefs.ts';
+export { timeInWords } from './wording/dates.ts';
 export { eventName, subjectOf } from './wording/phrases.ts';
-export { type EventSheet, eventSheet, sizeText } from './wording/sheet.ts';
+export { eventSheet, sizeText } from './wording/sheet.ts';

@@ -28,7 +28,7 @@ function rendered(piece: Piece): string {
 }
 
 /** For element content and for attributes in either quote. What XML 1.0 §2.2 forbids becomes U+FFFD. */
-export function escapeMarkup(text: string): string {
+function escapeMarkup(text: string): string {
   return visible(text).replace(/[&<>"']/g, (c) => ESCAPES[c] ?? c);
 }
 

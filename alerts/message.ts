@@ -121,7 +121,7 @@ function subjectOfMail(sheet: EventSheet, kind: EventMailKind, observatory: stri
     .join(' · ');
 }
 
-export function eventText(
+function eventText(
   sheet: EventSheet,
   planned: PlannedMessage,
   setting: MailSetting,
@@ -152,7 +152,7 @@ function section(name: string, items: readonly string[]): string {
   return items.length === 0 ? '' : `${textHeading(name)}\n${bullets(items)}`;
 }
 
-export function eventHtml(
+function eventHtml(
   sheet: EventSheet,
   planned: PlannedMessage,
   setting: MailSetting,
@@ -193,6 +193,6 @@ function opening(planned: PlannedMessage): string {
 }
 
 /** Where the page shows the event. */
-export function eventUrl(reviewUrl: string, eventId: string): string {
+function eventUrl(reviewUrl: string, eventId: string): string {
   return `${reviewUrl}/events/${encodeURIComponent(eventId.replace(/\p{Cs}/gu, '\ufffd'))}`;
 }

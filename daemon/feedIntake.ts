@@ -9,6 +9,7 @@ import { quarantineUnread } from './stages/unreadFile.ts';
 import type { Station } from './station.ts';
 import { storageTrouble } from './store/index.ts';
 import type { ReadyFile, WatchProblem } from './watch/feedLook.ts';
+import { helperEyes } from './watch/helperEyes.ts';
 import { createWatcher, type FeedStatus, type WatcherOptions } from './watch/watcher.ts';
 
 /** From the watched folders into the pipeline, for as long as the daemon runs. */
@@ -69,6 +70,7 @@ export function startIntake(station: Station, { onMail, onFatal, progress }: Int
   });
   const watcher = createWatcher({
     feeds: configuration.feeds,
+    openEyes: helperEyes(),
     recall: (feed, file) => recall(station, feed, file.pathBytes),
     isAsRecorded: (file, bytes) => isAsRecorded(station, file, bytes),
     clock: systemClock,

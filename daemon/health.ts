@@ -4,6 +4,7 @@ import type { FeedIntake } from './feedIntake.ts';
 import type { Progress } from './progress.ts';
 import type { WatchHealth } from './review/desk.ts';
 import type { DeliveryLoop } from './schedule/deliver.ts';
+import { clocksFault } from './stages/clocks.ts';
 import type { Store } from './store/index.ts';
 
 /** What keeps the watch from being trusted, in words for a person. Silence about glitches is worth something only while this is empty. */
@@ -74,8 +75,12 @@ function mailProblems(sources: HealthSources): string[] {
 }
 
 function decisionProblems({ store }: HealthSources): string[] {
-  return store
-    .pulsarReports()
-    .filter(({ basis }) => basis.startsWith('left open'))
-    .map(({ pulsar }) => `${pulsar} could not be decided about at its last arrival; the log says why.`);
+  const clocks =
+    clocksFault(store) === null
+      ? []
+      : ['The clocks of the sites could not be judged; what was known of them is kept, and the log says why.'];
+  const pulsars = store
+    .faultyPulsars()
+    .map((pulsar) => `${pulsar} could not be decided about at its last arrival; the log says why.`);
+  return [...clocks, ...pulsars];
 }

@@ -50,7 +50,7 @@ function remarks(current: CurrentModel, events: readonly ModelEvent[]): string[]
 }
 
 /** When folding with the model of the models folder smears the pulse. */
-export function driftText({ startModel }: CurrentModel): string {
+function driftText({ startModel }: CurrentModel): string {
   const { tenthOfTurnMjd, reached, sinceMjd } = startModel;
   const since = `since MJD ${sinceMjd.toFixed(2)}`;
   if (tenthOfTurnMjd === null) return `The start model will not drift by 0.1 turn ${since} within ten years.`;

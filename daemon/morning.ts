@@ -145,7 +145,7 @@ function silentPulsars(store: Store, now: Date): MorningReview['silentPulsars'] 
 }
 
 function usualGapDays(store: Store, pulsar: string): number {
-  const days = [...new Set(store.liveArrivals(pulsar).map((arrival) => arrival.time.day))].slice(-RECENT_SESSIONS);
+  const days = store.lastDays(pulsar, RECENT_SESSIONS);
   const gaps = days.slice(1).map((day, i) => day - days[i]!);
   return gaps.length === 0 ? Number.POSITIVE_INFINITY : median(gaps);
 }

@@ -100,11 +100,21 @@ export class Pipeline {
   /** Times and decides again: pulsars whose model, tables or settings may have changed. */
   decide(pulsars: readonly string[], options: DecideOptions): Promise<void> {
     return this.#inTurn(async () => {
-      const recorded = pulsars.flatMap((pulsar) => this.#station.store.arrivals(pulsar));
       this.#watches.forget(pulsars);
-      await this.#decideAndRecord({ ...this.#batch(), retimed: retime(this.#station, recorded) }, pulsars, options);
+      await this.#retime(pulsars);
+      await this.#decideAndRecord(this.#batch(), pulsars, options);
       noteDecided(this.#station.store, pulsars);
     });
+  }
+
+  /** Pulsar by pulsar: a large record does not fit into memory. Decisions on record still rest on the old times, and say so by their basis. */
+  async #retime(pulsars: readonly string[]): Promise<void> {
+    const { store } = this.#station;
+    for (const pulsar of pulsars) {
+      await this.#pause();
+      const retimed = retime(this.#station, store.arrivals(pulsar));
+      if (retimed.length > 0) store.commitIntake({ ...this.#batch(), retimed });
+    }
   }
 
   /** Decides about pulsars whose arrivals this pipeline took in with `later`. Answers how many mails that queued. */
@@ -222,7 +232,7 @@ export class Pipeline {
         step('decided');
         const outcome = this.#station.store.commitIntake({ ...batch, ...consequences });
         if (outcome.kind === 'committed') {
-          await writeCurrentModels(this.#station, this.#watches, decided);
+          await writeCurrentModels(this.#station, decided);
           return consequences;
         }
         this.#station.log.info({ event: outcome.eventId }, 'an event changed meanwhile: deciding again');

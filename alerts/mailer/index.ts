@@ -2,8 +2,8 @@ import { folderMailer } from './folder.ts';
 import type { Mailer, MailerDependencies, MailTransport } from './mailer.ts';
 import { smtpMailer } from './smtp.ts';
 
-export { compose, type MailParts, markPossibleDuplicate, safeFileName } from './compose.ts';
-export type { Delivery, DeliveryOutcome, Mailer, MailerDependencies, MailTimeouts, MailTransport } from './mailer.ts';
+export { compose, markPossibleDuplicate, safeFileName } from './compose.ts';
+export type { Delivery, DeliveryOutcome, Mailer, MailTransport } from './mailer.ts';
 export { writeWhole } from './wholeFile.ts';
 export { withoutPicture } from './withoutPicture.ts';
 

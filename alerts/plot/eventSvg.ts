@@ -67,20 +67,13 @@ function phasePanel(canvas: Canvas): Markup {
   );
   const y: Scale = { domain, range: [PHASE.bottom, PHASE.top] };
   const seconds = Math.max(Math.abs(domain[0]), Math.abs(domain[1])) / picture.frequencyHz;
-  const [factor, unit] = unitFor(seconds, TIME_UNITS);
+  const [factor, unit] = unitFor(seconds, 's');
   const inTime: Scale = {
     domain: [domain[0] / picture.frequencyHz / factor, domain[1] / picture.frequencyHz / factor],
     range: y.range,
   };
   return markup`${panelGround(PHASE, y, 'Phase deviation (late is up)', 'turns', palette, 6)}${rightAxis(PHASE, inTime, unit, palette, 6)}${epochBand(canvas, PHASE)}${fitCurve(canvas, fit, y)}${arrivals(canvas, PHASE, y, (p) => p.deviationTurns)}${axisLine(x, PHASE, palette)}`;
 }
-
-const TIME_UNITS = [
-  [1, 's'],
-  [1e-3, 'ms'],
-  [1e-6, 'µs'],
-  [1e-9, 'ns'],
-] as const;
 
 /** What the fit leaves. Scaled by the used arrivals: one that was set aside may stand outside. */
 function leftOverPanel(canvas: Canvas): Markup {
@@ -98,18 +91,10 @@ function leftOverPanel(canvas: Canvas): Markup {
     });
   const reach = Math.max(0, ...values.map(Math.abs)) * 1.15 || 1;
   const y: Scale = { domain: [-reach, reach], range: [LEFT_OVER.bottom, LEFT_OVER.top] };
-  const [factor, unit] = unitFor(reach / picture.frequencyHz, TIME_UNITS);
+  const [factor, unit] = unitFor(reach / picture.frequencyHz, 's');
   const most = reach / picture.frequencyHz / factor;
   return markup`${panelGround(LEFT_OVER, y, 'Residual to the fit', 'turns', palette, 4)}${rightAxis(LEFT_OVER, { domain: [-most, most], range: y.range }, unit, palette, 4)}${epochBand(canvas, LEFT_OVER)}${arrivals(canvas, LEFT_OVER, y, rest)}${axisLine(x, LEFT_OVER, palette)}`;
 }
-
-const FREQUENCY_UNITS = [
-  [1, 'Hz'],
-  [1e-3, 'mHz'],
-  [1e-6, 'µHz'],
-  [1e-9, 'nHz'],
-  [1e-12, 'pHz'],
-] as const;
 
 function frequencyPanel(canvas: Canvas): Markup {
   const { picture, view, palette, x } = canvas;
@@ -120,7 +105,7 @@ function frequencyPanel(canvas: Canvas): Markup {
   );
   const all = [0, ...inView.map((p) => p.deltaNuHz), ...fit.map((p) => p.value)];
   const errors = inView.flatMap((p) => [p.deltaNuHz - p.uncertaintyHz, p.deltaNuHz + p.uncertaintyHz]);
-  const [factor, unit] = unitFor(Math.max(...all.map(Math.abs)), FREQUENCY_UNITS);
+  const [factor, unit] = unitFor(Math.max(...all.map(Math.abs)), 'Hz');
   const y: Scale = {
     domain: domainOf(
       [...all, ...errors].map((v) => v / factor),

@@ -6,7 +6,7 @@ import { place, type Scale, tickLabel, ticksOf } from './scale.ts';
 export const WIDTH = 1080;
 export const LEFT = 148;
 export const RIGHT = WIDTH - 148;
-export const FONT = 'DejaVu Sans';
+const FONT = 'DejaVu Sans';
 const TICK_TEXT = 30;
 const TITLE_TEXT = 31;
 

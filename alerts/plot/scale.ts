@@ -48,10 +48,17 @@ export function tickLabel(value: number, decimals: number): string {
   return value < 0 && Number(text) !== 0 ? `−${text}` : text;
 }
 
-/** The power of a thousand, and its name, in which values of this size read best. */
-export function unitFor(
-  largest: number,
-  units: readonly (readonly [factor: number, name: string])[],
-): readonly [number, string] {
-  return units.find(([factor]) => largest >= factor) ?? units.at(-1) ?? [1, ''];
+/** Of the International System of Units (BIPM brochure, 9th edition, table 7). */
+const PREFIXES = [
+  [1, ''],
+  [1e-3, 'm'],
+  [1e-6, 'µ'],
+  [1e-9, 'n'],
+  [1e-12, 'p'],
+] as const;
+
+/** The power of a thousand, and the name of the unit with its prefix, in which values of this size read best. */
+export function unitFor(largest: number, unit: string): readonly [factor: number, name: string] {
+  const [factor, prefix] = PREFIXES.find(([least]) => largest >= least) ?? PREFIXES[4];
+  return [factor, `${prefix}${unit}`];
 }

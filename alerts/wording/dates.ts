@@ -50,10 +50,6 @@ export function dateOfMjd(mjd: number): Date {
   return new Date(Math.round((mjd - MJD_OF_UNIX_EPOCH) * DAY_MS));
 }
 
-export function mjdOfDate(date: Date): number {
-  return MJD_OF_UNIX_EPOCH + date.getTime() / DAY_MS;
-}
-
 /** `28 June 2023`. */
 export function dayText(at: Date, timezone: string): string {
   const p = parts(at, timezone, { year: 'numeric', month: 'long', day: 'numeric' });

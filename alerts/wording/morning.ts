@@ -71,7 +71,7 @@ export function morningWords(review: MorningReview, timezone: string): MorningWo
 }
 
 /** What a reader must know from the subject line alone. */
-export function summaryOf(review: MorningReview): string {
+function summaryOf(review: MorningReview): string {
   const counts = [
     counted(review.waiting.length, 'event waits', 'events wait', ' for a verdict'),
     counted(review.changed.length, 'event changed', 'events changed', ''),

@@ -51,8 +51,9 @@ export interface Feed {
   /** How a text table is to be read, in layout `columns`; null in the others. */
   readonly columns: TextColumns | null;
   readonly recursive: boolean;
-  /** Seconds between scans; also polls for notices (network file systems) when set by the operator. */
+  /** Seconds between scans. */
   readonly pollSeconds: number;
+  /** The operator said how often to look (a network file system): no notices are asked for. */
   readonly polling: boolean;
   /** A feed silent for longer is reported; null: never. */
   readonly expectEveryHours: number | null;

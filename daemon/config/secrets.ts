@@ -34,7 +34,7 @@ export class Secret {
 export type SecretResult = { readonly secret: Secret } | { readonly problem: string };
 
 /** Where the mail password may stand when the configuration names no file. */
-export const PASSWORD_VARIABLE = 'SPINVIGIL_MAIL_PASSWORD';
+const PASSWORD_VARIABLE = 'SPINVIGIL_MAIL_PASSWORD';
 const LONGEST_SECRET_BYTES = 4096;
 
 /** Read anew at each login, so that a rotated password is picked up. `file` null: from the environment. */

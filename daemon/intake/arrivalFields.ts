@@ -7,7 +7,7 @@ import { isPlainDecimal, parseDecimal, parseWhole } from './numbers.ts';
 
 export const REQUIRED_COLUMNS = ['pulsar', 'uncertainty_us', 'frequency_mhz', 'site'] as const;
 export const TIME_COLUMNS = ['mjd_utc', 'mjd_tdb'] as const;
-export const OPTIONAL_COLUMNS = ['receiver', 'pulse_number', 'signal_to_noise', 'note'] as const;
+const OPTIONAL_COLUMNS = ['receiver', 'pulse_number', 'signal_to_noise', 'note'] as const;
 export const ALL_COLUMNS = [...REQUIRED_COLUMNS, ...TIME_COLUMNS, ...OPTIONAL_COLUMNS] as const;
 export type Column = (typeof ALL_COLUMNS)[number];
 

@@ -31,7 +31,7 @@ const ALWAYS_OPEN = /^\/(assets\/|login$)/;
 const FOR_MACHINES = /^\/(api\/|healthz$|metrics$)/;
 const FOR_MONITORS = /^\/(healthz|metrics)$/;
 
-export function visitorOf(c: ReviewContext): Visitor {
+function visitorOf(c: ReviewContext): Visitor {
   return c.env.visitor;
 }
 

@@ -26,7 +26,7 @@ export function createDailyChecks(station: Station, tableWarnings: () => readonl
       // Less than nothing: the wall clock was set back.
       if (sinceMs >= 0 && sinceMs < DAY_MS) return 0;
       for (const warning of tableWarnings()) log.warn(warning);
-      const problems = store.verify();
+      const problems = await store.verifyBeside();
       const before = store.meta(RECORD_PROBLEMS) ?? '[]';
       const found = JSON.stringify(problems);
       const isNews = problems.length > 0 && found !== before;

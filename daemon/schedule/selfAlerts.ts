@@ -24,6 +24,7 @@ const SUBJECT: Readonly<Record<TroubleKind, string>> = {
   'table ended': 'a table is out of date',
   'disk nearly full': 'the disk is nearly full',
   'count not settled': 'pulsars without a settled count: no alerts from these',
+  'clocks not judged': 'the clocks of the sites could not be judged',
   'mail blocked': 'mail does not reach everybody',
 };
 
@@ -36,6 +37,8 @@ const ADVICE: Readonly<Record<TroubleKind, string>> = {
     'When it is full, intake pauses; nothing is lost. Make room, or move the state folder with the watch stopped.',
   'count not settled':
     'No prediction tells one whole turn from the next: after a gap, or because the model does not fit. A step may stay unseen meanwhile. Observe it closely, or give it a newer model.',
+  'clocks not judged':
+    'A fault of the program; the log says where. Pulsars are decided about with the steps known so far, but a new step of a clock would look like a glitch of every pulsar of its site: vet those together. It is tried again with every file.',
   'mail blocked': 'It is tried again for five days. Tell these people in another way, and look at the mail server.',
 };
 

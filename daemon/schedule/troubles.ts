@@ -1,5 +1,6 @@
 import { statfsSync } from 'node:fs';
 import { civilTime, mjdOf } from '../clock.ts';
+import { clocksFault } from '../stages/clocks.ts';
 import type { Station } from '../station.ts';
 import { leapSecondWarning } from '../tables/loadTables.ts';
 import { operatorTables } from '../tables/tableEnds.ts';
@@ -20,6 +21,7 @@ export type TroubleKind =
   | 'table ended'
   | 'disk nearly full'
   | 'count not settled'
+  | 'clocks not judged'
   | 'mail blocked';
 
 export interface TroubleSources extends Pick<Station, 'configuration' | 'store' | 'clock' | 'tables'> {
@@ -33,6 +35,7 @@ export function troubles(sources: TroubleSources): Trouble[] {
     ...endedTables(sources),
     ...disk(sources),
     ...unsettledCounts(sources),
+    ...clocksNotJudged(sources),
     ...blockedMail(sources),
   ];
 }
@@ -109,6 +112,11 @@ function unsettledCounts({ store }: TroubleSources): Trouble[] {
     .unlockedPulsars()
     .filter(({ arrivals }) => arrivals >= ENOUGH_ARRIVALS)
     .map(({ pulsar }) => ({ kind: 'count not settled', key: pulsar, line: pulsar }));
+}
+
+function clocksNotJudged({ store }: TroubleSources): Trouble[] {
+  const fault = clocksFault(store);
+  return fault === null ? [] : [{ kind: 'clocks not judged', key: 'all sites', line: fault }];
 }
 
 /** What waits for so long did not meet a short outage. */

@@ -25,7 +25,8 @@ export const NO_CONSEQUENCES: Consequences = {
 export interface Decided {
   readonly reports: readonly PulsarReport[];
   readonly rows: readonly PulsarReportRow[];
-  readonly steps: readonly BelievedStep[];
+  /** Null: the clocks could not be judged; what is on record of them stands. */
+  readonly steps: readonly BelievedStep[] | null;
 }
 
 /** Decision, event and alert: from what the detector says about single pulsars to events on record and mail. */

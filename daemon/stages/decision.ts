@@ -8,13 +8,19 @@ import type { PulsarReportRow } from '../store/index.ts';
 export function publishedEvents(
   { store }: Station,
   changed: readonly PulsarReportRow[],
-  steps: readonly BelievedStep[],
+  steps: readonly BelievedStep[] | null,
 ): readonly PulsarEvent[] {
   const rows = new Map(store.pulsarReports().map((report) => [report.pulsar, report]));
   for (const report of changed) rows.set(report.pulsar, report);
   // Only a site's event bears a site.
   const own = [...rows.values()].flatMap(({ events }) => events.map((event) => ({ ...event, site: null })));
-  return [...own, ...siteEvents(steps)].sort((a, b) => a.epochMjd - b.epochMjd || (a.id < b.id ? -1 : 1));
+  const ofSites = steps === null ? siteEventsOnRecord(store) : siteEvents(steps);
+  return [...own, ...ofSites].sort((a, b) => a.epochMjd - b.epochMjd || (a.id < b.id ? -1 : 1));
+}
+
+function siteEventsOnRecord(store: Station['store']): PulsarEvent[] {
+  const all = store.publishedEvents().map(({ event }) => event);
+  return all.filter(({ site, state }) => site !== null && state !== 'withdrawn');
 }
 
 /** A report as the record keeps it. */

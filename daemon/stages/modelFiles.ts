@@ -6,7 +6,7 @@ import type { PulsarReport } from '../../detectors/report.ts';
 import { reasonOf } from '../errors.ts';
 import { modelJson, modelToml } from '../modelForms.ts';
 import type { Station } from '../station.ts';
-import type { Followed, SiteWatches } from './sites.ts';
+import type { Followed } from './sites.ts';
 
 /**
  * Writes the current models of pulsars that were decided about into the operator's folder, for whoever folds: one file as the models
@@ -14,15 +14,13 @@ import type { Followed, SiteWatches } from './sites.ts';
  */
 export async function writeCurrentModels(
   station: Station,
-  watches: SiteWatches,
-  { reports, rows }: Pick<Followed, 'reports' | 'rows'>,
+  { reports, models }: Pick<Followed, 'reports' | 'models'>,
 ): Promise<void> {
   const folder = station.configuration.currentModelsFolder;
   if (folder === null) return;
   for (const report of reports) {
     try {
-      const { siteSteps = [] } = rows.find(({ pulsar }) => pulsar === report.pulsar) ?? {};
-      const current = watches.currentModel(report, siteSteps);
+      const current = models.get(report.pulsar);
       // Before the count is certain, the model of the models folder is the better one.
       if (current?.locked) await writeModel(station, folder, current, report);
     } catch (error) {

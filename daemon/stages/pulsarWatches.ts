@@ -1,12 +1,6 @@
+import { getHeapStatistics } from 'node:v8';
 import type { TimedArrival } from '../../detectors/arrival.ts';
-import {
-  advance,
-  type CurrentModel,
-  currentModel,
-  type PulsarWatch,
-  report,
-  startWatch,
-} from '../../detectors/index.ts';
+import { advance, type PulsarWatch, report, startWatch } from '../../detectors/index.ts';
 import type { DetectorSettings, PulsarReport } from '../../detectors/report.ts';
 import type { PulsarModel } from '../../detectors/spin/pulsarModel.ts';
 import { compareMjd } from '../../detectors/time/mjd.ts';
@@ -20,7 +14,7 @@ export class PulsarWatches {
   readonly #watches = new Map<string, Running>();
   readonly #most: number;
 
-  constructor(options: { readonly most: number } = { most: 2000 }) {
+  constructor(options: { readonly most: number } = { most: MOST_WATCHES }) {
     this.#most = options.most;
   }
 
@@ -35,19 +29,25 @@ export class PulsarWatches {
   /** The watch over a pulsar, up to date with its log. */
   follow(model: PulsarModel, settings: DetectorSettings, log: readonly TimedArrival[]): PulsarWatch {
     const running = this.#resume(model, settings, log);
-    for (let i = running.taken.length; i < log.length; i++) {
-      const arrival = log[i]!;
-      advance(running.watch, arrival);
-      running.taken.push(arrival.key);
-    }
+    while (running.taken.length < log.length) takeIn(running, log[running.taken.length]!);
     this.#remember(model.name, running);
     return running.watch;
   }
 
-  /** The model to fold with, of a pulsar whose report this is; null: it is not followed, or has no arrivals to speak of. */
-  currentModel({ pulsar, events }: Pick<PulsarReport, 'pulsar' | 'events'>): CurrentModel | null {
-    const running = this.#watches.get(pulsar);
-    return running === undefined ? null : currentModel(running.watch, events);
+  /** The same in small steps: a long log takes seconds. What `pause` throws ends it, and the pulsar starts over the next time. */
+  async followInSteps(
+    model: PulsarModel,
+    settings: DetectorSettings,
+    log: readonly TimedArrival[],
+    pause: () => Promise<void>,
+  ): Promise<PulsarWatch> {
+    const running = this.#resume(model, settings, log);
+    for (let step = 1; running.taken.length < log.length; step++) {
+      if (step % ARRIVALS_A_STEP === 0) await pause();
+      takeIn(running, log[running.taken.length]!);
+    }
+    this.#remember(model.name, running);
+    return running.watch;
   }
 
   /** After a commit that failed: what is in memory may be ahead of the log. */
@@ -78,12 +78,25 @@ export class PulsarWatches {
   }
 }
 
+/** A running watch takes up to so much (measured: 3 MB, and 0.3 kB an arrival). */
+const WATCH_BYTES = 5e6;
+const LEAST_WATCHES = 50;
+/** Those of all pulsars may take an eighth of what the engine may use. The others are folded anew when something comes in for them. */
+const MOST_WATCHES = Math.max(LEAST_WATCHES, Math.floor(getHeapStatistics().heap_size_limit / 8 / WATCH_BYTES));
+/** Some tens of milliseconds. */
+const ARRIVALS_A_STEP = 20;
+
 interface Running {
   readonly model: PulsarModel;
   readonly settings: DetectorSettings;
   readonly watch: PulsarWatch;
   /** Keys of the arrivals folded in so far, in order. A key is an arrival's content, so equal keys are equal arrivals. */
   readonly taken: string[];
+}
+
+function takeIn({ watch, taken }: Running, arrival: TimedArrival): void {
+  advance(watch, arrival);
+  taken.push(arrival.key);
 }
 
 /** The operator's model with the same steps of the sites' clocks. */

@@ -1,19 +1,20 @@
 import {
   type BelievedStep,
   type CurrentModel,
+  currentModel,
   knownSteps,
   openPlan,
   type PulsarTimes,
   type PulsarWatch,
   pulsarTimes,
   report,
-  SiteClocks,
   type SiteStep,
 } from '../../detectors/index.ts';
 import type { PulsarReport } from '../../detectors/report.ts';
 import { reasonOf } from '../errors.ts';
 import type { Station } from '../station.ts';
-import { type PulsarReportRow, storageTrouble } from '../store/index.ts';
+import { LEFT_OPEN, type PulsarReportRow, storageTrouble } from '../store/index.ts';
+import { GuardedClocks } from './clocks.ts';
 import { reportRow } from './decision.ts';
 import { type LogChanges, liveLog, modelOf, withSiteSteps } from './deviation.ts';
 import { PulsarWatches } from './pulsarWatches.ts';
@@ -26,8 +27,10 @@ import { PulsarWatches } from './pulsarWatches.ts';
 export interface Followed {
   readonly reports: readonly PulsarReport[];
   readonly rows: readonly PulsarReportRow[];
-  /** Of all sites, in order of time. */
-  readonly steps: readonly BelievedStep[];
+  /** Of all sites, in order of time; null: the clocks could not be judged. */
+  readonly steps: readonly BelievedStep[] | null;
+  /** To fold with, by pulsar; of one that has no arrivals to speak of, none. */
+  readonly models: ReadonlyMap<string, CurrentModel>;
 }
 
 export interface FollowOptions {
@@ -40,14 +43,9 @@ export interface FollowOptions {
 export class SiteWatches {
   readonly #alone = new PulsarWatches();
   readonly #withSteps = new PulsarWatches();
-  readonly #clocks = new SiteClocks();
+  readonly #clocks = new GuardedClocks();
   /** As on record, by pulsar; null: to be read. */
   #times: Map<string, PulsarTimes> | null = null;
-
-  /** The model to fold with, of a pulsar whose report this is; null: it is not followed, or has no arrivals to speak of. */
-  currentModel(reported: PulsarReport, siteSteps: readonly SiteStep[]): CurrentModel | null {
-    return (siteSteps.length === 0 ? this.#alone : this.#withSteps).currentModel(reported);
-  }
 
   /** After a commit that failed. */
   forget(pulsars: Iterable<string>): void {
@@ -59,40 +57,50 @@ export class SiteWatches {
     station: Station,
     pulsars: readonly string[],
     changes: LogChanges,
-    { pause, onPulsar }: FollowOptions,
+    { pause: givePause, onPulsar }: FollowOptions,
   ): Promise<Followed> {
+    let ended: unknown = null;
+    const pause = () =>
+      givePause().catch((error) => {
+        ended = error;
+        throw error;
+      });
     const recorded = new Map(station.store.pulsarReports().map((row) => [row.pulsar, row]));
     this.#times ??= new Map(station.store.pulsarTimes().map((times) => [times.pulsar, times]));
     const times = this.#times;
     const rows = new Map<string, PulsarReportRow>();
-    const guarded = (pulsar: string, work: () => void) => {
+    const guarded = async (pulsar: string, work: () => Promise<void>) => {
+      await pause();
       try {
-        work();
+        await work();
       } catch (error) {
-        if (storageTrouble(error) !== null) throw error;
+        if (error === ended || storageTrouble(error) !== null) throw error;
         leaveOpen(station, rows, recorded.get(pulsar), { pulsar, error });
       }
     };
     for (const [i, pulsar] of pulsars.entries()) {
-      await pause();
-      guarded(pulsar, () => {
-        times.set(pulsar, pulsarTimes(this.#watch(this.#alone, station, { pulsar, changes, steps: [] })));
+      await guarded(pulsar, async () => {
+        const watch = await this.#watch(this.#alone, station, { pulsar, changes, steps: [], pause });
+        times.set(pulsar, pulsarTimes(watch));
       });
       onPulsar(i + 1);
     }
-    const steps = this.#clocks.steps([...times.values()]);
+    const steps = this.#clocks.judge(station, [...times.values()]);
     const reports: PulsarReport[] = [];
+    const models = new Map<string, CurrentModel>();
     const changed = new Set(pulsars.filter((pulsar) => !rows.has(pulsar)));
     for (const [pulsar, own] of times) {
-      const known = knownSteps(steps, own);
       const before = recorded.get(pulsar)?.siteSteps ?? [];
+      const known = steps === null ? before : knownSteps(steps, own);
       if (rows.has(pulsar) || !station.configuration.models.has(pulsar)) continue;
       if (!changed.has(pulsar) && JSON.stringify(known) === JSON.stringify(before)) continue;
-      await pause();
-      guarded(pulsar, () => {
+      await guarded(pulsar, async () => {
         const watches = known.length === 0 ? this.#alone : this.#withSteps;
-        const watch = this.#watch(watches, station, { pulsar, changes, steps: known });
+        const watch = await this.#watch(watches, station, { pulsar, changes, steps: known, pause });
         const reported = report(watch);
+        const { currentModelsFolder } = station.configuration;
+        const current = currentModelsFolder === null ? null : currentModel(watch, reported.events);
+        if (current !== null) models.set(pulsar, current);
         const plan = openPlan(watch, reported.events);
         reports.push(reported);
         const sessions = changed.has(pulsar) ? { times: own } : {};
@@ -100,21 +108,20 @@ export class SiteWatches {
         rows.set(pulsar, plan === null ? row : { ...row, plan });
       });
     }
-    return { reports, rows: [...rows.values()], steps };
+    return { reports, rows: [...rows.values()], steps, models };
   }
 
-  #watch(
-    watches: PulsarWatches,
-    station: Station,
-    {
-      pulsar,
-      changes,
-      steps,
-    }: { readonly pulsar: string; readonly changes: LogChanges; readonly steps: readonly SiteStep[] },
-  ): PulsarWatch {
+  #watch(watches: PulsarWatches, station: Station, { pulsar, changes, steps, pause }: Following): Promise<PulsarWatch> {
     const model = modelOf(station, pulsar);
-    return watches.follow(withSiteSteps(model, steps), station.settingsOf(model), liveLog(station, pulsar, changes));
+    const log = liveLog(station, pulsar, changes);
+    return watches.followInSteps(withSiteSteps(model, steps), station.settingsOf(model), log, pause);
   }
+}
+
+interface Following extends Pick<FollowOptions, 'pause'> {
+  readonly pulsar: string;
+  readonly changes: LogChanges;
+  readonly steps: readonly SiteStep[];
 }
 
 /** One pulsar that cannot be decided about holds up no other, and loses no arrival: it is tried again at its next arrival and start. */
@@ -125,5 +132,5 @@ function leaveOpen(
   { pulsar, error }: { readonly pulsar: string; readonly error: unknown },
 ): void {
   station.log.error({ pulsar, err: error }, 'no decision about this pulsar: a fault of the program');
-  if (before !== undefined) rows.set(pulsar, { ...before, basis: `left open: ${reasonOf(error)}` });
+  if (before !== undefined) rows.set(pulsar, { ...before, basis: `${LEFT_OPEN}: ${reasonOf(error)}` });
 }

@@ -1,7 +1,7 @@
 import type { BarycentredArrival, Quality, TimedArrival } from '../../detectors/arrival.ts';
 import { daysBetween, type Mjd, SECONDS_PER_DAY } from '../../detectors/time/mjd.ts';
 import type { ArrivalRecord } from '../records.ts';
-import { type Db, prepared, row, rows, run } from './connection.ts';
+import { type Db, eachOnce, prepared, row, rows, run } from './connection.ts';
 import { pathBytes } from './files.ts';
 import { fromJson, toJson } from './json.ts';
 import type { NewArrival, RetimedArrival, Sighting, StatusChange } from './shapes.ts';
@@ -102,7 +102,8 @@ export function arrival(db: Db, key: string): ArrivalRecord | null {
 }
 
 export function pulsars(db: Db): string[] {
-  return rows<{ pulsar: string }>(db, 'SELECT DISTINCT pulsar FROM arrivals ORDER BY pulsar').map((r) => r.pulsar);
+  const every = `${eachOnce('pulsar', 'arrivals')} SELECT each AS pulsar FROM every WHERE each IS NOT NULL`;
+  return rows<{ pulsar: string }>(db, every).map((r) => r.pulsar);
 }
 
 export function arrivalsOfFile(db: Db, feed: string, path: string | { readonly bytesHex: string }): ArrivalRecord[] {

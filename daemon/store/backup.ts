@@ -81,7 +81,7 @@ export function copyProblem(copy: Db): string | null {
 }
 
 /** Only ever for files that no connection of this process has open. */
-export function forceToDisk(path: string): void {
+function forceToDisk(path: string): void {
   const descriptor = openSync(path, 'r');
   try {
     fsyncSync(descriptor);

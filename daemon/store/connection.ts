@@ -9,7 +9,7 @@ export type Db = Database.Database;
 export const APPLICATION_ID = 0x5350564c;
 
 /** Older libraries can corrupt a write-ahead log that two connections reset at once (SQLite release notes, 3.51.3). */
-export const OLDEST_LIBRARY = '3.51.3';
+const OLDEST_LIBRARY = '3.51.3';
 
 /** How long to wait for another connection's transaction; they are short. */
 const BUSY_TIMEOUT_MS = 10_000;
@@ -97,6 +97,15 @@ export function rows<Row>(db: Db, sql: string, ...values: unknown[]): Row[] {
 /** The only row of a query, or undefined. */
 export function row<Row>(db: Db, sql: string, ...values: unknown[]): Row | undefined {
   return prepared(db, sql).get(...values) as Row | undefined;
+}
+
+/**
+ * A common table `every` of the values of an indexed column, each once and then a null, as the column `each`: one step of the index a value,
+ * where DISTINCT would go through all of it.
+ */
+export function eachOnce(column: string, table: string): string {
+  return `WITH RECURSIVE every (each) AS (SELECT min(${column}) FROM ${table}
+    UNION ALL SELECT (SELECT min(${column}) FROM ${table} WHERE ${column} > each) FROM every WHERE each IS NOT NULL)`;
 }
 
 export function run(db: Db, sql: string, ...values: unknown[]): Database.RunResult {

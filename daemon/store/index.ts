@@ -1,5 +1,6 @@
 /** The door of the store: what the rest of the daemon may call. */
 export { type Opened, type OpenOptions, openStore } from './openStore.ts';
+export { LEFT_OPEN } from './reports.ts';
 export { type Restored, restore } from './restore.ts';
 export {
   type ClaimedMail,

@@ -61,6 +61,10 @@ CREATE INDEX files_mostly_unusable ON files (taken_in_at) WHERE fault IS NOT NUL
   PRIMARY KEY (outbox_id, number)
 ) STRICT, WITHOUT ROWID;`,
   },
+  {
+    name: 'when a feed delivered last, without going through its files',
+    sql: "CREATE INDEX files_of_feed_by_time ON files (feed, taken_in_at) WHERE signature <> '';",
+  },
 ];
 
 export const SCHEMA_VERSION = MIGRATIONS.length;

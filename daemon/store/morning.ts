@@ -1,6 +1,6 @@
 import type { QuarantinedRow } from '../../alerts/morningReview.ts';
 import type { EventState, PulsarEvent } from '../../detectors/steps/pulsarEvent.ts';
-import { type Db, row, rows } from './connection.ts';
+import { type Db, eachOnce, row, rows } from './connection.ts';
 import { fromJson } from './json.ts';
 import type { EventChangeLine } from './shapes.ts';
 
@@ -59,20 +59,39 @@ export function eventChangesSince(db: Db, since: string): EventChangeLine[] {
   }));
 }
 
-/** A file that could not be read (without a signature) is no sign of life. */
+/** A file that could not be read (without a signature) is no sign of life. Feed by feed by its index: the table may be long. */
 export function lastFileByFeed(db: Db): Map<string, string> {
   const found = rows<{ feed: string; at: string }>(
     db,
-    "SELECT feed, max(taken_in_at) AS at FROM files WHERE signature <> '' GROUP BY feed ORDER BY feed",
+    `${eachOnce('feed', 'files')}
+     SELECT each AS feed, (SELECT max(taken_in_at) FROM files WHERE feed = each AND signature <> '') AS at
+     FROM every WHERE each IS NOT NULL AND at IS NOT NULL ORDER BY feed`,
   );
   return new Map(found.map(({ feed, at }) => [feed, at]));
 }
 
+/** The time at the barycentre is within a day of the time as received, by which the arrivals are indexed. */
 export function lastArrivalByPulsar(db: Db): Map<string, number> {
   const found = rows<{ pulsar: string; mjd: number }>(
     db,
-    `SELECT a.pulsar, max(b.tdb_day + b.tdb_fraction) AS mjd FROM arrivals a JOIN barycentred b ON b.arrival_id = a.id
-     WHERE a.status = 'live' GROUP BY a.pulsar ORDER BY a.pulsar`,
+    `${eachOnce('pulsar', 'arrivals')}
+     SELECT each AS pulsar, (
+       SELECT max(b.tdb_day + b.tdb_fraction) FROM arrivals a JOIN barycentred b ON b.arrival_id = a.id
+       WHERE a.pulsar = each AND a.status = 'live' AND a.time_day >= (
+         SELECT time_day FROM arrivals l JOIN barycentred t ON t.arrival_id = l.id
+         WHERE l.pulsar = each AND l.status = 'live' ORDER BY time_day DESC LIMIT 1) - 1
+     ) AS mjd FROM every WHERE each IS NOT NULL AND mjd IS NOT NULL ORDER BY pulsar`,
   );
   return new Map(found.map(({ pulsar, mjd }) => [pulsar, mjd]));
+}
+
+/** The last days with live arrivals of a pulsar, MJD as received, in order of time. */
+export function lastDays(db: Db, pulsar: string, most: number): number[] {
+  const found = rows<{ day: number }>(
+    db,
+    `SELECT DISTINCT time_day AS day FROM arrivals WHERE pulsar = ? AND status = 'live' ORDER BY time_day DESC LIMIT ?`,
+    pulsar,
+    most,
+  );
+  return found.map(({ day }) => day).reverse();
 }

@@ -85,9 +85,13 @@ function recordProblem(db: Db, folder: string, lock: InstanceLock | null): OpenF
       message: `${db.name}: schema ${version} of an older version. Start the daemon once first.`,
     };
   }
+  if (statSync(recordFile(folder)).size > CHECKED_AT_START_BYTES) return null;
   const check = db.pragma('quick_check(1)', { simple: true });
   return check === 'ok' ? null : damaged(folder, String(check));
 }
+
+/** To go through all of a larger record takes longer than a start should: the daily check does it beside the running daemon. */
+const CHECKED_AT_START_BYTES = 256e6;
 
 function nothingYet(file: string): OpenFailure {
   return { kind: 'nothing on record', message: `${file}: nothing is on record yet; the daemon has not run.` };

@@ -20,6 +20,14 @@ export function pulsarReports(db: Db): PulsarReportRow[] {
   return rows<ReportRow>(db, 'SELECT pulsar, basis, body FROM pulsar_reports ORDER BY pulsar').map(toReport);
 }
 
+/** What the basis of a report begins with that could not be made anew. */
+export const LEFT_OPEN = 'left open';
+
+export function faultyPulsars(db: Db): string[] {
+  const faulty = 'SELECT pulsar FROM pulsar_reports WHERE substr(basis, 1, length(@mark)) = @mark ORDER BY pulsar';
+  return rows<{ pulsar: string }>(db, faulty, { mark: LEFT_OPEN }).map(({ pulsar }) => pulsar);
+}
+
 /** Pulsars whose turns are not counted with certainty, with how many arrivals they have. */
 export function unlockedPulsars(db: Db): { readonly pulsar: string; readonly arrivals: number }[] {
   return rows<{ pulsar: string; arrivals: number }>(

@@ -42,6 +42,7 @@ import type {
 } from './shapes.ts';
 import * as verdicts from './verdicts.ts';
 import { verify } from './verify.ts';
+import { verifyBeside } from './verifyBeside.ts';
 
 /**
  * The record: one SQLite database in the state folder, and with a writer the lock that makes it the only one. Every method is
@@ -125,6 +126,11 @@ export class Store {
 
   pulsarTimes(): PulsarTimes[] {
     return reports.pulsarTimes(this.#db);
+  }
+
+  /** Pulsars that could not be decided about, for a fault of the program. */
+  faultyPulsars(): string[] {
+    return reports.faultyPulsars(this.#db);
   }
 
   unlockedPulsars(): { readonly pulsar: string; readonly arrivals: number }[] {
@@ -276,6 +282,11 @@ export class Store {
     return morning.lastArrivalByPulsar(this.#db);
   }
 
+  /** The last days with live arrivals of a pulsar, MJD as received, in order of time. */
+  lastDays(pulsar: string, most: number): number[] {
+    return morning.lastDays(this.#db, pulsar, most);
+  }
+
   lastDigest(): { readonly civilDate: string; readonly at: string } | null {
     return outbox.lastDigest(this.#db);
   }
@@ -306,6 +317,11 @@ export class Store {
   /** The invariants of the record, checked in full; each problem in words. Empty: all hold. */
   verify(): string[] {
     return verify(this.#db);
+  }
+
+  /** The same in a process of its own, while the daemon goes on. */
+  verifyBeside(): Promise<string[]> {
+    return verifyBeside(this.#db.name);
   }
 
   /** False when the database file was moved, removed or replaced under the running program: stop at once. */

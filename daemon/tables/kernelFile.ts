@@ -38,10 +38,7 @@ function settle(file: string): string | { readonly problem: string } {
 }
 
 /** Reads Earth and Sun out of an SPK kernel, and no more of the file than that. */
-export function readKernelFile(
-  file: string,
-  name: string,
-): { readonly kernel: SpkKernel } | { readonly problem: string } {
+function readKernelFile(file: string, name: string): { readonly kernel: SpkKernel } | { readonly problem: string } {
   let descriptor: number | null = null;
   try {
     // Not blocking, so that a pipe in the kernel's place cannot hold up the start.

@@ -61,6 +61,7 @@ export interface WatchProblem {
     | 'restless'
     | 'no notices'
     | 'look failed'
+    | 'no answer'
     | Trouble['kind'];
   /** Null: the feed as a whole. */
   readonly path: string | null;
@@ -85,11 +86,16 @@ const ASK_AGAIN_MS = 300_000;
 
 type WatchedFeed = Pick<Feed, 'name' | 'folder' | 'recursive'>;
 
-export function createFeedLook(feed: WatchedFeed, recall: Recall, settings: LookSettings): FeedLook {
+export function createFeedLook(
+  feed: WatchedFeed,
+  recall: Recall,
+  settings: LookSettings,
+  scanned: () => Promise<Scan> = () => scanFolder(feed.folder, { recursive: feed.recursive }),
+): FeedLook {
   const memory = createFeedMemory();
   return {
     async look(nowMs) {
-      const scan = await scanFolder(feed.folder, { recursive: feed.recursive });
+      const scan = await scanned();
       return scan.kind === 'listed'
         ? sort(scan, { feed, memory, recall, settings, nowMs })
         : gone(feed, memory, scan.reason);

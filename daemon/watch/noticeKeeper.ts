@@ -2,7 +2,10 @@ import type { Feed } from '../config/configuration.ts';
 import type { Look, WatchProblem } from './feedLook.ts';
 import { type Notices, type Watch, watchForNotices } from './notices.ts';
 
-/** Holds the notices of one feed; sets them up anew when another folder stands under the feed's name. */
+/**
+ * Holds the notices of one feed; sets them up anew when another folder stands under the feed's name. Where the operator says how often to look (network
+ * file systems, which send none) there are none: asking for them could hang.
+ */
 export interface NoticeKeeper {
   /** After each look. What is wrong with the notices, if anything. */
   follow(root: Look['root']): readonly WatchProblem[];
@@ -21,12 +24,12 @@ export function createNoticeKeeper(feed: Feed, onNotice: () => void, arm?: Watch
   };
   return {
     follow(root) {
-      if (root !== null && root.identity !== armedFor) {
+      if (root !== null && !polling && root.identity !== armedFor) {
         notices?.close().catch(() => {});
         armedFor = root.identity;
         failure = null;
         const folder = root.folder.toString('utf8');
-        notices = watchForNotices({ folder, recursive, polling, pollSeconds, onNotice, onFailure }, arm);
+        notices = watchForNotices({ folder, recursive, onNotice, onFailure }, arm);
       }
       return failure === null ? [] : [failure];
     },

@@ -12,9 +12,6 @@ export interface Notices {
 export interface NoticeOptions {
   readonly folder: string;
   readonly recursive: boolean;
-  /** Ask the file system again and again, where it sends no notices (network file systems). */
-  readonly polling: boolean;
-  readonly pollSeconds: number;
   onNotice(): void;
   /** Once: from now on there are only scans. */
   onFailure(reason: string): void;
@@ -36,8 +33,6 @@ export function watchForNotices(options: NoticeOptions, arm: Watch = watch): Not
     watcher = arm(options.folder, {
       ignoreInitial: true,
       followSymlinks: false,
-      usePolling: options.polling,
-      interval: options.pollSeconds * 1000,
       ignorePermissionErrors: true,
       ...(options.recursive ? {} : { depth: 0 }),
       // Folders alone are watched: their notices name the files in them, and a watch a file would use up the system's stock.

@@ -36,7 +36,11 @@ export interface ScanOptions {
   /** Bounds for what a stranger may put there. */
   readonly mostFiles?: number;
   readonly deepestFolder?: number;
+  /** After each so many entries. */
+  onProgress?(): void;
 }
+
+const ENTRIES_A_PROGRESS = 1000;
 
 const MOST_FILES = 1_000_000;
 const DEEPEST_FOLDER = 32;
@@ -57,11 +61,14 @@ export async function scanFolder(folder: string, options: ScanOptions): Promise<
   const refuse = (pathBytes: Buffer, reason: string) =>
     refused.push({ path: displayName(pathBytes), pathBytes, reason });
   const most = options.mostFiles ?? MOST_FILES;
+  let entries = 0;
   const waiting: { readonly path: Buffer; readonly depth: number }[] = [{ path: Buffer.alloc(0), depth: 0 }];
   for (let place = waiting.shift(); place !== undefined; place = waiting.shift()) {
     const { path, depth } = place;
     try {
       for await (const { name, entry } of entriesOf(joinBytes(root, path))) {
+        entries += 1;
+        if (entries % ENTRIES_A_PROGRESS === 0) options.onProgress?.();
         if (isPassedOver(name)) continue;
         const inner = joinBytes(path, name);
         if (entry.isDirectory()) {

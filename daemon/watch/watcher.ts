@@ -12,9 +12,10 @@ import {
   type WatchProblem,
 } from './feedLook.ts';
 import type { Trouble } from './feedMemory.ts';
+import { type FolderEyes, NoAnswer, type OpenEyes, ownEyes } from './folderEyes.ts';
 import { createNoticeKeeper } from './noticeKeeper.ts';
 import type { Watch } from './notices.ts';
-import { LARGEST_FILE_BYTES, readStill } from './open.ts';
+import { LARGEST_FILE_BYTES } from './open.ts';
 import { createProblemLedger } from './problemLedger.ts';
 
 /**
@@ -42,6 +43,8 @@ export interface WatcherOptions {
   readonly settleMs?: number;
   /** Largest file, bytes. */
   readonly largestBytes?: number;
+  /** Absent: the folders are looked at in this process. */
+  readonly openEyes?: OpenEyes;
   /** Swapped in tests alone. */
   readonly arm?: Watch;
 }
@@ -64,7 +67,7 @@ export interface FeedStatus {
   readonly problems: readonly WatchProblem[];
 }
 
-export const DEFAULT_SETTLE_MS = 2000;
+const DEFAULT_SETTLE_MS = 2000;
 /** A writer that pauses for longer inside a row will be believed. */
 const LONG_SETTLE_FACTOR = 10;
 const RESTLESS_MS = 3_600_000;
@@ -117,6 +120,7 @@ interface FeedLoop {
 interface Loop extends Shared {
   readonly feed: Feed;
   readonly options: WatcherOptions;
+  readonly eyes: FolderEyes;
   readonly watched: FeedLook;
   readonly beat: Beat;
   readonly audit: Audit;
@@ -128,10 +132,12 @@ function startFeed(feed: Feed, options: WatcherOptions, shared: Shared): FeedLoo
   const settleMs = options.settleMs ?? DEFAULT_SETTLE_MS;
   const settings = { settleMs, longSettleMs: settleMs * LONG_SETTLE_FACTOR, restlessMs: RESTLESS_MS };
   const beat = createBeat();
+  const eyes = (options.openEyes ?? ownEyes)(feed, options.largestBytes ?? LARGEST_FILE_BYTES);
   const loop: Loop = {
     feed,
     options,
-    watched: createFeedLook(feed, options.recall, settings),
+    eyes,
+    watched: createFeedLook(feed, options.recall, settings, eyes.scan),
     ...shared,
     beat,
     audit: createAudit(options.clock.monotonicMs()),
@@ -145,6 +151,7 @@ function startFeed(feed: Feed, options: WatcherOptions, shared: Shared): FeedLoo
     while (!beat.stopped) {
       const startMs = options.clock.monotonicMs();
       const look = await lookOnce(loop, startMs);
+      if (beat.stopped) return;
       const lookMs = options.clock.monotonicMs() - startMs;
       ledger.update([...look.problems, ...notices.follow(look.root)]);
       options.onProgress?.(feed.name, 'looked');
@@ -167,6 +174,7 @@ function startFeed(feed: Feed, options: WatcherOptions, shared: Shared): FeedLoo
     status: () => status,
     stop: async () => {
       beat.stop();
+      eyes.close();
       await running;
       await notices.close();
     },
@@ -178,7 +186,8 @@ async function lookOnce({ feed, watched }: Loop, nowMs: number): Promise<Look> {
   try {
     return await watched.look(nowMs);
   } catch (error) {
-    const problem: WatchProblem = { feed: feed.name, kind: 'look failed', path: null, message: reasonOf(error) };
+    const kind = error instanceof NoAnswer ? 'no answer' : 'look failed';
+    const problem: WatchProblem = { feed: feed.name, kind, path: null, message: reasonOf(error) };
     return { ready: [], moving: 0, nextReadyInMs: FIRST_RETRY_MS, root: null, files: [], problems: [problem] };
   }
 }
@@ -206,13 +215,16 @@ async function handOver(look: Look, loop: Loop, lookMs: number): Promise<void> {
 }
 
 /** Files whose turn it is, against the record, while nothing new waits. */
-async function readThrough(look: Look, { audit, beat, feed, options, watched }: Loop, nowMs: number): Promise<void> {
+async function readThrough(
+  look: Look,
+  { audit, beat, eyes, feed, options, watched }: Loop,
+  nowMs: number,
+): Promise<void> {
   if (look.root === null || options.isAsRecorded === undefined) return;
   for (const { path, pathBytes, stamp } of audit.due(look.files, nowMs)) {
     if (beat.stopped) return;
     if (!watched.isTaken({ path, pathBytes, stamp })) continue;
-    const wanted = { root: look.root.folder, pathBytes, signature: stamp.signature };
-    const reading = await readStill(wanted, { largestBytes: options.largestBytes ?? LARGEST_FILE_BYTES });
+    const reading = await eyes.read({ root: look.root.folder, pathBytes, signature: stamp.signature });
     // One that changed, or may not be read, is no business of ours.
     if (reading.kind !== 'read') continue;
     const file = { feed: feed.name, path, pathBytes };
@@ -220,11 +232,13 @@ async function readThrough(look: Look, { audit, beat, feed, options, watched }: 
   }
 }
 
-async function handOverOne(file: ReadyFile, { options, watched, turns, readyFiles, failures }: Loop): Promise<void> {
+async function handOverOne(
+  file: ReadyFile,
+  { options, eyes, watched, turns, readyFiles, failures }: Loop,
+): Promise<void> {
   const tryLater = (waitMs: number, trouble: Trouble | null) =>
     watched.tryLater(file, { notBeforeMs: options.clock.monotonicMs() + waitMs, trouble });
-  const wanted = { root: file.root, pathBytes: file.pathBytes, signature: file.stamp.signature };
-  const reading = await readStill(wanted, { largestBytes: options.largestBytes ?? LARGEST_FILE_BYTES });
+  const reading = await eyes.read({ root: file.root, pathBytes: file.pathBytes, signature: file.stamp.signature });
   if (reading.kind === 'refused') {
     watched.refused(file, reading.reason);
     return;

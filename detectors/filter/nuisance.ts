@@ -2,7 +2,7 @@ import type { CountedArrival, Disturbance } from './countedArrival.ts';
 import { SPIN_STATES } from './stateSpace.ts';
 
 /** Frequency at which a dispersion step is stated, MHz. */
-export const REFERENCE_FREQUENCY_MHZ = 1400;
+const REFERENCE_FREQUENCY_MHZ = 1400;
 
 /** Bands count as two when f⁻² differs by more than this fraction of the largest. */
 const BAND_SPREAD = 0.1;

@@ -16,6 +16,13 @@ import { at, type Lags, nothing, setAside, something, total } from './weighing.t
 /** By how much (natural log) the draw passes with a rate step of `delta` turns/day; negative: it does not. */
 export type Excess = (draw: number, delta: number) => number;
 
+/** What the bank makes of a step. */
+export interface OfBank {
+  readonly excess: Excess;
+  /** Natural log of the weight of all gaps over that of the most probable one. */
+  readonly logPlaces: (draw: number, delta: number) => number;
+}
+
 /** Gaps in which the step may be believed to lie, from the true one; each stands for those around it. */
 export const OFFSETS: readonly (readonly [offset: number, standsFor: number])[] = [
   [0, 1],
@@ -45,7 +52,7 @@ export function bankExcess(watch: PulsarWatch, stage: Stage, sums: readonly Sums
   const { gaps, offsets, programme } = stage;
   const terms = (kind: Kind, at: Sums, rateStep: number) =>
     gaps.slice(0, kind === 'glitch' ? gaps.length : LIKELY_GAPS).flatMap((gap, g) => {
-      const spread = Math.log(OFFSETS.find(([offset]) => offset === offsets[g])![1]);
+      const spread = Math.log(standsFor(offsets[g]!));
       const priors = sizePriors(watch, kind, gapDaysBefore(programme, gap));
       const parts = kind === 'glitch' ? partsNear(priors, rateStep, PARTS) : priors;
       return parts
@@ -60,8 +67,17 @@ export function bankExcess(watch: PulsarWatch, stage: Stage, sums: readonly Sums
   return (look, rateStep) => {
     const now = sums[look]!;
     const glitch = terms('glitch', now, rateStep);
+    const partsOfGap = glitch.length / gaps.length;
+    const byGap = gaps.map((_, g) => glitch.slice(g * partsOfGap, (g + 1) * partsOfGap));
+    const logPlaces = (m: number, delta: number) => {
+      const likeliest = byGap.reduce(
+        (most, parts, g) => Math.max(most, total(parts, m, delta) - Math.log(standsFor(offsets[g]!))),
+        -Infinity,
+      );
+      return Math.max(0, total(glitch, m, delta) - likeliest);
+    };
     const aside = sums.slice(0, look + 1).map((before, l) => setAside(before, now, [quiet[l]!, quiet[look]!]));
-    return (m, delta) => {
+    const excess: Excess = (m, delta) => {
       const own = total(glitch, m, delta);
       const enough = own - total(aside, m, delta) + spinUp - watch.settings.confirmLogOdds;
       if (enough < 0) return enough;
@@ -71,11 +87,16 @@ export function bankExcess(watch: PulsarWatch, stage: Stage, sums: readonly Sums
       const share = logAddExp(own, change) - rival(others) - LOG_SHARE;
       return Math.min(enough, share, own - change - LOG_SHARE_OF_ROTATION);
     };
+    return { excess, logPlaces };
   };
 }
 
+function standsFor(offset: number): number {
+  return OFFSETS.find(([o]) => o === offset)![1];
+}
+
 /** At a look, for rate steps of about the given size. */
-export type BankExcess = (look: number, rateStep: number) => Excess;
+export type BankExcess = (look: number, rateStep: number) => OfBank;
 
 export function gapDaysBefore({ arrivals }: Programme, index: number): number {
   return arrivals[index]!.tDays - arrivals[index - 1]!.tDays;

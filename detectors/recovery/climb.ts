@@ -20,6 +20,7 @@ const OF_WIDTH = 0.7;
 /** At the top: so little is gained, and so well the step suits the width. */
 const GAINED = 0.02;
 const SUITS = 1.5;
+const CLOSE_TO_WALL = 1e-12;
 
 /**
  * Newton's method with derivatives from differences, in the unit cube; each round goes to the best of all places it has looked
@@ -34,6 +35,8 @@ export function climb(
   let steps: readonly number[] = start.map(() => firstStep);
   let x: readonly number[] = inside(start, steps);
   let height = heightAt(x);
+  // Of all places looked at: a wall is higher than what lies before it.
+  let reached = height;
   for (let round = 0; ; round++) {
     const looked = [{ x, height }];
     const look = (at: readonly number[]): number => {
@@ -57,16 +60,32 @@ export function climb(
       );
     const top = looked.reduce((a, b) => (b.height > a.height ? b : a));
     const suits = wanted.every((want, i) => want * SUITS > steps[i]!);
-    if ((top.height - height < GAINED && suits) || round === MOST_ROUNDS) return { x: centre, height, curvature };
+    if ((top.height - reached < GAINED && suits) || round === MOST_ROUNDS) return atTop(top, gradient, curvature);
+    reached = top.height;
     steps = wanted;
     x = inside(top.x, steps);
     height = x.every((part, i) => part === top.x[i]) ? top.height : heightAt(x);
   }
 }
 
+/** Against a wall the height falls off as its slope says, not as its curvature does. */
+function atTop(
+  { x, height }: { readonly x: readonly number[]; readonly height: number },
+  gradient: readonly number[],
+  curvature: Float64Array,
+): Maximum {
+  const steepened = curvature.slice();
+  x.forEach((part, i) => {
+    const own = i * (x.length + 1);
+    const atWall = Math.min(part, 1 - part) < 2 * CLOSE_TO_WALL;
+    if (atWall) steepened[own] = Math.max(steepened[own]!, gradient[i]! ** 2);
+  });
+  return { x, height, curvature: steepened };
+}
+
 /** Far enough from the walls for a step both ways. */
 function inside(x: readonly number[], steps: readonly number[]): number[] {
-  return x.map((part, i) => Math.min(1 - steps[i]! - 1e-12, Math.max(steps[i]! + 1e-12, part)));
+  return x.map((part, i) => Math.min(1 - steps[i]! - CLOSE_TO_WALL, Math.max(steps[i]! + CLOSE_TO_WALL, part)));
 }
 
 function derivatives(

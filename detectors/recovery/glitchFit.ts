@@ -18,8 +18,9 @@ import {
   total,
   totalSecond,
 } from './glitchSizes.ts';
-import { type Estimate, gridEstimate } from './mixture.ts';
+import { type Estimate, gridEstimate, logNormalEstimate } from './mixture.ts';
 import { defaultSizePrior, type SizePrior } from './sizePrior.ts';
+import { timescaleMarginal } from './timescaleMarginals.ts';
 
 /** So many exponentials are stated as are ten times as probable as fewer. */
 const LN_ESTABLISHED = Math.log(10);
@@ -90,7 +91,7 @@ export function fitGlitch(input: GlitchFitInput): GlitchFit {
   const models = glitchModels(frame, prior, input.mostTerms ?? MOST_TERMS);
   const all = models.flatMap(({ points }) => points);
   const terms = establishedTerms(models);
-  const stated = models[terms]!.points;
+  const { points: stated, timescales } = models[terms]!;
   const best = stated.reduce((a, b) => (b.logDensity > a.logDensity ? b : a));
   const deltaNuDotHzPerS = marginal(all, totalSecond, HZ_PER_S);
   return {
@@ -108,7 +109,15 @@ export function fitGlitch(input: GlitchFitInput): GlitchFit {
     recovery:
       terms === 0
         ? null
-        : { terms: Array.from({ length: terms }, (_, j) => termOf(stated, best, j)), q: marginal(all, recovered) },
+        : {
+            terms: Array.from({ length: terms }, (_, j) => ({
+              kind: isRise(best, j) ? 'delayed rise' : 'recovery',
+              timescaleDays: logNormalEstimate(timescaleMarginal(timescales, j)),
+              fraction: marginal(stated, fraction(j)),
+              frequencyStepHz: marginal(stated, exponentialStep(j), HZ),
+            })),
+            q: marginal(all, recovered),
+          },
     curve: (tDays) => addedDeviation(best, tDays),
     frequencyCurve: (tDays) => addedFrequency(best, tDays),
   };
@@ -139,15 +148,6 @@ function establishedTerms(models: readonly GlitchModel[]): number {
     if (logSumExp(weights.slice(terms)) - logSumExp(weights.slice(0, terms)) > LN_ESTABLISHED) return terms;
   }
   return 0;
-}
-
-function termOf(points: readonly GlitchPoint[], best: GlitchPoint, j: number): TermEstimate {
-  return {
-    kind: isRise(best, j) ? 'delayed rise' : 'recovery',
-    timescaleDays: gridMarginal(points, ({ timescalesDays }) => timescalesDays[j]!),
-    fraction: marginal(points, fraction(j)),
-    frequencyStepHz: marginal(points, exponentialStep(j), HZ),
-  };
 }
 
 function gridMarginal(points: readonly GlitchPoint[], of: (point: GlitchPoint) => number): Estimate {

@@ -5,7 +5,8 @@ import type { CandidateGap, EventFrame } from './eventFrame.ts';
 import { type GapSystem, gapSystem, recoveryColumns } from './gapSystem.ts';
 import { type EpochPosterior, explore, type GlitchPoint, pointsAt } from './glitchPosterior.ts';
 import { type SizePrior, type SizeScale, sizeScales } from './sizePrior.ts';
-import { type TimescaleCell, type TimescaleRange, timescaleLattice } from './timescaleLattice.ts';
+import { type TimescaleLattice, type TimescaleRange, timescaleLattices } from './timescaleLattice.ts';
+import type { WeighedLattice } from './timescaleMarginals.ts';
 
 export const MOST_TERMS = 3;
 
@@ -29,12 +30,8 @@ const LONGEST_OF_SPAN = 3;
 const GAP_BEHIND = 12;
 /** A model with 0, 1, 2 exponentials so many nats behind the best of those before it ends the search for more. */
 const MODEL_BEHIND = [0, 1, 0.5, 0] as const;
-/**
- * Rungs of the size prior that hold less than e⁻⁹ in the best cells of a first pass are left out of the rest; of the
- * model with one exponential less, e⁻²⁰.
- */
+/** Rungs of the size prior that hold less than e⁻⁹ where they are all looked at are left out of the rest. */
 const RUNG_BEHIND = 9;
-const RUNG_FAR_BEHIND = 20;
 const CELLS_ASKED = 12;
 /** Timescales that cannot come within so many nats of the best are not looked at closely. */
 const HOPELESS = 60;
@@ -51,14 +48,13 @@ export interface GlitchModel {
   readonly logWeight: number;
   /** All that count; masses include the model's prior. */
   readonly points: readonly GlitchPoint[];
+  readonly timescales: readonly WeighedLattice[];
 }
 
 interface GapScan {
   readonly system: GapSystem;
-  readonly cells: readonly TimescaleCell<Explored>[];
+  readonly lattices: readonly TimescaleLattice<Explored>[];
   readonly logEvidence: number;
-  /** Rungs that a model with one more exponential starts from. */
-  readonly rungs: readonly SizeScale[];
 }
 
 interface Explored {
@@ -69,18 +65,16 @@ interface Explored {
 /** The models worth weighing, fewest exponentials first. */
 export function glitchModels(frame: EventFrame, prior: SizePrior, mostTerms: number): GlitchModel[] {
   let systems = frame.gaps.map((gap) => gapSystem(frame, gap));
-  let rungs = new Map<GapSystem, readonly SizeScale[]>();
   const scanned: GapScan[][] = [];
   const bestOf = new Map<GapSystem, number>();
   for (let terms = 0; terms <= mostTerms; terms++) {
-    const all = sizeScales(prior, terms);
+    const scales = sizeScales(prior, terms);
     let known = Number.NEGATIVE_INFINITY;
     const scans = systems.map((system) => {
-      const scan = scanGap(frame, system, terms, (terms > 1 && rungs.get(system)) || all, known);
+      const scan = scanGap(frame, system, terms, scales, known);
       known = Math.max(known, scan.logEvidence);
       return scan;
     });
-    rungs = new Map(scans.map((scan) => [scan.system, scan.rungs]));
     scanned.push(scans);
     const weights = scanned.map(logWeightOf);
     if (weights.at(-1)! < Math.max(...weights) - MODEL_BEHIND[terms]!) break;
@@ -93,7 +87,7 @@ export function glitchModels(frame: EventFrame, prior: SizePrior, mostTerms: num
   return scanned.map((scans, terms) => {
     const logWeight = logWeightOf(scans, terms);
     const points = logWeight < best - NEGLIGIBLE ? [] : pointsOf(scans, Math.log(TERMS_PRIOR[terms]!));
-    return { terms, logEvidence: logEvidenceOf(scans), logWeight, points };
+    return { terms, logEvidence: logEvidenceOf(scans), logWeight, points, timescales: scans.flatMap(weighed) };
   });
 }
 
@@ -106,6 +100,16 @@ export function evidenceOf(frame: EventFrame, prior: SizePrior, timescalesDays: 
       return explore(frame, system, recoveryColumns(frame, system, timescalesDays), scales).logEvidence;
     }),
   );
+}
+
+function weighed({ lattices }: GapScan): WeighedLattice[] {
+  return lattices.map(({ cells, cellSds }) => ({
+    cells: cells.map(({ timescalesDays, logWeight, value }) => ({
+      timescalesDays,
+      logMass: value.posterior.logEvidence + logWeight,
+    })),
+    cellSds,
+  }));
 }
 
 function logEvidenceOf(scans: readonly GapScan[]): number {
@@ -124,38 +128,38 @@ function scanGap(
   scales: readonly SizeScale[],
   known: number,
 ): GapScan {
-  const first: EpochPosterior[] = [];
-  let live: readonly SizeScale[] | null = null;
-  let atMaximum: readonly SizeScale[] | null = null;
+  const coarse: EpochPosterior[] = [];
+  let uphill: readonly SizeScale[] | null = null;
+  let around = scales;
   let best = known;
-  const cells = timescaleLattice<Explored>(terms, timescaleRange(frame, system.gap), (timescales, stage) => {
+  const lattices = timescaleLattices<Explored>(terms, timescaleRange(frame, system.gap), (timescales, stage) => {
+    if (stage === 'uphill') uphill ??= rungsOfBest(coarse, scales);
+    const rungs = stage === 'lattice' ? around : stage === 'uphill' ? uphill! : scales;
     const recovery = recoveryColumns(frame, system, timescales);
-    const looked = (rungs: readonly SizeScale[]) => explore(frame, system, recovery, rungs, best - HOPELESS);
-    if (stage === 'uphill') live ??= liveRungs(first, scales, RUNG_BEHIND);
-    if (stage === 'lattice') atMaximum ??= liveRungs([looked(scales)], scales, RUNG_BEHIND);
-    const rungs = atMaximum ?? live ?? scales;
-    const posterior = looked(rungs);
+    const hopeless = stage === 'maximum' ? Number.NEGATIVE_INFINITY : best - HOPELESS;
+    const posterior = explore(frame, system, recovery, rungs, hopeless);
     if (posterior.spots.length > 0) best = Math.max(best, posterior.logEvidence);
-    if (stage === 'coarse') first.push(posterior);
+    if (stage === 'coarse') coarse.push(posterior);
+    if (stage === 'maximum') {
+      const near = [posterior, ...coarse];
+      around = scales.filter((_, k) => near.some((there) => holds(there, k, posterior.logEvidence - RUNG_BEHIND)));
+    }
     return { height: posterior.logEvidence, value: { posterior, scales: rungs } };
   });
-  const peak = highest(cells).value;
-  return {
-    system,
-    cells,
-    logEvidence: logSumExp(cells.map(({ value, logWeight }) => value.posterior.logEvidence + logWeight)),
-    rungs: liveRungs([peak.posterior], peak.scales, RUNG_FAR_BEHIND),
-  };
+  const cells = lattices.flatMap((lattice) => lattice.cells);
+  const logEvidence = logSumExp(cells.map(({ value, logWeight }) => value.posterior.logEvidence + logWeight));
+  return { system, lattices, logEvidence };
 }
 
-function highest(cells: readonly TimescaleCell<Explored>[]): TimescaleCell<Explored> {
-  return cells.reduce((a, b) => (b.value.posterior.logEvidence > a.value.posterior.logEvidence ? b : a));
-}
-
-/** The rungs that count in one of the best posteriors. */
-function liveRungs(posteriors: readonly EpochPosterior[], scales: readonly SizeScale[], behind: number): SizeScale[] {
+/** The rungs that count in one of the best posteriors, which may all be far below what lies between them. */
+function rungsOfBest(posteriors: readonly EpochPosterior[], scales: readonly SizeScale[]): SizeScale[] {
   const best = posteriors.toSorted((a, b) => b.logEvidence - a.logEvidence).slice(0, CELLS_ASKED);
-  return scales.filter((_, k) => best.some(({ rungs }) => rungs[k]! > -behind));
+  return scales.filter((_, k) => best.some((there) => holds(there, k, there.logEvidence - RUNG_BEHIND)));
+}
+
+/** Whether rung `k` reaches a mass. */
+function holds({ rungs, logEvidence }: EpochPosterior, k: number, logMass: number): boolean {
+  return rungs[k]! + logEvidence > logMass;
 }
 
 /** The timescales that the arrivals can show. */
@@ -175,7 +179,7 @@ function pointsOf(scans: readonly GapScan[], logPrior: number): GlitchPoint[] {
   const total = logEvidenceOf(scans);
   const points: GlitchPoint[] = [];
   let passed = 0.5;
-  for (const { value, logWeight } of scans.flatMap(({ cells }) => cells)) {
+  for (const { value, logWeight } of scans.flatMap(({ lattices }) => lattices.flatMap(({ cells }) => cells))) {
     for (const spot of value.posterior.spots) {
       const count = MOST_POINTS * Math.exp(spot.logMass + logWeight - total);
       passed += Math.min(1, count);

@@ -98,7 +98,7 @@ export function mixtureQuantile({ weights, means, sds }: GaussianMixture, probab
   return 0.5 * (low + high);
 }
 
-/** The estimate of a quantity known on weighted grid points, each standing for its neighbourhood. */
+/** The estimate of a quantity known on weighted grid points, each standing for what lies nearest to it. */
 export function gridEstimate(values: Float64Array, weights: Float64Array): Estimate {
   const byValue = new Map<number, number>();
   values.forEach((value, i) => {
@@ -106,19 +106,28 @@ export function gridEstimate(values: Float64Array, weights: Float64Array): Estim
   });
   const grid = [...byValue].sort((a, b) => a[0] - b[0]);
   const total = grid.reduce((sum, [, weight]) => sum + weight, 0);
-  let before = 0;
-  const middles = grid.map(([, weight]) => {
-    before += weight;
-    return (before - 0.5 * weight) / total;
-  });
+  const border = (i: number): number => 0.5 * (grid[Math.max(i - 1, 0)]![0] + grid[Math.min(i, grid.length - 1)]![0]);
   const quantile = (probability: number): number => {
-    const i = middles.findIndex((middle) => middle >= probability);
-    if (i <= 0) return grid.at(i)![0];
-    const left = grid[i - 1]![0];
-    const part = (probability - middles[i - 1]!) / (middles[i]! - middles[i - 1]!);
-    return left + part * (grid[i]![0] - left);
+    let left = probability * total;
+    let i = 0;
+    while (i < grid.length - 1 && left > grid[i]![1]) left -= grid[i++]![1];
+    return border(i) + (left / grid[i]![1]) * (border(i + 1) - border(i));
   };
   return estimate(moments({ weights, means: values, sds: new Float64Array(values.length) }), quantile);
+}
+
+/** The estimate of a quantity whose logarithm is distributed as the mixture. */
+export function logNormalEstimate(mixture: GaussianMixture): Estimate {
+  const { weights, means, sds } = mixture;
+  const fewer = condense(mixture);
+  return estimate(
+    moments({
+      weights,
+      means: means.map((mean, i) => Math.exp(mean + 0.5 * sds[i]! ** 2)),
+      sds: means.map((mean, i) => Math.exp(mean + 0.5 * sds[i]! ** 2) * Math.sqrt(Math.expm1(sds[i]! ** 2))),
+    }),
+    (probability) => Math.exp(mixtureQuantile(fewer, probability)),
+  );
 }
 
 function estimate(
@@ -129,7 +138,7 @@ function estimate(
   return { mean, sd, median: quantile(0.5), interval68: central(WITHIN_ONE), interval95: central(WITHIN_TWO) };
 }
 
-function moments({ weights, means, sds }: GaussianMixture): { mean: number; sd: number } {
+export function moments({ weights, means, sds }: GaussianMixture): { mean: number; sd: number } {
   let total = 0;
   let first = 0;
   for (let i = 0; i < weights.length; i++) {

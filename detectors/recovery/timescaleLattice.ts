@@ -14,13 +14,20 @@ export interface TimescaleCell<T> {
   readonly value: T;
 }
 
+/** The cells around one maximum. */
+export interface TimescaleLattice<T> {
+  readonly cells: readonly TimescaleCell<T>[];
+  /** Along each axis: sd, in ln τ, of the neighbourhood that one cell stands for. */
+  readonly cellSds: readonly number[];
+}
+
 export interface TimescaleRange {
   readonly lowDays: number;
   readonly highDays: number;
 }
 
-/** What a set of timescales is looked at for; on the lattice exactly, before that to find the way. */
-export type Stage = 'coarse' | 'uphill' | 'lattice';
+/** What a set of timescales is looked at for: to find the way; the middle of a lattice, and the rest of it, exactly. */
+export type Stage = 'coarse' | 'uphill' | 'maximum' | 'lattice';
 
 /** `height`: ln of the likelihood. */
 export type Evaluate<T> = (timescalesDays: readonly number[], stage: Stage) => { height: number; value: T };
@@ -34,7 +41,7 @@ const MOST_MAXIMA = 2;
 /** What is so many nats below the highest maximum is left out. */
 const NEGLIGIBLE = 7;
 
-/** A lattice around a maximum, in ln τ as a part of the range. */
+/** A lattice in the making, in ln τ as a part of the range. */
 interface Lattice<T> {
   readonly maximum: Maximum;
   /** Lower triangular L: the points are x = maximum + step L⁻ᵀ k for whole k. */
@@ -46,12 +53,18 @@ interface Lattice<T> {
   >;
 }
 
-/** Cells that hold all but a thousandth of the weight. */
-export function timescaleLattice<T>(terms: number, range: TimescaleRange, evaluate: Evaluate<T>): TimescaleCell<T>[] {
+/** By maximum; together they hold all but a thousandth of the weight. */
+export function timescaleLattices<T>(
+  terms: number,
+  range: TimescaleRange,
+  evaluate: Evaluate<T>,
+): TimescaleLattice<T>[] {
   const lnLow = Math.log(range.lowDays);
   const lnSpan = Math.log(range.highDays / range.lowDays);
   const timescalesOf = (x: readonly number[]) => x.map((part) => Math.exp(lnLow + part * lnSpan));
-  if (terms === 0) return [{ timescalesDays: [], logWeight: 0, value: evaluate([], 'lattice').value }];
+  if (terms === 0) {
+    return [{ cells: [{ timescalesDays: [], logWeight: 0, value: evaluate([], 'maximum').value }], cellSds: [] }];
+  }
   const across = COARSE[terms]!;
   const starts = coarseMaxima(terms, across, (x) => evaluate(timescalesOf(x), 'coarse').height);
   const uphill = (x: readonly number[]) => evaluate(timescalesOf(x), 'uphill').height;
@@ -61,15 +74,16 @@ export function timescaleLattice<T>(terms: number, range: TimescaleRange, evalua
     const maximum = ascending(climb(start, 0.5 / across, uphill));
     if (maximum.height < highest - NEGLIGIBLE || lattices.some((lattice) => covers(lattice, maximum.x))) continue;
     highest = Math.max(highest, maximum.height);
-    lattices.push(spread(maximum, across, lattices, (x) => evaluate(timescalesOf(x), 'lattice')));
+    lattices.push(spread(maximum, across, lattices, (x, stage) => evaluate(timescalesOf(x), stage)));
   }
-  return lattices.flatMap((lattice) => {
+  return lattices.map((lattice) => {
     const logVolume = terms * Math.log(lattice.step) - logDeterminant(lattice.factor, terms);
-    return [...lattice.cells.values()].map(({ x, value }) => ({
+    const cells = [...lattice.cells.values()].map(({ x, value }) => ({
       timescalesDays: timescalesOf(x),
       logWeight: logVolume + Math.log(orders(x)),
       value,
     }));
+    return { cells, cellSds: extentOf(lattice).map((extent) => 0.5 * lnSpan * extent) };
   });
 }
 
@@ -105,7 +119,7 @@ function spread<T>(
   maximum: Maximum,
   across: number,
   others: readonly Lattice<T>[],
-  evaluate: (x: readonly number[]) => { height: number; value: T },
+  evaluate: (x: readonly number[], stage: Stage) => { height: number; value: T },
 ): Lattice<T> {
   const terms = maximum.x.length;
   const step = STEP[terms]!;
@@ -120,7 +134,7 @@ function spread<T>(
     const x = placeOf(lattice, k);
     if (!x.every((part, i) => part >= (i === 0 ? 0 : x[i - 1]!) && part <= 1)) continue;
     if (others.some((other) => covers(other, x))) continue;
-    const { height, value } = evaluate(x);
+    const { height, value } = evaluate(x, lattice.cells.size === 0 ? 'maximum' : 'lattice');
     if (height < best - NEGLIGIBLE) continue;
     best = Math.max(best, height);
     lattice.cells.set(k.join(), { k, height, value, x });
@@ -152,6 +166,19 @@ function placeOf<T>({ maximum, factor, step }: Lattice<T>, k: readonly number[])
   const away = Float64Array.from(k, (whole) => step * whole);
   solveLowerTransposed(factor, k.length, away);
   return maximum.x.map((part, i) => part + away[i]!);
+}
+
+/** Along each axis, the root of the sum of squares of what one step along each of the lattice's own axes moves. */
+function extentOf<T>({ factor, step, maximum }: Lattice<T>): number[] {
+  const squares = maximum.x.map(() => 0);
+  for (let axis = 0; axis < squares.length; axis++) {
+    const way = Float64Array.from(squares, (_, i) => (i === axis ? step : 0));
+    solveLowerTransposed(factor, squares.length, way);
+    way.forEach((part, i) => {
+      squares[i]! += part * part;
+    });
+  }
+  return squares.map(Math.sqrt);
 }
 
 /** Whether the place lies in a cell of the lattice. */

@@ -5,14 +5,12 @@
 
 import { type BelievedStep, believed, HINT_LOG_ODDS } from './belief.ts';
 import { type Candidate, candidates, type Gap, type GapSource, GRID_DAYS } from './candidates.ts';
-import type { SiteStep } from './siteStep.ts';
+import type { ClockName } from './clocks.ts';
 
 /** Gaps this near to each other may hold one and the same step, days. */
 export const SAME_STEP_DAYS = 10;
 /** The gap that is sought lies no further than this from the best on the grid, days. */
 const BESIDE_DAYS = 2 * GRID_DAYS;
-
-export type ClockName = Pick<SiteStep, 'site' | 'receiver'>;
 
 /** A stretch of gaps that had to be looked at together, MJD. */
 export interface Stretch {

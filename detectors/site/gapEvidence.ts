@@ -98,7 +98,8 @@ export function walkOn(
   const { filter, next } = walk;
   let { setAside, before } = walk;
   const session = times.sessions[next]!;
-  predict(filter, next === 0 ? 0 : Math.max(0, session.tDays - times.sessions[next - 1]!.tDays), times.walks);
+  const deltaDays = next === 0 ? 0 : session.tDays - times.sessions[next - 1]!.tDays;
+  predict(filter, deltaDays, times.walks);
   const row = new Float64Array(filter.size);
   row[0] = 1;
   if (session.place > 0) row[SPIN_STATES - 1 + session.place] = 1;
@@ -106,11 +107,16 @@ export function walkOn(
   const member = isMember[session.place]!;
   let seen: Seen = { row, member, ...compared(filter, row, deviation, session.varianceTurns2) };
   const open = stillOpen(walk.open, session.siteMjd, { found, times });
-  for (const gap of open) observeGap(gap, seen);
+  for (const gap of open) {
+    carry(gap, deltaDays);
+    observeGap(gap, seen);
+  }
   if (member) {
-    // After a session that was set aside, nobody knows on which side of it the phase stepped.
-    if (before !== null && !seen.wide && setAside === 0) open.push(opened(session, before, seen));
-    before = session.siteMjd;
+    // After a session that was set aside, nobody knows on which side of it the phase stepped; and sessions are in the order of the
+    // barycentre, so that by the clock one may come before the last.
+    const isForward = before !== null && session.siteMjd > before;
+    if (isForward && !seen.wide && setAside === 0) open.push(opened(session, before!, seen));
+    before = Math.max(before ?? -Infinity, session.siteMjd);
   }
   if (session.freed || setAside >= REACQUIRE_SESSIONS) {
     // What the gap shows against the rotation before it is noted; then the rotation is followed anew.
@@ -199,6 +205,12 @@ function observeGap(gap: OpenGap, seen: Seen): void {
   if (seen.member) gap.heard++;
   gap.information += signature ** 2 / seen.variance;
   gap.pull += (signature * seen.innovation) / seen.variance;
+}
+
+/** What the filter made of the step so far goes on as a rotation does. */
+function carry({ response }: OpenGap, deltaDays: number): void {
+  response[0] = response[0]! + deltaDays * response[1]! + 0.5 * deltaDays * deltaDays * response[2]!;
+  response[1] = response[1]! + deltaDays * response[2]!;
 }
 
 function respond(gap: OpenGap, { gain }: WhiteningFilter, seen: Seen): void {

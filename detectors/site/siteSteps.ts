@@ -7,11 +7,15 @@
 
 import type { BelievedStep } from './belief.ts';
 import type { GapSource } from './candidates.ts';
-import { type ClockName, ClockScan, type Found, SAME_STEP_DAYS, type Stretch } from './clockScan.ts';
-import { EvidenceLog, OUT_OF_ORDER_DAYS, sameSessions } from './evidenceLog.ts';
+import { ClockScan, type Found, type Stretch } from './clockScan.ts';
+import { byName, type Clock, clockName, clocksOf } from './clocks.ts';
+import { earliestOf } from './earliestStep.ts';
+import { OUT_OF_ORDER_DAYS, sameSessions } from './evidenceLog.ts';
 import { HORIZON_DAYS } from './gapEvidence.ts';
+import { type Late, lateTurns } from './lateTurns.ts';
 import type { PulsarTimes } from './pulsarTimes.ts';
-import { isAfter, isOfClock, placeNamed, type SiteStep } from './siteStep.ts';
+import { isOfClock, placeNamed, type SiteStep } from './siteStep.ts';
+import { resized, withStep } from './stepSizes.ts';
 
 /** One search for the earliest step that is left. */
 interface Round {
@@ -24,19 +28,7 @@ interface Round {
   readonly seenUntilMjd: number;
 }
 
-interface Member {
-  readonly pulsar: string;
-  readonly log: EvidenceLog;
-}
-
-interface Clock {
-  readonly name: ClockName;
-  readonly members: readonly Member[];
-}
-
 const MOST_STEPS = 300;
-/** All clocks are gone through side by side, so many days at a time: what lies beyond the earliest step is not looked at. */
-const SLAB_DAYS = 64;
 /**
  * A gap is judged by gaps that end up to a horizon after it, and those by the sessions of another horizon; a day more, because sessions
  * are in the order of the barycentre.
@@ -62,23 +54,28 @@ export class SiteClocks {
       .filter(({ sessions }) => sessions.length > 0)
       .sort((a, b) => (a.pulsar < b.pulsar ? -1 : 1));
     const changedMjd = this.#replace(new Map(pulsars.map((times) => [times.pulsar, times])));
-    const kept = this.#rounds.findIndex(({ seenUntilMjd }) => seenUntilMjd + LOOK_AHEAD_DAYS >= changedMjd);
-    const resumed = this.#rounds[kept < 0 ? this.#rounds.length : kept];
-    this.#rounds.length = kept < 0 ? this.#rounds.length : kept;
-    let steps = resumed?.steps ?? [];
+    const resumed = this.#resumed(changedMjd);
+    let steps: readonly BelievedStep[] = resumed?.steps ?? [];
     let fromMjd = resumed?.fromMjd ?? -Infinity;
     let before = resumed ?? null;
     while (this.#rounds.length < MOST_STEPS) {
       const { round, found } = this.#search(steps, fromMjd, { before, changedMjd });
       this.#rounds.push(round);
       if (found === null) break;
-      steps = withStep(steps, found.step);
+      steps = this.#measured(withStep(steps, found.step), found.step);
       fromMjd = Math.min(found.hintMjd, found.step.afterMjd);
       before = null;
     }
     return steps
       .filter((step) => Math.abs(step.stepUs) > step.uncertaintyUs)
       .sort((a, b) => a.beforeMjd - b.beforeMjd || byName(a, b));
+  }
+
+  /** The first search that saw what has changed is done again, or the last one, with all that follow. */
+  #resumed(changedMjd: number): Round | undefined {
+    const first = this.#rounds.findIndex(({ seenUntilMjd }) => seenUntilMjd + LOOK_AHEAD_DAYS >= changedMjd);
+    const [again] = this.#rounds.splice(first);
+    return again;
   }
 
   /** Takes the new sessions for the old ones. The first moment at which anything is not as it was, MJD. */
@@ -106,11 +103,12 @@ export class SiteClocks {
     { before, changedMjd }: { readonly before: Round | null; readonly changedMjd: number },
   ): { readonly round: Round; readonly found: Found | null } {
     for (const clock of this.#clocks) this.#tell(clock, steps);
+    const sureMjd = Math.min(changedMjd - LOOK_AHEAD_DAYS, before?.seenUntilMjd ?? Infinity);
     const known = new Map<string, readonly Stretch[]>();
     const scans = this.#clocks.map((clock) => {
       const name = clockName(clock.name);
       const old = before?.stretches.get(name) ?? [];
-      const since = before === null ? fromMjd : this.#calmMoment(clock, old, { fromMjd, changedMjd });
+      const since = before === null ? fromMjd : this.#calmMoment(clock, old, { fromMjd, sureMjd });
       known.set(
         name,
         old.filter(({ toMjd }) => toMjd <= since),
@@ -121,6 +119,19 @@ export class SiteClocks {
     const stretches = new Map(scans.map(({ name, scan }) => [name, [...known.get(name)!, ...scan.stretches]]));
     const seenUntilMjd = found === null ? Infinity : Math.max(...scans.map(({ scan }) => scan.seenUntilMjd));
     return { round: { steps, fromMjd, stretches, seenUntilMjd }, found };
+  }
+
+  /** Sizes once all steps are allowed for: that of the new one, and of those of its site whose sessions it had spoilt. */
+  #measured(steps: readonly BelievedStep[], news: BelievedStep): readonly BelievedStep[] {
+    const spoilt = steps.filter(
+      ({ site, beforeMjd }) => site === news.site && Math.abs(beforeMjd - news.beforeMjd) < HORIZON_DAYS,
+    );
+    return spoilt.reduceRight((measured, step) => {
+      const { members, name } = this.#clocks.find((clock) => clockName(clock.name) === clockName(step))!;
+      this.#tell({ members, name }, measured);
+      const gaps = members.flatMap(({ log }) => log.gaps(step.afterMjd, step.beforeMjd + HORIZON_DAYS));
+      return measured.map((one) => (one === step ? resized(step, gaps) : one));
+    }, steps);
   }
 
   #tell(clock: Clock, steps: readonly BelievedStep[]): void {
@@ -158,49 +169,20 @@ export class SiteClocks {
   #calmMoment(
     { name, members }: Clock,
     stretches: readonly Stretch[],
-    { fromMjd, changedMjd }: { readonly fromMjd: number; readonly changedMjd: number },
+    { fromMjd, sureMjd }: { readonly fromMjd: number; readonly sureMjd: number },
   ): number {
-    const sure = changedMjd - LOOK_AHEAD_DAYS;
     let moment = fromMjd;
     for (const { pulsar } of members) {
       const { places, sessions } = this.#pulsars.get(pulsar)!;
       for (let i = sessions.length - 1; i >= 0 && sessions[i]!.siteMjd > moment - OUT_OF_ORDER_DAYS; i--) {
         const { place, siteMjd } = sessions[i]!;
-        if (siteMjd <= sure && siteMjd > moment && isOfClock(name, placeNamed(places[place]!))) moment = siteMjd;
+        if (siteMjd <= sureMjd && siteMjd > moment && isOfClock(name, placeNamed(places[place]!))) moment = siteMjd;
       }
     }
     for (const { fromMjd: begin, toMjd } of [...stretches].reverse())
-      if (begin < moment && moment < toMjd) moment = begin;
+      if (begin < moment && moment <= toMjd) moment = begin;
     return moment;
   }
-}
-
-/** All scans taken on side by side, until one finds a step and no other can find an earlier one. */
-function earliestOf(scans: readonly ClockScan[]): Found | null {
-  const found = new Map<ClockScan, Found>();
-  let untilMjd = -Infinity;
-  while (scans.some((scan) => !scan.ended && !found.has(scan)) || found.size > 0) {
-    for (const scan of scans) {
-      const next = found.has(scan) ? null : scan.next(untilMjd);
-      if (next !== null) found.set(scan, next);
-    }
-    if (found.size === 0) {
-      untilMjd = Math.min(...scans.filter(({ ended }) => !ended).map(({ seenUntilMjd }) => seenUntilMjd)) + SLAB_DAYS;
-      continue;
-    }
-    const neededMjd = Math.min(...[...found.values()].map(({ step }) => step.beforeMjd)) + SAME_STEP_DAYS;
-    if (neededMjd <= untilMjd) return choice([...found.values()]);
-    untilMjd = neededMjd;
-  }
-  return null;
-}
-
-function choice(found: readonly Found[]): Found {
-  const inOrder = [...found].sort((a, b) => a.step.beforeMjd - b.step.beforeMjd || byName(a.step, b.step));
-  const first = inOrder[0]!;
-  return inOrder
-    .filter(({ step }) => step.site === first.step.site && step.beforeMjd < first.step.beforeMjd + SAME_STEP_DAYS)
-    .reduce((a, b) => (b.step.logOdds > a.step.logOdds ? b : a));
 }
 
 function firstChange(old: PulsarTimes, times: PulsarTimes | undefined): number {
@@ -208,59 +190,4 @@ function firstChange(old: PulsarTimes, times: PulsarTimes | undefined): number {
   const same = sameSessions(old, times);
   const changed = [old.sessions[same], times.sessions[same]].flatMap((session) => session?.siteMjd ?? []);
   return Math.min(Infinity, ...changed) - OUT_OF_ORDER_DAYS;
-}
-
-function clocksOf(pulsars: readonly PulsarTimes[]): Clock[] {
-  const places = [...new Set(pulsars.flatMap((times) => times.places))].sort().map(placeNamed);
-  const sites = [...new Set(places.map(({ site }) => site))];
-  return sites.flatMap((site) => {
-    const receivers = places.filter((place) => place.site === site).map(({ receiver }) => receiver);
-    const own = receivers.length < 2 ? [] : receivers;
-    return [null, ...own].map((receiver) => clockOf({ site, receiver }, pulsars));
-  });
-}
-
-function clockOf(name: ClockName, pulsars: readonly PulsarTimes[]): Clock {
-  const members = pulsars.flatMap(({ pulsar, places }) => {
-    const isMember = places.map((place) => isOfClock(name, placeNamed(place)));
-    return isMember.includes(true) ? [{ pulsar, log: new EvidenceLog(isMember) }] : [];
-  });
-  return { name, members };
-}
-
-function clockName({ site, receiver }: ClockName): string {
-  return receiver === null ? site : `${site}|${receiver}`;
-}
-
-function byName(a: ClockName, b: ClockName): number {
-  return clockName(a) < clockName(b) ? -1 : 1;
-}
-
-interface Late {
-  readonly times: PulsarTimes;
-  readonly steps: readonly SiteStep[];
-  readonly turns: Float64Array;
-}
-
-function lateTurns({ places, frequencyHz, sessions }: PulsarTimes, steps: readonly SiteStep[]): Float64Array {
-  const own = places.map((name) => steps.filter((step) => isOfClock(step, placeNamed(name))));
-  const turnsPerUs = 1e-6 * frequencyHz;
-  const turns = new Float64Array(sessions.length);
-  sessions.forEach(({ place, siteMjd }, i) => {
-    let late = 0;
-    for (const step of own[place]!) if (isAfter(step, siteMjd)) late += step.stepUs;
-    turns[i] = late * turnsPerUs;
-  });
-  return turns;
-}
-
-/** What is found again in the gap of a step known already is a correction of its size. */
-function withStep(steps: readonly BelievedStep[], news: BelievedStep): BelievedStep[] {
-  const same = steps.findIndex(
-    (step) => step.site === news.site && step.receiver === news.receiver && step.afterMjd === news.afterMjd,
-  );
-  if (same < 0) return [...steps, news];
-  const old = steps[same]!;
-  const corrected = { ...old, stepUs: old.stepUs + news.stepUs, uncertaintyUs: news.uncertaintyUs };
-  return steps.map((step, i) => (i === same ? corrected : step));
 }

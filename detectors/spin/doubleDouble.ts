@@ -50,10 +50,6 @@ export function add(a: DoubleDouble, b: DoubleDouble): DoubleDouble {
   return quickTwoSum(u.hi, u.lo + t.lo);
 }
 
-export function negate(a: DoubleDouble): DoubleDouble {
-  return { hi: -a.hi, lo: -a.lo };
-}
-
 /** Relative error below 2⁻¹⁰². */
 export function multiply(a: DoubleDouble, b: DoubleDouble): DoubleDouble {
   const p = twoProduct(a.hi, b.hi);

@@ -15,13 +15,8 @@ export interface FollowedRotation {
   readonly decays: readonly { readonly turnsPerDay: number; readonly timescaleDays: number }[];
 }
 
-/** A glitch that the start model does not know of. */
-export interface SeenGlitch {
-  readonly epochTdb: Mjd;
-  /** Δν at the glitch, the decaying part included. */
-  readonly frequencyStepHz: number;
-  readonly frequencyDerivativeStepHzPerS: number;
-}
+/** A glitch that the start model does not know of: what it leaves for good, and the recoveries that are established. */
+export type SeenGlitch = Omit<KnownGlitch, 'phaseTurns'>;
 
 /** The time of an arrival with what its receiver and the dispersion add taken off, turns late. */
 export interface ReferenceArrival {
@@ -35,8 +30,10 @@ const FOLLOWED_TIMESCALES = 5;
 
 /**
  * The start model brought to where the rotation has gone: φ = φ_start − deviation, written about the last whole day before the
- * date, its known glitches kept and the seen ones beside them. After the last glitch its phase is that of the followed rotation,
- * exactly; before it, as good as the sizes of the glitches, with the phase joined at the arrivals before each of them.
+ * date, its known glitches kept and the seen ones beside them. At the date its phase, ν and ν̇ are those of the followed rotation,
+ * exactly; from there on the recoveries bend it. Before the last glitch it is as good as the sizes of the glitches, with the
+ * phase joined at the arrivals before each of them. While no recovery of the last glitch is established, the decays that the
+ * rotation was followed with stand for it.
  *
  * @param glitches oldest first
  * @param before for each glitch the last arrivals before it, oldest first
@@ -48,39 +45,54 @@ export function followedModel(
   before: readonly (readonly ReferenceArrival[])[],
 ): PulsarModel {
   const epochTdb: Mjd = { day: followed.atTdb.day, fraction: 0 };
-  const last = glitches.at(-1);
-  const age = last === undefined ? Infinity : daysBetween(followed.atTdb, last.epochTdb);
-  const open = followed.decays.filter((d) => age >= 0 && age < FOLLOWED_TIMESCALES * d.timescaleDays);
-  const spent = followed.decays.filter((d) => !open.includes(d));
-  const tables = glitches.map((glitch, i) => glitchTable(glitch, i === glitches.length - 1 ? open : [], age));
-
+  const tables = glitches.map((glitch, i) => ({
+    phaseTurns: 0,
+    ...(i === glitches.length - 1 && glitch.recoveries.length === 0 ? withDecays(glitch, followed) : glitch),
+  }));
+  const recovering = tables.flatMap((table) =>
+    table.recoveries.map((r) => recoveryAt(r, table.epochTdb, followed.atTdb)),
+  );
   const x = daysBetween(epochTdb, followed.atTdb);
-  const rate = followed.turnsPerDay + sum(spent.map((d) => d.turnsPerDay));
-  const second = followed.turnsPerDay2 - sum(spent.map((d) => d.turnsPerDay / d.timescaleDays));
+  const turns = followed.turns + sum(recovering.map((r) => r.turns));
+  const rate = sum([followed, ...followed.decays, ...recovering].map((part) => part.turnsPerDay));
+  const second =
+    followed.turnsPerDay2 -
+    sum(followed.decays.map((d) => d.turnsPerDay / d.timescaleDays)) +
+    sum(recovering.map((r) => r.turnsPerDay2));
   const steps = tables.map((table) => stepAt(table, epochTdb));
   const spin = rebasedSpin(start, epochTdb, {
-    turns:
-      followed.turns +
-      x * (rate + 0.5 * x * second) -
-      sum(open.map((d) => d.turnsPerDay * d.timescaleDays * Math.expm1(age / d.timescaleDays))) +
-      sum(steps.map((s) => s.turns)),
+    turns: turns + x * (rate + 0.5 * x * second) + sum(steps.map((s) => s.turns)),
     hz: (rate + x * second) / SECONDS_PER_DAY + sum(steps.map((s) => s.hz)),
     hzPerS: second / SECONDS_PER_DAY ** 2 + sum(tables.map((t) => t.frequencyDerivativeStepHzPerS)),
   });
   return joined({ ...start, spin, glitches: inOrder([...start.glitches, ...tables]) }, tables, before);
 }
 
-function glitchTable(glitch: SeenGlitch, open: FollowedRotation['decays'], ageDays: number): KnownGlitch {
-  const recoveries = open.map(({ turnsPerDay, timescaleDays }) => ({
-    frequencyStepHz: (-turnsPerDay / SECONDS_PER_DAY) * Math.exp(ageDays / timescaleDays),
-    timescaleDays,
-  }));
+/** The last glitch with what still decays of it, as followed, taken off what it leaves. */
+function withDecays(glitch: SeenGlitch, { atTdb, decays }: FollowedRotation): SeenGlitch {
+  const age = daysBetween(atTdb, glitch.epochTdb);
+  const recoveries = decays
+    .filter(({ timescaleDays }) => age >= 0 && age < FOLLOWED_TIMESCALES * timescaleDays)
+    .map(({ turnsPerDay, timescaleDays }) => ({
+      frequencyStepHz: (-turnsPerDay / SECONDS_PER_DAY) * Math.exp(age / timescaleDays),
+      timescaleDays,
+    }));
+  const frequencyStepHz = glitch.frequencyStepHz - sum(recoveries.map((r) => r.frequencyStepHz));
+  return { ...glitch, frequencyStepHz, recoveries };
+}
+
+/** What one exponential has added by a date: turns, and their derivatives in days. */
+function recoveryAt(
+  { frequencyStepHz, timescaleDays }: KnownGlitch['recoveries'][number],
+  epochTdb: Mjd,
+  at: Mjd,
+): { readonly turns: number; readonly turnsPerDay: number; readonly turnsPerDay2: number } {
+  const age = Math.max(0, daysBetween(at, epochTdb));
+  const turnsPerDay = frequencyStepHz * SECONDS_PER_DAY * Math.exp(-age / timescaleDays);
   return {
-    epochTdb: glitch.epochTdb,
-    phaseTurns: 0,
-    frequencyStepHz: glitch.frequencyStepHz - sum(recoveries.map((r) => r.frequencyStepHz)),
-    frequencyDerivativeStepHzPerS: glitch.frequencyDerivativeStepHzPerS,
-    recoveries,
+    turns: -frequencyStepHz * SECONDS_PER_DAY * timescaleDays * Math.expm1(-age / timescaleDays),
+    turnsPerDay,
+    turnsPerDay2: -turnsPerDay / timescaleDays,
   };
 }
 

@@ -10,7 +10,7 @@ export interface Departure {
   readonly hzPerS: number;
 }
 
-export const NO_DEPARTURE: Departure = { turns: 0, hz: 0, hzPerS: 0 };
+const NO_DEPARTURE: Departure = { turns: 0, hz: 0, hzPerS: 0 };
 
 /**
  * The same rotation written about another epoch (Taylor's theorem, exact for a polynomial), minus a departure. Whole turns of the

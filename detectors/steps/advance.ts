@@ -38,9 +38,12 @@ function follow(watch: PulsarWatch, index: number): void {
     decide(watch, index);
     watchCount(watch, index);
   } else if (canLock(watch, index)) {
+    // The count that has won tells the noise; it must win with that noise too.
+    endTrial(watch);
+    relearn(watch, index);
+    if (!canLock(watch, index)) return;
     watch.locked = true;
     watch.lockedFrom = index + 1;
     watch.oldestGap = index + 1;
-    endTrial(watch);
   }
 }

@@ -1,7 +1,7 @@
 /** The local spin-down model of a pulsar now: what to fold with, how long it holds, and how far the start model has drifted. */
 
 import { arrivalVariance } from '../filter/stateSpace.ts';
-import { followedModel, type ReferenceArrival } from '../spin/followedModel.ts';
+import { followedModel, type ReferenceArrival, type SeenGlitch } from '../spin/followedModel.ts';
 import type { PulsarModel } from '../spin/pulsarModel.ts';
 import { phaseEvaluator } from '../spin/spinDownModel.ts';
 import { mjdNumber, normalMjd, SECONDS_PER_DAY } from '../time/mjd.ts';
@@ -73,11 +73,7 @@ export function currentModel(watch: PulsarWatch, events: readonly PulsarEvent[])
   const model = followedModel(
     watch.model,
     followed,
-    glitches.map((event) => ({
-      epochTdb: normalMjd(event.epochMjd, 0),
-      frequencyStepHz: event.deltaNuHz ?? 0,
-      frequencyDerivativeStepHzPerS: event.deltaNuDot ?? 0,
-    })),
+    glitches.map(seenGlitch),
     glitches.map((event) => lastBefore(seen, event.epochMjd)),
   );
   const since = glitches.at(-1)?.epochMjd ?? -Infinity;
@@ -100,6 +96,26 @@ export function currentModel(watch: PulsarWatch, events: readonly PulsarEvent[])
 /** Confirmed steps of the rotation itself. */
 function isGlitch({ state, site, deltaNuHz, deltaNuDot }: PulsarEvent): boolean {
   return state === 'confirmed' && site === null && (deltaNuHz !== null || deltaNuDot !== null);
+}
+
+/** The event's whole step split into what stays and the recoveries that are established. */
+function seenGlitch({ epochMjd, deltaNuHz, deltaNuDot, recovery }: PulsarEvent): SeenGlitch {
+  const whole = deltaNuHz ?? 0;
+  const recoveries = recovery.terms.map(({ fraction, timescaleDays }) => ({
+    frequencyStepHz: fraction * whole,
+    timescaleDays,
+  }));
+  // What arrives late is part of the whole step.
+  const decaying = recoveries.filter((_, j) => recovery.terms[j]!.kind !== 'delayed rise');
+  return {
+    epochTdb: normalMjd(epochMjd, 0),
+    frequencyStepHz: whole - sum(decaying.map((r) => r.frequencyStepHz)),
+    frequencyDerivativeStepHzPerS:
+      deltaNuDot === null
+        ? 0
+        : deltaNuDot + sum(decaying.map((r) => r.frequencyStepHz / (r.timescaleDays * SECONDS_PER_DAY))),
+    recoveries,
+  };
 }
 
 /** A used arrival with what its receiver and the dispersion add taken off. */

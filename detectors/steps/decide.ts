@@ -15,7 +15,7 @@ import { followRecovery, relearn } from './relearn.ts';
 import { reshape, shape } from './reshape.ts';
 import { logSignWeight } from './signPrior.ts';
 import { switchingRecord } from './switchingRecord.ts';
-import { overlaps, type Track } from './track.ts';
+import { isRefuted, overlaps, type Track } from './track.ts';
 
 export const LEAST_SESSIONS = 2;
 /** The second weighing goes through the whole record: a long one is not asked again at each arrival. */
@@ -95,7 +95,7 @@ function suspect(watch: PulsarWatch, index: number): void {
   // Not a number either: what cannot be weighed is not confirmed.
   if (!(decisive >= requiredLogOdds(watch, Math.min(decisive, gained + sign), demands))) {
     refuse(watch, track, index, joint);
-    if (watch.largeStep === null && seekSwitching(watch, index)) relearn(watch, index);
+    if (watch.largeStep === null && (isRefuted(track) || seekSwitching(watch, index))) relearn(watch, index);
     return;
   }
   shape(watch, track, holder, joint);

@@ -36,7 +36,7 @@ export const EXPLANATION_SHARE = 0.99;
  * Against the other change of the rotation. The start of a ramp and that of a parabola differ by little, and a candidate is
  * vetted either way: to be sure which it is would cost half as many arrivals again.
  */
-export const SHARE_OF_ROTATION = 0.9;
+export const SHARE_OF_ROTATION = 0.7;
 const ROTATION: readonly Kind[] = ['glitch', 'spin-down-rate change'];
 
 /** One explanation has won. */
@@ -47,7 +47,7 @@ export function isExplained({ byKind }: Evidence, kind: Kind): boolean {
   return rotation >= Math.log(EXPLANATION_SHARE) && own - rotation >= Math.log(SHARE_OF_ROTATION);
 }
 
-/** The gaps that hold 95 % of the weight of a kind. */
+/** The gaps that hold 95 % of the weight of a kind, and how many share it. */
 export function spreadOf(bank: Bank, kind: Kind): GapSpread {
   const gaps = bank.families
     .filter((f) => f.kind === kind)
@@ -64,7 +64,7 @@ export function spreadOf(bank: Bank, kind: Kind): GapSpread {
     firstGap = Math.min(firstGap, gap);
     lastGap = Math.max(lastGap, gap);
   }
-  return { bestGap, firstGap, lastGap };
+  return { bestGap, firstGap, lastGap, logPlaces: Math.log(total / gaps[0]!.weight) };
 }
 
 /** Probability of every explanation; of "nothing new" by what it must believe of the arrivals since `gap`. */

@@ -68,7 +68,7 @@ export function jointOdds(watch: PulsarWatch, track: Track, h: Hypothesis): numb
   return withEvent - posterior(alone, null);
 }
 
-/** ln P(arrivals | noise, events): with `event`, its sizes as a mixture at its most probable gap, by prior rate. */
+/** ln P(arrivals | noise, events): with `event`, its sizes as a mixture by prior rate, in the gaps that it may lie in. */
 function logEvidence(
   watch: PulsarWatch,
   decisions: readonly Story[],
@@ -95,7 +95,7 @@ function logEvidence(
       for (const h of beam) looseRecovery(h, watch.states.decays, RECOVERY_SHARE * rateStep);
     for (const h of beam) takeIn(watch, h, decision, noise);
   }
-  return logWeightOf(beam);
+  return logWeightOf(beam) + (given.event === null || slowRise(given.event) !== null ? 0 : given.event.logPlaces);
 }
 
 /** The begin of a slow rise at its prior rate; its end, of which the size is known, at none. */

@@ -8,10 +8,11 @@ import { joinFamily, NULL_BEAM, type Snapshot } from './bank.ts';
 import { pruned } from './beam.ts';
 import { BENDS, HIGHEST_STEP, LOWEST_STEP, STRAIGHT, searchStep } from './circularSearch.ts';
 import type { Hypothesis } from './hypothesis.ts';
-import { bestFollowed, expectedDeviation, expectedSpread } from './largeStepSizes.ts';
+import { bestFollowed } from './largeStepSizes.ts';
+import { expectedDeviation, expectedSpread } from './outlook.ts';
 import type { PulsarWatch } from './pulsarWatch.ts';
 import { expectRecovery } from './recoveryStates.ts';
-import { shareOfCount } from './start.ts';
+import { shareOfCount } from './sameCount.ts';
 import type { Track } from './track.ts';
 
 /** A large step on trial. */
@@ -121,7 +122,7 @@ function isOver(watch: PulsarWatch, step: LargeStep, index: number): boolean {
   if (run < WON_RUN) return false;
   let fits = 0;
   for (let s = best.story; s?.used; s = s.before) fits++;
-  return fits >= WON_FITS && shareOfCount(watch.bank!, best) > WON_SHARE;
+  return fits >= WON_FITS && shareOfCount(watch, best) > WON_SHARE;
 }
 
 function isOpenAt(track: Track, gap: number): boolean {

@@ -4,18 +4,9 @@ import { SPIN_STATES } from '../filter/stateSpace.ts';
 import { logWeightOf, observe } from './beam.ts';
 import { RATE_PER_YEAR } from './births.ts';
 import { BEND_STEP_TURNS, LOG_SIZE_RANGE, logBendPrior, type SearchPeak } from './circularSearch.ts';
-import {
-  copyOf,
-  type Decay,
-  gapOf,
-  type Hypothesis,
-  type Prediction,
-  predict,
-  propagate,
-  withState,
-} from './hypothesis.ts';
+import { copyOf, type Decay, gapOf, type Hypothesis, propagate } from './hypothesis.ts';
 import type { LargeStep } from './largeStep.ts';
-import { newPrediction } from './leader.ts';
+import { grownTo } from './outlook.ts';
 import type { PulsarWatch } from './pulsarWatch.ts';
 import { looseRecovery } from './recoveryStates.ts';
 import { secondTimescale } from './recoveryTimescales.ts';
@@ -103,33 +94,6 @@ function trialOf(
     logWeight: logWeightOf(found),
     heaviest: each.slice(0, HEAVIEST).map(({ peak }) => peak),
   };
-}
-
-/** What a hypothesis of day `tDays` makes of arrival `index`: deviation, turns, receiver and dispersion included. */
-export function expectedDeviation(watch: PulsarWatch, h: Hypothesis, tDays: number, index: number): number {
-  return expected(watch, h, tDays, index).deviation;
-}
-
-/** σ of that, turns. */
-export function expectedSpread(watch: PulsarWatch, h: Hypothesis, tDays: number, index: number): number {
-  return Math.sqrt(expected(watch, h, tDays, index).variance);
-}
-
-function expected(watch: PulsarWatch, from: Hypothesis, tDays: number, index: number): Prediction {
-  const h = grownTo(watch, from);
-  propagate(h, gapOf(watch.line.seen[index]!.tDays - tDays, watch.noise, watch.states.decays));
-  const prediction = newPrediction(h.mean.length);
-  predict(h, observationOf(watch.line, index, watch.states, watch.noise).sight, prediction);
-  return prediction;
-}
-
-/** A copy with the states that have come since: receivers, a band, recoveries. */
-export function grownTo(watch: PulsarWatch, from: Hypothesis): Hypothesis {
-  const current = watch.bank!.beam[0]!;
-  const size = current.mean.length;
-  let h = copyOf(from);
-  for (let state = h.mean.length; state < size; state++) h = withState(h, current.cov[state * (size + 1)]!);
-  return h;
 }
 
 /** The hypothesis of one peak, with and without a recovery, taken through the run. */

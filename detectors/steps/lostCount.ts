@@ -3,17 +3,17 @@
  * tells one count from the next; or a run of arrivals fits nothing. Then the count is lost: said once, and found again.
  */
 
-import { logAddExp } from '../math/logSumExp.ts';
 import type { Snapshot } from './bank.ts';
 import { logWeightOf } from './beam.ts';
 import { bestOf } from './counts.ts';
 import { explanationsOf, weigh } from './evidence.ts';
-import { copyOf, gapOf, type Hypothesis, propagate } from './hypothesis.ts';
+import { copyOf } from './hypothesis.ts';
 import { endTrial, runStart } from './largeStep.ts';
 import { newTrack } from './newTrack.ts';
+import { expectedSpread } from './outlook.ts';
 import type { PulsarWatch } from './pulsarWatch.ts';
 import { newLoss, searchAnew } from './reacquire.ts';
-import { predictAlike } from './start.ts';
+import { shareOfCount } from './sameCount.ts';
 
 /** A gap after which counts may be in doubt: the arrivals since it must settle them. */
 export interface Doubt {
@@ -46,6 +46,8 @@ export function watchCount(watch: PulsarWatch, index: number): void {
     lose(watch, doubtFrom(watch, run), index);
     return;
   }
+  // While the size of a large step is open, its trial keeps the counts.
+  if ((watch.largeStep?.track ?? null) !== null) return;
   if (watch.doubt === null) {
     const spread = predictedSpread(watch, index);
     if (spread < DOUBT_SPREAD_TURNS || seen[index]!.arrival.pulseNumber !== null) return;
@@ -78,27 +80,21 @@ function doubtFrom(watch: PulsarWatch, from: number): Doubt {
   return { from: before.index + 1, before };
 }
 
-/** σ (turns) with which arrival `index` was predicted. */
+/**
+ * σ (turns) with which arrival `index` was predicted, for its receiver or for the one before: what is not known of a
+ * receiver's offset hides no turn of the pulsar.
+ */
 function predictedSpread(watch: PulsarWatch, index: number): number {
   const before = watch.bank!.snapshots.findLast((s) => s.index < index);
   if (before === undefined) return 0;
-  const h = copyOf(before.hypothesis);
-  propagate(h, gapOf(watch.line.seen[index]!.tDays - before.tDays, watch.noise, watch.states.decays));
-  return Math.sqrt(h.cov[0]!);
+  const spreadAs = (as: number) => expectedSpread(watch, before.hypothesis, before.tDays, index, as);
+  return Math.min(spreadAs(index), spreadAs(index - 1));
 }
 
 /** Share of the weight of the whole bank that agrees with the heaviest hypothesis on the count. */
 function shareOfBestCount(watch: PulsarWatch): number {
-  const best = bestOf(watch);
-  let agreeing = -Infinity;
-  let total = -Infinity;
-  const weighed = (h: Hypothesis) => {
-    total = logAddExp(total, h.logWeight);
-    if (predictAlike(watch.bank!, h, best)) agreeing = logAddExp(agreeing, h.logWeight);
-  };
-  watch.bank!.beam.forEach(weighed);
-  for (const family of watch.bank!.families) family.beam.forEach(weighed);
-  return Math.exp(agreeing - total);
+  const { beam, families } = watch.bank!;
+  return shareOfCount(watch, bestOf(watch), [...beam, ...families.flatMap((family) => family.beam)]);
 }
 
 /** The count is gone: one record says so, events that rest on it are taken back, and the search begins. */

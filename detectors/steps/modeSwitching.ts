@@ -11,6 +11,7 @@ import type { NoisePrior } from '../filter/noisePrior.ts';
 import type { NoiseModel } from '../report.ts';
 import { RATE_PER_YEAR } from './births.ts';
 import { bestOf, countedArrivals, disturbances } from './counts.ts';
+import { withoutRecoveries } from './establishedRecoveries.ts';
 import { newTrack } from './newTrack.ts';
 import { asFixed, type PulsarWatch } from './pulsarWatch.ts';
 import { decisionsOf } from './retrace.ts';
@@ -90,7 +91,8 @@ function walkOver({ torqueWalk, frequencyWalk }: NoiseModel): number {
 function steadyOdds(watch: PulsarWatch, past: Past, counted: readonly CountedArrival[]): number {
   const { seen } = watch.line;
   const known = disturbances({ ...watch, tracks: [...past.tracks] });
-  const noise = asFixed(watch.model, learnNoise(counted, known, watch.prior, watch.likelyNoise));
+  const steady = withoutRecoveries(watch, counted);
+  const noise = asFixed(watch.model, learnNoise(steady, known, watch.prior, watch.likelyNoise));
   const rates = past.tracks.filter(isMaybeSwitch).map((t) => {
     const gapDays = seen[t.bestGap]!.tDays - seen[t.bestGap - 1]!.tDays;
     return Math.min(0, Math.log((RATE_PER_YEAR[t.kind] * gapDays) / DAYS_PER_YEAR));

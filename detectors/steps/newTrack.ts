@@ -16,6 +16,7 @@ export function newTrack(watch: PulsarWatch, index: number): Track {
     bestGap: index,
     firstGap: index,
     lastGap: index,
+    logPlaces: 0,
     suspectedAt: index,
     confirmedAt: null,
     rateStep: 0,

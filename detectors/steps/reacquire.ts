@@ -16,10 +16,10 @@ import {
   logBendPrior,
   searchStep,
 } from './circularSearch.ts';
-import { copyOf, gapOf, type Hypothesis, propagate } from './hypothesis.ts';
-import { expectedDeviation, grownTo } from './largeStepSizes.ts';
+import { absorb, copyOf, gapOf, type Hypothesis, propagate } from './hypothesis.ts';
+import { expectedDeviation, grownTo, seenAs } from './outlook.ts';
 import type { PulsarWatch } from './pulsarWatch.ts';
-import { shareOfCount } from './start.ts';
+import { shareOfCount } from './sameCount.ts';
 import { observationOf } from './timeline.ts';
 
 /** The first arrival after the loss, and what was known before it. */
@@ -46,6 +46,8 @@ const LOCK_SHARE = 0.98;
 const HIDDEN_STEP_SHARE = 0.05;
 /** σ of a step of ν̇ that may go with it, relative. */
 const HIDDEN_RATE_STEP = 0.03;
+/** σ of the deviation of which nothing is known. */
+const ANY_TURN = 1;
 const START_SPREAD_TURNS = 0.05;
 const SEARCH_SPREAD_TURNS = 0.1;
 const KEEP = 12;
@@ -95,8 +97,10 @@ function released(watch: PulsarWatch, { from, before }: Loss): Hypothesis {
     h.cov[i * size] = 0;
   }
   freeSecond(h, HIDDEN_RATE_STEP * Math.abs(watch.model.spin.frequencyDerivativeHzPerS) * SECONDS_PER_DAY ** 2);
-  h.mean[0] = seen.deviation;
-  h.cov[0] = arrivalVariance(seen.sigmaTurns, watch.noise);
+  h.mean[0]! += seen.deviation - seenAs(watch, h, from).deviation;
+  h.cov[0] = ANY_TURN ** 2;
+  const outlook = seenAs(watch, h, from);
+  absorb(h, outlook, 0, outlook.variance + arrivalVariance(seen.sigmaTurns, watch.noise));
   let { story } = before.hypothesis;
   // Arrivals between, when the search was begun anew with later ones.
   for (let i = before.index + 1; i <= from; i++)
@@ -125,7 +129,7 @@ function searched(watch: PulsarWatch, { from }: Loss, start: Hypothesis, index: 
     const asStep = (HIDDEN_STEP_SHARE * Math.sqrt(2 * Math.PI)) / (LOG_SIZE_RANGE * step);
     h.logWeight += Math.log(width * (asWalk + asStep));
     h.mean[0]! += peak.phase;
-    h.cov[0] = START_SPREAD_TURNS ** 2;
+    h.cov[0]! += START_SPREAD_TURNS ** 2;
     h.mean[1]! -= peak.frequencyStep;
     h.mean[2]! += peak.curvature;
     const span = points.at(-1)!.days;
@@ -160,7 +164,7 @@ function hasWon(watch: PulsarWatch, from: number, index: number): boolean {
   for (let s = best.story; s !== null && s.index >= from; s = s.before) if (s.used) used++;
   return (
     used >= LOCK_USED * arrivals &&
-    Math.sqrt(best.cov[0]!) < LOCK_SPREAD_TURNS &&
-    shareOfCount(watch.bank!, best) > LOCK_SHARE
+    Math.sqrt(seenAs(watch, best, index).variance) < LOCK_SPREAD_TURNS &&
+    shareOfCount(watch, best) > LOCK_SHARE
   );
 }

@@ -16,11 +16,12 @@ import { seekSwitching } from './modeSwitching.ts';
 import { asFixed, type PulsarWatch } from './pulsarWatch.ts';
 import { retimeRecovery } from './recoveryTimescales.ts';
 import { decisionsOf, retrace } from './retrace.ts';
-import { foundStartRate, shareOfCount, startBeam } from './start.ts';
+import { shareOfCount } from './sameCount.ts';
+import { foundStartRate, startBeam } from './start.ts';
 import { stepAt } from './stepAt.ts';
 import { isSwitch } from './switchingRecord.ts';
 import { sessionsUntil } from './timeline.ts';
-import type { Track } from './track.ts';
+import { isRefuted, overlaps, type Track } from './track.ts';
 
 /** The noise is learned when the arrivals have grown by this factor. */
 const LEARNING_GROWTH = 1.4;
@@ -38,7 +39,7 @@ export function learningDue(watch: PulsarWatch, index: number): boolean {
   if (count >= PATIENCE * watch.nextLearning) return true;
   const best = watch.bank!.beam[0]!;
   const open = watch.tracks.some((t) => t.state === 'suspected' || (t.confirmedAt !== null && !t.settled));
-  return !open && !best.lastSetAside && shareOfCount(watch.bank!, best) > SURE_SHARE;
+  return !open && !best.lastSetAside && shareOfCount(watch, best) > SURE_SHARE;
 }
 
 export function relearn(watch: PulsarWatch, index: number): void {
@@ -62,7 +63,9 @@ export function relearn(watch: PulsarWatch, index: number): void {
 function candidate(watch: PulsarWatch): Disturbance[] {
   const { strongest, something, nothing } = weigh(watch.bank!);
   if (strongest !== 'glitch' || something - nothing < POSSIBLE) return [];
-  return [{ kind: 'spin', beforeIndex: spreadOf(watch.bank!, strongest).bestGap }];
+  const spread = spreadOf(watch.bank!, strongest);
+  if (watch.tracks.some((track) => isRefuted(track) && overlaps(track, spread))) return [];
+  return [{ kind: 'spin', beforeIndex: spread.bestGap }];
 }
 
 /** The recovery followed with a timescale that suits it better: the past gone through again, with the noise as it is. */

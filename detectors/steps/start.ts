@@ -1,11 +1,12 @@
 /** The first hypotheses of a pulsar: how far its start model may be off, and when one count has won. */
 
 import { arrivalVariance } from '../filter/stateSpace.ts';
-import { addState, type Bank } from './bank.ts';
+import { addState } from './bank.ts';
 import { offsetUncertaintyS } from './declaredOffsets.ts';
 import { type Hypothesis, zeros } from './hypothesis.ts';
 import { turnsPerDispersion } from './places.ts';
 import type { PulsarWatch } from './pulsarWatch.ts';
+import { shareOfCount } from './sameCount.ts';
 
 /**
  * The start model's own error, as a mixture: share, σ of the rate (turns/day) and of its derivative (turns/day²). A model
@@ -26,7 +27,6 @@ const DISPERSION_ERROR = 0.03;
 const LOCK_ARRIVALS = 12;
 const LOCK_SPREAD_TURNS = 0.1;
 const LOCK_SHARE = 0.98;
-const ALIKE_TURNS = 0.3;
 
 /**
  * Hypotheses after the first arrival: the deviation is what it was seen to be; the model's rates may be wrong. `rate`
@@ -91,30 +91,7 @@ export function canLock(watch: PulsarWatch, index: number): boolean {
   if (index + 1 < LOCK_ARRIVALS) return false;
   const [best] = watch.bank!.beam;
   if (best === undefined || Math.sqrt(best.cov[0]!) > LOCK_SPREAD_TURNS || best.lastSetAside) return false;
-  return shareOfCount(watch.bank!, best) > LOCK_SHARE;
-}
-
-/** Share of the weight of the null beam that predicts the next arrivals as `best` does, up to whole turns that nobody sees. */
-export function shareOfCount(bank: Bank, best: Hypothesis): number {
-  let agreeing = 0;
-  let total = 0;
-  for (const h of bank.beam) {
-    const weight = Math.exp(h.logWeight - best.logWeight);
-    total += weight;
-    if (predictAlike(bank, h, best)) agreeing += weight;
-  }
-  return agreeing / total;
-}
-
-/** Counts that differ drift apart by a turn from one arrival to another; the same count with another whole number of turns does not. */
-export function predictAlike(bank: Bank, a: Hypothesis, b: Hypothesis): boolean {
-  const [first] = bank.snapshots;
-  const last = bank.snapshots.at(-1)!;
-  const gapDays = (last.tDays - first!.tDays) / Math.max(1, last.index - first!.index);
-  const apart = a.mean[0]! - b.mean[0]!;
-  const numbered = a.numbering !== null || b.numbering !== null;
-  const wrapped = numbered ? apart : apart - Math.round(apart);
-  return Math.abs(wrapped) < ALIKE_TURNS && Math.abs(a.mean[1]! - b.mean[1]!) * gapDays < ALIKE_TURNS;
+  return shareOfCount(watch, best) > LOCK_SHARE;
 }
 
 /** Rate (turns/day) of the first arrivals when it is beyond what start models are off by; else 0. */

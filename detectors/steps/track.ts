@@ -13,6 +13,8 @@ export interface Track {
   bestGap: number;
   firstGap: number;
   lastGap: number;
+  /** Natural log of the weight of all gaps over that of the most probable one: how many it may lie in. */
+  logPlaces: number;
   readonly suspectedAt: number;
   confirmedAt: number | null;
   /** |Δν| in turns/day as the decision saw it: the scale of the recovery to be expected. */
@@ -69,6 +71,15 @@ export interface GapSpread {
   readonly bestGap: number;
   readonly firstGap: number;
   readonly lastGap: number;
+  readonly logPlaces: number;
+}
+
+/** Natural-log odds of a suspicion that adds nothing to noise of its right strength. */
+const REFUTED_LOG_ODDS = -6;
+
+/** The noise that was learned is too quiet, and makes events of it: to be learned anew, with this in it. */
+export function isRefuted({ state, confirmedAt, logOdds }: Track): boolean {
+  return state === 'withdrawn' && confirmedAt === null && logOdds < REFUTED_LOG_ODDS;
 }
 
 export function overlaps(track: Track, spread: GapSpread): boolean {

@@ -1,3 +1,4 @@
+import { readFileSync } from 'node:fs';
 import { type ParsedMail, simpleParser } from 'mailparser';
 import { describe, expect, it } from 'vitest';
 import {
@@ -14,6 +15,7 @@ import {
   voevent,
   withoutPicture,
 } from '../../alerts/index.ts';
+import { compose } from '../../alerts/mailer/compose.ts';
 import { TEXT_COLUMNS, width } from '../../alerts/text.ts';
 import { eventSheet } from '../../alerts/wording/sheet.ts';
 import type { PulsarEvent } from '../../detectors/steps/pulsarEvent.ts';
@@ -200,6 +202,34 @@ describe('D14: names from outside stay names', () => {
           .map((l) => l.length),
       ),
     ).toBeLessThanOrEqual(998);
+  });
+});
+
+describe('D15: the mail library', () => {
+  /** A file and an address that a composer which reads what it is told to would open. */
+  const SECRET = new URL(import.meta.url).pathname;
+  it.each([SECRET, `file://${SECRET}`, 'http://127.0.0.1:1/x', `data:text/plain,canary`, `<img src="${SECRET}">`])(
+    'opens nothing that a name says: %s',
+    async (name) => {
+      const parts = {
+        ...({ messageId: '<d15@kestrel-ridge.example>', inReplyTo: null, kind: 'notice', eventId: null } as const),
+        ...{ recipients: ['duty@kestrel-ridge.example'], subject: name, text: name, html: name },
+        picture: { cid: name, fileName: name, png: Buffer.from('picture') },
+        attachments: [{ fileName: name, contentType: 'text/plain', content: name }],
+      };
+      const { mime } = await compose(parts, SETTING);
+      const mail = await simpleParser(mime);
+      expect(mail.attachments.map(({ content }) => content.toString())).toEqual(['picture', name]);
+      expect(mail.text?.trim()).toBe(name);
+    },
+  );
+
+  it('is given no option but those written down here, and may open neither files nor addresses', () => {
+    const source = readFileSync(new URL('../../alerts/mailer/compose.ts', import.meta.url), 'utf8');
+    expect(source).toContain('disableFileAccess: true');
+    expect(source).toContain('disableUrlAccess: true');
+    // Options that let the composer fetch, or take the message from elsewhere.
+    expect(source).not.toMatch(/\b(path|href|raw|envelope|list|icalEvent|attachDataUrls):/);
   });
 });
 

@@ -1,17 +1,8 @@
 import { parse } from 'csv-parse/sync';
 import { describe, expect, it } from 'vitest';
-import { eventJson, eventsCsv, type NoticeContext, voevent } from '../../alerts/index.ts';
-import { GLITCH, MODEL, SETTING, SITE_STEP } from './samples.ts';
+import { eventJson, eventsCsv, voevent } from '../../alerts/index.ts';
+import { CONTEXT, GLITCH, SITE_STEP } from './samples.ts';
 import { find, parseXml } from './wellFormed.ts';
-
-const CONTEXT: NoticeContext = {
-  observatory: SETTING.observatory,
-  model: MODEL,
-  revision: 2,
-  issuedAt: SETTING.now,
-  cites: 1,
-  drill: false,
-};
 
 describe('the notice', () => {
   const packet = parseXml(voevent(GLITCH, CONTEXT));

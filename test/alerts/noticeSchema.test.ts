@@ -4,22 +4,14 @@ import { tmpdir } from 'node:os';
 import { join } from 'node:path';
 import { SaxesParser } from 'saxes';
 import { afterAll, describe, expect, test } from 'vitest';
-import { type NoticeContext, voevent } from '../../alerts/index.ts';
+import { voevent } from '../../alerts/index.ts';
 import type { PulsarEvent } from '../../detectors/steps/pulsarEvent.ts';
 import { ROOT } from '../support/sourceTree.ts';
-import { GLITCH, MODEL, SETTING, SITE_STEP } from './samples.ts';
+import { CONTEXT, GLITCH, SITE_STEP } from './samples.ts';
 
 // Notices against readers that are not ours: saxes for well-formedness, libxml2's xmllint with a schema written from the
 // Recommendation (VOEvent 2.0, 11 July 2011; from memory), and Python's expat, which must read back the numbers.
 
-const CONTEXT: NoticeContext = {
-  observatory: SETTING.observatory,
-  model: MODEL,
-  revision: 2,
-  issuedAt: SETTING.now,
-  cites: 1,
-  drill: false,
-};
 const HOSTILE = '<&>"\' ]]> ν̇ \u0000 \ud800';
 const NOTICES: readonly (readonly [string, string])[] = [
   ['a first notice', voevent(GLITCH, { ...CONTEXT, revision: 1, cites: null })],

@@ -1,10 +1,11 @@
 import type { MailSetting } from '../../alerts/composed.ts';
+import type { NoticeContext } from '../../alerts/index.ts';
 import type { PulsarModel } from '../../detectors/spin/pulsarModel.ts';
 import type { EventPicture, PicturePoint, PulsarEvent } from '../../detectors/steps/pulsarEvent.ts';
 
 /** Invented events of the invented observatory: what the tests of the alerts speak about. */
 
-export const NU_HZ = 6.3417701123349;
+const NU_HZ = 6.3417701123349;
 const EPOCH = 60_123.41;
 const DELTA_NU_HZ = 2.03e-8;
 const DELTA_NU_DOT = -1.1e-15;
@@ -143,3 +144,13 @@ export function samplePicture({ deltaNuHz = DELTA_NU_HZ, daysAfter = 14, noiseTu
     frequencyHz: NU_HZ,
   };
 }
+
+/** Of an update to a notice that was sent. */
+export const CONTEXT: NoticeContext = {
+  observatory: SETTING.observatory,
+  model: MODEL,
+  revision: 2,
+  issuedAt: SETTING.now,
+  cites: 1,
+  drill: false,
+};

@@ -1,54 +1,27 @@
-import { simpleParser } from 'mailparser';
-import { afterEach, describe, expect, test } from 'vitest';
+import { describe, expect, test } from 'vitest';
 import { timeInWords } from '../../alerts/index.ts';
 import { FIRST_START, reportSilences } from '../../daemon/schedule/silentFeeds.ts';
-import { createTestStation, type TestStation } from '../support/station.ts';
-import { arrivalFile, syntheticArrivals, syntheticPulsar } from '../support/syntheticPulsar.ts';
+import type { TestStation } from '../support/station.ts';
+import { stationForTest } from '../support/stationForTest.ts';
+import { arrivalFile } from '../support/syntheticPulsar.ts';
+import { arrivals, deliverAll, NOW, pulsar, quietArrivals } from './alertedGlitch.ts';
 
 // From a file to the outbox: who is told, once, and what happens to mail that has not left yet.
 
-const START = 61_000;
-const GLITCH = START + 129;
-const pulsar = syntheticPulsar({
-  name: 'KR 0417+31',
-  epochMjd: START,
-  glitches: [{ mjd: GLITCH, deltaNuOverNu: 2e-7 }],
-});
-const span = { fromMjd: START + 1, toMjd: START + 150, everyDays: 3 };
-const all = syntheticArrivals(pulsar, { ...span, seed: 3 });
-const quietly = syntheticArrivals({ ...pulsar, glitches: [] }, { ...span, seed: 3 });
-const NOW = '2026-04-22T08:00:00.000Z';
 const MONTHS_LATER = '2026-08-01T08:00:00.000Z';
 
-const open: TestStation[] = [];
-afterEach(async () => {
-  for (const station of open.splice(0)) await station.close();
-});
-async function station(now = NOW, expectEveryHours?: number): Promise<TestStation> {
+function station(now = NOW, expectEveryHours?: number): Promise<TestStation> {
   const hours = expectEveryHours === undefined ? {} : { expectEveryHours };
-  const made = await createTestStation({ pulsars: [pulsar], now, ...hours });
-  open.push(made);
-  return made;
+  return stationForTest({ pulsars: [pulsar], now, ...hours });
 }
 
 const outbox = ({ store }: TestStation) => store.outbox().map(({ subject, state, kind }) => ({ subject, state, kind }));
 const told = ({ store }: TestStation) => store.events().map((event) => [event.event.state, event.told]);
 
-/** The delivery loop's part, without a mail server: everything that waits leaves. */
-async function deliverAll(at: TestStation) {
-  const sent = [];
-  for (;;) {
-    const mail = at.store.claimDue('2030-01-01T00:00:00.000Z');
-    if (mail === null) return sent;
-    at.store.settle(mail.id, { kind: 'delivered', at: at.station.clock.now().toISOString() });
-    sent.push({ mail, parsed: await simpleParser(Buffer.from(mail.content, 'latin1')) });
-  }
-}
-
 describe('an event', () => {
   test('is mailed when it is confirmed, with its picture, its notice and itself', async () => {
     const at = await station();
-    await at.deliver('a.csv', arrivalFile(all), { mail: true });
+    await at.deliver('a.csv', arrivalFile(arrivals), { mail: true });
     const [sent, ...more] = await deliverAll(at);
     expect(more).toEqual([]);
     expect(sent!.parsed.subject).toMatch(/^Kestrel Ridge · KR 0417\+31: candidate glitch/);
@@ -59,14 +32,14 @@ describe('an event', () => {
 
   test('A21: of long ago wakes nobody', async () => {
     const at = await station(MONTHS_LATER);
-    await at.deliver('a.csv', arrivalFile(all), { mail: true });
+    await at.deliver('a.csv', arrivalFile(arrivals), { mail: true });
     expect(told(at)).toEqual([['confirmed', false]]);
     expect(outbox(at)).toEqual([]);
   });
 
   test('is not mailed where no mail was asked for', async () => {
     const at = await station();
-    await at.deliver('a.csv', arrivalFile(all), { mail: false });
+    await at.deliver('a.csv', arrivalFile(arrivals), { mail: false });
     expect(outbox(at)).toEqual([]);
   });
 
@@ -74,9 +47,9 @@ describe('an event', () => {
     const at = await station();
     const sent = [];
     for (const [name, some] of [
-      ['a.csv', all.slice(0, -5)],
-      ['b.csv', all.slice(-5, -2)],
-      ['c.csv', all.slice(-2)],
+      ['a.csv', arrivals.slice(0, -5)],
+      ['b.csv', arrivals.slice(-5, -2)],
+      ['c.csv', arrivals.slice(-2)],
     ] as const) {
       await at.deliver(name, arrivalFile(some), { mail: true });
       sent.push(...(await deliverAll(at)));
@@ -101,10 +74,10 @@ describe('an event', () => {
 
   test('D19: that changes before its mail left is told once, as it is now', async () => {
     const at = await station();
-    await at.deliver('a.csv', arrivalFile(all.slice(0, -2)), { mail: true });
+    await at.deliver('a.csv', arrivalFile(arrivals.slice(0, -2)), { mail: true });
     const before = outbox(at);
     expect(before.map(({ state }) => state)).toEqual(['queued']);
-    await at.deliver('b.csv', arrivalFile(all.slice(-2)), { mail: true });
+    await at.deliver('b.csv', arrivalFile(arrivals.slice(-2)), { mail: true });
     const revisions = at.store.events()[0]!.revision;
     expect(revisions).toBeGreaterThan(1);
     const sent = await deliverAll(at);
@@ -114,15 +87,15 @@ describe('an event', () => {
 
   test('A6, D19: whose rows are taken back is withdrawn in the same thread when it was told, and forgotten when not', async () => {
     const unheard = await station();
-    await unheard.deliver('a.csv', arrivalFile(all), { mail: true });
-    await unheard.deliver('a.csv', arrivalFile(quietly), { mail: true });
+    await unheard.deliver('a.csv', arrivalFile(arrivals), { mail: true });
+    await unheard.deliver('a.csv', arrivalFile(quietArrivals), { mail: true });
     expect(told(unheard)).toEqual([]);
     expect(await deliverAll(unheard)).toEqual([]);
 
     const heard = await station();
-    await heard.deliver('a.csv', arrivalFile(all), { mail: true });
+    await heard.deliver('a.csv', arrivalFile(arrivals), { mail: true });
     const [first] = await deliverAll(heard);
-    await heard.deliver('a.csv', arrivalFile(quietly), { mail: true });
+    await heard.deliver('a.csv', arrivalFile(quietArrivals), { mail: true });
     expect(told(heard)).toEqual([['withdrawn', true]]);
     const [withdrawal, ...more] = await deliverAll(heard);
     expect(more).toEqual([]);
@@ -130,7 +103,7 @@ describe('an event', () => {
     expect(withdrawal!.parsed.inReplyTo).toBe(first!.parsed.messageId);
 
     // And the rows come back: the same record goes on, and so does the thread.
-    await heard.deliver('a.csv', arrivalFile(all), { mail: true });
+    await heard.deliver('a.csv', arrivalFile(arrivals), { mail: true });
     expect(told(heard)).toEqual([['confirmed', true]]);
     const [again] = await deliverAll(heard);
     expect(again!.parsed.inReplyTo).toBe(first!.parsed.messageId);
@@ -138,11 +111,11 @@ describe('an event', () => {
 
   test('keeps the verdict of a person, whatever the detector goes on to find', async () => {
     const at = await station();
-    await at.deliver('a.csv', arrivalFile(all.slice(0, -2)), { mail: true });
+    await at.deliver('a.csv', arrivalFile(arrivals.slice(0, -2)), { mail: true });
     const [{ event, revision }] = at.store.events() as [ReturnType<typeof at.store.events>[number]];
     const verdict = { verdict: 'reject', by: 'duty', note: 'cable', at: NOW, expectedRevision: revision } as const;
     expect(at.store.recordVerdict(event.id, verdict).kind).toBe('recorded');
-    await at.deliver('b.csv', arrivalFile(all.slice(-2)), { mail: true });
+    await at.deliver('b.csv', arrivalFile(arrivals.slice(-2)), { mail: true });
     expect(told(at)).toEqual([['rejected', true]]);
     const mails = outbox(at);
     expect(mails).toHaveLength(1);
@@ -158,7 +131,7 @@ describe('a feed that falls silent', () => {
     expect(await reportSilences(at.station)).toBe(1);
     at.setNow('2026-04-25T08:00:00.000Z');
     expect(await reportSilences(at.station)).toBe(0);
-    await at.deliver('a.csv', arrivalFile(quietly));
+    await at.deliver('a.csv', arrivalFile(quietArrivals));
     expect(await reportSilences(at.station)).toBe(0);
     at.setNow('2026-04-26T09:00:00.000Z');
     expect(await reportSilences(at.station)).toBe(1);

@@ -1,8 +1,8 @@
-import { afterEach, describe, expect, test } from 'vitest';
+import { describe, expect, test } from 'vitest';
 import { followPulsar } from '../../daemon/stages/deviation.ts';
 import { PulsarWatches } from '../../daemon/stages/pulsarWatches.ts';
 import { daysBetween, mjdNumber, parseMjd } from '../../detectors/time/mjd.ts';
-import { createTestStation, type TestStation } from '../support/station.ts';
+import { stationForTest } from '../support/stationForTest.ts';
 import { arrivalFile, orbitDelayS, syntheticArrivals, syntheticPulsar } from '../support/syntheticPulsar.ts';
 
 const START = 61_000;
@@ -17,15 +17,9 @@ const arrivals = syntheticArrivals(binary, { fromMjd: START + 1, toMjd: START + 
 /** Just after the last arrival: MJD 61151. */
 const NOW = '2026-04-22T08:00:00.000Z';
 
-const open: TestStation[] = [];
-afterEach(async () => {
-  for (const station of open.splice(0)) await station.close();
-});
-
 describe('a pulsar in a binary', () => {
   test('is followed at its emission times, with the orbit on its bill, and its glitch is found', async () => {
-    const at = await createTestStation({ pulsars: [binary], now: NOW });
-    open.push(at);
+    const at = await stationForTest({ pulsars: [binary], now: NOW });
     await at.deliver('binary.csv', arrivalFile(arrivals));
 
     const recorded = at.store.arrivals(binary.name);

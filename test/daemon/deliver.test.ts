@@ -2,9 +2,9 @@ import { afterEach, describe, expect, test } from 'vitest';
 import type { Delivery, DeliveryOutcome } from '../../alerts/index.ts';
 import { silentLog } from '../../daemon/log.ts';
 import { type DeliveryLoop, startDelivery } from '../../daemon/schedule/deliver.ts';
-import { within } from '../support/daemon.ts';
 import { createTestStation, type TestStation } from '../support/station.ts';
 import { syntheticPulsar } from '../support/syntheticPulsar.ts';
+import { within } from '../support/within.ts';
 
 const NOW = '2026-06-01T08:00:00.000Z';
 const open: (() => Promise<void>)[] = [];

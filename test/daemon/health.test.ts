@@ -1,21 +1,16 @@
-import { afterEach, describe, expect, test } from 'vitest';
+import { describe, expect, test } from 'vitest';
 import { type HealthSources, watchHealth } from '../../daemon/health.ts';
 import type { FeedStatus } from '../../daemon/watch/watcher.ts';
-import { createTestStation, type TestStation } from '../support/station.ts';
+import { stationForTest } from '../support/stationForTest.ts';
 import { arrivalFile, syntheticArrivals, syntheticPulsar } from '../support/syntheticPulsar.ts';
 
 const NOW = '2026-04-22T08:30:00.000Z';
 const pulsar = syntheticPulsar({ name: 'KR 0417+31', epochMjd: 61_000 });
-const open: TestStation[] = [];
-afterEach(async () => {
-  for (const station of open.splice(0)) await station.close();
-});
 
 async function rig(
   changes: { feed?: Partial<FeedStatus>; storage?: string; mail?: string; monotonicMs?: number } = {},
 ) {
-  const at = await createTestStation({ pulsars: [pulsar], now: NOW });
-  open.push(at);
+  const at = await stationForTest({ pulsars: [pulsar], now: NOW });
   const { configuration, store, clock } = at.station;
   const status = { feed: 'nightly', lastLookMs: 0, files: 1, moving: 0, problems: [], ...changes.feed };
   const sources: HealthSources = {

@@ -9,9 +9,9 @@ import { createProgress } from '../../daemon/progress.ts';
 import { startHeartbeats } from '../../daemon/schedule/heartbeat.ts';
 import { mailHeartbeat } from '../../daemon/schedule/ownMail.ts';
 import { knock } from '../../daemon/schedule/webKnock.ts';
-import { within } from '../support/daemon.ts';
 import { createTestStation } from '../support/station.ts';
 import { syntheticPulsar } from '../support/syntheticPulsar.ts';
+import { within } from '../support/within.ts';
 
 const endings: (() => unknown)[] = [];
 afterEach(async () => {

@@ -1,51 +1,23 @@
-import { simpleParser } from 'mailparser';
-import { afterEach, describe, expect, test } from 'vitest';
+import { describe, expect, test } from 'vitest';
 import { morningReview } from '../../daemon/morning.ts';
 import { planAlerts } from '../../daemon/stages/alert.ts';
 import type { KeptEvent } from '../../daemon/stages/eventChanges.ts';
 import { emptyBatch } from '../../daemon/store/index.ts';
 import type { PulsarEvent } from '../../detectors/steps/pulsarEvent.ts';
-import { createTestStation, type TestStation } from '../support/station.ts';
-import { arrivalFile, syntheticArrivals, syntheticPulsar } from '../support/syntheticPulsar.ts';
+import type { TestStation } from '../support/station.ts';
+import { stationForTest } from '../support/stationForTest.ts';
+import { arrivalFile } from '../support/syntheticPulsar.ts';
+import { arrivals, deliverAll, NOW, pulsar, quietArrivals } from './alertedGlitch.ts';
 
 // What the operator decides about mail: when it is held, how much of it leaves, who else gets it. Nothing is dropped silently.
 
-const START = 61_000;
-const GLITCH = START + 129;
-const pulsar = syntheticPulsar({
-  name: 'KR 0417+31',
-  epochMjd: START,
-  glitches: [{ mjd: GLITCH, deltaNuOverNu: 2e-7 }],
-});
-const span = { fromMjd: START + 1, toMjd: START + 150, everyDays: 3 };
-const all = syntheticArrivals(pulsar, { ...span, seed: 3 });
-const quietly = syntheticArrivals({ ...pulsar, glitches: [] }, { ...span, seed: 3 });
-const NOW = '2026-04-22T08:00:00.000Z';
-
-const open: TestStation[] = [];
-afterEach(async () => {
-  for (const station of open.splice(0)) await station.close();
-});
-async function station(now = NOW, mailKeys: readonly string[] = []): Promise<TestStation> {
-  const made = await createTestStation({ pulsars: [pulsar], now, mailKeys });
-  open.push(made);
-  return made;
-}
-
-/** The delivery loop's part, without a mail server: everything that waits leaves. */
-async function deliverAll(at: TestStation) {
-  const sent = [];
-  for (;;) {
-    const mail = at.store.claimDue('2030-01-01T00:00:00.000Z');
-    if (mail === null) return sent;
-    at.store.settle(mail.id, { kind: 'delivered', at: at.station.clock.now().toISOString() });
-    sent.push({ mail, parsed: await simpleParser(Buffer.from(mail.content, 'latin1')) });
-  }
+function station(now = NOW, mailKeys: readonly string[] = []): Promise<TestStation> {
+  return stationForTest({ pulsars: [pulsar], now, mailKeys });
 }
 
 /** So many new events at once, of the kind and size of the one that the file shows. */
 async function eventsAtOnce(at: TestStation, count: number, what: Partial<PulsarEvent> = {}): Promise<KeptEvent[]> {
-  await at.deliver('a.csv', arrivalFile(all));
+  await at.deliver('a.csv', arrivalFile(arrivals));
   const [{ event }] = at.store.events() as [ReturnType<typeof at.store.events>[number]];
   return Array.from({ length: count }, (_, i): KeptEvent => {
     const copy = { ...event, ...what, id: `storm-${i}` };
@@ -104,7 +76,7 @@ describe('quiet hours', () => {
 
   test('hold a small event until they end, and the morning review says so', async () => {
     const at = await station(NIGHT, QUIET);
-    await at.deliver('a.csv', arrivalFile(all), { mail: true });
+    await at.deliver('a.csv', arrivalFile(arrivals), { mail: true });
     expect(at.store.outbox()).toMatchObject([{ state: 'queued', dueAt: MORNING }]);
     expect(at.store.claimDue('2026-04-22T04:59:59.000Z')).toBeNull();
     expect(morning(at).heldBack.map(({ why }) => why)).toEqual([
@@ -116,11 +88,11 @@ describe('quiet hours', () => {
 
   test('let a large one through, and by day every one', async () => {
     const loud = await station(NIGHT, ['quiet_hours = "22:00-07:00"', 'quiet_hours_except_above = 1e-7']);
-    await loud.deliver('a.csv', arrivalFile(all), { mail: true });
+    await loud.deliver('a.csv', arrivalFile(arrivals), { mail: true });
     expect(loud.store.claimDue('2026-04-22T01:00:01.000Z')).not.toBeNull();
     expect(morning(loud).heldBack).toEqual([]);
     const day = await station(NOW, QUIET);
-    await day.deliver('a.csv', arrivalFile(all), { mail: true });
+    await day.deliver('a.csv', arrivalFile(arrivals), { mail: true });
     expect(day.store.claimDue('2026-04-22T08:00:01.000Z')).not.toBeNull();
   });
 
@@ -138,17 +110,17 @@ describe('quiet hours', () => {
       'quiet_hours = "22:00-07:00"',
       'quiet_hours_except_above = 1e-7',
     ]);
-    await at.deliver('a.csv', arrivalFile(all), { mail: true });
+    await at.deliver('a.csv', arrivalFile(arrivals), { mail: true });
     await deliverAll(at);
     at.setNow(NIGHT);
-    await at.deliver('a.csv', arrivalFile(quietly), { mail: true });
+    await at.deliver('a.csv', arrivalFile(quietArrivals), { mail: true });
     expect(at.store.claimDue('2026-04-22T01:00:05.000Z')?.subject).toMatch(/^WITHDRAWN/);
   });
 
   test('news that replaces a mail that waits takes its place, also where no other mail may leave', async () => {
     const at = await station(NIGHT, [...QUIET, 'most_per_hour = 1']);
-    await at.deliver('a.csv', arrivalFile(all.slice(0, -2)), { mail: true });
-    await at.deliver('b.csv', arrivalFile(all.slice(-2)), { mail: true });
+    await at.deliver('a.csv', arrivalFile(arrivals.slice(0, -2)), { mail: true });
+    await at.deliver('b.csv', arrivalFile(arrivals.slice(-2)), { mail: true });
     const waiting = at.store.outbox({ state: 'queued' });
     expect(waiting.map(({ kind, dueAt }) => [kind, dueAt])).toEqual([['event', MORNING]]);
     expect(waiting[0]!.messageId).toContain(`.r${at.store.events()[0]!.revision}.first@`);
@@ -175,7 +147,7 @@ describe('who else is told', () => {
     const ours =
       '[[mail.also_to]]\nto = ["ours@kestrel-ridge.example"]\nexplanations = ["glitch"]\npulsars = ["KR 0417+31"]';
     const at = await station(NOW, [clocks, ours]);
-    await at.deliver('a.csv', arrivalFile(all), { mail: true });
+    await at.deliver('a.csv', arrivalFile(arrivals), { mail: true });
     expect(at.store.outbox().map(({ recipient }) => recipient)).toEqual([
       'duty@kestrel-ridge.example',
       'ours@kestrel-ridge.example',
@@ -191,7 +163,7 @@ describe('who else is told', () => {
     expect(suspicion!.parsed.text).toMatch(/^Suspected only/m);
     const [listed] = at.store.events().filter(({ event }) => event.id === 'storm-0');
     const confirmed: KeptEvent = {
-      event: { ...listed!.event, state: 'confirmed', confirmedAtMjd: START + 150 },
+      event: { ...listed!.event, state: 'confirmed', confirmedAtMjd: 61_150 },
       before: listed!,
       revision: 2,
       what: 'suspected → confirmed',

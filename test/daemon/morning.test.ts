@@ -1,7 +1,8 @@
-import { afterEach, describe, expect, test } from 'vitest';
+import { describe, expect, test } from 'vitest';
 import type { MorningReview } from '../../alerts/index.ts';
 import { morningReview } from '../../daemon/morning.ts';
-import { createTestStation, type TestStation } from '../support/station.ts';
+import type { TestStation } from '../support/station.ts';
+import { stationForTest } from '../support/stationForTest.ts';
 import { arrivalFile, syntheticArrivals, syntheticPulsar } from '../support/syntheticPulsar.ts';
 
 const START = 61_000;
@@ -14,14 +15,8 @@ const arrivals = syntheticArrivals(pulsar, { fromMjd: START + 1, toMjd: START + 
 /** MJD 61152; the last arrival is from 61150. */
 const NOW = '2026-04-22T08:30:00.000Z';
 
-const open: TestStation[] = [];
-afterEach(async () => {
-  for (const station of open.splice(0)) await station.close();
-});
 async function station(options: { digestCron?: string } = {}): Promise<TestStation> {
-  const made = await createTestStation({ pulsars: [pulsar], now: NOW, ...options });
-  open.push(made);
-  return made;
+  return stationForTest({ pulsars: [pulsar], now: NOW, ...options });
 }
 
 function morning({ station: { configuration, store, clock } }: TestStation, date?: string): MorningReview {

@@ -1,9 +1,10 @@
 import { simpleParser } from 'mailparser';
-import { afterEach, describe, expect, test } from 'vitest';
+import { describe, expect, test } from 'vitest';
 import { morningReview } from '../../daemon/morning.ts';
 import { createSelfAlerts } from '../../daemon/schedule/selfAlerts.ts';
 import { emptyBatch } from '../../daemon/store/index.ts';
-import { createTestStation, type TestStation } from '../support/station.ts';
+import type { TestStation } from '../support/station.ts';
+import { stationForTest } from '../support/stationForTest.ts';
 import { arrivalFile, syntheticArrivals, syntheticPulsar } from '../support/syntheticPulsar.ts';
 
 // Trouble with the watch itself: told once when it begins, and not for as long as it lasts.
@@ -13,13 +14,8 @@ const arrivals = syntheticArrivals(pulsar, { fromMjd: 61_001, toMjd: 61_040, eve
 const NOW = '2026-04-22T08:00:00.000Z';
 const ROOM = 50e9;
 
-const open: TestStation[] = [];
-afterEach(async () => {
-  for (const station of open.splice(0)) await station.close();
-});
 async function rig(now = NOW) {
-  const at = await createTestStation({ pulsars: [pulsar], now });
-  open.push(at);
+  const at = await stationForTest({ pulsars: [pulsar], now });
   let free = ROOM;
   const { run } = createSelfAlerts(at.station, { freeBytes: () => free });
   return {

@@ -1,7 +1,8 @@
 import { asyncProperty, assert as checkProperty, shuffledSubarray } from 'fast-check';
 import { simpleParser } from 'mailparser';
-import { afterEach, describe, expect, test } from 'vitest';
-import { createTestStation, type TestStation } from '../support/station.ts';
+import { describe, expect, test } from 'vitest';
+import type { TestStation } from '../support/station.ts';
+import { stationForTest } from '../support/stationForTest.ts';
 import { arrivalFile, type SyntheticArrival, syntheticArrivals, syntheticPulsar } from '../support/syntheticPulsar.ts';
 
 /** Three pulsars of one site whose clock steps in the night in which one of them truly glitches. */
@@ -32,14 +33,8 @@ function late(arrival: SyntheticArrival): SyntheticArrival {
   return { ...arrival, seconds, mjdText: `${START + day}.${fraction.toFixed(15).slice(2)}` };
 }
 
-const open: TestStation[] = [];
-afterEach(async () => {
-  for (const station of open.splice(0)) await station.close();
-});
-async function station(): Promise<TestStation> {
-  const made = await createTestStation({ pulsars: PULSARS, now: NOW });
-  open.push(made);
-  return made;
+function station(): Promise<TestStation> {
+  return stationForTest({ pulsars: PULSARS, now: NOW });
 }
 
 const eventsOf = ({ store }: TestStation) => store.events().map(({ event }) => event);

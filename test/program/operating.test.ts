@@ -4,11 +4,12 @@ import { readdirSync, readFileSync, writeFileSync } from 'node:fs';
 import { join } from 'node:path';
 import { setTimeout as pause } from 'node:timers/promises';
 import { describe, test } from 'vitest';
-import { type RunningProgram, startSpinvigil, within } from '../support/daemon.ts';
 import { openNotifySocket, whyNoNotifySocket } from '../support/notifySocket.ts';
 import { createObservatory, digestFarAway, type TestObservatory } from '../support/observatory.ts';
+import { type RunningProgram, startSpinvigil, startWatch, type WhenFinished } from '../support/runningProgram.ts';
 import { CLI, runInstalled, runSpinvigil } from '../support/spinvigil.ts';
 import { arrivalFile, syntheticArrivals, syntheticPulsar } from '../support/syntheticPulsar.ts';
+import { within } from '../support/within.ts';
 
 // How the daemon is kept: signals, the service manager, the monitoring system, and a world that is not as it should be.
 
@@ -16,28 +17,14 @@ const PATIENCE_S = 60;
 const pulsar = syntheticPulsar({ name: 'KR 0417+31', epochMjd: 61_000 });
 const arrivals = arrivalFile(syntheticArrivals(pulsar, { fromMjd: 61_000, toMjd: 61_060, everyDays: 3, seed: 5 }));
 
-type Closer = (close: () => Promise<void>) => void;
-
-async function observatory(finished: Closer): Promise<TestObservatory> {
+async function observatory(finished: WhenFinished): Promise<TestObservatory> {
   const made = await createObservatory({ pulsars: [pulsar], digestCron: digestFarAway() });
   finished(made.remove);
   return made;
 }
 
-async function watch(
-  finished: Closer,
-  at: TestObservatory,
-  environment: NodeJS.ProcessEnv = {},
-): Promise<RunningProgram> {
-  const program = startSpinvigil(['watch', '--config', at.configFile], environment);
-  finished(async () => {
-    program.signal('SIGKILL');
-    await program.ended;
-  });
-  await within(PATIENCE_S, () => program.hasEnded() || program.stdout().includes('\n'));
-  if (program.hasEnded()) throw new Error(`the watch ended by itself: ${program.stderr()}`);
-  return program;
-}
+const watch = (finished: WhenFinished, at: TestObservatory, environment: NodeJS.ProcessEnv = {}) =>
+  startWatch(finished, at.configFile, environment);
 
 const pageOf = (program: RunningProgram) => /http:\/\/\S+/.exec(program.stdout())?.[0] ?? '';
 const edit = (at: TestObservatory, change: (text: string) => string) =>

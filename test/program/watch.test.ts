@@ -1,7 +1,6 @@
 import { type AddressInfo, createServer, type Socket } from 'node:net';
 import { describe, test } from 'vitest';
 import type { PulsarEvent } from '../../detectors/steps/pulsarEvent.ts';
-import { type RunningProgram, startSpinvigil, within } from '../support/daemon.ts';
 import { type MailServer, startMailServer } from '../support/mailServer.ts';
 import {
   createObservatory,
@@ -9,12 +8,14 @@ import {
   type ObservatoryOptions,
   type TestObservatory,
 } from '../support/observatory.ts';
+import { type RunningProgram, startWatch, type WhenFinished } from '../support/runningProgram.ts';
 import { runInstalled, runSpinvigil, spinvigilJson } from '../support/spinvigil.ts';
 import { arrivalFile, syntheticArrivals, syntheticPulsar } from '../support/syntheticPulsar.ts';
+import { within } from '../support/within.ts';
 
 // The daemon as it is installed, with real files, a real record, a real mail server and real signals.
 
-const PATIENCE_S = 40;
+const PATIENCE_S = 60;
 const TODAY_MJD = Math.floor(40_587 + Date.now() / 86_400_000);
 const GLITCH_MJD = TODAY_MJD - 12;
 const pulsar = syntheticPulsar({
@@ -26,37 +27,28 @@ const arrivals = syntheticArrivals(pulsar, { fromMjd: TODAY_MJD - 57, toMjd: TOD
 const before = arrivals.filter(({ mjdText }) => Number(mjdText) < GLITCH_MJD);
 const after = arrivals.filter(({ mjdText }) => Number(mjdText) >= GLITCH_MJD);
 
-type Closer = (close: () => Promise<void>) => void;
-
-async function observatory(finished: Closer, options: Partial<ObservatoryOptions> = {}): Promise<TestObservatory> {
+async function observatory(
+  finished: WhenFinished,
+  options: Partial<ObservatoryOptions> = {},
+): Promise<TestObservatory> {
   const made = await createObservatory({ pulsars: [pulsar], digestCron: digestFarAway(), ...options });
   finished(made.remove);
   return made;
 }
 
-async function mailServer(finished: Closer): Promise<MailServer> {
+async function mailServer(finished: WhenFinished): Promise<MailServer> {
   const server = await startMailServer();
   finished(server.close);
   return server;
 }
 
-async function watch(finished: Closer, at: TestObservatory): Promise<RunningProgram> {
-  const program = startSpinvigil(['watch', '--config', at.configFile]);
-  finished(async () => {
-    program.signal('SIGKILL');
-    await program.ended;
-  });
-  await within(PATIENCE_S, () => program.hasEnded() || program.stdout().includes('\n'));
-  if (program.hasEnded()) throw new Error(`the watch ended by itself: ${program.stderr()}`);
-  return program;
-}
-
+const watch = (finished: WhenFinished, at: TestObservatory) => startWatch(finished, at.configFile);
 const events = (at: TestObservatory) => spinvigilJson<PulsarEvent[]>(['events', '--config', at.configFile]);
 const takenIn = (program: RunningProgram, files: number) =>
   within(PATIENCE_S, () => program.stderr().split('"file taken in').length - 1 >= files);
 
 // Most of each test is waiting for files to stand still: they wait together.
-describe.concurrent('the watch', () => {
+describe.concurrent('the watch', { timeout: 180_000 }, () => {
   test('turns a dropped file into mail, and says how long that took', async ({ expect, onTestFinished: finished }) => {
     const server = await mailServer(finished);
     const at = await observatory(finished, {

@@ -2,23 +2,27 @@
  * Do the stated intervals hold the truth as often as they say? Events are drawn from the prior that the posterior uses
  * (sizes, spin-down change, number of exponentials, timescales, epoch), over cadence, noise and number of arrivals; those
  * that a decision would confirm are fitted, and the truth is looked up in the 68 and 95 % intervals. The noise is known to
- * the fit, or (`--learned`) learned from the same arrivals as in the daemon. Run: npx tsx test/studies/coverage.ts [--learned]
- * [events]. Writes coverage.json or coverageLearned.json beside itself.
+ * the fit, or (`--learned`) learned from the same arrivals as in the daemon. With `--recoveries` every event has an exponential,
+ * and only timescales are looked at: a posterior with so many exponentials does not ask how often there is none.
+ * Run: npx tsx test/studies/coverage.ts [--learned] [--recoveries] [events]. Writes coverage….json beside itself.
  */
 import { writeFileSync } from 'node:fs';
 import type { CountedArrival } from '../../detectors/filter/countedArrival.ts';
 import { learnNoise } from '../../detectors/filter/noiseLearning.ts';
+import { withMargin } from '../../detectors/filter/noiseMargin.ts';
 import { noisePrior } from '../../detectors/filter/noisePrior.ts';
-import { fitGlitch } from '../../detectors/recovery/glitchFit.ts';
+import { fitGlitch, type GlitchFit } from '../../detectors/recovery/glitchFit.ts';
 import { TERMS_PRIOR, timescaleRange } from '../../detectors/recovery/glitchModels.ts';
 import type { Estimate } from '../../detectors/recovery/mixture.ts';
 import { defaultSizePrior } from '../../detectors/recovery/sizePrior.ts';
 import type { NoiseModel } from '../../detectors/report.ts';
+import { withoutRecovery } from '../../detectors/steps/establishedRecoveries.ts';
 import { withGlitch } from '../support/simulatedGlitch.ts';
 import { type Dice, dice, observingDays, simulateArrivals } from '../support/simulatedPulsar.ts';
 
 const SEED = 20_270_117;
 const LEARNED = process.argv.includes('--learned');
+const RECOVERIES = process.argv.includes('--recoveries');
 const EVENTS = Number(process.argv.slice(2).find((word) => /^\d+$/.test(word)) ?? 1000);
 /** Natural-log Bayes factor from which an event is looked at: about the daemon's own threshold. */
 const CONFIRMED = 9;
@@ -73,7 +77,7 @@ function draw(random: Dice): Drawn {
   const persistentNuHz = step * random.normal();
   const persistentNuDotHzPerS = choose(sizes.derivativeStepsHzPerS, random) * random.normal();
   const part = choose(sizes.decayingParts, random);
-  const pick = random.uniform();
+  const pick = RECOVERIES ? TERMS_PRIOR[0] + (1 - TERMS_PRIOR[0]) * random.uniform() : random.uniform();
   const count = TERMS_PRIOR.findIndex((_, k) => pick < TERMS_PRIOR.slice(0, k + 1).reduce((a, b) => a + b, 0));
   const terms = Array.from({ length: count }, () => ({
     timescaleDays: between(range.lowDays, range.highDays, random),
@@ -133,10 +137,48 @@ function look(name: string, { interval68, interval95 }: Estimate, truth: number)
   tally.in95 += Number(interval95[0] <= truth && truth <= interval95[1]);
 }
 
-function noiseOf({ arrivals, after, noise, frequencyHz, frequencyDerivativeHzPerS }: Drawn): NoiseModel {
-  if (!LEARNED) return noise;
+function lookAtSizes(fit: GlitchFit, truth: Truth): void {
+  look('epoch', fit.epochDays, truth.epochDays);
+  // An exponential that counts as a delayed rise is no part of Δν at the epoch: the truth is told by the same rule.
+  const rises = fit.recovery?.terms.some(({ kind }) => kind === 'delayed rise') ?? false;
+  if (!rises) {
+    look('deltaNu', fit.deltaNuHz, truth.deltaNuHz);
+    look(
+      fit.deltaNuDotConstrained ? 'deltaNuDot' : 'deltaNuDot, not constrained',
+      fit.deltaNuDotHzPerS,
+      truth.deltaNuDotHzPerS,
+    );
+    if (fit.recovery !== null) look('q', fit.recovery.q, truth.q);
+  }
+}
+
+function fitOf(event: Drawn): GlitchFit {
+  if (!LEARNED) return fitWith(event, event.noise);
+  const first = fitWith(event, learnedNoise(event, event.arrivals));
+  // An exponential left in is learned as noise: once it is established it is taken off, as the daemon does.
+  return first.recovery === null ? first : fitWith(event, learnedNoise(event, withoutRecovery(event.arrivals, first)));
+}
+
+/** As the daemon takes it: with its margin. */
+function learnedNoise(
+  { after, frequencyHz, frequencyDerivativeHzPerS }: Drawn,
+  arrivals: readonly CountedArrival[],
+): NoiseModel {
   const prior = noisePrior(frequencyHz, frequencyDerivativeHzPerS);
-  return learnNoise(arrivals, [{ beforeIndex: after, kind: 'spin' }], prior);
+  const known = [{ beforeIndex: after, kind: 'spin' as const }];
+  return withMargin(learnNoise(arrivals, known, prior), arrivals, known, prior, arrivals.length);
+}
+
+function fitWith({ arrivals, after, frequencyHz, frequencyDerivativeHzPerS }: Drawn, noise: NoiseModel): GlitchFit {
+  return fitGlitch({
+    arrivals,
+    noise,
+    firstGapBeforeIndex: after,
+    lastGapBeforeIndex: after,
+    disturbances: [],
+    frequencyHz,
+    frequencyDerivativeHzPerS,
+  });
 }
 
 const random = dice(SEED);
@@ -150,31 +192,12 @@ while (kept < EVENTS) {
   drawn += 1;
   const { truth } = event;
   const start = process.cpuUsage().user;
-  const fit = fitGlitch({
-    arrivals: event.arrivals,
-    noise: noiseOf(event),
-    firstGapBeforeIndex: event.after,
-    lastGapBeforeIndex: event.after,
-    disturbances: [],
-    frequencyHz: event.frequencyHz,
-    frequencyDerivativeHzPerS: event.frequencyDerivativeHzPerS,
-  });
+  const fit = fitOf(event);
   seconds += (process.cpuUsage().user - start) / 1e6;
   if (fit.logEvidence - fit.logEvidenceNone < CONFIRMED) continue;
   kept += 1;
   if (kept % 100 === 0) save();
-  look('epoch', fit.epochDays, truth.epochDays);
-  // An exponential that counts as a delayed rise is no part of Δν at the epoch: the truth is told by the same rule.
-  const rises = fit.recovery?.terms.some(({ kind }) => kind === 'delayed rise') ?? false;
-  if (!rises) {
-    look('deltaNu', fit.deltaNuHz, truth.deltaNuHz);
-    look(
-      fit.deltaNuDotConstrained ? 'deltaNuDot' : 'deltaNuDot, not constrained',
-      fit.deltaNuDotHzPerS,
-      truth.deltaNuDotHzPerS,
-    );
-    if (fit.recovery !== null) look('q', fit.recovery.q, truth.q);
-  }
+  if (!RECOVERIES) lookAtSizes(fit, truth);
   // Given that so many were drawn, an interval of the posterior with as many holds the truth as often as it says.
   const found = fit.recovery?.terms ?? [];
   const key = `${truth.terms.length} drawn, ${found.length} stated`;
@@ -205,7 +228,8 @@ function save(): void {
     coverage: tableOf(),
     exponentials: Object.fromEntries(Object.entries(termsFound).sort()),
   };
-  const file = new URL(LEARNED ? './coverageLearned.json' : './coverage.json', import.meta.url);
+  const name = `coverage${LEARNED ? 'Learned' : ''}${RECOVERIES ? 'Recoveries' : ''}.json`;
+  const file = new URL(name, import.meta.url);
   writeFileSync(file, `${JSON.stringify(outcome, null, 2)}\n`);
 }
 

@@ -99,7 +99,7 @@ interface Candidate {
 }
 
 /** What the step at a place in the gap before arrival `index` adds to the innovations from there on. */
-export function markOf(law: Whitening, index: number, place: number, deltaNuHz: number): number[] {
+function markOf(law: Whitening, index: number, place: number, deltaNuHz: number): number[] {
   const mark = enter(law, index, place, deltaNuHz);
   const shifts: number[] = [];
   for (let i = index; i < law.gapDays.length; i++) {

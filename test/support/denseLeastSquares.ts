@@ -15,7 +15,7 @@ export interface DenseFit {
   readonly residualSumOfSquares: number;
 }
 
-export function walkCovariance(days: readonly number[], walks: Walks): Float64Array {
+function walkCovariance(days: readonly number[], walks: Walks): Float64Array {
   const n = days.length;
   const covariance = new Float64Array(n * n);
   for (let i = 0; i < n; i++) {

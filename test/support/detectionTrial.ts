@@ -18,7 +18,7 @@ const jittered =
   ({ uniform }: Dice): number =>
     days * (1 + 0.2 * (uniform() - uniform()));
 /** Days from one arrival to the next. */
-const GAPS: Readonly<Record<string, (random: Dice) => number>> = {
+export const GAPS: Readonly<Record<string, (random: Dice) => number>> = {
   daily: jittered(1),
   '3-day': jittered(3),
   weekly: jittered(7),
@@ -47,11 +47,11 @@ const FIRST_NATS = 12;
 /** A walk hides a step again: where all arrivals together are expected to tell no more than so many thresholds, there is no delay. */
 const SURE = 2;
 /** Where noise spreads the next arrival further than this, turns, the count of turns is lost: another study. */
-const MOST_SPREAD_TURNS = 0.05;
+export const MOST_SPREAD_TURNS = 0.05;
 
 /** The size is that of the glitch: how many arrivals the clairvoyant test is expected to need. */
 export interface Cell {
-  readonly history: (typeof HISTORIES)[number];
+  readonly history: number;
   readonly cadence: string;
   readonly noise: (typeof NOISES)[number];
   readonly expected: number;
@@ -101,14 +101,14 @@ export function falseAlarmRate(seed: number, cell: Cell, simulated: number): num
   return rateAt(tail, watch.settings.confirmLogOdds);
 }
 
-function seeded(seed: number): Dice {
+export function seeded(seed: number): Dice {
   const random = dice(seed);
   for (let i = 0; i < WARM_UP; i++) random.uniform();
   return random;
 }
 
 /** As strong a walk as the population law draws it. */
-function drawn({ history, cadence, noise }: Cell, random: Dice): Pulsar {
+export function drawn({ history, cadence, noise }: Cell, random: Dice): Pulsar {
   const frequencyHz = 10 ** (-0.5 + 1.8 * random.uniform());
   const uncertaintyUs = 10 ** (1.3 + 1.7 * random.uniform());
   const frequencyDerivativeHzPerS = -(10 ** (-15.5 + 3 * random.uniform()));
@@ -134,7 +134,7 @@ interface KnownStep {
 }
 
 /** The size that takes as many arrivals as expected, and the threshold for it; null where no glitch is of that size. */
-function clairvoyantTest(
+export function clairvoyantTest(
   { law, before, model }: Pulsar,
   expected: number,
   perYear: number,

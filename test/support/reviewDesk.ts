@@ -270,7 +270,7 @@ function sampleOrigins(picture: EventPicture | null, { file, reason }: DeskTexts
 }
 
 /** Thirty arrivals that wander a little, a week apart. */
-export function sampleRecent(seed: number): RecentArrivals {
+function sampleRecent(seed: number): RecentArrivals {
   const random = xoroshiro128plus(seed);
   const points = Array.from({ length: 30 }, (_, i) => {
     const turns = 4e-3 * Math.sin(i / 5 + seed) + 3e-3 * (uniformFloat64(random) - 0.5);

@@ -157,7 +157,7 @@ function withPlace(problem: RowProblem, columns: TextColumns): RowProblem {
 }
 
 /** `(column 3) `, as the configuration counts. */
-export function placeOf(source: Source): string {
+function placeOf(source: Source): string {
   if (source.kind === 'column') return `(column ${source.column + 1}) `;
   if (source.kind === 'positions') return `(characters ${source.from + 1} to ${source.to}) `;
   return source.kind === 'fixed' ? '(fixed) ' : "(from the file's name) ";

@@ -10,14 +10,6 @@ import type { Chart, ChartMark } from './chart.ts';
 const TALL = 250;
 const LOW = 170;
 
-const FREQUENCY_UNITS = [
-  [1, 'Hz'],
-  [1e-3, 'mHz'],
-  [1e-6, 'µHz'],
-  [1e-9, 'nHz'],
-  [1e-12, 'pHz'],
-] as const;
-
 /** The fraction of the axis that stays free at each end. */
 const SIDE_AIR = 0.02;
 
@@ -85,7 +77,7 @@ function phaseMarks(
 function frequency(picture: EventPicture): Panel {
   const { frequencyTrack, frequencyFit } = picture;
   const largest = Math.max(0, ...[...frequencyTrack, ...frequencyFit].map((p) => Math.abs(p.deltaNuHz)));
-  const [factor, unit] = unitFor(largest, FREQUENCY_UNITS);
+  const [factor, unit] = unitFor(largest, 'Hz');
   return {
     heading: 'Δν from sliding local fits',
     unit: `${unit} above the spin-down before`,
@@ -140,13 +132,6 @@ function fixed(value: number, error: number): string {
 }
 
 function withError(value: number, error: number, unit: string): string {
-  const [factor, name] = unitFor(Math.max(Math.abs(value), error), TIME_UNITS);
-  return `${fixed(value / factor, error / factor)} ${name}${unit}`;
+  const [factor, name] = unitFor(Math.max(Math.abs(value), error), unit);
+  return `${fixed(value / factor, error / factor)} ${name}`;
 }
-
-const TIME_UNITS = [
-  [1, ''],
-  [1e-3, 'm'],
-  [1e-6, 'µ'],
-  [1e-9, 'n'],
-] as const;

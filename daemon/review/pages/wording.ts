@@ -7,7 +7,7 @@ import type { VerdictRecord } from '../../records.ts';
 export { visible } from '../../../alerts/markup.ts';
 export { epochText } from '../../../alerts/wording/dates.ts';
 export { plain, quantity } from '../../../alerts/wording/numbers.ts';
-export { eventName, explanationName, falseAlertText, stateText, subjectOf } from '../../../alerts/wording/phrases.ts';
+export { eventName, explanationName, stateText, subjectOf } from '../../../alerts/wording/phrases.ts';
 export { eventSheet, sizeText } from '../../../alerts/wording/sheet.ts';
 export { percent };
 

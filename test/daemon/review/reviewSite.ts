@@ -12,7 +12,7 @@ afterEach(async () => {
 });
 
 /** Nobody needs to log in. */
-export const OPEN_GATE: Gate = {
+const OPEN_GATE: Gate = {
   isClosed: () => false,
   logIn: async () => ({ kind: 'wrong' }),
   sessionOf: () => null,

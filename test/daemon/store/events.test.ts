@@ -1,28 +1,14 @@
-import { afterEach, beforeEach, describe, expect, test } from 'vitest';
+import { describe, expect, test } from 'vitest';
 import { type EventUpsert, emptyBatch, type IntakeBatch, type Store } from '../../../daemon/store/index.ts';
-import {
-  AT,
-  LATER,
-  NEXT_DAY,
-  open,
-  sampleEvent,
-  sampleMessage,
-  samplePicture,
-  temporaryFolder,
-  upsert,
-} from './sample.ts';
+import { AT, LATER, NEXT_DAY, open, sampleEvent, sampleMessage, samplePicture, upsert } from './sample.ts';
+import { useRecord } from './useRecord.ts';
 
 const ID = 'KR0417-60003';
-let folder: ReturnType<typeof temporaryFolder>;
 let store: Store;
-beforeEach(() => {
-  folder = temporaryFolder();
-  store = open(folder.path);
-});
-afterEach(() => {
-  expect(store.verify()).toEqual([]);
-  store.close();
-  folder.remove();
+let folder: string;
+useRecord((own, path) => {
+  store = own;
+  folder = path;
 });
 
 const commit = (events: readonly EventUpsert[], more: Partial<IntakeBatch> = {}) =>
@@ -169,7 +155,7 @@ describe('a verdict', () => {
 
   test('from a second connection beside the daemon is seen by it at once', () => {
     commit([upsert()]);
-    const reader = open(folder.path, 'reader');
+    const reader = open(folder, 'reader');
     expect(reader.recordVerdict(ID, reject).kind).toBe('recorded');
     reader.close();
     expect(stateOf()).toBe('rejected');

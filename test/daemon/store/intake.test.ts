@@ -1,27 +1,11 @@
-import { afterEach, beforeEach, describe, expect, test } from 'vitest';
+import { describe, expect, test } from 'vitest';
 import { emptyBatch, type Store } from '../../../daemon/store/index.ts';
-import {
-  AT,
-  fileBatch,
-  LATER,
-  open,
-  sampleArrival,
-  sampleFile,
-  sampleMessage,
-  temporaryFolder,
-  upsert,
-} from './sample.ts';
+import { AT, fileBatch, LATER, sampleArrival, sampleFile, sampleMessage, upsert } from './sample.ts';
+import { useRecord } from './useRecord.ts';
 
-let folder: ReturnType<typeof temporaryFolder>;
 let store: Store;
-beforeEach(() => {
-  folder = temporaryFolder();
-  store = open(folder.path);
-});
-afterEach(() => {
-  expect(store.verify()).toEqual([]);
-  store.close();
-  folder.remove();
+useRecord((own) => {
+  store = own;
 });
 
 const keys = (arrivals: readonly { readonly key: string }[]) => arrivals.map(({ key }) => key);

@@ -1,17 +1,11 @@
-import { afterEach, beforeEach, expect, test } from 'vitest';
+import { expect, test } from 'vitest';
 import type { Store } from '../../../daemon/store/index.ts';
-import { AT, LATER, NEXT_DAY, notice, open, temporaryFolder } from './sample.ts';
+import { AT, LATER, NEXT_DAY, notice } from './sample.ts';
+import { useRecord } from './useRecord.ts';
 
-let folder: ReturnType<typeof temporaryFolder>;
 let store: Store;
-beforeEach(() => {
-  folder = temporaryFolder();
-  store = open(folder.path);
-});
-afterEach(() => {
-  expect(store.verify()).toEqual([]);
-  store.close();
-  folder.remove();
+const record = useRecord((own) => {
+  store = own;
 });
 
 test('each attempt at a mail is kept, with its beginning and its end', () => {
@@ -31,8 +25,7 @@ test('each attempt at a mail is kept, with its beginning and its end', () => {
 test('an attempt that the end of the program cut off says so', () => {
   store.commitNotice(notice(1), AT);
   const { id } = store.claimDue(AT)!;
-  store.close();
-  store = open(folder.path);
+  record.reopen();
   store.claimDue(NEXT_DAY);
   store.settle(id, { kind: 'refused', error: '550 no such user', at: NEXT_DAY });
   expect(store.mailAttempts([id]).get(id)).toEqual([

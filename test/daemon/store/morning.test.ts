@@ -1,16 +1,11 @@
-import { afterEach, beforeEach, expect, test } from 'vitest';
+import { expect, test } from 'vitest';
 import { emptyBatch, type Store } from '../../../daemon/store/index.ts';
-import { AT, fileBatch, LATER, NEXT_DAY, open, sampleArrival, sampleFile, temporaryFolder, upsert } from './sample.ts';
+import { AT, fileBatch, LATER, NEXT_DAY, sampleArrival, sampleFile, upsert } from './sample.ts';
+import { useRecord } from './useRecord.ts';
 
-let folder: ReturnType<typeof temporaryFolder>;
 let store: Store;
-beforeEach(() => {
-  folder = temporaryFolder();
-  store = open(folder.path);
-});
-afterEach(() => {
-  store.close();
-  folder.remove();
+useRecord((own) => {
+  store = own;
 });
 
 test('what came in and what was quarantined since a time', () => {

@@ -1,17 +1,13 @@
-import { afterEach, beforeEach, describe, expect, test } from 'vitest';
+import { describe, expect, test } from 'vitest';
 import { emptyBatch, type Store } from '../../../daemon/store/index.ts';
-import { AT, LATER, NEXT_DAY, notice, open, sampleMessage, temporaryFolder, upsert } from './sample.ts';
+import { AT, LATER, NEXT_DAY, notice, open, sampleMessage, upsert } from './sample.ts';
+import { useRecord } from './useRecord.ts';
 
-let folder: ReturnType<typeof temporaryFolder>;
 let store: Store;
-beforeEach(() => {
-  folder = temporaryFolder();
-  store = open(folder.path);
-});
-afterEach(() => {
-  expect(store.verify()).toEqual([]);
-  store.close();
-  folder.remove();
+let folder: string;
+const record = useRecord((own, path) => {
+  store = own;
+  folder = path;
 });
 
 describe('a message', () => {
@@ -136,8 +132,7 @@ describe('an end', () => {
   test('D8: cut off by a crash: queued again, marked', () => {
     store.commitNotice(notice(1), AT);
     store.claimDue(AT);
-    store.close();
-    store = open(folder.path);
+    record.reopen();
     expect(store.outbox()).toMatchObject([{ state: 'queued', possibleDuplicate: true, attempts: 1 }]);
     expect(store.claimDue(AT)).toMatchObject({ attempts: 2, possibleDuplicate: true });
   });
@@ -145,7 +140,7 @@ describe('an end', () => {
   test('a reader beside a running attempt does not take it for cut off', () => {
     store.commitNotice(notice(1), AT);
     store.claimDue(AT);
-    open(folder.path, 'reader').close();
+    open(folder, 'reader').close();
     expect(store.outbox()).toMatchObject([{ state: 'attempting', possibleDuplicate: false }]);
   });
 
@@ -170,8 +165,7 @@ test('one digest a civil date, whoever asks and however often', () => {
   expect(store.commitDigest('2026-03-29', notice(1, { kind: 'digest' }), AT)).toBe(true);
   expect(store.commitDigest('2026-03-29', notice(2, { kind: 'digest' }), LATER)).toBe(false);
   expect(store.outbox({ kind: 'digest' })).toHaveLength(1);
-  store.close();
-  store = open(folder.path);
+  record.reopen();
   expect(store.commitDigest('2026-03-29', notice(3, { kind: 'digest' }), LATER)).toBe(false);
   expect(store.commitDigest('2026-03-30', notice(4, { kind: 'digest' }), NEXT_DAY)).toBe(true);
   expect(store.lastDigest()).toEqual({ civilDate: '2026-03-30', at: NEXT_DAY });

@@ -1,5 +1,5 @@
 import { spawn, spawnSync } from 'node:child_process';
-import { existsSync } from 'node:fs';
+import { existsSync, readFileSync } from 'node:fs';
 import { createRequire } from 'node:module';
 import { join } from 'node:path';
 import Database from 'better-sqlite3';
@@ -69,6 +69,19 @@ describe.skipIf(!mayRun('strace', ['-qq', '-o', '/dev/null', 'true'], 'a call th
       await checkAfter(state, run);
     },
   );
+
+  test('C15: nothing but SQLite opens the record, its log or its lock', { timeout: 120_000 }, async () => {
+    const state = join(folder.path, 'opened');
+    const trace = join(folder.path, 'opened.txt');
+    const run = await startUnder('strace', ['-f', '-qq', '-o', trace, '-e', 'trace=open,openat,openat2'], night, state);
+    expect(run.lines.at(-1), run.errors).toBe('done');
+    const opened = readFileSync(trace, 'utf8')
+      .split('\n')
+      .filter((line) => /\/(record|lock)\.db/.test(line));
+    expect(opened.length).toBeGreaterThan(2);
+    // SQLite follows no link at the end of a path (os_unix.c); Node's own calls do not ask for that.
+    expect(opened.filter((line) => !line.includes('O_NOFOLLOW'))).toEqual([]);
+  });
 
   test.each([12, 25])(
     'A39: the disk is full from write %i on: a transaction is gone whole, and the work goes on later',

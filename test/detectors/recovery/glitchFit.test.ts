@@ -189,4 +189,20 @@ describe('sizes and recovery of a glitch', () => {
     expect(() => fitGlitch(inputFor(arrivals, 0))).toThrow(RangeError);
     expect(() => fitGlitch(inputFor(arrivals, 30))).toThrow(/no gap between arrivals in use/);
   });
+
+  it('holds the slowest of three exponentials when the quickest is too quick to be looked for', () => {
+    const random = dice(5);
+    const days = observingDays(500, 2, 0.8, random);
+    const after = 250;
+    const step = { epochDays: days[after]! - 0.6, persistentNuHz: 0, persistentNuDotHzPerS: 0 };
+    const quiet = simulateArrivals(days, walks, 5e-4, random);
+    let arrivals = withGlitch(quiet, { ...step, persistentNuHz: 1e-4, decayingNuHz: 3e-5, timescaleDays: 1 });
+    for (const [decayingNuHz, timescaleDays] of [
+      [1e-5, 10],
+      [2e-5, 100],
+    ] as const)
+      arrivals = withGlitch(arrivals, { ...step, decayingNuHz, timescaleDays });
+    const { terms } = fitGlitch(inputFor(arrivals, after)).recovery!;
+    expect(Math.abs(terms.at(-1)!.timescaleDays.median / 100 - 1)).toBeLessThan(0.02);
+  });
 });

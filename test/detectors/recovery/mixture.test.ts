@@ -1,6 +1,12 @@
 import { quantileRankSorted } from 'simple-statistics';
 import { describe, expect, it } from 'vitest';
-import { condense, gridEstimate, mixtureEstimate, mixtureQuantile } from '../../../detectors/recovery/mixture.ts';
+import {
+  condense,
+  gridEstimate,
+  logNormalEstimate,
+  mixtureEstimate,
+  mixtureQuantile,
+} from '../../../detectors/recovery/mixture.ts';
 import { dice } from '../../support/simulatedPulsar.ts';
 
 describe('marginals of a mixture', () => {
@@ -67,5 +73,34 @@ describe('marginals of a mixture', () => {
     // Standard deviation of a uniform variable: 1/√12.
     expect(even.sd).toBeCloseTo(1 / Math.sqrt(12), 2);
     expect(gridEstimate(Float64Array.of(3), Float64Array.of(1)).interval95).toEqual([3, 3]);
+  });
+
+  it('of a coarse grid over a normal density are hardly wider than its own', () => {
+    const values = Float64Array.from({ length: 15 }, (_, i) => 0.71 * (i - 7));
+    const { interval68, interval95 } = gridEstimate(
+      values,
+      values.map((x) => Math.exp(-0.5 * x * x)),
+    );
+    for (const [bound, expected] of [
+      [interval68[0], -1],
+      [interval68[1], 1],
+      [interval95[0], -2],
+      [interval95[1], 2],
+    ] as const) {
+      expect(Math.abs(bound - expected)).toBeLessThan(0.08);
+    }
+  });
+
+  it('of the exponential of a normal variable are the exponentials of its own (log-normal distribution)', () => {
+    const { mean, median, sd, interval68, interval95 } = logNormalEstimate({
+      weights: Float64Array.of(2),
+      means: Float64Array.of(1.3),
+      sds: Float64Array.of(0.4),
+    });
+    expect(mean).toBeCloseTo(Math.exp(1.3 + 0.08), 9);
+    expect(sd).toBeCloseTo(Math.exp(1.3 + 0.08) * Math.sqrt(Math.exp(0.16) - 1), 9);
+    expect(median).toBeCloseTo(Math.exp(1.3), 5);
+    expect(interval68[0]).toBeCloseTo(Math.exp(0.9), 5);
+    expect(interval95[1]).toBeCloseTo(Math.exp(2.1), 5);
   });
 });

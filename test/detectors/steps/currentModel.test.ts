@@ -98,12 +98,30 @@ describe('the current model', () => {
       timescaleDays: 20,
     };
     const arrivals = arrivalsOf((t) => -glitchTurns(glitch, t));
-    const current = modelAfter(start, arrivals.slice(0, 70));
-    expect(current.events).toHaveLength(1);
-    expect(current.model.glitches[0]!.recoveries.length).toBeGreaterThan(0);
-    const soon = arrivals.slice(70, 74);
-    expect(largest(deviations(current.model, soon))).toBeLessThan(0.05);
+    const watch = startWatch(start, detectorSettings(1, 1, start));
+    for (const arrival of arrivals.slice(0, 70)) advance(watch, arrival);
+    const [event, ...others] = report(watch).events;
+    expect(others).toEqual([]);
+    const current = currentModel(watch, [event!])!;
+    // What is published of the recovery is what the model holds.
+    const [held] = current.model.glitches;
+    const { terms } = event!.recovery;
+    expect(terms.length).toBeGreaterThan(0);
+    expect(held!.recoveries).toEqual(
+      terms.map(({ fraction, timescaleDays }) => ({ frequencyStepHz: fraction * event!.deltaNuHz!, timescaleDays })),
+    );
+    const decaying = held!.recoveries.reduce((sum, { frequencyStepHz }) => sum + frequencyStepHz, 0);
+    expect(held!.frequencyStepHz + decaying).toBeCloseTo(event!.deltaNuHz!, 14);
+    const soon = arrivals.slice(70, 80);
+    expect(mjdNumber(soon.at(-1)!.tdb) - current.lastArrivalMjd).toBeGreaterThan(28);
+    expect(largest(deviations(current.model, soon))).toBeLessThan(3 * Math.hypot(current.ahead[2]!.turns, SIGMA));
     expect(largest(deviations(current.model, arrivals.slice(62, 70)))).toBeLessThan(6 * SIGMA);
+    // While none is established, the decays that the rotation is followed with stand for it.
+    const unsure = currentModel(watch, [{ ...event!, recovery: { terms: [], q: null } }])!;
+    expect(unsure.model.glitches[0]!.recoveries.map((r) => r.timescaleDays)).toEqual(
+      watch.states.decays.map((d) => d.timescaleDays),
+    );
+    expect(largest(deviations(unsure.model, soon))).toBeLessThan(3 * Math.hypot(unsure.ahead[2]!.turns, SIGMA));
   });
 
   test('the stated uncertainty ahead holds: 20 pulsars with noise, predicted seven days on', () => {

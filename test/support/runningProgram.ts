@@ -1,6 +1,6 @@
 import { spawn } from 'node:child_process';
-import { setTimeout as pause } from 'node:timers/promises';
 import { CLI } from './spinvigil.ts';
+import { within } from './within.ts';
 
 /** A program that runs until it is told to stop, or dies by itself. */
 export interface RunningProgram {
@@ -41,12 +41,23 @@ export function startSpinvigil(args: readonly string[], environment: NodeJS.Proc
   };
 }
 
-/** Looks until `what` holds or the time is over; answers whether it came to hold. */
-export async function within(seconds: number, what: () => boolean | Promise<boolean>): Promise<boolean> {
-  const until = Date.now() + seconds * 1000;
-  while (Date.now() < until) {
-    if (await what()) return true;
-    await pause(50);
-  }
-  return false;
+/** What vitest's `onTestFinished` takes. */
+export type WhenFinished = (close: () => Promise<void>) => void;
+
+const PATIENCE_S = 60;
+
+/** The watch of an observatory, once it has said that it watches; killed when the test has ended, if it runs still. */
+export async function startWatch(
+  whenFinished: WhenFinished,
+  configFile: string,
+  environment: NodeJS.ProcessEnv = {},
+): Promise<RunningProgram> {
+  const program = startSpinvigil(['watch', '--config', configFile], environment);
+  whenFinished(async () => {
+    program.signal('SIGKILL');
+    await program.ended;
+  });
+  await within(PATIENCE_S, () => program.hasEnded() || program.stdout().includes('\n'));
+  if (program.hasEnded()) throw new Error(`the watch ended by itself: ${program.stderr()}`);
+  return program;
 }
