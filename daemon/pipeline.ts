@@ -2,7 +2,15 @@ import { mjdOf } from './clock.ts';
 import type { Stage } from './progress.ts';
 import { bringToBarycentre, retime } from './stages/arrival.ts';
 import { type Consequences, consequencesOf, NO_CONSEQUENCES } from './stages/consequences.ts';
-import { type FileInHand, type Intake, isOnRecord, SET_ASIDE, takeRows } from './stages/intake.ts';
+import {
+  type FileIdentity,
+  type FileInHand,
+  type Intake,
+  identityOf,
+  isOnRecord,
+  SET_ASIDE,
+  takeRows,
+} from './stages/intake.ts';
 import { writeCurrentModels } from './stages/modelFiles.ts';
 import { noteDecided, noteOpen, openDecisions } from './stages/openDecisions.ts';
 import { SiteWatches } from './stages/sites.ts';
@@ -160,18 +168,21 @@ export class Pipeline {
     const { store } = this.#station;
     if (isOnRecord(this.#station, inHand)) return { kind: 'known', ...NOTHING };
     step('file in hand');
-    const intake = takeRows(this.#station, inHand);
-    if (intake.unterminated && !options.acceptUnterminated) return { kind: 'cut short', ...NOTHING };
     const path = { bytesHex: inHand.pathBytes.toString('hex') };
-    const noted = this.#interrupted.delete(intake.file.path);
-    const readings = noted ? 1 : store.noteReadingStarts(inHand.feed, path, intake.file.sha256);
-    if (readings > MOST_READINGS) return this.#setAside(intake, readings - 1);
+    const file = identityOf(this.#station, inHand);
+    const noted = this.#interrupted.delete(file.path);
+    // Before anything is made of its bytes: they may be too much for the program.
+    const readings = noted ? 1 : store.noteReadingStarts(file.feed, path, file.sha256);
+    if (readings > MOST_READINGS) return this.#setAside(file, readings - 1);
     try {
-      return await this.#takeInRead(intake, options);
+      const intake = takeRows(this.#station, inHand);
+      if (!intake.unterminated || options.acceptUnterminated) return await this.#takeInRead(intake, options);
+      store.noteReadingStarts(file.feed, path, NO_FILE);
+      return { kind: 'cut short', ...NOTHING };
     } catch (error) {
       // Neither a stop nor a full disk is the file's fault: its beginning is not held against it.
-      if (error instanceof Stopped) store.noteReadingStarts(inHand.feed, path, NO_FILE);
-      else if (storageTrouble(error) !== null) this.#interrupted.add(intake.file.path);
+      if (error instanceof Stopped) store.noteReadingStarts(file.feed, path, NO_FILE);
+      else if (storageTrouble(error) !== null) this.#interrupted.add(file.path);
       throw error;
     }
   }
@@ -251,7 +262,7 @@ export class Pipeline {
     await new Promise((resolve) => setImmediate(resolve));
   }
 
-  #setAside({ file }: Intake, readings: number): TakenIn {
+  #setAside(file: FileIdentity, readings: number): TakenIn {
     const fault = `${SET_ASIDE}: its reading was begun ${readings} times and never finished; see the log, then touch the file to try again`;
     this.#station.store.commitIntake({
       ...this.#batch(),

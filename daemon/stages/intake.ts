@@ -100,15 +100,26 @@ function describeFile(
   inHand: FileInHand,
   { read, waiting }: { readonly read: ArrivalFile; readonly waiting: Waiting },
 ): NewFile {
+  const identity = identityOf(station, inHand);
   return {
-    feed: inHand.feed,
-    path: inHand.path,
-    pathBytesHex: inHand.pathBytes.toString('hex'),
-    sha256: sha256Of(inHand.bytes),
-    bytes: inHand.bytes.length,
-    signature: inHand.signature + layoutMark(station, inHand.feed) + marksOf(station, waiting),
+    ...identity,
+    signature: identity.signature + marksOf(station, waiting),
     rows: read.rows.length + read.rejects.length,
     fault: read.fault,
+  };
+}
+
+/** What is known of a file before anything is made of its bytes. */
+export type FileIdentity = Omit<NewFile, 'rows' | 'fault'>;
+
+export function identityOf(station: Station, { feed, path, pathBytes, bytes, signature }: FileInHand): FileIdentity {
+  return {
+    feed,
+    path,
+    pathBytesHex: pathBytes.toString('hex'),
+    sha256: sha256Of(bytes),
+    bytes: bytes.length,
+    signature: signature + layoutMark(station, feed),
   };
 }
 

@@ -1,6 +1,7 @@
 import { join } from 'node:path';
 import { afterAll, beforeAll, describe, expect, test } from 'vitest';
 import { digestText } from '../../alerts/index.ts';
+import { planOfEvent } from '../../alerts/wording/plan.ts';
 import { mjdOf, systemClock } from '../../daemon/clock.ts';
 import type { LimitLine } from '../../daemon/commands/limits.ts';
 import { morningReview } from '../../daemon/morning.ts';
@@ -123,6 +124,20 @@ describe('plan', () => {
     const text = await printed('plan', 'KR 2210-05');
     expect(text).toContain('To pin the recovery of');
     expect(text).toContain('front-loaded');
+  });
+
+  test('is kept with the decision, as of the last arrival, for the page of the event', () => {
+    const { configuration } = loadOrders(at.configFile);
+    const store = openRecord(configuration, 'reader');
+    try {
+      const [{ event } = { event: null }] = store.events({ pulsar: 'KR 2210-05' });
+      const { plan, lastArrivalMjd } = store.pulsarReport('KR 2210-05')!;
+      expect(plan!.asOfMjd).toBe(lastArrivalMjd);
+      expect(planOfEvent(plan!, event!.id, 'UTC')[0]!.says).toContain('To pin the recovery of');
+      expect(store.pulsarReport('KR 0417+31')).not.toHaveProperty('plan');
+    } finally {
+      store.close();
+    }
   });
 
   test('of a pulsar whose count is open asks for what settles it, and states no limit', async () => {

@@ -6,7 +6,7 @@ import { normalTail } from '../../../detectors/math/normal.ts';
 import { nextUsualTime, nullAhead, SIDEREAL_DAY } from '../../../detectors/plan/ahead.ts';
 import { expectedLargest, planForAliases } from '../../../detectors/plan/aliasPlan.ts';
 import { COUNT_SPREAD_TURNS, countSafety } from '../../../detectors/plan/countSafety.ts';
-import { planFor } from '../../../detectors/plan/plan.ts';
+import { openPlan, planFor } from '../../../detectors/plan/plan.ts';
 import { derivatives } from '../../../detectors/plan/recoveryPlan.ts';
 import { every, followed, QUIET_FREQUENCY_HZ } from '../../support/quietWatch.ts';
 import { glitchTurns } from '../../support/simulatedGlitch.ts';
@@ -72,6 +72,14 @@ describe('the plan', () => {
     expect(schedules.map((s) => s.name)).toContain(recommended);
     for (const [i, night] of nights.entries())
       if (i > 0) expect(night.widths.deltaNuHz!).toBeLessThanOrEqual(nights[i - 1]!.widths.deltaNuHz!);
+  });
+
+  test('for the record is that of the last arrival, and there is none where nothing is open', () => {
+    const { events } = report(struck);
+    const { cadences: _, ...atLastArrival } = planFor(struck, events, Number.NEGATIVE_INFINITY);
+    expect(openPlan(struck, events)).toEqual(atLastArrival);
+    expect(atLastArrival.asOfMjd).toBe(atLastArrival.lastArrivalMjd);
+    expect(openPlan(quiet, report(quiet).events)).toBeNull();
   });
 
   test('linearises the published glitch model', () => {
