@@ -19,4 +19,5 @@ function verified(file: string): Verified {
   }
 }
 
-process.send?.(verified(process.argv[2]!), () => process.disconnect());
+const answer = verified(process.argv[2]!);
+if (process.connected) process.send?.(answer, () => process.disconnect());

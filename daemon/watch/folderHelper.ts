@@ -26,7 +26,7 @@ async function answer(question: Question): Promise<void> {
 }
 
 function say(message: Answer): void {
-  process.send?.(message);
+  if (process.connected) process.send?.(message);
 }
 
 for (const signal of ['SIGINT', 'SIGTERM', 'SIGHUP'] as const) process.on(signal, () => {});

@@ -6,8 +6,8 @@ import type { NoisePrior } from './noisePrior.ts';
 /** Natural-log units of posterior given up on the way to stronger noise: about one standard deviation. */
 const GIVEN_UP = 0.5;
 /** Up to the first number of sessions that much is given up, from the second on nothing. */
-const FEW_SESSIONS = 100;
-const MANY_SESSIONS = 200;
+const FEW_SESSIONS = 150;
+const MANY_SESSIONS = 300;
 const STEP = 0.2;
 /** e^6: no margin grows beyond this. */
 const MOST_STEPS = 30;

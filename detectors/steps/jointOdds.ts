@@ -27,7 +27,7 @@ import { gapsOfEvent, type Rise, slowRise, type Track } from './track.ts';
 /** Sessions before an event from which on they tell what the noise is. */
 const TELLING_SESSIONS = 60;
 /** With so many, noise must not be the better explanation; with every doubling it may be so by some nats more. */
-const EVEN_SESSIONS = 75;
+const EVEN_SESSIONS = 100;
 const NATS_PER_DOUBLING = 2;
 const MOST_NATS = 8;
 

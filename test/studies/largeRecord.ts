@@ -12,6 +12,7 @@ import { emptyBatch, type NewArrival, openStore, type PulsarReportRow } from '..
 import { loadTables } from '../../daemon/tables/loadTables.ts';
 import { advance, startWatch as followPulsar, pulsarTimes, report } from '../../detectors/index.ts';
 import { createObservatory, digestFarAway, type TestObservatory } from '../support/observatory.ts';
+import { dice } from '../support/simulatedPulsar.ts';
 import {
   arrivalFile,
   type SyntheticArrival,
@@ -78,7 +79,16 @@ function fill({ stateFolder, configFile }: TestObservatory): void {
     );
     const path = `${i}.csv`;
     const unread = { feed: 'nightly', path, sha256: path.padEnd(64, '0'), bytes: 1, signature: path };
-    const times = { ...sample.times, pulsar };
+    const random = dice(i);
+    const times = {
+      ...sample.times,
+      pulsar,
+      // Noise of its own: what all pulsars had in common would be taken for the clock of their site.
+      sessions: sample.times.sessions.map((session) => ({
+        ...session,
+        deviationTurns: Math.sqrt(session.varianceTurns2) * random.normal(),
+      })),
+    };
     const row: PulsarReportRow = { ...sample, pulsar, basis: station.basisOf(model(i)), times };
     const at = new Date(Date.now() - 1000).toISOString();
     store.commitIntake({
