@@ -74,15 +74,7 @@ export function startIntake(station: Station, { onMail, onFatal, progress }: Int
     recall: (feed, file) => recall(station, feed, file.pathBytes),
     isAsRecorded: (file, bytes) => isAsRecorded(station, file, bytes),
     clock: systemClock,
-    onProblem(problem) {
-      try {
-        quarantineUnread(station, problem);
-      } catch (error) {
-        noteTrouble(error);
-        throw error;
-      }
-      log.warn(factsOf(problem), problem.message);
-    },
+    onProblem: (problem) => noteProblem(station, problem, noteTrouble),
     onProblemEnded: (problem) => log.info({ ...factsOf(problem), was: problem.message }, 'problem ended'),
     onProgress: feedProgress(configuration.feeds, progress),
     async onSettled(file, bytes, filesWaiting) {
@@ -123,6 +115,17 @@ function feedProgress(feeds: readonly Feed[], progress: Progress): NonNullable<W
 
 function inHand({ feed, path, pathBytes, stamp }: ReadyFile, bytes: Buffer): FileInHand {
   return { feed, path, pathBytes, bytes, signature: stamp.signature };
+}
+
+/** On record where it keeps a file from being read, and in the log. */
+function noteProblem(station: Station, problem: WatchProblem, noteTrouble: (error: unknown) => void): void {
+  try {
+    quarantineUnread(station, problem);
+  } catch (error) {
+    noteTrouble(error);
+    throw error;
+  }
+  station.log.warn(factsOf(problem), problem.message);
 }
 
 function factsOf({ feed, kind, path }: WatchProblem): Omit<WatchProblem, 'message'> {

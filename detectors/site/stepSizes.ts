@@ -5,11 +5,15 @@ import { witnessOf } from './candidates.ts';
 import { commonStep } from './commonStep.ts';
 import type { GapEvidence } from './gapEvidence.ts';
 
+/** A larger correction, in standard deviations of the size, is no correction: a step that is not known yet spoils the sessions. */
+const MOST_DEVIATIONS = 8;
+
 /** What is left of the step in its gap, once it is allowed for, corrects its size. */
 export function resized(step: BelievedStep, gaps: readonly GapEvidence[]): BelievedStep {
   const witnesses = gaps.filter(({ afterMjd }) => afterMjd <= step.afterMjd).map((gap) => witnessOf(gap, gap.all));
   if (witnesses.length === 0) return step;
   const { stepS, uncertaintyS } = commonStep(witnesses);
+  if (Math.abs(stepS * 1e6) > MOST_DEVIATIONS * step.uncertaintyUs) return step;
   return { ...step, stepUs: step.stepUs + stepS * 1e6, uncertaintyUs: uncertaintyS * 1e6 };
 }
 

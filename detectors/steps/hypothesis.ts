@@ -201,9 +201,9 @@ export function withState(h: Hypothesis, variance: number): Hypothesis {
   return { ...h, mean, cov };
 }
 
-/** Lets the state jump along `direction` by a Gaussian of the given variance. */
+/** Lets the state jump along `direction` by a Gaussian of the given variance; states added after its last one stay. */
 export function loosen(h: Hypothesis, direction: ArrayLike<number>, variance: number): void {
   const size = h.mean.length;
-  for (let i = 0; i < size; i++)
-    for (let j = 0; j < size; j++) h.cov[i * size + j]! += variance * direction[i]! * direction[j]!;
+  for (let i = 0; i < direction.length; i++)
+    for (let j = 0; j < direction.length; j++) h.cov[i * size + j]! += variance * direction[i]! * direction[j]!;
 }

@@ -3,6 +3,7 @@ import {
   absorb,
   gapOf,
   type Hypothesis,
+  loosen,
   predict,
   propagate,
   sightOf,
@@ -12,6 +13,15 @@ import { denseFit } from '../../support/denseLeastSquares.ts';
 import { dice, observingDays, simulateWalk } from '../../support/simulatedPulsar.ts';
 
 const LN_TWO_PI = Math.log(2 * Math.PI);
+
+describe('a state that was added later', () => {
+  it('stays as it is when the others are let go along a direction of before', () => {
+    const h = { mean: [0, 0, 0, 1], cov: zeros(16), logWeight: 0 } as unknown as Hypothesis;
+    h.cov[15] = 2;
+    loosen(h, [1, 0, 1], 3);
+    expect(h.cov).toEqual([3, 0, 3, 0, 0, 0, 0, 0, 3, 0, 3, 0, 0, 0, 0, 2]);
+  });
+});
 
 describe('the filter of one hypothesis is generalised least squares', () => {
   it('agrees with the dense twin in log-likelihood and nuisances to 1e-8, over 60 random cases', () => {
