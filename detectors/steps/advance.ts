@@ -38,9 +38,11 @@ function follow(watch: PulsarWatch, index: number): void {
     decide(watch, index);
     watchCount(watch, index);
   } else if (canLock(watch, index)) {
-    // The count that has won tells the noise; it must win with that noise too.
+    // The count that has won tells the noise; it must win with that noise too. It is learned again as soon as ever.
     endTrial(watch);
+    const { nextLearning } = watch;
     relearn(watch, index);
+    watch.nextLearning = nextLearning;
     if (!canLock(watch, index)) return;
     watch.locked = true;
     watch.lockedFrom = index + 1;

@@ -74,6 +74,6 @@ describe('the table of measured values', () => {
     const page = await (await fetch(`${url}events/kr-0417-61370`)).text();
     expect(page).toContain('68 arrivals from 68 files');
     expect(page).toContain('2026/night-3.csv');
-    expect(page).toContain('spinvigil plan &quot;KR 0417+31&quot;');
+    expect(page).toContain('What more observations would settle');
   });
 });

@@ -74,7 +74,7 @@ function sideBySide(scene: Scene, compare: (waiting: PulsarWatch, carrying: Puls
 
 /** What was decided, and at which arrivals. */
 const decisions = ({ tracks }: PulsarWatch) =>
-  tracks.map(({ logOdds, explanations, askAgainAt, rateStep, ...decided }) => decided);
+  tracks.map(({ logOdds, explanations, askAgainAt, rateStep, logPlaces, ...decided }) => decided);
 
 const relative = ({ bank }: PulsarWatch) => {
   const nothing = logWeightOf(bank!.beam);
