@@ -117,13 +117,15 @@ export function changeInWords(before: PulsarEvent, after: PulsarEvent): string |
       after.deltaNuDot,
       before.deltaNuDotInterval68,
       after.deltaNuDotInterval68,
+      ' Hz/s',
     ),
     ...quantityInWords(
-      'time step',
+      'Δt',
       before.timeStepUs,
       after.timeStepUs,
       before.timeStepUsInterval68,
       after.timeStepUsInterval68,
+      ' µs',
     ),
   );
   const terms = after.recovery.terms.length;
@@ -148,22 +150,29 @@ function quantityInWords(
   after: number | null,
   beforeInterval: Interval | null,
   afterInterval: Interval | null,
+  unit = '',
 ): string[] {
   if (before === null || after === null) {
     if (before === after) return [];
-    return [after === null ? `${name} no longer stated` : `${name} ${after.toPrecision(3)}`];
+    return [after === null ? `${name} no longer stated` : `${name} ${rounded(after)}${unit}`];
   }
   const beforeWidth = width(beforeInterval);
   const afterWidth = width(afterInterval);
   // A size that is consistent with zero moves by large factors and means nothing by it: its change is judged on its interval too.
   const scale = Math.max(Math.abs(before), beforeWidth / 2);
   if (Math.abs(after - before) > WORTH_KEEPING * scale)
-    return [`${name} ${before.toPrecision(3)} → ${after.toPrecision(3)}`];
+    return [`${name} ${rounded(before)} → ${rounded(after)}${unit}`];
   if (beforeWidth > 0 && Math.abs(afterWidth - beforeWidth) > WORTH_KEEPING * beforeWidth) {
     const change = Math.round(100 * (afterWidth / beforeWidth - 1));
     return [`${name} interval ${change < 0 ? 'narrowed' : 'widened'} by ${Math.abs(change)} %`];
   }
   return [];
+}
+
+/** Small numbers with their power of ten, others written out. */
+function rounded(value: number): string {
+  const digits = value.toPrecision(3);
+  return Math.abs(value) >= 1e-3 ? String(Number(digits)) : digits;
 }
 
 function width(interval: Interval | null): number {

@@ -124,7 +124,7 @@ describe('what is worth a revision', () => {
     [{ explanation: 'slow spin-up' }, 'explanation glitch → slow spin-up'],
     [{ deltaNuOverNu: -2e-8 }, 'Δν/ν 1.00e-8 → -2.00e-8'],
     [{ deltaNuOverNuInterval68: [0.95e-8, 1.05e-8] }, 'Δν/ν interval narrowed by 50 %'],
-    [{ deltaNuDot: -1e-15, deltaNuDotInterval68: [-2e-15, 0] }, 'Δν̇ -1.00e-15'],
+    [{ deltaNuDot: -1e-15, deltaNuDotInterval68: [-2e-15, 0] }, 'Δν̇ -1.00e-15 Hz/s'],
     [
       {
         recovery: {
