@@ -32,7 +32,7 @@ const SECONDS_PER_DAY = 86_400;
  * Of a glitch: share of each size, σ of Δν/ν; the published sizes peak at 1e-9 and 1e-6 (Yu et al. 2013), and the smallest are
  * what could just be seen.
  */
-const GLITCH_SIZES: readonly (readonly [share: number, size: number])[] = [
+export const GLITCH_SIZES: readonly (readonly [share: number, size: number])[] = [
   [0.1, 6e-11],
   [0.2, 5e-10],
   [0.2, 4e-9],
@@ -42,7 +42,7 @@ const GLITCH_SIZES: readonly (readonly [share: number, size: number])[] = [
   [0.05, 2e-5],
 ];
 /** σ of Δν̇/ν̇ at a glitch (from memory of published tables: 1e-4 to a few 1e-2). */
-const GLITCH_RATE_SIZE = 1e-2;
+export const GLITCH_RATE_SIZE = 1e-2;
 /** σ of Δν̇/ν̇ of a change alone: most are of 0.3 to 13 % (Lyne et al. 2010; from memory). */
 const RATE_CHANGE_SIZES: readonly (readonly [number, number])[] = [
   [0.45, 2e-3],

@@ -5,10 +5,10 @@ import type { AddressInfo } from 'node:net';
 import { join } from 'node:path';
 import { SMTPServer } from 'smtp-server';
 import { describe, test } from 'vitest';
-import { openStore, type Store } from '../../daemon/store/index.ts';
-import { createObservatory, digestFarAway, type TestObservatory } from '../support/observatory.ts';
+import { createObservatory, digestFarAway } from '../support/observatory.ts';
 import { type RunningProgram, startSpinvigil, startWatch } from '../support/runningProgram.ts';
 import { arrivalFile, type SyntheticArrival, syntheticArrivals, syntheticPulsar } from '../support/syntheticPulsar.ts';
+import { asReader } from '../support/watchProcess.ts';
 import { within } from '../support/within.ts';
 
 // The installed program where the system gives too little, and where somebody looks for its secrets.
@@ -29,16 +29,6 @@ const arrivals = syntheticArrivals(pulsar, {
 const made = (options: Partial<Parameters<typeof createObservatory>[0]> = {}) =>
   createObservatory({ pulsars: [pulsar], digestCron: digestFarAway(), ...options });
 const pageOf = (program: RunningProgram) => /http:\/\/\S+/.exec(program.stdout())?.[0] ?? '';
-
-function onRecord<Result>({ stateFolder }: TestObservatory, look: (store: Store) => Result): Result {
-  const opened = openStore(stateFolder, { mode: 'reader' });
-  if (!opened.ok) throw new Error(opened.failure.message);
-  try {
-    return look(opened.store);
-  } finally {
-    opened.store.close();
-  }
-}
 
 const helpersOf = (pid: number): number[] =>
   readdirSync(`/proc/${pid}/task`)
@@ -76,14 +66,14 @@ test.skipIf(!canLimit)(
     expect(program.hasEnded(), program.stderr()).toBe(false);
 
     for (const pid of all) limit(pid, 1024);
-    const isTaken = () => onRecord(at, (store) => store.liveArrivals(pulsar.name).length === arrivals.length);
+    const isTaken = () => asReader(at, (store) => store.liveArrivals(pulsar.name).length === arrivals.length);
     expect(await within(PATIENCE_S, isTaken), program.stderr()).toBe(true);
     expect(await within(PATIENCE_S, () => readdirSync(at.mailFolder).length > 0), program.stderr()).toBe(true);
     expect((await fetch(pageOf(program))).status).toBe(200);
     // A connection of the page may still be open.
     const kept = () => all.every((pid, i) => descriptorsOf(pid) <= before[i]! + 1);
     expect(await within(PATIENCE_S, kept), String(all.map(descriptorsOf))).toBe(true);
-    expect(onRecord(at, (store) => store.verify())).toEqual([]);
+    expect(asReader(at, (store) => store.verify())).toEqual([]);
   },
 );
 
@@ -105,21 +95,21 @@ test('A41, B10: a file that takes all memory ends the program, and after three t
   await at.drop('large.csv', content);
   // Two readings were cut off before: the third and last is tried here.
   const sha256 = createHash('sha256').update(content).digest('hex');
-  onRecord(at, (store) => {
+  asReader(at, (store) => {
     for (let i = 0; i < 2; i++) store.noteReadingStarts('nightly', 'large.csv', sha256);
   });
   const dies = startSpinvigil(['watch', '--config', at.configFile], little);
   onTestFinished(() => dies.signal('SIGKILL'));
   expect(await within(PATIENCE_S, () => dies.hasEnded()), dies.stderr()).toBe(true);
   expect(dies.stderr()).toMatch(/heap out of memory|heap limit/);
-  expect(onRecord(at, (store) => [store.verify(), store.pulsars()])).toEqual([[], []]);
+  expect(asReader(at, (store) => [store.verify(), store.pulsars()])).toEqual([[], []]);
 
   const lives = await startWatch(onTestFinished, at.configFile, little);
   await at.drop('small.csv', arrivalFile(arrivals));
-  const isTaken = () => onRecord(at, (store) => store.liveArrivals(pulsar.name).length === arrivals.length);
+  const isTaken = () => asReader(at, (store) => store.liveArrivals(pulsar.name).length === arrivals.length);
   expect(await within(PATIENCE_S, isTaken), lives.stderr()).toBe(true);
   expect(lives.hasEnded()).toBe(false);
-  expect(onRecord(at, (store) => store.recentQuarantine(1))).toMatchObject([
+  expect(asReader(at, (store) => store.recentQuarantine(1))).toMatchObject([
     { file: 'large.csv', line: null, reason: expect.stringMatching(/^set aside/) },
   ]);
 });
@@ -153,11 +143,11 @@ describe('F-2: the password of the mail account', () => {
     const program = await startWatch(onTestFinished, at.configFile);
     await at.drop('a.csv', arrivalFile(arrivals));
     const isDelivered = () =>
-      onRecord(at, (store) => store.outbox().length > 0 && store.outbox().every(({ state }) => state === 'delivered'));
+      asReader(at, (store) => store.outbox().length > 0 && store.outbox().every(({ state }) => state === 'delivered'));
     expect(await within(PATIENCE_S, isDelivered), program.stderr()).toBe(true);
     expect(told).toContain(CANARY);
 
-    const id = encodeURIComponent(onRecord(at, (store) => store.events()[0]!.event.id));
+    const id = encodeURIComponent(asReader(at, (store) => store.events()[0]!.event.id));
     const pages = ['', 'pulsars', 'feeds', 'mail', 'health', 'metrics', 'healthz', 'api/events', `events/${id}`];
     const places = new Map<string, string>();
     for (const page of pages) places.set(`page /${page}`, await (await fetch(pageOf(program) + page)).text());

@@ -4,6 +4,7 @@
 // Statist. 15, 749), and the delay over that of the clairvoyant test. Writes what it found beside itself.
 import { writeFileSync } from 'node:fs';
 import { noisePrior } from '../../detectors/filter/noisePrior.ts';
+import { GLITCH_RATE_SIZE, GLITCH_SIZES, RATE_PER_YEAR } from '../../detectors/steps/births.ts';
 import { alarmAt, innovationsOf, whitening } from '../support/clairvoyant.ts';
 import {
   AHEAD,
@@ -16,7 +17,7 @@ import {
   NOISES,
   seeded,
 } from '../support/detectionTrial.ts';
-import { GLITCHES_PER_YEAR, type Odds, oddsOf, RATE_SIZE, SIZES, weigh } from '../support/marginalOdds.ts';
+import { type Odds, oddsOf, weigh } from '../support/marginalOdds.ts';
 import { type Dice, simulateWalk } from '../support/simulatedPulsar.ts';
 
 const seed = Number(process.argv[2] ?? 2026);
@@ -79,7 +80,7 @@ function quietPulsar(n: number, history: number, random: Dice): Quiet {
     const struck = Math.floor(n / CADENCES.length) % 2 === 1;
     const rate = struck ? -size * frequencyHz * SECONDS_PER_DAY * random.normal() : 0;
     const second = struck
-      ? RATE_SIZE * Math.abs(frequencyDerivativeHzPerS) * SECONDS_PER_DAY ** 2 * random.normal()
+      ? GLITCH_RATE_SIZE * Math.abs(frequencyDerivativeHzPerS) * SECONDS_PER_DAY ** 2 * random.normal()
       : 0;
     const since = (day: number) => Math.max(0, day - epoch);
     const deviations = simulateWalk(days, walks, random).map(
@@ -88,7 +89,7 @@ function quietPulsar(n: number, history: number, random: Dice): Quiet {
     const pulsar = { days, deviations, sigmaTurns, frequencyHz, frequencyDerivativeHzPerS };
     const truth = weigh(pulsar, { ...walks, uncertaintyScale: 1, floorTurns: 0 }, history, history);
     const ratios = days.slice(history).map((day, i) => {
-      const soFar = (Math.exp(truth.logOdds[history + i]!) / GLITCHES_PER_YEAR) * DAYS_PER_YEAR;
+      const soFar = (Math.exp(truth.logOdds[history + i]!) / RATE_PER_YEAR.glitch) * DAYS_PER_YEAR;
       return (soFar + days.at(-1)! - day) / spanDays;
     });
     return { years: spanDays / DAYS_PER_YEAR, ratios, odds: oddsOf(pulsar, history) };
@@ -97,11 +98,11 @@ function quietPulsar(n: number, history: number, random: Dice): Quiet {
 
 function drawnSize(random: Dice): number {
   let left = random.uniform();
-  for (const [share, size] of SIZES) {
+  for (const [share, size] of GLITCH_SIZES) {
     left -= share;
     if (left < 0) return size;
   }
-  return SIZES.at(-1)![1];
+  return GLITCH_SIZES.at(-1)![1];
 }
 
 interface Struck {

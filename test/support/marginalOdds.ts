@@ -1,11 +1,12 @@
 /**
  * The odds of a glitch in one pulsar by a plain filter of its own, for many noise models: counts known, one receiver, no rival
- * explanations. Marks of steps on the innovations after Willsky & Jones 1976 (IEEE Trans. Automatic Control 21, 108).
+ * explanations; its prior is the detector's. Marks of steps on the innovations after Willsky & Jones 1976 (IEEE Trans. Automatic Control 21, 108).
  */
 import { learnNoise } from '../../detectors/filter/noiseLearning.ts';
 import { withMargin } from '../../detectors/filter/noiseMargin.ts';
 import { type NoisePrior, noisePrior } from '../../detectors/filter/noisePrior.ts';
 import type { NoiseModel } from '../../detectors/report.ts';
+import { GLITCH_RATE_SIZE, GLITCH_SIZES, RATE_PER_YEAR } from '../../detectors/steps/births.ts';
 
 export interface SimplePulsar {
   readonly days: readonly number[];
@@ -22,19 +23,6 @@ export interface Weighed {
   readonly logOdds: Float64Array;
 }
 
-/** Share and σ of Δν/ν of the mixture of glitches, and how many happen in a year. */
-export const SIZES: readonly (readonly [number, number])[] = [
-  [0.1, 6e-11],
-  [0.2, 5e-10],
-  [0.2, 4e-9],
-  [0.2, 4e-8],
-  [0.12, 4e-7],
-  [0.13, 3e-6],
-  [0.05, 2e-5],
-];
-export const GLITCHES_PER_YEAR = 0.056;
-/** σ of Δν̇/ν̇. */
-export const RATE_SIZE = 1e-2;
 const SECONDS_PER_DAY = 86_400;
 const DAYS_PER_YEAR = 365.25;
 /** Variances of the start: phase, rate, second derivative in turns and days. */
@@ -48,8 +36,8 @@ export function weigh(pulsar: SimplePulsar, noise: NoiseModel, from: number, loo
   const logLikelihood = new Float64Array(count);
   const logOdds = new Float64Array(count).fill(Number.NEGATIVE_INFINITY);
   const error = (noise.uncertaintyScale * sigmaTurns) ** 2 + noise.floorTurns ** 2;
-  const second = RATE_SIZE * Math.abs(frequencyDerivativeHzPerS) * SECONDS_PER_DAY ** 2;
-  const sizes = SIZES.map(([share, size]) => ({ share, rate: size * frequencyHz * SECONDS_PER_DAY }));
+  const second = GLITCH_RATE_SIZE * Math.abs(frequencyDerivativeHzPerS) * SECONDS_PER_DAY ** 2;
+  const sizes = GLITCH_SIZES.map(([share, size]) => ({ share, rate: size * frequencyHz * SECONDS_PER_DAY }));
   const marks: Mark[] = [];
   let [p00, p01, p02] = [START[0] as number, 0, 0];
   let [p11, p12, p22] = [START[1] as number, 0, START[2] as number];
@@ -84,7 +72,7 @@ export function weigh(pulsar: SimplePulsar, noise: NoiseModel, from: number, loo
     logOdds[i] = logSum(
       marks.flatMap((mark) =>
         sizes.map(({ share, rate }) => {
-          const logRate = Math.log((share * GLITCHES_PER_YEAR * mark.gapDays) / DAYS_PER_YEAR);
+          const logRate = Math.log((share * RATE_PER_YEAR.glitch * mark.gapDays) / DAYS_PER_YEAR);
           return logRate + logBayesFactor(mark, rate, second);
         }),
       ),
